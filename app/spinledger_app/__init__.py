@@ -1,0 +1,1 @@
+"""The bench: the desktop program over the Spin Ledger core."""

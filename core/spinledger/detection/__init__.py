@@ -1,0 +1,1 @@
+"""From a spectrum to signals with lines, integrals and uncertainties."""

@@ -1,0 +1,1 @@
+"""Line shapes, noise, regions and line fits: arrays in, arrays out."""

@@ -1,0 +1,1 @@
+"""What a structure claims: shifts and couplings with honest uncertainties."""

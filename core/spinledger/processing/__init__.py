@@ -1,0 +1,1 @@
+"""From raw data to a phased, flat, referenced spectrum, by a stored recipe."""

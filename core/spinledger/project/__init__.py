@@ -1,0 +1,1 @@
+"""The document that is saved, its pure edits, storage and audit trail."""

@@ -1,0 +1,1 @@
+"""Claims against evidence: match, refine, judge, contenders, advice."""

@@ -1,0 +1,1 @@
+"""The result in the forms that leave the lab."""

@@ -1,0 +1,1 @@
+"""Exact spin physics: systems, transitions, derivatives, trees, synthesis."""

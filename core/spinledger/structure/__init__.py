@@ -1,0 +1,1 @@
+"""What a drawn structure is: reading, topicity, exchange, conformers."""

@@ -1,0 +1,1 @@
+"""Frozen values that every room hands on; no computation beyond derived properties."""
