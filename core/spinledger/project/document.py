@@ -1,0 +1,262 @@
+"""The open project: one frozen value that the program holds and swaps.
+
+Shifts in ppm, couplings in Hz, temperatures in K; times are ISO 8601 text that
+enters as an argument.
+"""
+
+from __future__ import annotations
+
+from dataclasses import dataclass, replace
+from typing import TYPE_CHECKING
+
+from spinledger.values.acquisition import Acquired
+from spinledger.values.evidence import Evidence
+from spinledger.values.ledger import Ledger, Verdict
+from spinledger.values.recipe import Recipe
+from spinledger.values.structure import Structure
+
+if TYPE_CHECKING:
+    from spinledger.project.edits import Edit
+
+
+@dataclass(frozen=True, slots=True, kw_only=True)
+class ProjectOptions:
+    """What the user told the program beside spectrum and structure.
+
+    Attributes
+    ----------
+    solvent : str or None
+        Name as in the table of solvents; None leaves it to the spectrum.
+    ph : float or None
+    temperature_k : float or None, K
+    prefer_processed : bool
+        Take the maker's processed spectrum where there is also a FID.
+    n_contenders : int or None
+        Enumerated isomers to test; None for the program's own choice.
+    is_quick : bool
+        Leave out what takes long (contenders, advice).
+    """
+
+    solvent: str | None = None
+    ph: float | None = None
+    temperature_k: float | None = None
+    prefer_processed: bool = False
+    n_contenders: int | None = None
+    is_quick: bool = False
+
+
+@dataclass(frozen=True, slots=True, kw_only=True)
+class SignOff:
+    """One signature line: who did what, and when."""
+
+    role: str
+    name: str
+    when: str
+    remark: str = ""
+
+
+@dataclass(frozen=True, slots=True, kw_only=True)
+class Sample:
+    """What the label of the tube says; all of it is the user's own text."""
+
+    name: str = ""
+    batch: str = ""
+    submitted_by: str = ""
+    laboratory: str = ""
+    prepared: str = ""
+    remark: str = ""
+    sign_offs: tuple[SignOff, ...] = ()
+
+
+@dataclass(frozen=True, slots=True, kw_only=True)
+class AuditLine:
+    """One thing that was done, in order; ``when`` is ISO 8601 with its zone."""
+
+    when: str
+    what: str
+    by_hand: bool = False
+
+
+@dataclass(frozen=True, slots=True, eq=False, kw_only=True)
+class Project:
+    """Everything that is open: evidence side, claims side, edits and records.
+
+    Attributes
+    ----------
+    name : str
+        Shown in the title; "Untitled" before the first save.
+    source_name : str or None
+        Name of the file or folder the spectrum came from.
+    source_path : str or None
+        Where it lay when it was read: a hint for the user, never needed again,
+        because ``acquired`` holds the samples themselves.
+    acquired : Acquired or None
+    recipe : Recipe or None
+        Set by hand; None leaves processing to the program.
+    structure : Structure or None
+    evidence : Evidence or None
+    ledger : Ledger or None
+        As it was solved last, with labels as shown.
+    verdict_before_edits : Verdict or None
+        What the program said by itself; stays visible after hand edits.
+    options : ProjectOptions
+    sample : Sample
+    edits : tuple of Edit
+        Every hand edit in order.
+    labels : tuple of (str, str)
+        Automatic claim label and the label that is shown instead.
+    audit : tuple of AuditLine
+    """
+
+    name: str = "Untitled"
+    source_name: str | None = None
+    source_path: str | None = None
+    acquired: Acquired | None = None
+    recipe: Recipe | None = None
+    structure: Structure | None = None
+    evidence: Evidence | None = None
+    ledger: Ledger | None = None
+    verdict_before_edits: Verdict | None = None
+    options: ProjectOptions = ProjectOptions()
+    sample: Sample = Sample()
+    edits: tuple[Edit, ...] = ()
+    labels: tuple[tuple[str, str], ...] = ()
+    audit: tuple[AuditLine, ...] = ()
+
+    @property
+    def needs_evidence(self) -> bool:
+        """The spectrum has to be processed (again) before it can be judged."""
+        if self.acquired is None:
+            return False
+        if self.evidence is None:
+            return True
+        return self.recipe is not None and self.evidence.recipe != self.recipe
+
+    @property
+    def needs_ledger(self) -> bool:
+        """Spectrum and structure are here, and the ledger is missing or stale."""
+        if self.structure is None or (self.acquired is None and self.evidence is None):
+            return False
+        if self.ledger is None or self.needs_evidence:
+            return True
+        return (
+            self.ledger.evidence is not self.evidence
+            or self.ledger.edits != self.solving_edits
+        )
+
+    @property
+    def solving_edits(self) -> tuple[str, ...]:
+        """Descriptions of the edits that a new ledger has to obey, in order."""
+        return tuple(edit.description for edit in self.edits if edit.needs_solving)
+
+
+def open_spectrum(
+    project: Project, acquired: Acquired, *, source_path: str, when: str
+) -> Project:
+    """Project with a new spectrum; what was derived from the old one is dropped.
+
+    Parameters
+    ----------
+    project : Project
+    acquired : Acquired
+    source_path : str
+        Where it was read from.
+    when : str
+        ISO 8601 time.
+    """
+    metadata = acquired.metadata
+    line = AuditLine(
+        when=when,
+        what=f"Read {metadata.source_name} ({metadata.format_name}, "
+        f"SHA-256 {metadata.sha256}).",
+    )
+    return replace(
+        project,
+        source_name=metadata.source_name,
+        source_path=source_path,
+        acquired=acquired,
+        recipe=None,
+        evidence=None,
+        ledger=None,
+        verdict_before_edits=None,
+        edits=(),
+        audit=(*project.audit, line),
+    )
+
+
+def open_structure(project: Project, structure: Structure, *, when: str) -> Project:
+    """Project with a new claimed structure; edits of the old claims are dropped."""
+    line = AuditLine(when=when, what=f"Structure {structure.smiles} taken.")
+    return replace(
+        project,
+        structure=structure,
+        ledger=None,
+        verdict_before_edits=None,
+        labels=(),
+        edits=tuple(edit for edit in project.edits if not edit.names_claims),
+        audit=(*project.audit, line),
+    )
+
+
+def with_evidence(project: Project, evidence: Evidence) -> Project:
+    """Project with the processed spectrum; a ledger of older evidence goes stale."""
+    return replace(project, evidence=evidence)
+
+
+def with_ledger(project: Project, ledger: Ledger, *, when: str) -> Project:
+    """Project with a solved ledger (labels as shown) and the evidence it used."""
+    before = project.verdict_before_edits
+    if not project.solving_edits:
+        before = ledger.verdict
+    solved = replace(ledger, edits=project.solving_edits)
+    line = AuditLine(when=when, what=f"Solved: {ledger.verdict.state}.")
+    return replace(
+        project,
+        evidence=ledger.evidence,
+        ledger=solved,
+        verdict_before_edits=before,
+        audit=(*project.audit, line),
+    )
+
+
+def with_sample(project: Project, sample: Sample) -> Project:
+    """Project with new sample fields; the same project if nothing changed."""
+    return project if sample == project.sample else replace(project, sample=sample)
+
+
+def with_options(project: Project, options: ProjectOptions, *, when: str) -> Project:
+    """Project with new options; what depends on them has to be solved again."""
+    if options == project.options:
+        return project
+    line = AuditLine(when=when, what=_difference(project.options, options))
+    return replace(
+        project,
+        options=options,
+        evidence=None
+        if _processing_differs(project.options, options)
+        else (project.evidence),
+        ledger=None,
+        audit=(*project.audit, line),
+    )
+
+
+def _processing_differs(before: ProjectOptions, after: ProjectOptions) -> bool:
+    names = ("solvent", "temperature_k", "prefer_processed")
+    return any(getattr(before, name) != getattr(after, name) for name in names)
+
+
+def _difference(before: ProjectOptions, after: ProjectOptions) -> str:
+    words = {
+        "solvent": "solvent",
+        "ph": "pH",
+        "temperature_k": "temperature in K",
+        "prefer_processed": "maker's processed spectrum",
+        "n_contenders": "number of contenders",
+        "is_quick": "quick",
+    }
+    parts = [
+        f"{word} {getattr(after, name)}"
+        for name, word in words.items()
+        if getattr(before, name) != getattr(after, name)
+    ]
+    return f"Options set: {', '.join(parts)}."
