@@ -6,7 +6,7 @@ Shifts in ppm, couplings in Hz.
 from __future__ import annotations
 
 from collections.abc import Callable, Mapping
-from dataclasses import dataclass
+from functools import partial
 
 from spinledger.project.document import Project
 from spinledger.project.edits import (
@@ -21,40 +21,20 @@ from spinledger.project.edits import (
     SwapClaims,
     UnlinkClaim,
 )
+from spinledger.project.labels import automatic_label
+from spinledger.reconcile.options import (
+    Constraints,
+    DeclaredImpurity,
+    FixedCoupling,
+    Pin,
+    ReconcileOptions,
+)
 
 Range = tuple[float, float]
 
 
-@dataclass(frozen=True, slots=True, kw_only=True)
-class Constraints:
-    """The standing wishes of the user; later edits have replaced earlier ones.
-
-    Attributes
-    ----------
-    pins : tuple of PinClaim
-        One per pinned claim.
-    absent : tuple of str
-        Claims said to be not found.
-    couplings : tuple of FixCoupling
-        One per held coupling.
-    excluded_ppm : tuple of (low_ppm, high_ppm)
-    impurities : tuple of MarkImpurity
-    """
-
-    pins: tuple[PinClaim, ...] = ()
-    absent: tuple[str, ...] = ()
-    couplings: tuple[FixCoupling, ...] = ()
-    excluded_ppm: tuple[Range, ...] = ()
-    impurities: tuple[MarkImpurity, ...] = ()
-
-    @property
-    def is_empty(self) -> bool:
-        """Nothing is asked for."""
-        return self == Constraints()
-
-
 class _Standing:
-    """The wishes while the edits are replayed."""
+    """The wishes that stand while the edits are replayed."""
 
     def __init__(self) -> None:
         self.claims: dict[str, PinClaim | None] = {}
@@ -96,8 +76,8 @@ class _Standing:
         self.impurities.append(edit)
 
 
-def constraints(project: Project) -> Constraints:
-    """Standing constraints of a project, its edits replayed in order.
+def standing_constraints(project: Project) -> Constraints:
+    """Constraints that stand after replaying the hand edits in order.
 
     Parameters
     ----------
@@ -106,18 +86,54 @@ def constraints(project: Project) -> Constraints:
     Returns
     -------
     Constraints
-        Claims are named as shown.
+        Claims by the labels the program gives them, whatever is shown.
     """
     standing = _Standing()
     for edit in project.edits:
         _replay(standing, edit)
+    automatic = partial(automatic_label, project)
     return Constraints(
-        pins=tuple(pin for pin in standing.claims.values() if pin is not None),
-        absent=tuple(name for name, pin in standing.claims.items() if pin is None),
-        couplings=tuple(standing.couplings.values()),
+        pins=tuple(
+            Pin(claim=automatic(name), low_ppm=pin.low_ppm, high_ppm=pin.high_ppm)
+            for name, pin in standing.claims.items()
+            if pin is not None
+        ),
+        absent=tuple(
+            automatic(name) for name, pin in standing.claims.items() if pin is None
+        ),
+        fixed_couplings=tuple(
+            FixedCoupling(
+                claim=automatic(one.claim),
+                partner=automatic(one.partner),
+                j_hz=one.j_hz,
+            )
+            for one in standing.couplings.values()
+        ),
         excluded_ppm=tuple(standing.excluded),
-        impurities=tuple(standing.impurities),
+        impurities=tuple(_declared(one) for one in standing.impurities),
     )
+
+
+def reconcile_options(project: Project) -> ReconcileOptions:
+    """Options of a reconciliation as the project asks for it."""
+    options = project.options
+    return ReconcileOptions(
+        ph=options.ph,
+        temperature_k=options.temperature_k,
+        species=options.species,
+        companions=options.companions,
+        contenders=options.contenders,
+        n_contenders=options.n_contenders,
+        quick=options.is_quick,
+        constraints=standing_constraints(project),
+    )
+
+
+def _declared(edit: MarkImpurity) -> DeclaredImpurity:
+    region = {"low_ppm": edit.low_ppm, "high_ppm": edit.high_ppm}
+    if not edit.name:
+        return DeclaredImpurity(**region)
+    return DeclaredImpurity(**region, why=f"{edit.name}, declared by hand")
 
 
 def _replay(standing: _Standing, edit: Edit) -> None:

@@ -35,6 +35,9 @@ class ProjectOptions:
         Enumerated isomers to test; None for the program's own choice.
     is_quick : bool
         Leave out what takes long (contenders, advice).
+    species, companions, contenders : tuple of Structure
+        What else is claimed, what else may be in the tube, and what to test
+        beside the claimed structure.
     """
 
     solvent: str | None = None
@@ -43,6 +46,9 @@ class ProjectOptions:
     prefer_processed: bool = False
     n_contenders: int | None = None
     is_quick: bool = False
+    species: tuple[Structure, ...] = ()
+    companions: tuple[Structure, ...] = ()
+    contenders: tuple[Structure, ...] = ()
 
 
 @dataclass(frozen=True, slots=True, kw_only=True)
@@ -253,10 +259,19 @@ def _difference(before: ProjectOptions, after: ProjectOptions) -> str:
         "prefer_processed": "maker's processed spectrum",
         "n_contenders": "number of contenders",
         "is_quick": "quick",
+        "species": "further species",
+        "companions": "companions",
+        "contenders": "contenders",
     }
     parts = [
-        f"{word} {getattr(after, name)}"
+        f"{word} {_in_words(getattr(after, name))}"
         for name, word in words.items()
         if getattr(before, name) != getattr(after, name)
     ]
     return f"Options set: {', '.join(parts)}."
+
+
+def _in_words(value: object) -> str:
+    if isinstance(value, tuple):
+        return " ".join(one.smiles for one in value) or "none"
+    return "left to the program" if value is None else str(value)

@@ -55,18 +55,25 @@ class Constraints:
         Stretches that take no part; a claim in one of them is hidden.
     impurities : tuple of DeclaredImpurity
         Stretches that take no part and are booked as strays.
+    absent : tuple of str
+        Claims that the user took off their signal: they stay open.
     """
 
     pins: tuple[Pin, ...] = ()
     fixed_couplings: tuple[FixedCoupling, ...] = ()
     excluded_ppm: tuple[tuple[float, float], ...] = ()
     impurities: tuple[DeclaredImpurity, ...] = ()
+    absent: tuple[str, ...] = ()
 
     @property
     def is_empty(self) -> bool:
         """Whether nothing was edited by hand."""
         return not (
-            self.pins or self.fixed_couplings or self.excluded_ppm or self.impurities
+            self.pins
+            or self.absent
+            or self.fixed_couplings
+            or self.excluded_ppm
+            or self.impurities
         )
 
     def sentences(self) -> tuple[str, ...]:
@@ -75,6 +82,7 @@ class Constraints:
             f"{pin.claim} put between {pin.low_ppm:.3f} and {pin.high_ppm:.3f} ppm"
             for pin in self.pins
         ]
+        taken_off = [f"{claim} taken off its signal" for claim in self.absent]
         fixed = [
             f"J({one.claim}, {one.partner}) held at {one.j_hz:.2f} Hz"
             for one in self.fixed_couplings
@@ -86,7 +94,7 @@ class Constraints:
             f"{one.low_ppm:.3f} to {one.high_ppm:.3f} ppm: {one.why}"
             for one in self.impurities
         ]
-        return (*pinned, *fixed, *left_out, *declared)
+        return (*pinned, *taken_off, *fixed, *left_out, *declared)
 
 
 @dataclass(frozen=True, slots=True, kw_only=True)
