@@ -234,11 +234,15 @@ def _priors(
                     coarse.grid_ppm > pin.high_ppm
                 )
                 cost = np.where(outside, FORBIDDEN_COST, 0.0)
+        if constraints and claim.label in constraints.absent:
+            cost = np.full_like(cost, FORBIDDEN_COST)
         rows.append(cost)
     return np.array(rows).reshape(len(listed), coarse.n_points)
 
 
 def _skip_cost(claim: Claim, constraints: Constraints | None) -> float:
+    if constraints and claim.label in constraints.absent:
+        return 0.0
     if constraints and any(pin.claim == claim.label for pin in constraints.pins):
         return FORBIDDEN_COST
     return SKIP_OPTIONAL_COST if claim.visibility == "optional" else SKIP_SEEN_COST
