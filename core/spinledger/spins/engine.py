@@ -1,0 +1,319 @@
+"""Exact spectra of coupled spins one half: frequencies in Hz, intensities in protons."""
+
+from __future__ import annotations
+
+from dataclasses import dataclass
+
+import numpy as np
+import numpy.typing as npt
+
+from spinledger.spins import derivatives as closed_form
+from spinledger.spins.basis import (
+    IndexStructure,
+    Topology,
+    TransitionStack,
+    index_structure,
+)
+from spinledger.spins.solution import EigenSystem, Kept, Moments
+from spinledger.values.spin_system import SpinSystem, Transitions
+
+Floats = npt.NDArray[np.float64]
+Integers = npt.NDArray[np.int64]
+
+# Half the rows of a lowering operator are empty; below this size it is faster
+# to multiply them all in one call than to pick them (measured).
+_SPLIT_SIZE = 48
+
+
+@dataclass(frozen=True, slots=True, eq=False, kw_only=True)
+class EngineLines:
+    """Lines of one engine call.
+
+    Attributes
+    ----------
+    frequencies_hz : numpy.ndarray, shape (n_lines,), Hz
+    intensities : numpy.ndarray, shape (n_rows, n_lines), protons
+    d_frequencies : numpy.ndarray or None, shape (n_parameters, n_lines)
+        Derivative by every particle's frequency, then by every pair's J.
+    d_intensities : numpy.ndarray or None, shape (n_parameters, n_rows, n_lines)
+        Protons per Hz.
+    """
+
+    frequencies_hz: Floats
+    intensities: Floats
+    d_frequencies: Floats | None = None
+    d_intensities: Floats | None = None
+
+
+class SpinEngine:
+    """Spectra of one topology at many parameter values.
+
+    Parameters
+    ----------
+    topology : Topology
+        Particles, who exchanges spin with whom, couplings, observed rows.
+
+    Notes
+    -----
+    H = sum_i nu_i I_iz + sum_ij J_ij I_i . I_j (I_iz I_jz between species), in
+    Hz, is real and conserves the total m of every species, so each block of the
+    product basis is diagonalised alone, and lines join adjacent blocks only.
+    Magnetically equivalent spins enter as one composite particle with total
+    spins n/2, n/2 - 1, ... and their multiplicities. Intensities are
+    T_row * T_total, so each row has its own lines and its sum is its number of
+    spins.
+
+    References
+    ----------
+    .. [1] P. L. Corio, Structure of High-Resolution NMR Spectra (1966).
+    """
+
+    def __init__(self, topology: Topology) -> None:
+        self.topology = topology
+        self._index: IndexStructure = index_structure(topology)
+
+    @property
+    def n_parameters(self) -> int:
+        """Frequencies of all particles, then J of all pairs."""
+        return len(self.topology.n_spins) + len(self.topology.pairs)
+
+    def diagonalise(self, frequencies_hz: Floats, couplings_hz: Floats) -> EigenSystem:
+        """Energies and states of all blocks.
+
+        Parameters
+        ----------
+        frequencies_hz : numpy.ndarray, shape (n_particles,), Hz
+        couplings_hz : numpy.ndarray, shape (n_pairs,), Hz
+        """
+        index = self._index
+        flat = np.zeros(index.n_elements)
+        flat[index.diagonal_positions] = index.diagonal @ np.concatenate(
+            [frequencies_hz, couplings_hz]
+        )
+        flat[index.off_positions] = (
+            index.off_coefficients * couplings_hz[index.off_pairs]
+        )
+        energies, vectors = [], []
+        for stack in index.blocks:
+            n_elements = stack.n_blocks * stack.size**2
+            matrices = flat[stack.start : stack.start + n_elements].reshape(
+                stack.n_blocks, stack.size, stack.size
+            )
+            values, states = _eigh(matrices)
+            energies.append(values)
+            vectors.append(states)
+        return EigenSystem(tuple(energies), tuple(vectors))
+
+    def lines(
+        self,
+        frequencies_hz: Floats,
+        couplings_hz: Floats,
+        *,
+        smallest: float = 0.0,
+        derivatives: bool = False,
+        intensity_derivatives: bool = False,
+    ) -> EngineLines:
+        """All lines with an intensity above ``smallest`` in some row.
+
+        Parameters
+        ----------
+        frequencies_hz : numpy.ndarray, shape (n_particles,), Hz
+        couplings_hz : numpy.ndarray, shape (n_pairs,), Hz
+        smallest : float, protons
+            Lines at or under it in every row are left out.
+        derivatives, intensity_derivatives : bool
+            Also give the derivatives of frequencies, and of intensities.
+        """
+        eigen = self.diagonalise(frequencies_hz, couplings_hz)
+        moments = [self._moments(stack, eigen) for stack in self._index.transitions]
+        kept = [_select(moment, smallest) for moment in moments]
+        frequencies = [
+            _frequencies(stack, eigen, kept_here)
+            for stack, kept_here in zip(self._index.transitions, kept, strict=True)
+        ]
+        d_frequencies = d_intensities = None
+        if derivatives or intensity_derivatives:
+            d_frequencies = closed_form.of_frequencies(self._index, eigen, kept)
+            if intensity_derivatives:
+                d_intensities = closed_form.of_intensities(
+                    self._index, eigen, moments, kept
+                )
+        return EngineLines(
+            frequencies_hz=np.concatenate(frequencies),
+            intensities=np.concatenate([k.intensities for k in kept], axis=1),
+            d_frequencies=d_frequencies,
+            d_intensities=d_intensities,
+        )
+
+    def _moments(self, stack: TransitionStack, eigen: EigenSystem) -> Moments:
+        """Matrix elements of every row's lowering operator between eigenstates."""
+        upper = eigen.vectors[stack.upper][stack.upper_blocks]
+        lower = eigen.vectors[stack.lower]
+        flat = lower.reshape(-1, lower.shape[-1])
+        if upper.shape[-1] < _SPLIT_SIZE:
+            rows = _all_rows_at_once(stack, upper, flat, self._index.row_starts)
+        else:
+            rows = _row_by_row(stack, upper, flat, self._index.row_starts)
+        return Moments(rows, rows.sum(axis=1), stack.weights)
+
+
+def _eigh(matrices: Floats) -> tuple[Floats, Floats]:
+    if matrices.shape[-1] == 1:
+        return matrices[:, :, 0].copy(), np.ones_like(matrices)
+    values, states = np.linalg.eigh(matrices, UPLO="L")
+    return values, states
+
+
+def _all_rows_at_once(
+    stack: TransitionStack, upper: Floats, flat: Floats, row_starts: Integers
+) -> Floats:
+    gathered = stack.coefficients[..., None] * flat[stack.targets]
+    if row_starts.size != gathered.shape[1]:
+        gathered = np.add.reduceat(gathered, row_starts, axis=1)
+    moments: Floats = np.matmul(upper.transpose(0, 2, 1)[:, None], gathered)
+    return moments
+
+
+def _row_by_row(
+    stack: TransitionStack, upper: Floats, flat: Floats, row_starts: Integers
+) -> Floats:
+    n_links, n_detected, size = stack.targets.shape
+    ends = np.append(row_starts[1:], n_detected)
+    moments = np.zeros((n_links, row_starts.size, size, flat.shape[-1]))
+    for link in range(n_links):
+        for row, (begin, end) in enumerate(zip(row_starts, ends, strict=True)):
+            for particle in range(begin, end):
+                coefficients = stack.coefficients[link, particle]
+                used = np.flatnonzero(coefficients)
+                if used.size:
+                    reached = flat[stack.targets[link, particle, used]]
+                    reached *= coefficients[used, None]
+                    moments[link, row] += upper[link, used].T @ reached
+    return moments
+
+
+def _select(moments: Moments, smallest: float) -> Kept:
+    intensities = moments.rows * moments.total[:, None]
+    intensities *= moments.weights[:, None, None, None]
+    strongest = np.abs(intensities).max(axis=1)
+    link, upper, lower = np.nonzero(strongest > smallest)
+    return Kept(
+        link,
+        upper,
+        lower,
+        np.ascontiguousarray(intensities[link, :, upper, lower].T),
+    )
+
+
+def _frequencies(stack: TransitionStack, eigen: EigenSystem, kept: Kept) -> Floats:
+    from_energy = eigen.energies[stack.upper][stack.upper_blocks]
+    to_energy = eigen.energies[stack.lower][stack.lower_blocks]
+    frequencies: Floats = (
+        from_energy[kept.link, kept.upper] - to_energy[kept.link, kept.lower]
+    )
+    return frequencies
+
+
+def simulate(
+    system: SpinSystem, *, observed_nucleus: str = "1H", smallest: float = 1e-12
+) -> Transitions:
+    """Exact lines of a spin system, each particle's share apart.
+
+    Parameters
+    ----------
+    system : SpinSystem
+    observed_nucleus : str
+        Nucleus that is detected; others couple weakly to it.
+    smallest : float, protons
+        Lines at or under it are left out; 0 keeps all that are not exactly 0.
+
+    Returns
+    -------
+    Transitions
+        One row for every observed particle; row sums are its number of spins.
+
+    Raises
+    ------
+    ValueError
+        If no particle has the observed nucleus.
+
+    Notes
+    -----
+    Parts of the system without couplings between them are solved apart, so the
+    cost is that of the largest connected part.
+
+    Examples
+    --------
+    >>> import numpy as np
+    >>> ab = SpinSystem(
+    ...     n_spins=np.array([1, 1]),
+    ...     frequencies_hz=np.array([10.0, 0.0]),
+    ...     couplings_hz=np.array([[0.0, 10.0], [10.0, 0.0]]),
+    ...     nuclei=("1H", "1H"),
+    ... )
+    >>> np.sort(simulate(ab).frequencies_hz).round(3).tolist()
+    [-7.071, 2.929, 7.071, 17.071]
+    """
+    observed = [
+        k for k, nucleus in enumerate(system.nuclei) if nucleus == observed_nucleus
+    ]
+    if not observed:
+        raise ValueError(f"system: no particle of {observed_nucleus!r} in it")
+    row_of = {particle: row for row, particle in enumerate(observed)}
+    frequencies, intensities = [], []
+    for members in connected_parts(system.couplings_hz != 0.0):
+        seen = [particle for particle in members if particle in row_of]
+        if not seen:
+            continue
+        lines = _solve_part(system, members, seen, smallest=smallest)
+        table = np.zeros((len(observed), lines.frequencies_hz.size))
+        table[[row_of[particle] for particle in seen]] = lines.intensities
+        frequencies.append(lines.frequencies_hz)
+        intensities.append(table)
+    return Transitions(
+        frequencies_hz=np.concatenate(frequencies),
+        intensities=np.concatenate(intensities, axis=1),
+        observed=tuple(observed),
+    )
+
+
+def _solve_part(
+    system: SpinSystem, members: list[int], seen: list[int], *, smallest: float
+) -> EngineLines:
+    nuclei = sorted({system.nuclei[k] for k in members})
+    pairs = [
+        (a, b)
+        for a in range(len(members))
+        for b in range(a + 1, len(members))
+        if system.couplings_hz[members[a], members[b]] != 0.0
+    ]
+    topology = Topology(
+        n_spins=tuple(int(system.n_spins[k]) for k in members),
+        species=tuple(nuclei.index(system.nuclei[k]) for k in members),
+        pairs=tuple(pairs),
+        detected=tuple(seen.index(k) if k in seen else -1 for k in members),
+    )
+    couplings = np.array(
+        [system.couplings_hz[members[a], members[b]] for a, b in pairs]
+    )
+    return SpinEngine(topology).lines(
+        system.frequencies_hz[members], couplings, smallest=smallest
+    )
+
+
+def connected_parts(is_coupled: npt.NDArray[np.bool_]) -> list[list[int]]:
+    """Groups of indices that are connected, each sorted, in order of first member."""
+    n_particles = is_coupled.shape[0]
+    left = set(range(n_particles))
+    parts = []
+    while left:
+        start = min(left)
+        reached, frontier = {start}, [start]
+        while frontier:
+            for other in np.flatnonzero(is_coupled[frontier.pop()]).tolist():
+                if other not in reached:
+                    reached.add(other)
+                    frontier.append(other)
+        left -= reached
+        parts.append(sorted(reached))
+    return parts
