@@ -130,10 +130,8 @@ def reconcile_options(project: Project) -> ReconcileOptions:
 
 
 def _declared(edit: MarkImpurity) -> DeclaredImpurity:
-    region = {"low_ppm": edit.low_ppm, "high_ppm": edit.high_ppm}
-    if not edit.name:
-        return DeclaredImpurity(**region)
-    return DeclaredImpurity(**region, why=f"{edit.name}, declared by hand")
+    why = f"{edit.name}, declared by hand" if edit.name else "declared by hand"
+    return DeclaredImpurity(low_ppm=edit.low_ppm, high_ppm=edit.high_ppm, why=why)
 
 
 def _replay(standing: _Standing, edit: Edit) -> None:
