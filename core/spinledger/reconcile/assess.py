@@ -1,0 +1,426 @@
+"""Residuals of a fit, claim by claim, and the features that the judge weighs.
+
+Shifts in ppm, couplings and widths in Hz; z are residuals in sd.
+"""
+
+from __future__ import annotations
+
+from dataclasses import dataclass
+
+import numpy as np
+
+from spinledger.reconcile.coarse import BoolArray, FloatArray, usable_points
+from spinledger.reconcile.match import masked_by_hand
+from spinledger.reconcile.options import Constraints
+from spinledger.reconcile.refine import Refinement
+from spinledger.reconcile.windows import (
+    Stretch,
+    boxcar,
+    edge_baseline,
+    inside_ranges,
+    points_of_hz,
+    stretches,
+)
+from spinledger.values.claim import Claim, ClaimSet
+from spinledger.values.evidence import Evidence
+from spinledger.values.ledger import ClaimLines
+
+SMOOTHING_HZ = 3.0
+WINDOW_PAD_HZ = 25.0
+CLAIM_PAD_HZ = 15.0
+SQUARE_CAP = 12.0
+RESIDUAL_FLOOR = 0.02
+SHIFT_EXTRA_SD_PPM = 0.02
+COUPLING_EXTRA_SD_HZ = 0.3
+AMPLITUDE_SD = 0.25
+WIDTH_SD = 0.4
+# Strays with a known cause say nothing for or against a structure.
+EXPLAINED_KINDS = frozenset({"satellite", "sideband", "impurity", "given"})
+
+
+@dataclass(frozen=True, slots=True, kw_only=True)
+class ClaimResidual:
+    """How one claim fits.
+
+    Attributes
+    ----------
+    claim : int
+    is_counted : bool
+        Takes part in the verdict: placed, not hidden, not exchangeable.
+    shift_z : float
+    amplitude_log, width_log : float
+        Natural logarithm of amplitude and width over the common ones.
+    residual_share : float
+        Smoothed misfit around the claim over its own area.
+    """
+
+    claim: int
+    is_counted: bool
+    shift_z: float
+    amplitude_log: float
+    width_log: float
+    residual_share: float
+
+
+@dataclass(frozen=True, slots=True, kw_only=True)
+class CouplingResidual:
+    """How one determined coupling fits its prediction."""
+
+    coupling: int
+    z: float
+    is_rigid: bool
+
+
+@dataclass(frozen=True, slots=True, kw_only=True)
+class Assessment:
+    """All residuals of one fit.
+
+    Attributes
+    ----------
+    residual_share : float
+        Smoothed misfit over smoothed area, all windows.
+    unexplained_share : float
+        Area beyond every claim and known stray over all area.
+    open_share : float
+        Protons of open claims over protons that must be seen.
+    offset_ppm : float
+        Common error of the reference.
+    claims : tuple of ClaimResidual
+    couplings : tuple of CouplingResidual
+    selection_score : float
+        Negative log likelihood by which fits of one spectrum are compared.
+    """
+
+    residual_share: float
+    unexplained_share: float
+    open_share: float
+    offset_ppm: float
+    claims: tuple[ClaimResidual, ...]
+    couplings: tuple[CouplingResidual, ...]
+    selection_score: float
+
+    def faults(self) -> dict[str, float]:
+        """Features of the verdict by name; 0 is faultless."""
+        counted = [one for one in self.claims if one.is_counted]
+        shifts = _costs([one.shift_z for one in counted])
+        rigid = _costs([one.z for one in self.couplings if one.is_rigid])
+        soft = _costs([one.z for one in self.couplings if not one.is_rigid])
+        amplitudes = _costs([one.amplitude_log / AMPLITUDE_SD for one in counted])
+        widths = _costs([one.width_log / WIDTH_SD for one in counted])
+        misfits = [min(one.residual_share, 2.0) for one in counted]
+        share = max(self.residual_share, RESIDUAL_FLOOR)
+        return {
+            "misfit": float(np.log(share / RESIDUAL_FLOOR)),
+            "worst_misfit": max(misfits, default=0.0),
+            "shift": _mean(shifts),
+            "worst_shift": max(shifts, default=0.0),
+            "rigid_coupling": _mean(rigid),
+            "worst_rigid_coupling": max(rigid, default=0.0),
+            "soft_coupling": _mean(soft),
+            "amplitude": _mean(amplitudes),
+            "width": _mean(widths),
+            "open": self.open_share,
+            "unexplained": self.unexplained_share,
+        }
+
+
+def _costs(residuals: list[float]) -> list[float]:
+    """Half squares, capped so that one outlier cannot decide alone."""
+    return [min(0.5 * z * z, SQUARE_CAP) for z in residuals]
+
+
+def _mean(values: list[float]) -> float:
+    return float(np.mean(values)) if values else 0.0
+
+
+def assess(
+    evidence: Evidence,
+    claims: ClaimSet,
+    refinement: Refinement,
+    *,
+    absent: frozenset[int],
+    hidden: frozenset[int],
+    constraints: Constraints | None = None,
+) -> Assessment:
+    """Residuals of a refinement against the evidence.
+
+    Parameters
+    ----------
+    evidence : Evidence
+    claims : ClaimSet
+    refinement : Refinement
+    absent, hidden : frozenset of int
+        Claims that are not in the spectrum, and those under a mask.
+    constraints : Constraints, optional
+        Stretches left out by hand take no part.
+    """
+    misfit = spectrum_misfit(evidence, refinement, constraints)
+    offset_ppm = reference_offset(evidence, claims, refinement, absent)
+    rows = _claim_rows(
+        claims, refinement, misfit, offset_ppm, absent=absent, hidden=hidden
+    )
+    couplings = _coupling_residuals(claims, refinement, absent | hidden)
+    open_share = _open_share(claims, absent)
+    return Assessment(
+        residual_share=misfit.share,
+        unexplained_share=misfit.unexplained_share,
+        open_share=open_share,
+        offset_ppm=offset_ppm,
+        claims=rows,
+        couplings=couplings,
+        selection_score=_selection_score(
+            misfit, rows, couplings, n_skipped=_n_skipped(claims, absent)
+        ),
+    )
+
+
+@dataclass(frozen=True, slots=True, eq=False, kw_only=True)
+class SpectrumMisfit:
+    """Smoothed misfit along the axis.
+
+    Attributes
+    ----------
+    residual : numpy.ndarray, shape (n_points,)
+        Smoothed measured minus modelled, local baseline taken off, 0 outside
+        the windows and within the noise.
+    measured : numpy.ndarray, shape (n_points,)
+        Smoothed measured intensity without the local baseline.
+    windows : tuple of Stretch
+    share, unexplained_share : float
+    claim_shares : dict
+        Misfit around each placed claim over the claim's own area, by label.
+    """
+
+    residual: FloatArray
+    measured: FloatArray
+    windows: tuple[Stretch, ...]
+    share: float
+    unexplained_share: float
+    claim_shares: dict[str, float]
+
+
+def spectrum_misfit(
+    evidence: Evidence, refinement: Refinement, constraints: Constraints | None = None
+) -> SpectrumMisfit:
+    """Compare measured and modelled intensity after a boxcar of +-3 Hz.
+
+    The boxcar forgives line shape and keeps misplacement. Misfit below twice
+    the noise of a smoothed point is taken for noise.
+    """
+    spectrum = evidence.spectrum
+    half = points_of_hz(spectrum, SMOOTHING_HZ)
+    usable = usable_points(evidence, masked_by_hand(constraints))
+    usable &= ~inside_ranges(
+        spectrum,
+        [
+            (stray.low_ppm, stray.high_ppm)
+            for stray in evidence.strays
+            if stray.kind in EXPLAINED_KINDS
+        ],
+    )
+    noise = evidence.noise_sd / np.sqrt(2 * half + 1)
+    measured = boxcar(spectrum.intensities, half)
+    model = boxcar(refinement.intensities, half)
+    windows = _windows(evidence, measured, model, usable)
+    edge = points_of_hz(spectrum, WINDOW_PAD_HZ / 3)
+    baseline = edge_baseline(measured - model, windows, edge)
+    inside = _inside(windows, spectrum.n_points) & usable
+    residual = np.where(inside, measured - model - baseline, 0.0)
+    residual = np.sign(residual) * np.maximum(np.abs(residual) - 2.0 * noise, 0.0)
+    level = np.where(inside, measured - baseline, 0.0)
+    total = float(np.maximum(np.abs(level) - noise, 0.0).sum())
+    total = max(total, float(np.where(inside, model, 0.0).sum()), 1e-300)
+    near = inside_ranges(
+        spectrum,
+        [
+            (float(one.shifts_ppm.min()) - pad, float(one.shifts_ppm.max()) + pad)
+            for one in refinement.claim_lines
+            if one.shifts_ppm.size
+            for pad in [WINDOW_PAD_HZ / spectrum.spectrometer_frequency_mhz]
+        ],
+    )
+    return SpectrumMisfit(
+        residual=residual,
+        measured=level,
+        windows=windows,
+        share=float(np.abs(residual).sum()) / total,
+        unexplained_share=float(np.maximum(residual, 0.0)[~near].sum()) / total,
+        claim_shares=_claim_shares(evidence, refinement.claim_lines, residual, model),
+    )
+
+
+def _windows(
+    evidence: Evidence,
+    measured: FloatArray,
+    model: FloatArray,
+    usable: BoolArray,
+) -> tuple[Stretch, ...]:
+    """Where measured or modelled intensity stands out, with room at both ends."""
+    spectrum = evidence.spectrum
+    half = points_of_hz(spectrum, SMOOTHING_HZ)
+    noise = evidence.noise_sd / np.sqrt(2 * half + 1)
+    floor = max(5.0 * noise, 0.004 * float(np.where(usable, model, 0.0).max(initial=0)))
+    signals = inside_ranges(
+        spectrum, [(one.low_ppm, one.high_ppm) for one in evidence.signals]
+    )
+    stands_out = ((measured > floor) & signals) | (model > floor)
+    return stretches(stands_out & usable, pad=points_of_hz(spectrum, WINDOW_PAD_HZ))
+
+
+def _inside(windows: tuple[Stretch, ...], n_points: int) -> BoolArray:
+    inside = np.zeros(n_points, dtype=np.bool_)
+    for window in windows:
+        inside[window.start : window.stop] = True
+    return inside
+
+
+def _claim_shares(
+    evidence: Evidence,
+    claim_lines: tuple[ClaimLines, ...],
+    residual: FloatArray,
+    model: FloatArray,
+) -> dict[str, float]:
+    """Misfit within reach of each claim, shared out by the claims' own parts."""
+    spectrum = evidence.spectrum
+    pad = CLAIM_PAD_HZ / spectrum.spectrometer_frequency_mhz
+    areas = {one.claim: float(one.protons.sum()) for one in claim_lines}
+    reach = {
+        one.claim: spectrum.window(
+            float(one.shifts_ppm.min()) - pad, float(one.shifts_ppm.max()) + pad
+        )
+        for one in claim_lines
+        if one.shifts_ppm.size
+    }
+    crowd = np.zeros(spectrum.n_points)
+    for name, where in reach.items():
+        crowd[where] += areas[name]
+    shares = {}
+    for name, where in reach.items():
+        part = areas[name] / np.maximum(crowd[where], 1e-300)
+        own = float((model[where] * part).sum())
+        misfit = float((np.abs(residual[where]) * part).sum())
+        shares[name] = misfit / max(own, 1e-300)
+    return shares
+
+
+def reference_offset(
+    evidence: Evidence,
+    claims: ClaimSet,
+    refinement: Refinement,
+    absent: frozenset[int],
+) -> float:
+    """Common shift error by weighted mean, held by the reference's own sd, ppm."""
+    reference_sd = evidence.reference.sd_ppm
+    if reference_sd <= 0.0:
+        return 0.0
+    pull, weight = 0.0, 1.0 / reference_sd**2
+    for index, claim in enumerate(claims.claims):
+        if index in absent or claim.is_exchangeable:
+            continue
+        sd = max(claim.shift_sd_ppm, SHIFT_EXTRA_SD_PPM)
+        gap = float(refinement.shifts_ppm[index]) - claim.shift_ppm
+        # An outlier must not drag the zero point along.
+        gap = float(np.clip(gap, -3 * sd, 3 * sd))
+        pull += gap / sd**2
+        weight += 1.0 / sd**2
+    return pull / weight
+
+
+def _claim_rows(
+    claims: ClaimSet,
+    refinement: Refinement,
+    misfit: SpectrumMisfit,
+    offset_ppm: float,
+    *,
+    absent: frozenset[int],
+    hidden: frozenset[int],
+) -> tuple[ClaimResidual, ...]:
+    common_width = _common_width(claims, refinement, absent | hidden)
+    rows = []
+    for index, claim in enumerate(claims.claims):
+        if index in absent:
+            continue
+        gap = float(refinement.shifts_ppm[index]) - claim.shift_ppm - offset_ppm
+        sd = float(np.hypot(claim.shift_sd_ppm, SHIFT_EXTRA_SD_PPM))
+        amplitude = float(refinement.protons[index]) / expected_protons(claims, claim)
+        width = max(float(refinement.widths_hz[index]), 1e-3)
+        is_counted = claim.visibility == "seen" and not claim.is_exchangeable
+        rows.append(
+            ClaimResidual(
+                claim=index,
+                is_counted=is_counted and index not in hidden,
+                shift_z=gap / sd,
+                amplitude_log=float(np.log(max(amplitude, 0.05))),
+                width_log=float(np.log(width / common_width)),
+                residual_share=misfit.claim_shares.get(claim.label, 0.0),
+            )
+        )
+    return tuple(rows)
+
+
+def expected_protons(claims: ClaimSet, claim: Claim) -> float:
+    """Protons that a claim should show, its species' share included."""
+    share = 1.0
+    if claim.species < len(claims.species_shares):
+        share = max(claims.species_shares[claim.species][0], 0.01)
+    return claim.n_protons * share
+
+
+def _common_width(
+    claims: ClaimSet, refinement: Refinement, left_out: frozenset[int]
+) -> float:
+    widths = [
+        float(refinement.widths_hz[index])
+        for index, claim in enumerate(claims.claims)
+        if index not in left_out and not claim.is_exchangeable
+    ]
+    return max(float(np.median(widths)), 1e-3) if widths else 1.0
+
+
+def _coupling_residuals(
+    claims: ClaimSet, refinement: Refinement, left_out: frozenset[int]
+) -> tuple[CouplingResidual, ...]:
+    rows = []
+    for index, coupling in enumerate(claims.couplings):
+        owners = {claims.particles[p].claim for pair in coupling.pairs for p in pair}
+        unsure = any(
+            owner in left_out or claims.claims[owner].is_exchangeable
+            for owner in owners
+            if owner is not None
+        )
+        if unsure or not refinement.determined[index]:
+            continue
+        gap = abs(float(refinement.couplings_hz[index])) - abs(coupling.j_hz)
+        sd = float(np.hypot(coupling.j_sd_hz, COUPLING_EXTRA_SD_HZ))
+        rows.append(
+            CouplingResidual(coupling=index, z=gap / sd, is_rigid=coupling.is_rigid)
+        )
+    return tuple(rows)
+
+
+def _open_share(claims: ClaimSet, absent: frozenset[int]) -> float:
+    must = [i for i, claim in enumerate(claims.claims) if claim.visibility == "seen"]
+    protons = sum(claims.claims[i].n_protons for i in must)
+    missing = sum(claims.claims[i].n_protons for i in must if i in absent)
+    return missing / protons if protons else 0.0
+
+
+def _n_skipped(claims: ClaimSet, absent: frozenset[int]) -> int:
+    return sum(claims.claims[i].visibility == "optional" for i in absent)
+
+
+def _selection_score(
+    misfit: SpectrumMisfit,
+    rows: tuple[ClaimResidual, ...],
+    couplings: tuple[CouplingResidual, ...],
+    *,
+    n_skipped: int,
+) -> float:
+    """Smaller is better; weights as found on acquired spectra."""
+    counted = [one for one in rows if one.is_counted]
+    score = 15.0 * float(np.log(max(misfit.share, RESIDUAL_FLOOR)))
+    score += sum(_costs([one.shift_z for one in rows]))
+    score += sum(_costs([one.z for one in couplings]))
+    score += 0.3 * sum(_costs([one.amplitude_log / 0.2 for one in counted]))
+    score += 0.5 * sum(_costs([one.width_log / WIDTH_SD for one in counted]))
+    return score + 1.5 * n_skipped
