@@ -1,0 +1,163 @@
+"""The whole chain from acquired data to evidence; shifts in ppm, widths in Hz."""
+
+from __future__ import annotations
+
+import numpy as np
+
+from spinledger.detection.fitting import FitSettings
+from spinledger.detection.signals import IntegralDoubt, find_signals
+from spinledger.detection.strays import StrayFacts, recognised_strays
+from spinledger.errors import EvidenceError
+from spinledger.lines.kernel import learn_kernel
+from spinledger.lines.noise import noise_sd
+from spinledger.lines.picking import pick_lines
+from spinledger.processing.automatic import ProcessedSpectrum, process, reprocess
+from spinledger.processing.noise_correlation import noise_correlation
+from spinledger.processing.solvents import is_aqueous, water_lines
+from spinledger.values.acquisition import Acquired
+from spinledger.values.evidence import Evidence, LineKernel
+from spinledger.values.recipe import Recipe, Reference
+from spinledger.values.spectrum import Spectrum
+
+_PLAIN_WATER_SD = 0.03
+_PLAIN_ORGANIC_SD = 0.05
+_SUPPRESSED_SD = 0.20
+_SUPPRESSED_NEAR_SD = 0.40
+_SUPPRESSED_REACH_PPM = 1.2
+_KERNEL_WINDOW_HZ = 15.0
+
+
+def gather_evidence(
+    acquired: Acquired,
+    *,
+    solvent: str | None = None,
+    temperature_k: float | None = None,
+    recipe: Recipe | None = None,
+) -> Evidence:
+    """Everything a spectrum says before a structure is asked.
+
+    Parameters
+    ----------
+    acquired : Fid or MakerSpectrum
+    solvent : str, optional
+        As the user names it; wins over what the spectrum shows and the header.
+    temperature_k : float, K, optional
+        Of the sample; else the header's.
+    recipe : Recipe, optional
+        Run this one instead of processing automatically.
+
+    Raises
+    ------
+    EvidenceError
+        If the spectrum holds no signal at all.
+    ValueError
+        If the solvent is not in the table of solvents.
+    """
+    if recipe is None:
+        processed = process(acquired, solvent=solvent, temperature_k=temperature_k)
+    else:
+        processed = reprocess(
+            acquired, recipe, solvent=solvent, temperature_k=temperature_k
+        )
+    return evidence_from(processed, temperature_k=temperature_k)
+
+
+def evidence_from(
+    processed: ProcessedSpectrum, *, temperature_k: float | None = None
+) -> Evidence:
+    """Detection on a processed spectrum.
+
+    Raises
+    ------
+    EvidenceError
+        If the spectrum holds no signal at all.
+    """
+    metadata = processed.run.acquired.metadata
+    temperature = temperature_k or metadata.temperature_k
+    spectrum = processed.spectrum
+    solvent = processed.referencing.solvent
+    reference = processed.referencing.reference
+    sd = noise_sd(spectrum.intensities)
+    if not np.isfinite(sd) or np.ptp(spectrum.intensities) == 0:
+        raise EvidenceError(metadata.source_name, "the spectrum is empty")
+    picks = pick_lines(spectrum.intensities, step_hz=spectrum.step_hz)
+    settings = FitSettings(noise_sd=sd, correlation=noise_correlation(processed.run))
+    doubt = _integral_doubt(processed, sd, temperature)
+    signals = find_signals(spectrum, picks, settings=settings, doubt=doubt)
+    if not signals:
+        raise EvidenceError(
+            metadata.source_name,
+            "the spectrum shows no signal above the noise, so there is nothing to "
+            "compare",
+        )
+    facts = StrayFacts(
+        solvent=solvent,
+        temperature_k=temperature,
+        reference=reference,
+        spectrometer_frequency_mhz=spectrum.spectrometer_frequency_mhz,
+    )
+    return Evidence(
+        metadata=metadata,
+        recipe=processed.run.recipe,
+        reference=reference,
+        spectrum=spectrum,
+        noise_sd=sd,
+        solvent=solvent,
+        solvent_seen=processed.referencing.solvent_seen,
+        solvent_header=processed.solvent_header,
+        signals=signals,
+        strays=recognised_strays(signals, facts=facts),
+        quality=processed.quality,
+        kernel=_kernel(spectrum, reference, sd),
+        presaturated=processed.presaturated,
+    )
+
+
+def _integral_doubt(
+    processed: ProcessedSpectrum, sd: float, temperature_k: float | None
+) -> IntegralDoubt:
+    solvent = processed.referencing.solvent
+    baseline = sd * max(0.0, processed.quality.baseline_sd**2 - 1.0) ** 0.5
+    if processed.presaturated:
+        water = water_lines(solvent if is_aqueous(solvent) else "D2O", temperature_k)
+        return IntegralDoubt(
+            relative_sd=_SUPPRESSED_SD,
+            near_water_sd=_SUPPRESSED_NEAR_SD,
+            water_ppm=water[0].shift_ppm,
+            water_reach_ppm=_SUPPRESSED_REACH_PPM,
+            baseline_sd=baseline,
+        )
+    plain = _PLAIN_WATER_SD if is_aqueous(solvent) else _PLAIN_ORGANIC_SD
+    return IntegralDoubt(
+        relative_sd=plain,
+        near_water_sd=plain,
+        water_ppm=None,
+        water_reach_ppm=0.0,
+        baseline_sd=baseline,
+    )
+
+
+def _kernel(spectrum: Spectrum, reference: Reference, sd: float) -> LineKernel | None:
+    """Line shape from the reference singlet; a solvent quintet is none."""
+    if reference.line_ppm is None or reference.by not in (
+        "DSS",
+        "TMS",
+        "TSP",
+        "solvent",
+    ):
+        return None
+    if reference.by == "solvent" and "quintet" in reference.why:
+        return None
+    half_ppm = _KERNEL_WINDOW_HZ / spectrum.spectrometer_frequency_mhz
+    window = spectrum.window(
+        reference.line_ppm - half_ppm, reference.line_ppm + half_ppm
+    )
+    apart_hz = (
+        spectrum.shifts_ppm[window] - reference.line_ppm
+    ) * spectrum.spectrometer_frequency_mhz
+    return learn_kernel(
+        apart_hz,
+        spectrum.intensities[window],
+        noise_sd=sd,
+        has_silicon=reference.by != "solvent",
+    )

@@ -1,0 +1,174 @@
+"""Signals of a processed spectrum: ranges, fitted lines, integrals, each with sd.
+
+Shifts in ppm, frequencies and widths in Hz, areas in intensity * Hz.
+"""
+
+from __future__ import annotations
+
+from dataclasses import dataclass
+
+import numpy as np
+import numpy.typing as npt
+
+from spinledger.detection.fitting import FitSettings, fit_range
+from spinledger.detection.ranges import signal_ranges
+from spinledger.lines.deconvolution import FittedLines
+from spinledger.lines.picking import Picks
+from spinledger.lines.shapes import share_within
+from spinledger.values.evidence import Line, Signal
+from spinledger.values.spectrum import Spectrum
+
+_LEAST_AREA_SD = 3.0
+# A fit may move at most this share of an integral into or out of the range.
+_MOST_TAIL_SHARE = 0.2
+
+
+@dataclass(frozen=True, slots=True, kw_only=True)
+class IntegralDoubt:
+    """What an integral is uncertain by, beside noise.
+
+    Attributes
+    ----------
+    relative_sd : float
+        Share of the integral: relaxation, pulse angle, line feet.
+    near_water_sd : float
+        The same where water is suppressed, within ``water_reach_ppm`` of it.
+    water_ppm : float or None, ppm
+    water_reach_ppm : float, ppm
+    baseline_sd : float
+        Doubt of the baseline under a signal, in intensity.
+    """
+
+    relative_sd: float
+    near_water_sd: float
+    water_ppm: float | None
+    water_reach_ppm: float
+    baseline_sd: float
+
+    def at(self, shift_ppm: float) -> float:
+        """Relative sd of an integral at a shift."""
+        if (
+            self.water_ppm is not None
+            and abs(shift_ppm - self.water_ppm) < self.water_reach_ppm
+        ):
+            return self.near_water_sd
+        return self.relative_sd
+
+
+@dataclass(frozen=True, slots=True, eq=False, kw_only=True)
+class _Part:
+    """One range with its lines as flat arrays; Hz from point 0."""
+
+    start: int
+    stop: int
+    centres: npt.NDArray[np.float64]
+    centre_sds: npt.NDArray[np.float64]
+    areas: npt.NDArray[np.float64]
+    area_sds: npt.NDArray[np.float64]
+    widths: npt.NDArray[np.float64]
+    width_sds: npt.NDArray[np.float64]
+
+
+def find_signals(
+    spectrum: Spectrum, picks: Picks, *, settings: FitSettings, doubt: IntegralDoubt
+) -> tuple[Signal, ...]:
+    """All signals by falling shift, weak ones and broad humps included.
+
+    Parameters
+    ----------
+    spectrum : Spectrum
+        Phased and flat.
+    picks : Picks
+        Its lines.
+    settings : FitSettings
+    doubt : IntegralDoubt
+
+    Notes
+    -----
+    An integral is the sum over the range, less what other signals' lines leave in
+    it, plus what its own lines leave outside (Lorentz tails from the fit). Sums
+    beat fitted areas where the line shape is not known; the fit only moves tails.
+    """
+    parts = []
+    for start, stop in signal_ranges(spectrum, noise_sd=settings.noise_sd):
+        fits = fit_range(spectrum, picks, start, stop, settings=settings)
+        part = _part(start, stop, fits)
+        if part.centres.size:
+            parts.append(part)
+    return tuple(_signal(spectrum, part, parts, settings, doubt) for part in parts)
+
+
+def _part(start: int, stop: int, fits: tuple[FittedLines, ...]) -> _Part:
+    areas = np.concatenate([fit.areas for fit in fits])
+    area_sds = np.concatenate([fit.area_sds for fit in fits])
+    real = areas > _LEAST_AREA_SD * area_sds
+    if not real.any():
+        real = areas > 0
+    return _Part(
+        start=start,
+        stop=stop,
+        centres=np.concatenate([fit.centres_hz for fit in fits])[real],
+        centre_sds=np.concatenate([fit.centre_sds_hz for fit in fits])[real],
+        areas=areas[real],
+        area_sds=area_sds[real],
+        widths=np.concatenate([fit.widths_hz for fit in fits])[real],
+        width_sds=np.concatenate([fit.width_sds_hz for fit in fits])[real],
+    )
+
+
+def _signal(
+    spectrum: Spectrum,
+    part: _Part,
+    parts: list[_Part],
+    settings: FitSettings,
+    doubt: IntegralDoubt,
+) -> Signal:
+    step_hz, frequency = spectrum.step_hz, spectrum.spectrometer_frequency_mhz
+    low_hz, high_hz = (part.start - 0.5) * step_hz, (part.stop - 0.5) * step_hz
+    summed = float(spectrum.intensities[part.start : part.stop].sum()) * step_hz
+    outside = part.areas @ (
+        1 - share_within(low_hz, high_hz, part.centres, part.widths)
+    )
+    intruding = sum(
+        float(other.areas @ share_within(low_hz, high_hz, other.centres, other.widths))
+        for other in parts
+        if other is not part
+    )
+    most = _MOST_TAIL_SHARE * abs(summed)
+    correction = float(np.clip(outside - intruding, -most, most))
+    width_hz = high_hz - low_hz
+    noise = (
+        settings.noise_sd
+        * step_hz
+        * np.sqrt((part.stop - part.start) * settings.correlation)
+    )
+    middle_ppm = spectrum.first_point_ppm - (low_hz + high_hz) / 2 / frequency
+    area = summed + correction
+    area_sd = np.sqrt(
+        noise**2
+        + (doubt.baseline_sd * width_hz) ** 2
+        + (doubt.at(middle_ppm) * area) ** 2
+        + (0.3 * correction) ** 2
+    )
+    return Signal(
+        low_ppm=spectrum.first_point_ppm - high_hz / frequency,
+        high_ppm=spectrum.first_point_ppm - low_hz / frequency,
+        area=area,
+        area_sd=float(area_sd),
+        lines=_lines(spectrum, part),
+    )
+
+
+def _lines(spectrum: Spectrum, part: _Part) -> tuple[Line, ...]:
+    frequency = spectrum.spectrometer_frequency_mhz
+    return tuple(
+        Line(
+            shift_ppm=float(spectrum.first_point_ppm - part.centres[k] / frequency),
+            shift_sd_ppm=float(part.centre_sds[k] / frequency),
+            area=float(part.areas[k]),
+            area_sd=float(part.area_sds[k]),
+            width_hz=float(part.widths[k]),
+            width_sd_hz=float(part.width_sds[k]),
+        )
+        for k in np.argsort(part.centres)
+    )

@@ -1,0 +1,173 @@
+"""Automatic phase of a transformed FID with its quality figure; angles in deg."""
+
+from __future__ import annotations
+
+import math
+from dataclasses import dataclass
+
+import numpy as np
+import numpy.typing as npt
+
+from spinledger.lines.derivative import negative_second_derivative
+from spinledger.lines.noise import noise_sd, quiet_rms
+from spinledger.lines.regions import Regions, find_regions
+from spinledger.processing.negative_area import (
+    NegativeAreaCost,
+    PhaseFit,
+    least_negative_area,
+)
+from spinledger.processing.phase import linear_phasor, sweep_positions
+from spinledger.processing.recipe import Transformed
+from spinledger.processing.tail_phase import TailCorrection, tail_correction
+from spinledger.values.recipe import Phase
+
+_WATER_PPM = (4.55, 5.0)
+_LINE_SIGMA_HZ = 0.4
+_LINE_SD = 8.0
+_MOST_CONSTANT_RAD = math.radians(12.0)
+_MOST_SLOPE_RAD = math.radians(40.0)
+_DOUBTFUL_DEG = 3.0
+_NARROW_SPAN = 0.25
+_LOW_SIGNAL_TO_NOISE = 80.0
+
+
+@dataclass(frozen=True, slots=True, kw_only=True)
+class AutomaticPhase:
+    """A phase step with how far it is to be trusted.
+
+    Attributes
+    ----------
+    step : Phase
+    sd_deg : float, deg
+        Estimated error in the worst signal region.
+    doubts : tuple of str
+        One sentence for each thing that makes the phase doubtful.
+    """
+
+    step: Phase
+    sd_deg: float
+    doubts: tuple[str, ...]
+
+
+@dataclass(frozen=True, slots=True, eq=False, kw_only=True)
+class PhaseRegions:
+    """Signal regions that may be used for phasing, and those kept clear of."""
+
+    kept: Regions
+    dropped: Regions
+
+
+def automatic_phase(
+    transformed: Transformed, *, water_at_carrier: bool
+) -> AutomaticPhase | None:
+    """Phase of least negative area, put right by the tails of the lines.
+
+    Parameters
+    ----------
+    transformed : Transformed
+        Complex spectrum, delay taken out.
+    water_at_carrier : bool
+        Leave out the region at the carrier and at 4.55 to 5.0 ppm of the header's
+        axis: huge, dispersive, or bleached water.
+
+    Returns
+    -------
+    AutomaticPhase or None
+        None where no signal region is found.
+    """
+    values, step_hz = transformed.values, transformed.step_hz
+    regions = phase_regions(transformed, water_at_carrier=water_at_carrier)
+    if regions.kept.count == 0:
+        return None
+    sd = noise_sd(values)
+    cost = NegativeAreaCost(values, regions.kept, step_hz=step_hz, noise_sd=sd)
+    fit = least_negative_area(cost)
+    turned = values * linear_phasor(values.size, fit.constant_rad, fit.slope_rad)
+    tails = tail_correction(
+        turned, regions.kept, dropped=regions.dropped, step_hz=step_hz
+    )
+    return _decided(values.size, regions.kept, fit, tails, sd)
+
+
+def phase_regions(transformed: Transformed, *, water_at_carrier: bool) -> PhaseRegions:
+    """Signal regions of an unphased spectrum, with and without water."""
+    values, step_hz = transformed.values, transformed.step_hz
+    regions = find_regions(values, step_hz=step_hz)
+    usable = _with_lines(values, regions, step_hz)
+    if water_at_carrier:
+        dry = usable & ~_at_water(transformed, regions)
+        usable = dry if dry.any() else usable
+    return PhaseRegions(kept=regions.select(usable), dropped=regions.select(~usable))
+
+
+def _with_lines(
+    values: npt.NDArray[np.complex128], regions: Regions, step_hz: float
+) -> npt.NDArray[np.bool_]:
+    curvature = np.abs(
+        negative_second_derivative(values, step_hz=step_hz, sigma_hz=_LINE_SIGMA_HZ)
+    )
+    threshold = _LINE_SD * quiet_rms(curvature) / math.sqrt(2)
+    return np.array(
+        [
+            curvature[start:stop].max() > threshold
+            for start, stop in zip(regions.starts, regions.stops, strict=True)
+        ],
+        dtype=np.bool_,
+    )
+
+
+def _at_water(transformed: Transformed, regions: Regions) -> npt.NDArray[np.bool_]:
+    n_points = transformed.values.size
+    step_ppm = transformed.step_hz / transformed.spectrometer_frequency_mhz
+    first = transformed.first_point_ppm
+    carrier = (n_points + 1) // 2 - 1
+    margin = 0.1 / step_ppm
+    over_carrier = (regions.starts - margin < carrier) & (
+        regions.stops + margin > carrier
+    )
+    peaks_ppm = first - step_ppm * regions.peaks
+    in_window = (peaks_ppm > _WATER_PPM[0]) & (peaks_ppm < _WATER_PPM[1])
+    return np.asarray(over_carrier | in_window)
+
+
+def _decided(
+    n_points: int, kept: Regions, fit: PhaseFit, tails: TailCorrection, sd: float
+) -> AutomaticPhase:
+    x = sweep_positions(n_points)[kept.peaks]
+    asked_deg = np.degrees(np.abs(tails.constant_rad + tails.slope_rad * x)).max()
+    refused = (
+        abs(tails.constant_rad) > _MOST_CONSTANT_RAD
+        or abs(tails.slope_rad) > _MOST_SLOPE_RAD
+    )
+    constant, slope = fit.constant_rad, fit.slope_rad
+    if not refused:
+        constant, slope = constant + tails.constant_rad, slope + tails.slope_rad
+    signal_to_noise = float(np.median(kept.heights)) / sd if sd > 0 else math.inf
+    doubts = _doubts(float(asked_deg), float(np.ptp(x)), signal_to_noise, refused)
+    step = Phase(
+        phase0_deg=math.degrees(math.remainder(constant, 2 * math.pi)),
+        phase1_deg=math.degrees(slope),
+    )
+    return AutomaticPhase(step=step, sd_deg=max(1.0, float(asked_deg)), doubts=doubts)
+
+
+def _doubts(
+    asked_deg: float, span: float, signal_to_noise: float, refused: bool
+) -> tuple[str, ...]:
+    doubts = []
+    if refused or asked_deg > _DOUBTFUL_DEG:
+        doubts.append(
+            f"The phase is doubtful by about {asked_deg:.0f} degrees: "
+            "the tails of the lines disagree with their feet."
+        )
+    if span < _NARROW_SPAN:
+        doubts.append(
+            "The first-order phase is not well determined: "
+            "all signals stand in a quarter of the sweep."
+        )
+    if signal_to_noise < _LOW_SIGNAL_TO_NOISE:
+        doubts.append(
+            f"The phase is doubtful: the typical signal is only "
+            f"{signal_to_noise:.0f} times the noise."
+        )
+    return tuple(doubts)
