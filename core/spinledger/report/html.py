@@ -1,0 +1,346 @@
+"""report.html: one self-contained page that prints on A4."""
+
+from __future__ import annotations
+
+from collections.abc import Callable, Iterable, Mapping
+from html import escape
+
+from spinledger.project.audit import versions
+from spinledger.report.cautions import accuracy_ppm, printed_cautions
+from spinledger.report.context import ReportContext
+from spinledger.report.figure import expansion_svgs, overview_svg
+from spinledger.report.html_style import style_sheet
+from spinledger.report.sketch import sketch_svg
+from spinledger.report.svg import number, state_mark
+from spinledger.report.tables import (
+    ASSIGNMENT_HEAD,
+    CONTENDER_HEAD,
+    STRAY_HEAD,
+    AssignmentRow,
+    advice_rows,
+    assignment_rows,
+    audit_rows,
+    balance_cells,
+    contender_rows,
+    probability_words,
+    recipe_lines,
+    stray_rows,
+    verdict_title,
+)
+from spinledger.report.text import experimental_runs, reference_sentence
+from spinledger.report.words import fixed, outgoing, outgoing_verdict, solvent_glyphs
+from spinledger.values.ledger import Ledger, VerdictState
+
+_TILT_DEG: Mapping[VerdictState, float] = {
+    "reconciled": 0.0,
+    "undecided": 9.0,
+    "not reconciled": 20.0,
+    "not judged": 5.0,
+}
+
+
+def report_html(ledger: Ledger, context: ReportContext | None = None) -> str:
+    """The report as one HTML page with its drawings inside.
+
+    Parameters
+    ----------
+    ledger : Ledger
+    context : ReportContext, optional
+
+    Returns
+    -------
+    str
+        UTF-8 text; refers to nothing outside itself.
+    """
+    chosen = context or ReportContext()
+    parts = [_header(ledger, chosen), _verdict(ledger, chosen)]
+    makers: Mapping[str, Callable[[Ledger, ReportContext], str]] = {
+        "evidence": _evidence,
+        "assignment": _assignment,
+        "text": _text,
+        "cautions": _cautions,
+        "expansions": _expansions,
+        "strays": _strays,
+        "contenders": _contenders,
+        "advice": _advice,
+        "audit": _audit,
+        "signatures": _signatures,
+    }
+    parts += [makers[name](ledger, chosen) for name in chosen.sections]
+    title = escape(f"{report_title(ledger)}: reconciliation report")
+    return (
+        '<!DOCTYPE html>\n<html lang="en">\n<head>\n<meta charset="utf-8">\n'
+        '<meta name="viewport" content="width=device-width, initial-scale=1">\n'
+        f"<title>{title}</title>\n<style>{style_sheet(*_footers(ledger))}</style>\n"
+        f"</head>\n<body>\n<main>\n{''.join(parts)}</main>\n{_footer(ledger)}"
+        "</body>\n</html>\n"
+    )
+
+
+def report_title(ledger: Ledger) -> str:
+    """Name of the structure, or its SMILES."""
+    return ledger.structure.name or ledger.structure.smiles
+
+
+def report_subtitle(ledger: Ledger, context: ReportContext) -> str:
+    """Sample, field, nucleus, solvent and temperature in one line."""
+    metadata = ledger.evidence.metadata
+    tube = context.sample.name or context.sample.batch or metadata.source_name
+    solvent = ledger.evidence.solvent
+    field = f"{metadata.spectrometer_frequency_mhz:.2f}\u00a0MHz ¹H"
+    if solvent:
+        field += f" in {solvent_glyphs(solvent)}"
+    temperature = metadata.temperature_k
+    parts = [tube, field]
+    if temperature is not None:
+        parts.append(f"{temperature:.1f}\u00a0K")
+    return ", ".join(parts)
+
+
+def _header(ledger: Ledger, context: ReportContext) -> str:
+    return (
+        '<header><p class="over"><span>Reconciliation report</span>'
+        f"<span>{escape(context.date)}</span></p>"
+        f"<h1>{escape(report_title(ledger))}</h1>"
+        f'<p class="under">{escape(report_subtitle(ledger, context))}</p></header>\n'
+    )
+
+
+def _verdict(ledger: Ledger, context: ReportContext) -> str:
+    reasons = " ".join(outgoing(one) for one in ledger.verdict.reasons)
+    excluded = [one for one in ledger.contenders if one.excluded]
+    lines = [
+        f'<h2 class="verdict">{escape(verdict_title(ledger))} '
+        f'<span class="probability">{escape(probability_words(ledger))}</span></h2>',
+        f"<p>{escape(reasons)}</p>" if reasons else "",
+        _before_edits(ledger, context),
+    ]
+    if excluded:
+        names = ", ".join(one.name or one.smiles for one in excluded[:4])
+        more = f" and {len(excluded) - 4} more" if len(excluded) > 4 else ""
+        lines.append(f'<p class="muted">Excluded: {escape(names + more)}.</p>')
+    if ledger.contenders and not ledger.verdict.unique:
+        standing = [
+            one.name or one.smiles for one in ledger.contenders if not one.excluded
+        ]
+        lines.append(
+            '<p class="muted">Not excluded: '
+            f"{escape(', '.join(standing) or 'other structures')}.</p>"
+        )
+    return (
+        '<section class="answer" aria-label="Verdict"><div class="words">'
+        f"{_balance_icon(ledger.verdict.state)}<div>{''.join(lines)}</div></div>"
+        f'<figure class="sketch">{sketch_svg(ledger)}</figure></section>\n'
+    )
+
+
+def _before_edits(ledger: Ledger, context: ReportContext) -> str:
+    before = context.verdict_before_edits
+    if before is None or not ledger.edits:
+        return ""
+    chance = (
+        "" if before.probability is None else f", probability {before.probability:.3g}"
+    )
+    words = f"Before hand edits: {outgoing_verdict(before).lower()}{chance}."
+    return f'<p class="muted">{escape(words)}</p>'
+
+
+def _evidence(ledger: Ledger, _context: ReportContext) -> str:
+    note = "ink measured, blue modelled; empty stretches of the axis are folded away"
+    return (
+        '<section><div class="head"><h3>Evidence and claims</h3>'
+        f'<p class="muted">{note}</p></div>'
+        f'<figure class="wide">{overview_svg(ledger)}</figure>'
+        '<p class="small muted">One gain for all stretches. Under the trees: '
+        "measured minus modelled in noise sd, linear to 3 and logarithmic "
+        "beyond.</p></section>\n"
+    )
+
+
+def _assignment(ledger: Ledger, _context: ReportContext) -> str:
+    rows = "".join(_assignment_row(row) for row in assignment_rows(ledger))
+    closing = "".join(f"<td>{escape(cell)}</td>" for cell in balance_cells(ledger))
+    doubt = fixed(accuracy_ppm(ledger), 3)
+    return (
+        "<section><h3>Assignment</h3>"
+        f'<table class="assignment"><thead>{_head(ASSIGNMENT_HEAD)}</thead>'
+        f'<tbody>{rows}</tbody><tfoot><tr class="balance">{closing}</tr></tfoot></table>'
+        '<p class="small muted">In brackets: sd of the fit in units of the last '
+        f"digit. Reference, concentration and temperature add ±{doubt}\u00a0ppm to "
+        "every shift. Printed J are absolute values. Exchangeable protons and strays are left "
+        "out of the balance.</p></section>\n"
+    )
+
+
+def _assignment_row(row: AssignmentRow) -> str:
+    first, *rest, state = row.cells
+    mark = (
+        '<svg class="mark" viewBox="0 0 12 12" width="12" height="12" '
+        f'aria-hidden="true">{state_mark((6, 6), row.state, size=9)}</svg>'
+    )
+    cells = "".join(f"<td>{escape(cell)}</td>" for cell in rest)
+    noted = ' class="noted"' if row.notes else ""
+    html = (
+        f'<tr{noted}><th scope="row">{escape(first)}</th>{cells}'
+        f'<td class="state">{mark} {escape(state)}</td></tr>'
+    )
+    if row.notes:
+        html += (
+            f'<tr class="note"><td></td><td colspan="{len(row.cells) - 1}">'
+            f"{escape(' '.join(row.notes))}</td></tr>"
+        )
+    return html
+
+
+def _text(ledger: Ledger, context: ReportContext) -> str:
+    runs = "".join(
+        f"<i>{escape(run.text)}</i>" if run.is_italic else escape(run.text)
+        for run in experimental_runs(ledger, context.text)
+    )
+    return (
+        "<section><h3>For the experimental section</h3>"
+        f'<p class="journal">{runs}</p>'
+        f'<p class="muted">{escape(reference_sentence(ledger))}</p></section>\n'
+    )
+
+
+def _cautions(ledger: Ledger, _context: ReportContext) -> str:
+    items = "".join(f"<li>{escape(one)}</li>" for one in printed_cautions(ledger))
+    return f'<section class="cautions"><h3>Cautions</h3><ul>{items}</ul></section>\n'
+
+
+def _expansions(ledger: Ledger, _context: ReportContext) -> str:
+    drawings = "".join(
+        f"<figure>{drawing}<figcaption>{escape(caption)}</figcaption></figure>"
+        for caption, drawing in expansion_svgs(ledger)
+    )
+    if not drawings:
+        return ""
+    return (
+        "<section><h3>Expansions</h3>"
+        '<p class="small muted">Each at its own gain.</p>'
+        f'<div class="expansions">{drawings}</div></section>\n'
+    )
+
+
+def _strays(ledger: Ledger, _context: ReportContext) -> str:
+    rows = stray_rows(ledger)
+    body = _table(STRAY_HEAD, rows) if rows else "<p>None. Every line has an owner.</p>"
+    return f"<section><h3>Strays</h3>{body}</section>\n"
+
+
+def _contenders(ledger: Ledger, _context: ReportContext) -> str:
+    rows = contender_rows(ledger)
+    body = (
+        _table(CONTENDER_HEAD, rows)
+        if rows
+        else "<p>No other structure was tested against this spectrum.</p>"
+    )
+    return f"<section><h3>Contenders</h3>{body}</section>\n"
+
+
+def _advice(ledger: Ledger, _context: ReportContext) -> str:
+    rows = advice_rows(ledger)
+    if not rows:
+        return ""
+    items = "".join(
+        f"<li><b>{escape(what)}</b> {escape(look_for)}</li>" for what, look_for in rows
+    )
+    return f"<section><h3>Next measurement</h3><ol>{items}</ol></section>\n"
+
+
+def _audit(ledger: Ledger, context: ReportContext) -> str:
+    facts = _definitions((*audit_rows(ledger), *_structure_facts(ledger)))
+    recipe = "".join(f"<li>{escape(one)}</li>" for one in recipe_lines(ledger))
+    made_with = ", ".join(f"{name} {number}" for name, number in versions().items())
+    edits = "".join(f"<li>{escape(one)}.</li>" for one in ledger.edits)
+    trail = "".join(
+        f"<li><time>{escape(line.when)}</time> "
+        f"{'by hand: ' if line.by_hand else ''}{escape(line.what)}</li>"
+        for line in context.audit
+    )
+    return (
+        f"<section><h3>Audit trail</h3>{facts}<h4>Recipe</h4><ol>{recipe}</ol>"
+        + (f"<h4>Hand edits</h4><ol>{edits}</ol>" if edits else "<p>No hand edits.</p>")
+        + (f"<h4>Steps</h4><ol>{trail}</ol>" if trail else "")
+        + f'<p class="small muted">Made with {escape(made_with)}.</p></section>\n'
+    )
+
+
+def _structure_facts(ledger: Ledger) -> tuple[tuple[str, str], ...]:
+    structure = ledger.structure
+    facts = [("Structure as given", structure.given), ("SMILES", structure.smiles)]
+    species = [one for one in ledger.claims.species_smiles if one != structure.smiles]
+    if species:
+        facts.append(("In solution", " and ".join(ledger.claims.species_smiles)))
+    facts += [("Note", note) for note in ledger.claims.notes]
+    return tuple(facts)
+
+
+def _signatures(_ledger: Ledger, context: ReportContext) -> str:
+    signed = context.sample.sign_offs
+    lines = "".join(
+        f"<tr><td>{escape(one.role)}</td><td>{escape(one.name)}</td>"
+        f"<td>{escape(one.when)}</td><td>{escape(one.remark)}</td></tr>"
+        for one in signed
+    )
+    blank = "".join(
+        f"<tr><td>{role}</td><td></td><td></td><td></td></tr>"
+        for role in ("Made by", "Reviewed by")
+        if role not in {one.role for one in signed}
+    )
+    return (
+        '<section><h3>Signatures</h3><table class="signatures"><thead>'
+        f"{_head(('Role', 'Name', 'Date', 'Remark'))}</thead>"
+        f"<tbody>{lines}{blank}</tbody></table></section>\n"
+    )
+
+
+def _table(head: Iterable[str], rows: Iterable[Iterable[str]]) -> str:
+    body = "".join(
+        f"<tr>{''.join(f'<td>{escape(cell)}</td>' for cell in row)}</tr>"
+        for row in rows
+    )
+    return f"<table><thead>{_head(head)}</thead><tbody>{body}</tbody></table>"
+
+
+def _head(names: Iterable[str]) -> str:
+    cells = "".join(f'<th scope="col">{escape(name)}</th>' for name in names)
+    return f"<tr>{cells}</tr>"
+
+
+def _definitions(rows: Iterable[tuple[str, str]]) -> str:
+    body = "".join(
+        f"<dt>{escape(name)}</dt><dd>{escape(value)}</dd>" for name, value in rows
+    )
+    return f"<dl>{body}</dl>"
+
+
+def _footers(ledger: Ledger) -> tuple[str, str]:
+    digest = ledger.evidence.metadata.sha256[:16]
+    grouped = " ".join(digest[i : i + 4] for i in range(0, len(digest), 4))
+    steps = len(ledger.evidence.recipe.steps)
+    edits = len(ledger.edits)
+    work = f"Recipe {steps} steps, {edits} hand edit{'' if edits == 1 else 's'}"
+    return f"Source SHA-256 {grouped} …", work
+
+
+def _footer(ledger: Ledger) -> str:
+    source, work = _footers(ledger)
+    return (
+        f"<footer><span>{escape(source)}</span><span>{escape(work)}</span></footer>\n"
+    )
+
+
+def _balance_icon(state: VerdictState) -> str:
+    """A pair of scales, level where the structure agrees."""
+    tilt = number(_TILT_DEG[state])
+    return (
+        '<svg class="scales" viewBox="0 0 32 26" width="40" height="32" '
+        'aria-hidden="true" fill="none" stroke="currentColor" stroke-width="1.6">'
+        '<path d="M16 3V22M9 23H23"/>'
+        f'<g transform="rotate({tilt} 16 5)"><path d="M3 5H29"/>'
+        '<path d="M3 5L-1.5 12M3 5L7.5 12M29 5L24.5 12M29 5L33.5 12" '
+        'stroke-width="0.9"/><path d="M-2.5 12c1.5 4.5 9.5 4.5 11 0zM23.5 12c1.5 '
+        '4.5 9.5 4.5 11 0z" fill="currentColor" stroke="none"/></g></svg>'
+    )

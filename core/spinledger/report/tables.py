@@ -1,0 +1,268 @@
+"""Rows of the report's tables as plain text, shared by all formats.
+
+Shifts in ppm, couplings in Hz, integrals in protons.
+"""
+
+from __future__ import annotations
+
+from dataclasses import dataclass
+
+from spinledger.report.words import (
+    fixed,
+    label_glyphs,
+    outgoing,
+    outgoing_state,
+    outgoing_verdict,
+    plus_minus,
+    protons,
+    shift_range,
+    signed,
+    whole,
+    with_sd,
+)
+from spinledger.values.evidence import Stray
+from spinledger.values.ledger import Contender, Entry, EntryCoupling, Ledger
+
+ASSIGNMENT_HEAD = (
+    "Claim",
+    "δ, ppm",
+    "Found",
+    "Pattern",
+    "J, Hz (partner)",
+    "Predicted δ",
+    "Largest residual",
+    "State",
+)
+STRAY_HEAD = ("Range, ppm", "Kind", "Size", "Why")
+CONTENDER_HEAD = ("Structure", "Origin", "Result", "Why")
+_SHIFT_DIGITS = 4
+_J_DIGITS = 2
+
+
+@dataclass(frozen=True, slots=True, kw_only=True)
+class AssignmentRow:
+    """One entry as printed; ``notes`` are small lines under the row."""
+
+    cells: tuple[str, ...]
+    state: str
+    notes: tuple[str, ...]
+
+
+def assignment_rows(ledger: Ledger) -> tuple[AssignmentRow, ...]:
+    """Rows of the assignment table, in the ledger's order."""
+    return tuple(_assignment_row(ledger, entry) for entry in ledger.entries)
+
+
+def balance_cells(ledger: Ledger) -> tuple[str, ...]:
+    """Closing row: found and claimed protons under their columns."""
+    balance = ledger.balance
+    scale = (
+        f"scale set by {label_glyphs(balance.scale_signal)}"
+        if balance.scale_signal
+        else ""
+    )
+    return (
+        "Balance",
+        "",
+        protons(balance.found),
+        "",
+        scale,
+        f"{whole(balance.claimed)}\u00a0H claimed",
+        "",
+        "",
+    )
+
+
+def stray_rows(ledger: Ledger) -> tuple[tuple[str, ...], ...]:
+    """Rows of what no claim owns, unexplained ones first."""
+    order = sorted(
+        ledger.strays, key=lambda one: (one.kind != "unexplained", -one.high_ppm)
+    )
+    return tuple(_stray_row(stray) for stray in order)
+
+
+def contender_rows(ledger: Ledger) -> tuple[tuple[str, ...], ...]:
+    """Rows of the tested structures, those still standing first."""
+    order = sorted(ledger.contenders, key=lambda one: one.excluded)
+    return tuple(_contender_row(one) for one in order)
+
+
+def advice_rows(ledger: Ledger) -> tuple[tuple[str, str], ...]:
+    """Measurement and what to look for, the most telling first."""
+    return tuple((one.measurement, outgoing(one.look_for)) for one in ledger.advice)
+
+
+def audit_rows(ledger: Ledger) -> tuple[tuple[str, str], ...]:
+    """Name and value of everything a reader needs to repeat the result."""
+    evidence = ledger.evidence
+    metadata = evidence.metadata
+    rows = [
+        ("Source", metadata.source_name),
+        ("SHA-256", metadata.sha256),
+        ("Format", metadata.format_name),
+        ("Acquired", metadata.acquired_on or "not in the file"),
+        ("Scans", str(metadata.n_scans or "not in the file")),
+        ("Pulse program", metadata.pulse_program or "not in the file"),
+        ("Reference", f"{evidence.reference.by}: {evidence.reference.why}"),
+        ("Solvent seen", evidence.solvent_seen or "none"),
+        ("Solvent in the file", evidence.solvent_header or "none"),
+    ]
+    return tuple(rows)
+
+
+def recipe_lines(ledger: Ledger) -> tuple[str, ...]:
+    """Processing steps in order, one line each."""
+    return tuple(_step_words(step) for step in ledger.evidence.recipe.to_json())
+
+
+def probability_words(ledger: Ledger) -> str:
+    """Probability with its prior and likelihood ratio, or why there is none."""
+    verdict = ledger.verdict
+    if verdict.probability is None:
+        return ""
+    ratio = verdict.likelihood_ratio
+    odds = "" if ratio is None else f", likelihood ratio {ratio:.3g}"
+    return (
+        f"probability {_probability(verdict.probability)} "
+        f"(prior {verdict.prior:.2g}{odds})"
+    )
+
+
+def verdict_title(ledger: Ledger) -> str:
+    """Outgoing words of the verdict."""
+    return outgoing_verdict(ledger.verdict)
+
+
+def largest_residual(entry: Entry) -> str:
+    """Largest residual of an entry with its kind: J +0.9 sd."""
+    kinds = (
+        ("δ", entry.shift_residual_sd),
+        ("J", entry.j_residual_sd),
+        ("∫", entry.integral_residual_sd),
+    )
+    found = [(abs(value), name, value) for name, value in kinds if value is not None]
+    if entry.shift_ppm is None or not found:
+        return ""
+    _, name, value = max(found)
+    return f"{name} {signed(value, 1)} sd"
+
+
+def couplings_text(entry: Entry) -> str:
+    """Couplings with sd and partners, largest first; undetermined ones said so."""
+    if entry.shift_ppm is None or not entry.couplings:
+        return ""
+    known = [one for one in entry.couplings if one.determined and one.j_hz is not None]
+    known.sort(key=lambda one: -abs(one.j_hz or 0.0))
+    parts = [_coupling_text(one) for one in known]
+    unknown = [one for one in entry.couplings if one not in known]
+    sums = [
+        f"sum {fixed(abs(one.sum_hz), _J_DIGITS)} {label_glyphs(one.partner)}"
+        for one in unknown
+        if one.sum_hz is not None
+    ]
+    parts += list(dict.fromkeys(sums))
+    silent = [label_glyphs(one.partner) for one in unknown if one.sum_hz is None]
+    if silent:
+        parts.append(f"not determined: {', '.join(dict.fromkeys(silent))}")
+    return ", ".join(parts)
+
+
+def _assignment_row(ledger: Ledger, entry: Entry) -> AssignmentRow:
+    shift = (
+        ""
+        if entry.shift_ppm is None
+        else with_sd(entry.shift_ppm, entry.shift_sd_ppm, digits=_SHIFT_DIGITS)
+    )
+    found = "" if entry.integral_protons is None else protons(entry.integral_protons)
+    predicted = plus_minus(entry.predicted_shift_ppm, entry.predicted_shift_sd_ppm)
+    return AssignmentRow(
+        cells=(
+            label_glyphs(entry.claim),
+            shift,
+            found,
+            entry.multiplicity or "",
+            couplings_text(entry),
+            predicted,
+            largest_residual(entry),
+            outgoing_state(ledger, entry),
+        ),
+        state=entry.state,
+        notes=_notes(entry),
+    )
+
+
+def _notes(entry: Entry) -> tuple[str, ...]:
+    notes = [*entry.reasons] if entry.state in ("disputed", "open") else []
+    if entry.why:
+        notes.append(entry.why)
+    group = entry.group
+    if group is not None:
+        partners = ", ".join(label_glyphs(one) for one in group.partners)
+        if group.kind == "shared":
+            notes.append(
+                f"Shares its signal with {partners}; its part is from the fit."
+            )
+        else:
+            odds = (
+                "" if group.odds is None else f" (odds {group.odds:.2f} for this order)"
+            )
+            notes.append(f"Interchangeable with {partners}{odds}.")
+    return tuple(outgoing(note) for note in dict.fromkeys(notes))
+
+
+def _coupling_text(coupling: EntryCoupling) -> str:
+    value = with_sd(abs(coupling.j_hz or 0.0), coupling.j_sd_hz, digits=_J_DIGITS)
+    return f"{value}\u00a0{label_glyphs(coupling.partner)}"
+
+
+def _stray_row(stray: Stray) -> tuple[str, ...]:
+    size = "" if stray.protons is None else protons(stray.protons)
+    return (
+        shift_range(stray.low_ppm, stray.high_ppm, digits=3),
+        stray.kind,
+        size,
+        outgoing(stray.why),
+    )
+
+
+def _contender_row(contender: Contender) -> tuple[str, ...]:
+    result = "excluded" if contender.excluded else "not excluded"
+    if contender.probability is not None:
+        result += f", probability {_probability(contender.probability)}"
+    return (
+        contender.name or contender.smiles,
+        contender.origin,
+        result,
+        outgoing(contender.why),
+    )
+
+
+def _probability(value: float) -> str:
+    if value < 0.001:
+        return "under 0.001"
+    return "over 0.999" if value > 0.999 else f"{value:.3g}"
+
+
+def _step_words(step: dict[str, object]) -> str:
+    words = {
+        "RemoveDelay": "Digital-filter delay taken out",
+        "Apodize": "Window",
+        "ZeroFill": "Zero filling",
+        "FourierTransform": "Fourier transform",
+        "Phase": "Phase",
+        "Baseline": "Baseline",
+        "Reference": "Reference",
+    }
+    name = str(step.get("step"))
+    details = [
+        f"{key.replace('_', ' ')} {_value(value)}"
+        for key, value in step.items()
+        if key not in ("step", "why", "masked_ppm") and value not in (None, "")
+    ]
+    return f"{words.get(name, name)}: {', '.join(details)}"
+
+
+def _value(value: object) -> str:
+    if isinstance(value, bool):
+        return "yes" if value else "no"
+    return f"{value:.6g}" if isinstance(value, float) else str(value)
