@@ -27,8 +27,8 @@ from spinledger.io.limits import (
     MAX_BINARY_BYTES,
     MAX_HEADER_BYTES,
     check_point_count,
-    decode_text,
     read_bytes,
+    read_text,
 )
 from spinledger.io.records import Block, parse_parameters
 from spinledger.io.samples import (
@@ -60,6 +60,14 @@ def is_processed_folder(folder: Path) -> bool:
     )
 
 
+_MEMBERS = frozenset({"acqus", "acqu", "fid", "ser", "procs", "proc", "1r", "1i"})
+
+
+def is_parameter_file(path: Path) -> bool:
+    """Whether the file is part of a Bruker folder, so that the folder is meant."""
+    return path.name in _MEMBERS
+
+
 def describe(folder: Path) -> Experiment:
     """What the experiment is, by its headers."""
     place = _locate(folder)
@@ -80,6 +88,8 @@ def describe(folder: Path) -> Experiment:
         ),
         has_fid=place.fid is not None,
         has_spectrum=place.processed is not None,
+        spectrometer_frequency_mhz=acqus.number("$BF1", "$SFO1"),
+        acquired_on=normalise.iso_date_from_seconds(acqus.number("$DATE")),
         kind=KIND,
     )
 
@@ -170,7 +180,7 @@ def _n_dimensions(place: _Place) -> int:
 def _parameters(path: Path | None) -> Block:
     if path is None:
         return Block()
-    return parse_parameters(decode_text(read_bytes(path, MAX_HEADER_BYTES)))
+    return parse_parameters(read_text(path, MAX_HEADER_BYTES))
 
 
 def _nucleus(acqus: Block) -> str | None:
@@ -402,6 +412,6 @@ def _title(place: _Place) -> str | None:
     """First line of the user's title, which lies beside the processed data."""
     if place.processed is None or not (place.processed / "title").is_file():
         return None
-    text = decode_text(read_bytes(place.processed / "title", MAX_HEADER_BYTES))
-    lines = [line.strip() for line in text.splitlines() if line.strip()]
+    text = read_text(place.processed / "title", MAX_HEADER_BYTES)
+    lines = [line.strip() for line in text.split("\n") if line.strip()]
     return lines[0][:200] if lines else None

@@ -26,6 +26,9 @@ class Experiment:
         One line for a list: nucleus, field, pulse program, solvent, date.
     has_fid, has_spectrum : bool
         Whether there is a FID, and the maker's processed spectrum.
+    spectrometer_frequency_mhz : float or None, MHz
+    acquired_on : str or None
+        ISO 8601 date.
     kind : str
         Short name of the reader that takes it.
     """
@@ -38,6 +41,8 @@ class Experiment:
     summary: str
     has_fid: bool = True
     has_spectrum: bool = False
+    spectrometer_frequency_mhz: float | None = None
+    acquired_on: str | None = None
     kind: str = ""
 
     @property

@@ -32,7 +32,7 @@ from spinledger.io.limits import (
     MAX_TEXT_BYTES,
     check_point_count,
     decode_text,
-    read_bytes,
+    read_text,
 )
 from spinledger.io.records import Block, parse_blocks, parse_number, plain_label
 from spinledger.io.samples import (
@@ -47,6 +47,14 @@ from spinledger.values.acquisition import Fid, MakerSpectrum, Metadata
 KIND = "jcamp"
 FID_NAME = "JCAMP-DX FID"
 SPECTRUM_NAME = "JCAMP-DX spectrum"
+
+
+def is_file_head(head: bytes) -> bool:
+    """Whether a file begins with a JCAMP-DX title, remarks before it apart."""
+    lines = decode_text(head).split("\n")
+    written = (line.strip() for line in lines)
+    first = next((line for line in written if line and not line.startswith("$$")), "")
+    return first.startswith("##") and plain_label(first[2:7]) == "TITLE"
 
 
 def describe(path: Path) -> Experiment:
@@ -71,6 +79,8 @@ def describe(path: Path) -> Experiment:
         ),
         has_fid=blocks.fid is not None,
         has_spectrum=blocks.spectrum is not None,
+        spectrometer_frequency_mhz=_observe_mhz(shown),
+        acquired_on=_date(shown),
         kind=KIND,
     )
 
@@ -113,7 +123,7 @@ class _DataBlocks:
 
 
 def _data_blocks(path: Path) -> _DataBlocks:
-    blocks = parse_blocks(decode_text(read_bytes(path, MAX_TEXT_BYTES)))
+    blocks = parse_blocks(read_text(path, MAX_TEXT_BYTES))
     typed = [(_data_type(block), block) for block in blocks]
     fids = [block for kind, block in typed if kind.endswith("NMRFID")]
     spectra = [

@@ -9,10 +9,11 @@ from spinledger.errors import SpectrumFormatError
 
 # The longest FIDs of ordinary 1D work hold 2**20 points; the limits leave room
 # above that and keep any reader under 1 GiB of memory.
-MAX_POINTS = 2**22
-MAX_BINARY_BYTES = 2**27
-MAX_TEXT_BYTES = 2**26
-MAX_HEADER_BYTES = 2**23
+MAX_POINTS = 2**21
+MAX_BINARY_BYTES = 2**25 + 2**20
+MAX_TEXT_BYTES = 2**25
+MAX_HEADER_BYTES = 2**22
+MAX_LINES = 2**21
 MIN_POINTS = 64
 
 
@@ -58,6 +59,23 @@ def read_head(path: Path, n_bytes: int = 4096) -> bytes:
             return stream.read(n_bytes)
     except OSError:
         return b""
+
+
+def read_text(path: Path, limit_bytes: int) -> str:
+    """Text of a file in whichever common encoding, lines ended by newlines only.
+
+    Raises
+    ------
+    SpectrumFormatError
+        If the file cannot be read, or has too many bytes or lines.
+    """
+    content = read_bytes(path, limit_bytes)
+    # Each line costs an object: a file of line ends alone would fill the memory.
+    if content.count(b"\n") + content.count(b"\r") > 2 * MAX_LINES:
+        raise SpectrumFormatError(
+            path, f"holds more than {MAX_LINES} lines; give the 1D spectrum alone"
+        )
+    return decode_text(content).replace("\r\n", "\n").replace("\r", "\n")
 
 
 def decode_text(content: bytes) -> str:

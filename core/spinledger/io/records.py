@@ -147,7 +147,7 @@ def parse_parameters(text: str) -> Block:
 def _records(text: str) -> Iterator[tuple[str, str]]:
     label: str | None = None
     lines: list[str] = []
-    for raw in text.splitlines():
+    for raw in text.split("\n"):
         line = raw.split("$$", 1)[0]
         if line.lstrip().startswith("##") and "=" in line:
             if label is not None:
