@@ -9,7 +9,7 @@ References
 from __future__ import annotations
 
 import os
-import tempfile
+import secrets
 from collections.abc import Callable, Iterator
 from pathlib import Path
 from typing import IO
@@ -86,12 +86,13 @@ def write_jcamp(spectrum: Spectrum, metadata: Metadata, path: Path) -> None:
             Path(path), "cannot be written: the spectrum has values that are not finite"
         )
     factor, ordinates = _whole_numbers(spectrum.intensities)
+    first_hz = spectrum.first_point_ppm * spectrum.spectrometer_frequency_mhz
 
     def fill(stream: IO[str]) -> None:
         for label, value in _header(spectrum, metadata, factor, ordinates):
             stream.write(f"##{label}= {value}\n")
         stream.write("##XYDATA= (X++(Y..Y))\n")
-        for line in _table(ordinates):
+        for line in _table(ordinates, first_hz, spectrum.step_hz):
             stream.write(line + "\n")
         stream.write("##END=\n")
 
@@ -157,51 +158,37 @@ def _one_line(text: str) -> str:
     return cleaned[:200] or "not stated"
 
 
-def _table(ordinates: npt.NDArray[np.int64]) -> Iterator[str]:
-    """Lines of squeezed ordinates, each led by the number of its first point."""
-    line, start = "0", 0
+def _table(
+    ordinates: npt.NDArray[np.int64], first_hz: float, step_hz: float
+) -> Iterator[str]:
+    """Lines of squeezed ordinates, each led by the abscissa of its first point."""
+    line, n_words = f"{first_hz:.4f}", 0
     for index, value in enumerate(ordinates.tolist()):
         digits = str(abs(value))
         word = _SQUEEZED["-" if value < 0 else "+"][int(digits[0])] + digits[1:]
-        if len(line) + len(word) > _LINE_LENGTH and index > start:
+        if n_words and len(line) + len(word) > _LINE_LENGTH:
             yield line
-            line, start = str(index), index
+            line, n_words = f"{first_hz - index * step_hz:.4f}", 0
         line += word
+        n_words += 1
     yield line
 
 
 def _write_beside(path: Path, fill: Callable[[IO[str]], None]) -> None:
     """Fill a temporary file in the target's folder and move it into place."""
-    partial: Path | None = None
+    partial = path.parent / f".spinledger-{secrets.token_hex(8)}.part"
     try:
-        with tempfile.NamedTemporaryFile(
-            "w",
-            encoding="utf-8",
-            newline="\n",
-            dir=path.parent,
-            prefix=".spinledger-",
-            suffix=".part",
-            delete=False,
-        ) as stream:
-            partial = Path(stream.name)
-            fill(stream)
-            stream.flush()
-            os.fsync(stream.fileno())
-        partial.chmod(0o666 & ~_umask())
-        partial.replace(path)
+        try:
+            with partial.open("x", encoding="utf-8", newline="\n") as stream:
+                fill(stream)
+                stream.flush()
+                os.fsync(stream.fileno())
+            partial.replace(path)
+        finally:
+            partial.unlink(missing_ok=True)
     except OSError as fault:
         raise OutputError(
             path,
             f"cannot be written ({(fault.strerror or 'unknown fault').lower()}); "
             "choose another folder",
         ) from fault
-    finally:
-        if partial is not None:
-            partial.unlink(missing_ok=True)
-
-
-def _umask() -> int:
-    """Mask for new files; the temporary one was made private."""
-    mask = os.umask(0)
-    os.umask(mask)
-    return mask
