@@ -12,7 +12,7 @@ import numpy as np
 from spinledger.reconcile.coarse import BoolArray, FloatArray, usable_points
 from spinledger.reconcile.match import masked_by_hand
 from spinledger.reconcile.options import Constraints
-from spinledger.reconcile.refine import Refinement
+from spinledger.reconcile.refine_values import Refinement
 from spinledger.reconcile.windows import (
     Stretch,
     boxcar,

@@ -12,9 +12,9 @@ import numpy as np
 
 from spinledger.reconcile.assess import COUPLING_EXTRA_SD_HZ, SHIFT_EXTRA_SD_PPM
 from spinledger.reconcile.beam import shift_cost
-from spinledger.reconcile.coarse import FloatArray
+from spinledger.reconcile.coarse import BoolArray, FloatArray
 from spinledger.reconcile.options import Constraints
-from spinledger.reconcile.refine import Refinement
+from spinledger.reconcile.refine_values import Refinement
 from spinledger.values.claim import ClaimSet
 
 SURE_ODDS = 0.95
@@ -176,7 +176,7 @@ def _shift(
 def _coupling(
     claims: ClaimSet,
     couplings_hz: FloatArray,
-    determined: tuple[bool, ...],
+    determined: BoolArray,
     pair: Exchange,
 ) -> float:
     cost = 0.0
@@ -197,13 +197,11 @@ def _turned(values: FloatArray, rows: list[tuple[int, int]]) -> FloatArray:
     return moved
 
 
-def _turned_flags(
-    flags: tuple[bool, ...], rows: list[tuple[int, int]]
-) -> tuple[bool, ...]:
-    moved = list(flags)
+def _turned_flags(flags: BoolArray, rows: list[tuple[int, int]]) -> BoolArray:
+    moved = np.array(flags)
     for one, other in rows:
         moved[one], moved[other] = flags[other], flags[one]
-    return tuple(moved)
+    return moved
 
 
 def exchanged(claims: ClaimSet, refinement: Refinement, pair: Exchange) -> Refinement:

@@ -1,0 +1,195 @@
+"""One structure's own verdict: the same for reconcile and for rank."""
+
+from __future__ import annotations
+
+from collections.abc import Sequence
+from dataclasses import dataclass, replace
+
+import numpy as np
+
+from spinledger.prediction.claims import make_claims
+from spinledger.reconcile.assess import Assessment, assess, spectrum_misfit
+from spinledger.reconcile.coarse import CoarseSpectrum, coarse_spectrum
+from spinledger.reconcile.companions import given_strays
+from spinledger.reconcile.entries import Booking, book_entries
+from spinledger.reconcile.judge import VerdictModel, load_model, logit_of, state_of
+from spinledger.reconcile.match import masked_by_hand
+from spinledger.reconcile.mixture import joined
+from spinledger.reconcile.options import ReconcileOptions
+from spinledger.reconcile.solve import Limits, Solution, solve
+from spinledger.reconcile.strays import (
+    Unowned,
+    book_strays,
+    released,
+    table_impurities,
+    unowned_stretches,
+)
+from spinledger.values.claim import ClaimSet
+from spinledger.values.evidence import Evidence, Stray
+from spinledger.values.ledger import VerdictState
+from spinledger.values.structure import Structure
+
+
+@dataclass(frozen=True, slots=True, eq=False, kw_only=True)
+class Evaluation:
+    """What one structure comes to against one spectrum.
+
+    Attributes
+    ----------
+    structure : Structure
+    claims : ClaimSet
+    evidence : Evidence
+        With the claimed structure's own lines given back to it, and with the
+        strays that could be explained.
+    solution : Solution or None
+        None where nothing could be compared.
+    assessment : Assessment or None
+        After explained strays were taken out of the misfit.
+    booking : Booking or None
+    strays : tuple of Stray
+    faults : dict
+        Features of the verdict by name.
+    logit : float or None
+        Log odds at a prior of one half.
+    state : str
+    """
+
+    structure: Structure
+    claims: ClaimSet
+    evidence: Evidence
+    solution: Solution | None
+    assessment: Assessment | None
+    booking: Booking | None
+    strays: tuple[Stray, ...]
+    faults: dict[str, float]
+    logit: float | None
+    state: VerdictState
+
+    @property
+    def probability(self) -> float | None:
+        """Probability that the structure is right, at a prior of one half."""
+        if self.logit is None:
+            return None
+        return float(1.0 / (1.0 + np.exp(-np.clip(self.logit, -30.0, 30.0))))
+
+
+@dataclass(frozen=True, slots=True, eq=False, kw_only=True)
+class Bench:
+    """One spectrum laid out for several structures; the coarse view is shared."""
+
+    evidence: Evidence
+    options: ReconcileOptions
+    coarse: CoarseSpectrum
+    model: VerdictModel
+
+
+def lay_out(
+    evidence: Evidence, options: ReconcileOptions, model: VerdictModel | None = None
+) -> Bench:
+    """Prepare what all structures of one spectrum share."""
+    return Bench(
+        evidence=evidence,
+        options=options,
+        coarse=coarse_spectrum(evidence, masked_by_hand(options.constraints)),
+        model=model or load_model(),
+    )
+
+
+def claims_of(structure: Structure, bench: Bench) -> ClaimSet:
+    """Claims of a structure, and of the further species that share the tube."""
+    options = bench.options
+    temperature_k = options.temperature_k or bench.evidence.metadata.temperature_k
+    sets = [
+        make_claims(
+            one,
+            solvent=bench.evidence.solvent,
+            ph=options.ph,
+            temperature_k=temperature_k,
+        )
+        for one in (structure, *options.species)
+    ]
+    return joined(sets)
+
+
+def evaluate(structure: Structure, bench: Bench, limits: Limits) -> Evaluation:
+    """Claims, match, refinement, booking and own verdict of one structure."""
+    claims = claims_of(structure, bench)
+    evidence = released(bench.evidence, structure)
+    shared = bench.coarse if evidence is bench.evidence else None
+    constraints = bench.options.constraints
+    solution = None
+    if evidence.signals and any(one.visibility != "silent" for one in claims.claims):
+        solution = solve(
+            evidence, claims, constraints=constraints, coarse=shared, limits=limits
+        )
+    if solution is None:
+        return _not_judged(structure, claims, evidence)
+    booking = book_entries(evidence, solution, constraints)
+    misfit = spectrum_misfit(evidence, solution.best.refinement, constraints)
+    unowned = unowned_stretches(evidence, misfit, booking.area_per_proton)
+    explained = _explained(evidence, solution, bench, unowned)
+    settled = replace(evidence, strays=(*evidence.strays, *explained.values()))
+    assessment = assess(
+        settled,
+        claims,
+        solution.best.refinement,
+        absent=solution.absent,
+        hidden=solution.hidden,
+        constraints=constraints,
+    )
+    faults = assessment.faults()
+    logit = logit_of(faults, bench.model)
+    rest = [one for number, one in enumerate(unowned) if number not in explained]
+    return Evaluation(
+        structure=structure,
+        claims=claims,
+        evidence=settled,
+        solution=solution,
+        assessment=assessment,
+        booking=booking,
+        strays=book_strays(
+            settled, rest, booking.area_per_proton, constraints=constraints
+        ),
+        faults=faults,
+        logit=logit,
+        state=state_of(1.0 / (1.0 + float(np.exp(-logit))), bench.model),
+    )
+
+
+def _explained(
+    evidence: Evidence,
+    solution: Solution,
+    bench: Bench,
+    unowned: Sequence[Unowned],
+) -> dict[int, Stray]:
+    """Unowned stretches with a known owner: the tables', or a given companion."""
+    named = table_impurities(evidence, unowned)
+    named |= given_strays(evidence, solution, unowned, bench.options.companions)
+    area = solution.best.refinement.area_per_proton
+    return {
+        number: Stray(
+            low_ppm=unowned[number].low_ppm,
+            high_ppm=unowned[number].high_ppm,
+            kind=kind,
+            why=why,
+            protons=unowned[number].area / area if area > 0 else None,
+        )
+        for number, (kind, why) in named.items()
+    }
+
+
+def _not_judged(
+    structure: Structure, claims: ClaimSet, evidence: Evidence
+) -> Evaluation:
+    return Evaluation(
+        structure=structure,
+        claims=claims,
+        evidence=evidence,
+        solution=None,
+        assessment=None,
+        booking=None,
+        strays=book_strays(evidence, (), 0.0),
+        faults={},
+        logit=None,
+        state="not judged",
+    )

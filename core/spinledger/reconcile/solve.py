@@ -1,0 +1,225 @@
+"""One structure against one spectrum: match, refine the best few, take the best.
+
+Shifts in ppm, couplings in Hz, times in s.
+"""
+
+from __future__ import annotations
+
+import time
+from collections.abc import Callable
+from dataclasses import dataclass
+
+from spinledger.reconcile.assess import Assessment, assess
+from spinledger.reconcile.coarse import CoarseSpectrum
+from spinledger.reconcile.exchange import Odds, best_order
+from spinledger.reconcile.match import (
+    Hypothesis,
+    match,
+    starting_couplings,
+)
+from spinledger.reconcile.options import Constraints
+from spinledger.reconcile.refine import refine
+from spinledger.reconcile.refine_values import Refinement, Start
+from spinledger.values.claim import ClaimSet
+from spinledger.values.evidence import Evidence
+
+MAX_REFINED = 6
+MAX_REFINED_QUICK = 2
+COST_WINDOW = 6.0
+# A fit this good needs only its near ties beside it.
+GOOD_RESIDUAL = 0.05
+NEAR_TIE_COST = 3.0
+
+
+@dataclass(frozen=True, slots=True, kw_only=True)
+class Limits:
+    """How long a solution may be worked at.
+
+    Attributes
+    ----------
+    max_refined : int
+        Hypotheses refined at most.
+    check : callable or None
+        Raises when the user stopped.
+    deadline_s : float or None
+        Value of the monotonic clock after which no refinement begins.
+    """
+
+    max_refined: int = MAX_REFINED
+    check: Callable[[], None] | None = None
+    deadline_s: float | None = None
+
+    def is_over(self) -> bool:
+        """Whether the time is used up."""
+        return self.deadline_s is not None and time.monotonic() > self.deadline_s
+
+    def checked(self) -> None:
+        """Let the user's wish to stop through."""
+        if self.check is not None:
+            self.check()
+
+
+@dataclass(frozen=True, slots=True, eq=False, kw_only=True)
+class Fitted:
+    """One hypothesis after refinement."""
+
+    hypothesis: Hypothesis
+    refinement: Refinement
+    assessment: Assessment
+
+
+@dataclass(frozen=True, slots=True, eq=False, kw_only=True)
+class Solution:
+    """The best fit of a claim set, with what stood beside it.
+
+    Attributes
+    ----------
+    claims : ClaimSet
+    best : Fitted
+        In the order of look-alike claims that suits the predictions best.
+    others : tuple of Fitted
+        Further refined hypotheses, best first.
+    odds : tuple of Odds
+        Pairs of claims whose order is not sure.
+    match_cost : float
+        Of the best hypothesis on the coarse view.
+    is_complete : bool
+        False where the time ran out before all hypotheses were refined.
+    """
+
+    claims: ClaimSet
+    best: Fitted
+    others: tuple[Fitted, ...]
+    odds: tuple[Odds, ...]
+    match_cost: float
+    is_complete: bool
+
+    @property
+    def absent(self) -> frozenset[int]:
+        """Claims that are not in the spectrum."""
+        return self.best.hypothesis.absent
+
+    @property
+    def hidden(self) -> frozenset[int]:
+        """Claims under a mask."""
+        return self.best.hypothesis.hidden
+
+
+DEFAULT_LIMITS = Limits()
+
+
+def solve(
+    evidence: Evidence,
+    claims: ClaimSet,
+    *,
+    constraints: Constraints | None = None,
+    coarse: CoarseSpectrum | None = None,
+    limits: Limits = DEFAULT_LIMITS,
+) -> Solution | None:
+    """Best fit of a claim set, or None where nothing can be placed.
+
+    Parameters
+    ----------
+    evidence : Evidence
+    claims : ClaimSet
+    constraints : Constraints, optional
+    coarse : CoarseSpectrum, optional
+        Shared by the candidates of one spectrum.
+    limits : Limits
+    """
+    found = match(
+        evidence, claims, constraints=constraints, coarse=coarse, cancelled=limits.check
+    )
+    if not found.hypotheses:
+        return None
+    best_cost = found.hypotheses[0].cost
+    starts = [
+        one
+        for one in found.hypotheses[: limits.max_refined]
+        if one.cost <= best_cost + COST_WINDOW
+    ]
+    fits: list[Fitted] = []
+    is_complete = True
+    for one in starts:
+        limits.checked()
+        if fits and limits.is_over():
+            is_complete = False
+            break
+        if _is_good(fits) and one.cost > best_cost + NEAR_TIE_COST:
+            break
+        fits.append(_fitted(evidence, claims, one, constraints))
+    fits.sort(key=lambda fit: fit.assessment.selection_score)
+    best, odds = _ordered(evidence, claims, fits[0], constraints)
+    return Solution(
+        claims=claims,
+        best=best,
+        others=tuple(fits[1:]),
+        odds=odds,
+        match_cost=best_cost,
+        is_complete=is_complete,
+    )
+
+
+def _is_good(fits: list[Fitted]) -> bool:
+    return any(fit.assessment.residual_share < GOOD_RESIDUAL for fit in fits)
+
+
+def _fitted(
+    evidence: Evidence,
+    claims: ClaimSet,
+    hypothesis: Hypothesis,
+    constraints: Constraints | None,
+) -> Fitted:
+    start = Start(
+        shifts_ppm=hypothesis.shifts_ppm,
+        couplings_hz=starting_couplings(claims, constraints),
+        absent=hypothesis.absent,
+    )
+    refinement = refine(evidence, claims, start, constraints=constraints)
+    return Fitted(
+        hypothesis=hypothesis,
+        refinement=refinement,
+        assessment=_assessed(evidence, claims, hypothesis, refinement, constraints),
+    )
+
+
+def _assessed(
+    evidence: Evidence,
+    claims: ClaimSet,
+    hypothesis: Hypothesis,
+    refinement: Refinement,
+    constraints: Constraints | None,
+) -> Assessment:
+    return assess(
+        evidence,
+        claims,
+        refinement,
+        absent=hypothesis.absent,
+        hidden=hypothesis.hidden,
+        constraints=constraints,
+    )
+
+
+def _ordered(
+    evidence: Evidence,
+    claims: ClaimSet,
+    fit: Fitted,
+    constraints: Constraints | None,
+) -> tuple[Fitted, tuple[Odds, ...]]:
+    """The fit with look-alikes in their best order, assessed anew."""
+    left_out = fit.hypothesis.absent | fit.hypothesis.hidden
+    refinement, odds = best_order(
+        claims,
+        fit.refinement,
+        left_out,
+        offset_ppm=fit.assessment.offset_ppm,
+        constraints=constraints,
+    )
+    if refinement is fit.refinement:
+        return fit, odds
+    again = Fitted(
+        hypothesis=fit.hypothesis,
+        refinement=refinement,
+        assessment=_assessed(evidence, claims, fit.hypothesis, refinement, constraints),
+    )
+    return again, odds
