@@ -77,6 +77,20 @@ class SpinEngine:
         """Frequencies of all particles, then J of all pairs."""
         return len(self.topology.n_spins) + len(self.topology.pairs)
 
+    @property
+    def slope_cost(self) -> float:
+        """Cost of the derivatives of intensities, about microseconds."""
+        index = self._index
+        products = 0.0
+        for stack in index.transitions:
+            above, below = (
+                index.blocks[stack.upper].size,
+                index.blocks[stack.lower].size,
+            )
+            products += stack.weights.size * (above + below) * above * below
+        # Two operations for each product, 25e9 a second on one 2020s core.
+        return 8e-5 * products * self.n_parameters * max(self.topology.n_rows, 1)
+
     def diagonalise(self, frequencies_hz: Floats, couplings_hz: Floats) -> EigenSystem:
         """Energies and states of all blocks.
 

@@ -90,6 +90,35 @@ class Plan:
         """True if some part was too large to solve whole."""
         return self.error_hz > 0.0
 
+    @property
+    def drawn_claims(self) -> tuple[int, ...]:
+        """Claims that have lines, ascending."""
+        drawn = {claim for claim, _ in self.singlets}
+        for piece in self.pieces:
+            drawn.update(piece.row_claims)
+        return tuple(sorted(drawn))
+
+    @property
+    def moving_claims(self) -> tuple[int, ...]:
+        """Claims whose shift changes some line, ascending."""
+        moving = {claim for claim, _ in self.singlets}
+        for piece in self.pieces:
+            moving.update(claim for claim in piece.site_claims if claim is not None)
+        return tuple(sorted(moving))
+
+    @property
+    def couplings(self) -> tuple[int, ...]:
+        """Coupling parameters that change some line, ascending."""
+        found: set[int] = set()
+        for piece in self.pieces:
+            found.update(piece.bond_couplings.tolist())
+        return tuple(sorted(found))
+
+    @property
+    def exact_slope_cost(self) -> float:
+        """Cost of the derivatives of intensities, about microseconds."""
+        return float(sum(piece.engine.slope_cost for piece in self.pieces))
+
 
 @dataclass(slots=True, eq=False)
 class _Memory:

@@ -81,7 +81,7 @@ class FrequencyAxis:
     @property
     def frequencies_hz(self) -> Floats:
         """Frequency of every point, descending."""
-        return self.first_hz - self.step_hz * np.arange(self.n_points)
+        return self.first_hz - self.step_hz * np.arange(self.n_points, dtype=np.float64)
 
 
 @dataclass(frozen=True, slots=True, kw_only=True)
@@ -102,7 +102,7 @@ class Treatment:
 
     def factor(self, times_s: Floats) -> Floats:
         """Factor on the decay at times >= 0."""
-        factor: Floats = np.ones_like(times_s)
+        factor = np.ones_like(times_s)
         if self.window is not None and self.window.kind != "exponential":
             last = float(times_s[-1]) if self.length_s is None else self.length_s
             step = self.window
@@ -113,7 +113,7 @@ class Treatment:
             factor = apodization_window(step, times_s, length_s=last)
         if self.length_s is not None:
             factor = factor * (times_s <= self.length_s)
-        return factor
+        return np.asarray(factor, dtype=np.float64)
 
 
 def treatment_of(recipe: Recipe, spectrum: Spectrum) -> Treatment:
