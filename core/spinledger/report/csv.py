@@ -5,7 +5,7 @@ from __future__ import annotations
 import csv
 import io
 
-from spinledger.report.words import outgoing_state
+from spinledger.report.words import outgoing_state, with_sd
 from spinledger.values.ledger import Entry, EntryCoupling, Ledger
 
 COLUMNS = (
@@ -82,8 +82,8 @@ def _row(ledger: Ledger, entry: Entry) -> list[str]:
 def _coupling(coupling: EntryCoupling) -> str:
     if coupling.j_hz is None or not coupling.determined:
         return f"undetermined {coupling.partner}"
-    sd = "" if coupling.j_sd_hz is None else f" ± {coupling.j_sd_hz:.2f}"
-    return f"{abs(coupling.j_hz):.2f}{sd} {coupling.partner}"
+    value = with_sd(abs(coupling.j_hz), coupling.j_sd_hz, digits=2)
+    return f"{value} {coupling.partner}"
 
 
 def _group(entry: Entry) -> str:

@@ -62,20 +62,20 @@ def ledger_to_json(ledger: Ledger) -> dict[str, Any]:
     verdict = ledger.verdict
     return {
         "schema": SCHEMA,
-        "spectrum": _spectrum(ledger.evidence),
+        "spectrum": evidence_to_json(ledger.evidence),
         "structure": _structure(ledger),
         "entries": [_entry(entry) for entry in ledger.entries],
         "strays": [_stray(stray) for stray in ledger.strays],
         "balance": {
-            "claimed": _number(ledger.balance.claimed),
-            "found": _number(ledger.balance.found),
+            "claimed": finite(ledger.balance.claimed),
+            "found": finite(ledger.balance.found),
             "scale_signal": ledger.balance.scale_signal,
         },
         "verdict": {
             "state": verdict.state,
-            "probability": _number(verdict.probability),
-            "prior": _number(verdict.prior),
-            "likelihood_ratio": _number(verdict.likelihood_ratio),
+            "probability": finite(verdict.probability),
+            "prior": finite(verdict.prior),
+            "likelihood_ratio": finite(verdict.likelihood_ratio),
             "unique": verdict.unique,
             "reasons": list(verdict.reasons),
         },
@@ -127,23 +127,24 @@ def read_ledger_json(path: Path) -> dict[str, Any]:
     return tree
 
 
-def _spectrum(evidence: Evidence) -> dict[str, Any]:
+def evidence_to_json(evidence: Evidence) -> dict[str, Any]:
+    """The "spectrum" part of a record."""
     metadata = evidence.metadata
     return {
         "source": metadata.source_name,
         "sha256": metadata.sha256,
-        "field_mhz": _number(metadata.spectrometer_frequency_mhz),
+        "field_mhz": finite(metadata.spectrometer_frequency_mhz),
         "nucleus": metadata.nucleus,
         "solvent": evidence.solvent,
         "solvent_seen": evidence.solvent_seen,
         "reference": {
             "by": evidence.reference.by,
-            "sd_ppm": _number(evidence.reference.sd_ppm),
-            "offset_ppm": _number(evidence.reference.offset_ppm),
+            "sd_ppm": finite(evidence.reference.sd_ppm),
+            "offset_ppm": finite(evidence.reference.offset_ppm),
             "why": evidence.reference.why,
         },
         "solvent_header": evidence.solvent_header,
-        "temperature_k": _number(metadata.temperature_k),
+        "temperature_k": finite(metadata.temperature_k),
         "format": metadata.format_name,
         "doubts": [*metadata.notes, *evidence.quality.doubts],
     }
@@ -191,23 +192,23 @@ def _entry(entry: Entry) -> dict[str, Any]:
         "species": entry.species,
         "protons": entry.protons,
         "state": entry.state,
-        "predicted_shift_ppm": _number(entry.predicted_shift_ppm),
-        "predicted_shift_sd_ppm": _number(entry.predicted_shift_sd_ppm),
-        "shift_ppm": _number(entry.shift_ppm),
-        "shift_sd_ppm": _number(entry.shift_sd_ppm),
+        "predicted_shift_ppm": finite(entry.predicted_shift_ppm),
+        "predicted_shift_sd_ppm": finite(entry.predicted_shift_sd_ppm),
+        "shift_ppm": finite(entry.shift_ppm),
+        "shift_sd_ppm": finite(entry.shift_sd_ppm),
         "range_ppm": None
         if entry.range_ppm is None
-        else [_number(end) for end in entry.range_ppm],
-        "integral_protons": _number(entry.integral_protons),
+        else [finite(end) for end in entry.range_ppm],
+        "integral_protons": finite(entry.integral_protons),
         "multiplicity": entry.multiplicity,
         "group": _group(entry.group),
         "couplings": [_coupling(one) for one in entry.couplings],
-        "integral_sd_protons": _number(entry.integral_sd_protons),
+        "integral_sd_protons": finite(entry.integral_sd_protons),
         "predicted_multiplicity": entry.predicted_multiplicity,
-        "width_hz": _number(entry.width_hz),
-        "shift_residual_sd": _number(entry.shift_residual_sd),
-        "integral_residual_sd": _number(entry.integral_residual_sd),
-        "j_residual_sd": _number(entry.j_residual_sd),
+        "width_hz": finite(entry.width_hz),
+        "shift_residual_sd": finite(entry.shift_residual_sd),
+        "integral_residual_sd": finite(entry.integral_residual_sd),
+        "j_residual_sd": finite(entry.j_residual_sd),
         "why": entry.why,
         "reasons": list(entry.reasons),
     }
@@ -219,32 +220,32 @@ def _group(group: EntryGroup | None) -> dict[str, Any] | None:
     return {
         "kind": group.kind,
         "with": list(group.partners),
-        "odds": _number(group.odds),
+        "odds": finite(group.odds),
     }
 
 
 def _coupling(coupling: EntryCoupling) -> dict[str, Any]:
     tree: dict[str, Any] = {
         "partner": coupling.partner,
-        "j_hz": _number(coupling.j_hz) if coupling.determined else None,
+        "j_hz": finite(coupling.j_hz) if coupling.determined else None,
         "determined": coupling.determined,
-        "j_sd_hz": _number(coupling.j_sd_hz) if coupling.determined else None,
-        "predicted_j_hz": _number(coupling.predicted_j_hz),
-        "predicted_j_sd_hz": _number(coupling.predicted_j_sd_hz),
+        "j_sd_hz": finite(coupling.j_sd_hz) if coupling.determined else None,
+        "predicted_j_hz": finite(coupling.predicted_j_hz),
+        "predicted_j_sd_hz": finite(coupling.predicted_j_sd_hz),
         "kind": coupling.kind,
         "disputed": coupling.is_disputed,
     }
     if coupling.sum_hz is not None:
-        tree["sum_hz"] = _number(coupling.sum_hz)
+        tree["sum_hz"] = finite(coupling.sum_hz)
     return tree
 
 
 def _stray(stray: Stray) -> dict[str, Any]:
     return {
-        "range_ppm": [_number(stray.low_ppm), _number(stray.high_ppm)],
+        "range_ppm": [finite(stray.low_ppm), finite(stray.high_ppm)],
         "kind": stray.kind,
         "why": stray.why,
-        "protons": _number(stray.protons),
+        "protons": finite(stray.protons),
     }
 
 
@@ -253,7 +254,7 @@ def _contender(contender: Contender) -> dict[str, Any]:
         "name": contender.name,
         "smiles": contender.smiles,
         "origin": contender.origin,
-        "probability": _number(contender.probability),
+        "probability": finite(contender.probability),
         "verdict": contender.verdict,
         "excluded": contender.excluded,
         "why": contender.why,
@@ -263,12 +264,12 @@ def _contender(contender: Contender) -> dict[str, Any]:
 def _advice(advice: Advice) -> dict[str, Any]:
     return {
         "measurement": advice.measurement,
-        "expected_discrimination": _number(advice.expected_discrimination),
+        "expected_discrimination": finite(advice.expected_discrimination),
         "look_for": advice.look_for,
     }
 
 
-def _number(value: float | None) -> float | int | None:
+def finite(value: float | None) -> float | int | None:
     """Plain finite number with seven digits, or None."""
     if value is None or not math.isfinite(value):
         return None

@@ -1,0 +1,194 @@
+"""report.xlsx: assignment, couplings, strays and audit trail as sheets of numbers.
+
+Shifts in ppm, couplings in Hz, integrals in protons.
+"""
+
+from __future__ import annotations
+
+import io
+from collections.abc import Sequence
+from typing import Any
+
+from openpyxl import Workbook
+from openpyxl.styles import Border, Font, Side
+from openpyxl.utils import get_column_letter
+
+from spinledger.project.audit import versions
+from spinledger.report.cautions import printed_cautions
+from spinledger.report.context import ReportContext
+from spinledger.report.tables import (
+    CONTENDER_HEAD,
+    STRAY_HEAD,
+    audit_rows,
+    contender_rows,
+    probability_words,
+    recipe_lines,
+    stray_rows,
+    verdict_title,
+)
+from spinledger.report.text import experimental_text
+from spinledger.report.words import outgoing, outgoing_state
+from spinledger.values.ledger import Entry, Ledger
+
+Cell = str | float | int | None
+_ASSIGNMENT = (
+    "claim",
+    "atoms",
+    "protons",
+    "state",
+    "shift_ppm",
+    "shift_sd_ppm",
+    "range_low_ppm",
+    "range_high_ppm",
+    "integral_protons",
+    "multiplicity",
+    "predicted_shift_ppm",
+    "predicted_shift_sd_ppm",
+    "shift_residual_sd",
+    "integral_residual_sd",
+    "j_residual_sd",
+    "why",
+)
+_COUPLINGS = (
+    "claim",
+    "partner",
+    "j_hz",
+    "j_sd_hz",
+    "determined",
+    "sum_hz",
+    "predicted_j_hz",
+    "predicted_j_sd_hz",
+    "kind",
+)
+
+
+def report_xlsx(ledger: Ledger, context: ReportContext | None = None) -> bytes:
+    """The report as a workbook; numbers stay numbers.
+
+    Parameters
+    ----------
+    ledger : Ledger
+    context : ReportContext, optional
+
+    Returns
+    -------
+    bytes
+        Content of an .xlsx file.
+    """
+    chosen = context or ReportContext()
+    book = Workbook()
+    book.remove(book.active)
+    sheet = _sheet(
+        book, "Assignment", _ASSIGNMENT, [_entry(ledger, e) for e in ledger.entries]
+    )
+    _close_account(sheet, ledger)
+    _sheet(book, "Couplings", _COUPLINGS, _coupling_rows(ledger))
+    _sheet(book, "Strays", STRAY_HEAD, stray_rows(ledger))
+    _sheet(book, "Contenders", CONTENDER_HEAD, contender_rows(ledger))
+    _sheet(book, "Verdict", ("what", "value"), _verdict_rows(ledger, chosen))
+    _sheet(book, "Audit", ("what", "value"), _audit_rows(ledger, chosen))
+    stream = io.BytesIO()
+    book.save(stream)
+    return stream.getvalue()
+
+
+def _entry(ledger: Ledger, entry: Entry) -> tuple[Cell, ...]:
+    low, high = entry.range_ppm or (None, None)
+    return (
+        entry.claim,
+        " ".join(str(atom + 1) for atom in entry.atoms),
+        entry.protons,
+        outgoing_state(ledger, entry),
+        entry.shift_ppm,
+        entry.shift_sd_ppm,
+        low,
+        high,
+        entry.integral_protons,
+        entry.multiplicity,
+        entry.predicted_shift_ppm,
+        entry.predicted_shift_sd_ppm,
+        entry.shift_residual_sd,
+        entry.integral_residual_sd,
+        entry.j_residual_sd,
+        entry.why,
+    )
+
+
+def _coupling_rows(ledger: Ledger) -> list[tuple[Cell, ...]]:
+    return [
+        (
+            entry.claim,
+            one.partner,
+            one.j_hz if one.determined else None,
+            one.j_sd_hz if one.determined else None,
+            "yes" if one.determined else "no",
+            one.sum_hz,
+            one.predicted_j_hz,
+            one.predicted_j_sd_hz,
+            one.kind,
+        )
+        for entry in ledger.entries
+        for one in entry.couplings
+    ]
+
+
+def _verdict_rows(ledger: Ledger, context: ReportContext) -> list[tuple[Cell, ...]]:
+    reasons: list[tuple[Cell, ...]] = [
+        ("reason", outgoing(one)) for one in ledger.verdict.reasons
+    ]
+    cautions: list[tuple[Cell, ...]] = [
+        ("caution", one) for one in printed_cautions(ledger)
+    ]
+    return [
+        ("verdict", verdict_title(ledger)),
+        ("probability", probability_words(ledger)),
+        *reasons,
+        ("experimental section", experimental_text(ledger, context.text)),
+        *cautions,
+    ]
+
+
+def _audit_rows(ledger: Ledger, context: ReportContext) -> list[tuple[Cell, ...]]:
+    rows: list[tuple[Cell, ...]] = [*audit_rows(ledger)]
+    rows += [("recipe", line) for line in recipe_lines(ledger)]
+    rows += [("hand edit", edit) for edit in ledger.edits]
+    rows += [(one.when, one.what) for one in context.audit]
+    rows += [(f"version of {name}", number) for name, number in versions().items()]
+    return rows
+
+
+def _sheet(
+    book: Any, title: str, head: Sequence[str], rows: Sequence[Sequence[Cell]]
+) -> Any:
+    sheet = book.create_sheet(title)
+    sheet.append(list(head))
+    for cell in sheet[1]:
+        cell.font = Font(bold=True)
+    sheet.freeze_panes = "A2"
+    for row in rows:
+        sheet.append([None] * len(row))
+        for column, value in enumerate(row, start=1):
+            cell = sheet.cell(row=sheet.max_row, column=column)
+            cell.value = value
+            if isinstance(value, str):  # text stays text, even with a leading "="
+                cell.data_type = "s"
+    _widths(sheet)
+    return sheet
+
+
+def _widths(sheet: Any) -> None:
+    for number, column in enumerate(sheet.columns, start=1):
+        longest = max(len(str(cell.value or "")) for cell in column)
+        sheet.column_dimensions[get_column_letter(number)].width = min(60, longest + 2)
+
+
+def _close_account(sheet: Any, ledger: Ledger) -> None:
+    """Balance under the entries, closed by a double rule."""
+    row = sheet.max_row + 1
+    sheet.cell(row=row, column=1, value="balance")
+    sheet.cell(row=row, column=3, value=ledger.balance.claimed)
+    sheet.cell(row=row, column=9, value=ledger.balance.found)
+    for column in range(1, len(_ASSIGNMENT) + 1):
+        cell = sheet.cell(row=row, column=column)
+        cell.border = Border(bottom=Side(style="double"))
+        cell.font = Font(bold=True)
