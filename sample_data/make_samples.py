@@ -334,6 +334,7 @@ def write_jcamp(sample: Sample, folder: Path) -> None:
     counts = counts_of(make_fid(sample)).reshape(-1, 2)
     carrier_mhz = FIELD_MHZ * (1.0 + CARRIER_PPM * 1e-6)
     last_s = (N_POINTS - 1) / WIDTH_HZ
+    zero_mhz = header_frequency_mhz(sample)
     edge_ppm = CARRIER_PPM + WIDTH_HZ / 2 / FIELD_MHZ - sample.axis_error_ppm
     header = [
         f"##TITLE= {sample.title}", "##JCAMPDX= 6.00", "##DATA TYPE= NMR FID",
@@ -344,7 +345,10 @@ def write_jcamp(sample: Sample, folder: Path) -> None:
         f"##.SOLVENT NAME= {sample.solvent}",
         f"##.SHIFT REFERENCE= INTERNAL, {sample.solvent}, 1, {edge_ppm:.6f}",
         f"##$GRPDLY= {GROUP_DELAY_POINTS}", "##$DECIM= 2496", "##$DSPFVS= 20",
-        f"##$SWH= {WIDTH_HZ}", "##$TE= 298.0",
+        f"##$SWH= {WIDTH_HZ}",
+        "##$TE= 298.0",
+        f"##$BF1= {zero_mhz:.9f}",
+        f"##$O1= {(carrier_mhz - zero_mhz) * 1e6:.6f}",
         "##NTUPLES= NMR FID",
         "##VAR_NAME= TIME, FID/REAL, FID/IMAG, PAGE NUMBER",
         "##SYMBOL= X, R, I, N",
