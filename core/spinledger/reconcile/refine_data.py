@@ -7,6 +7,7 @@ the tallest compared point, so that every number in the fit is near one.
 from __future__ import annotations
 
 from dataclasses import dataclass
+from itertools import pairwise
 
 import numpy as np
 import numpy.typing as npt
@@ -165,8 +166,8 @@ class StageData:
         Thinned.
     broadening_hz : float, Hz
         Lorentz half width put on the data.
-    places : numpy.ndarray of int, shape (axis.n_points,)
-        Which compared point each axis point is, -1 if none.
+    runs : tuple of slice
+        Stretches of the axis that are compared, in order.
     values : numpy.ndarray, shape (n,)
     sds : numpy.ndarray, shape (n,)
         Noise and expected model error together.
@@ -174,14 +175,14 @@ class StageData:
         One constant and one slope for each window, over ``sds`` scale 1.
     baseline_sds : numpy.ndarray, shape (n_baselines,)
     windows : tuple of slice
-        Runs of compared points.
+        Where each run stands among the compared points.
     correlation : float
         Points that count as one, because the misfit is smooth.
     """
 
     axis: FrequencyAxis
     broadening_hz: float
-    places: Integers
+    runs: tuple[slice, ...]
     values: Floats
     sds: Floats
     baselines: Floats
@@ -193,6 +194,18 @@ class StageData:
     def n_points(self) -> int:
         """Compared points."""
         return int(self.values.size)
+
+    def overlaps(self, start: int, stop: int) -> list[tuple[slice, slice]]:
+        """Compared parts of an axis stretch: slices of it, and of the points."""
+        found = []
+        for run, window in zip(self.runs, self.windows, strict=True):
+            low, high = max(run.start, start), min(run.stop, stop)
+            if low < high:
+                shift = window.start - run.start
+                found.append(
+                    (slice(low - start, high - start), slice(low + shift, high + shift))
+                )
+        return found
 
 
 # Model error expected before a fit: 2 % of a window's tallest point, at least
@@ -233,14 +246,10 @@ def stage_data(
     wanted |= widened(prepared.is_signal[::stride], pad)
     chosen = wanted & compared
     runs = [run for run in stretches(chosen) if run.stop - run.start >= 4]
-    places = np.full(axis.n_points, -1, dtype=np.int64)
-    windows, begin = [], 0
-    for run in runs:
-        size = run.stop - run.start
-        places[run.start : run.stop] = np.arange(begin, begin + size)
-        windows.append(slice(begin, begin + size))
-        begin += size
-    values = thinned[places >= 0]
+    ends = np.cumsum([0, *(run.stop - run.start for run in runs)]).tolist()
+    windows = [slice(a, b) for a, b in pairwise(ends)]
+    axis_runs = tuple(slice(run.start, run.stop) for run in runs)
+    values = np.concatenate([thinned[:0], *(thinned[run] for run in axis_runs)])
     noise = prepared.noise_sd / np.sqrt(
         max(1.0, np.pi * broadening_hz / prepared.axis.step_hz)
     )
@@ -253,7 +262,7 @@ def stage_data(
     return StageData(
         axis=axis,
         broadening_hz=broadening_hz,
-        places=places,
+        runs=axis_runs,
         values=values,
         sds=sds,
         baselines=baselines,

@@ -217,8 +217,7 @@ class _Piece:
     """Where a claim's image falls among the compared points."""
 
     images: Images
-    source: slice | Integers
-    target: Integers
+    overlaps: list[tuple[slice, slice]]
     moving: Integers  # numbers in the parameter vector
 
 
@@ -241,21 +240,40 @@ def _drawn_claims(
     pieces = []
     for row, claim in enumerate(layout.drawn):
         rows = slice(int(bounds[claim]), int(bounds[claim + 1]))
-        moving = np.flatnonzero(depends[claim])
+        moving = _that_matter(lines, rows, columns, depends[claim])
         images = draw(
             _line_list(lines, rows, columns[moving]),
             data.axis,
             width_hz=float(widths[row]),
             shape=shape,
         )
-        begin = max(images.start, 0)
-        end = min(images.start + images.value.size, data.axis.n_points)
-        places = data.places[begin:end] if begin < end else data.places[:0]
-        inside = np.flatnonzero(places >= 0)
-        piece = _Piece(images, inside + (begin - images.start), places[inside], moving)
-        values[row, piece.target] = images.value[piece.source]
-        pieces.append(piece)
+        overlaps = data.overlaps(images.start, images.start + images.value.size)
+        for source, target in overlaps:
+            values[row, target] = images.value[source]
+        pieces.append(_Piece(images, overlaps, moving))
     return _Drawn(values, tuple(pieces))
+
+
+# A parameter that moves a claim's lines by less than this share of its own
+# change, and their intensities by less than this share of a proton per Hz, has
+# no visible image.
+_NO_EFFECT = 1e-3
+
+
+def _that_matter(
+    lines: ClaimLineSet, rows: slice, columns: Integers, depends: Flags
+) -> Integers:
+    """Which fitted parameters change the lines of one claim visibly."""
+    candidates = np.flatnonzero(depends)
+    if lines.d_frequency is None:
+        return candidates
+    weights = np.abs(lines.protons[rows])
+    moved = np.abs(lines.d_frequency[rows][:, columns[candidates]])
+    effect = (weights @ moved) / max(float(weights.sum()), 1e-30)
+    if lines.d_protons is not None:
+        changed = np.abs(lines.d_protons[rows][:, columns[candidates]]).sum(axis=0)
+        effect = np.maximum(effect, changed)
+    return candidates[effect > _NO_EFFECT]
 
 
 def _line_list(lines: ClaimLineSet, rows: slice, columns: Integers) -> LineList:
@@ -277,13 +295,14 @@ def _jacobian(problem: Problem, drawn: _Drawn, amplitudes: Floats) -> Floats:
         by_share = images.by_gauss_share
         if by_parameter is None or by_width is None or by_share is None:
             raise ValueError("lines: need derivatives for a Jacobian")
-        where = np.ix_(piece.moving, piece.target)
-        jacobian[where] += amplitude * by_parameter[:, piece.source]
-        width_change = amplitude * by_width[piece.source]
-        jacobian[layout.n_moving, piece.target] += width_change
-        jacobian[layout.n_moving + 1 + row, piece.target] = width_change
-        if layout.fits_gauss_share:
-            jacobian[-1, piece.target] += amplitude * by_share[piece.source]
+        for source, target in piece.overlaps:
+            width_change = amplitude * by_width[source]
+            for image, place in zip(by_parameter, piece.moving, strict=True):
+                jacobian[place, target] += amplitude * image[source]
+            jacobian[layout.n_moving, target] += width_change
+            jacobian[layout.n_moving + 1 + row, target] = width_change
+            if layout.fits_gauss_share:
+                jacobian[-1, target] += amplitude * by_share[source]
     return jacobian
 
 

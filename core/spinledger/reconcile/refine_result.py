@@ -204,10 +204,9 @@ def _points_near(outcome: Outcome, claim: int) -> Flags:
     reach = round(10.0 / data.axis.step_hz)
     own = lines.frequencies_hz[lines.claim == claim]
     places = np.rint((data.axis.first_hz - own) / data.axis.step_hz).astype(np.int64)
-    for place in np.unique(places):
-        low, high = max(place - reach, 0), max(place + reach + 1, 0)
-        points = data.places[low:high]
-        near[points[points >= 0]] = True
+    for place in np.unique(places).tolist():
+        for _, target in data.overlaps(place - reach, place + reach + 1):
+            near[target] = True
     return near
 
 
