@@ -32,6 +32,7 @@ from spinledger.io.limits import (
 )
 from spinledger.io.records import Block, parse_parameters
 from spinledger.io.samples import (
+    as_floats,
     check_fid_samples,
     check_frequency,
     check_width,
@@ -266,7 +267,7 @@ def _read_numbers(
     order = block.number(order_label)
     if order is None:
         return _likelier_order(content, kind)
-    return np.frombuffer(content, (">" if order == 1 else "<") + kind).astype(float)
+    return as_floats(np.frombuffer(content, (">" if order == 1 else "<") + kind))
 
 
 def _likelier_order(content: bytes, kind: str) -> npt.NDArray[np.float64]:
@@ -275,7 +276,7 @@ def _likelier_order(content: bytes, kind: str) -> npt.NDArray[np.float64]:
     Swapped bytes turn small integers into huge ones; a FID is mostly small.
     """
     with np.errstate(invalid="ignore", over="ignore"):
-        both = [np.frombuffer(content, order + kind).astype(float) for order in "<>"]
+        both = [as_floats(np.frombuffer(content, order + kind)) for order in "<>"]
         little, big = (np.median(np.abs(values)) for values in both)
     return both[1] if big < little else both[0]
 

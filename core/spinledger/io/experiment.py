@@ -5,6 +5,8 @@ from __future__ import annotations
 from dataclasses import dataclass
 from pathlib import Path
 
+from spinledger.io import normalise
+
 
 @dataclass(frozen=True, slots=True, kw_only=True)
 class Experiment:
@@ -52,8 +54,8 @@ class Experiment:
 
 
 def summary_line(*parts: str | None) -> str:
-    """Join the parts that are known."""
-    return ", ".join(part for part in parts if part)
+    """Join the parts that are known, each as one short printable line."""
+    return ", ".join(normalise.shown(part) for part in parts if part)
 
 
 def field_text(spectrometer_frequency_mhz: float | None) -> str | None:

@@ -34,11 +34,13 @@ from spinledger.io.limits import (
     decode_text,
     read_text,
 )
+from spinledger.io.normalise import shown
 from spinledger.io.records import Block, parse_blocks, parse_number, plain_label
 from spinledger.io.samples import (
     check_fid_samples,
     check_frequency,
     check_width,
+    complex_from_parts,
     make_spectrum,
     plausible_carrier,
 )
@@ -156,7 +158,7 @@ def _has_table(block: Block) -> bool:
 
 def _nothing_here(blocks: _DataBlocks) -> str:
     if blocks.other_types:
-        kinds = ", ".join(kind[:40].lower() for kind in blocks.other_types[:3])
+        kinds = ", ".join(shown(kind).lower() for kind in blocks.other_types[:3])
         return (
             f"holds {kinds} but no NMR spectrum or FID; export the spectrum itself "
             "as JCAMP-DX"
@@ -423,10 +425,9 @@ def _read_fid(path: Path, block: Block) -> Fid:
         )
     frequency_mhz = check_frequency(path, _observe_mhz(block))
     width_hz, width_notes = _fid_width(path, block, columns)
-    n_both = min(columns.real.size, columns.imaginary.size)
     samples, notes = check_fid_samples(
         path,
-        columns.real[:n_both] + 1j * columns.imaginary[:n_both],
+        complex_from_parts(columns.real, columns.imaginary),
         columns.n_declared,
     )
     delay, delay_notes = _fid_delay(block, samples.size)

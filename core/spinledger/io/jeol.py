@@ -21,9 +21,11 @@ from spinledger.io.checksum import file_sha256
 from spinledger.io.experiment import Experiment, field_text, summary_line
 from spinledger.io.limits import MAX_BINARY_BYTES, check_point_count, read_bytes
 from spinledger.io.samples import (
+    as_floats,
     check_fid_samples,
     check_frequency,
     check_width,
+    complex_from_parts,
     make_spectrum,
     plausible_carrier,
 )
@@ -393,12 +395,14 @@ def _sections(
     start = int(header["data_at"])
     n_sections = 2 if axis_type == _AXIS_COMPLEX else 1
     n_there = max(0, (len(file.content) - start) // kind.itemsize)
-    numbers = np.frombuffer(
-        file.content,
-        kind,
-        count=min(n_there, n_sections * n_stored),
-        offset=min(start, len(file.content)),
-    ).astype(np.float64)
+    numbers = as_floats(
+        np.frombuffer(
+            file.content,
+            kind,
+            count=min(n_there, n_sections * n_stored),
+            offset=min(start, len(file.content)),
+        )
+    )
     # The sections follow one another: a cut file loses the imaginary part first.
     first, last = int(header["starts"][0]), int(header["stops"][0])
     kept = slice(first, last + 1) if first <= last < n_stored else slice(0, n_stored)
@@ -419,9 +423,9 @@ def _read_fid(
         raise SpectrumFormatError(
             path, "holds only the real part of its FID; export it with both parts"
         )
-    n_both = min(real.size, imaginary.size)
+    # JEOL's frequencies run the other way round: the conjugate has our sense.
     samples, sample_notes = check_fid_samples(
-        path, real[:n_both] - 1j * imaginary[:n_both], n_declared
+        path, complex_from_parts(real, -imaginary), n_declared
     )
     delay, delay_notes = _delay(file.parameters, samples.size)
     return Fid(

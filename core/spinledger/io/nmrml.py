@@ -27,11 +27,14 @@ from spinledger.io import normalise
 from spinledger.io.checksum import file_sha256
 from spinledger.io.experiment import Experiment, field_text, summary_line
 from spinledger.io.limits import MAX_POINTS, MAX_TEXT_BYTES, read_bytes
+from spinledger.io.normalise import shown
 from spinledger.io.records import parse_number
 from spinledger.io.samples import (
+    as_floats,
     check_fid_samples,
     check_frequency,
     check_width,
+    complex_from_parts,
     make_spectrum,
     plausible_carrier,
 )
@@ -205,13 +208,13 @@ def _numbers(path: Path, node: ElementTree.Element) -> npt.NDArray[np.float64]:
         width, kind, order = 8, "f8", "<"
     else:
         raise SpectrumFormatError(
-            path, f"has the unknown byte format {written[:40]!r}; export it again"
+            path, f"has the unknown byte format {shown(written)!r}; export it again"
         )
     content = _decode(path, node)
     content = content[: len(content) // width * width]
     if kind.startswith("f"):
         order = _likelier_float_order(content, kind)
-    return np.frombuffer(content, order + kind).astype(np.float64)
+    return as_floats(np.frombuffer(content, order + kind))
 
 
 def _likelier_float_order(content: bytes, kind: str) -> str:
@@ -219,7 +222,7 @@ def _likelier_float_order(content: bytes, kind: str) -> str:
     spreads: dict[str, float] = {}
     for order in "<>":
         with np.errstate(invalid="ignore", over="ignore"):
-            values = np.abs(np.frombuffer(content, order + kind)[:65536].astype(float))
+            values = np.abs(as_floats(np.frombuffer(content, order + kind)[:65536]))
         usable = values[np.isfinite(values) & (values > 0)]
         lost = np.count_nonzero(~np.isfinite(values))
         spreads[order] = (
@@ -273,7 +276,7 @@ def _read_fid(
         raise SpectrumFormatError(path, "holds no FID; export it again with the FID")
     width_hz = check_width(path, document.value("sweepWidth"))
     numbers = _numbers(path, node)
-    raw = numbers[0 : numbers.size // 2 * 2 : 2] + 1j * numbers[1::2]
+    raw = complex_from_parts(numbers[0::2], numbers[1::2])
     samples, sample_notes = check_fid_samples(
         path, np.conj(raw) if document.is_varian else raw, None
     )

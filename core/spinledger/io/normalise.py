@@ -36,6 +36,12 @@ _NAMED_NUCLEI = {
 }
 
 
+def shown(text: str, longest: int = 40) -> str:
+    """Text of a header as it may stand in a sentence: one line, printable, short."""
+    plain = "".join(sign if sign.isprintable() else " " for sign in text)
+    return " ".join(plain.split())[:longest]
+
+
 def nucleus_name(written: str | None) -> str | None:
     """Nucleus in the form "1H" from "^1H", "H1", "Proton", "<13C>" and the like.
 
@@ -76,7 +82,7 @@ def require_proton(path: Path, nucleus: str | None) -> tuple[str, tuple[str, ...
     if nucleus != "1H":
         raise SpectrumFormatError(
             path,
-            f"holds {nucleus} data and only 1H can be reconciled; "
+            f"holds {shown(nucleus, 12)} data and only 1H can be reconciled; "
             "give the proton spectrum of this sample",
         )
     return nucleus, ()

@@ -3,6 +3,7 @@
 from __future__ import annotations
 
 from pathlib import Path
+from typing import Any
 
 import numpy as np
 import numpy.typing as npt
@@ -16,6 +17,25 @@ _LEAST_SHARE = 0.5
 # Correlation of the imaginary part with the Hilbert transform of the real one
 # below which the two do not belong together.
 _LEAST_CORRELATION = 0.1
+
+
+def as_floats(numbers: npt.NDArray[Any]) -> npt.NDArray[np.float64]:
+    """Real numbers as float64; odd NaN patterns in damaged files pass silently."""
+    with np.errstate(invalid="ignore", over="ignore"):
+        return numbers.astype(np.float64)
+
+
+def complex_from_parts(
+    real: npt.NDArray[np.float64], imaginary: npt.NDArray[np.float64]
+) -> npt.NDArray[np.complex128]:
+    """Complex numbers from two parts, cut to the shorter one.
+
+    Put together without arithmetic: damaged files hold NaN, which is told later.
+    """
+    n_both = min(real.size, imaginary.size)
+    joined = np.empty(n_both, dtype=np.complex128)
+    joined.real, joined.imag = real[:n_both], imaginary[:n_both]
+    return joined
 
 
 def check_fid_samples(
@@ -161,7 +181,7 @@ def make_spectrum(
     if imaginary is not None and imaginary.size != n_points:
         imaginary = None
     dispersive = np.zeros_like(real) if imaginary is None else imaginary
-    _check_finite(path, real + 1j * dispersive)
+    _check_finite(path, complex_from_parts(real, dispersive))
     if np.ptp(real) == 0:
         raise SpectrumFormatError(
             path, "holds a spectrum without any signal; process or export it again"

@@ -27,9 +27,11 @@ from spinledger.io.limits import (
 )
 from spinledger.io.records import parse_number
 from spinledger.io.samples import (
+    as_floats,
     check_fid_samples,
     check_frequency,
     check_width,
+    complex_from_parts,
     make_spectrum,
     plausible_carrier,
 )
@@ -188,8 +190,8 @@ def _read_1d(path: Path) -> tuple[npt.NDArray[np.float64], npt.NDArray[np.comple
         header, values = nmrglue_spinsolve.read(
             str(path.parent), specfile=path.name, acqupar="", procpar=""
         )
-    axis = np.asarray(header["spectrum"]["xaxis"], dtype=np.float64)
-    return axis, np.asarray(values, dtype=np.complex128)
+    parts = complex_from_parts(as_floats(values.real), as_floats(values.imag))
+    return as_floats(header["spectrum"]["xaxis"]), parts
 
 
 def _read_fid(

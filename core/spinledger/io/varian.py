@@ -28,9 +28,11 @@ from spinledger.io.limits import (
 )
 from spinledger.io.records import parse_number
 from spinledger.io.samples import (
+    as_floats,
     check_fid_samples,
     check_frequency,
     check_width,
+    complex_from_parts,
     plausible_carrier,
 )
 from spinledger.values.acquisition import Fid, Metadata
@@ -182,7 +184,8 @@ def _read_trace(path: Path) -> tuple[npt.NDArray[np.complexfloating], int]:
     kind = np.dtype(nmrglue_varian.find_dtype(header))
     n_numbers = min(2 * n_declared, (len(content) - start) // kind.itemsize)
     numbers = np.frombuffer(content, kind, count=n_numbers // 2 * 2, offset=start)
-    return numbers[0::2].astype(float) + 1j * numbers[1::2].astype(float), n_declared
+    real, imaginary = as_floats(numbers[0::2]), as_floats(numbers[1::2])
+    return complex_from_parts(real, imaginary), n_declared
 
 
 def _carrier_ppm(
