@@ -31,7 +31,8 @@ from spinledger.report.lanes import (
     tallest,
 )
 from spinledger.report.palette import BARK, MUTED
-from spinledger.report.svg import Canvas, number, text_width
+from spinledger.report.roots import RootLabel, draw_roots
+from spinledger.report.svg import Canvas
 from spinledger.report.trees import Tree, claim_tree, draw_tree, storeys
 from spinledger.report.words import fixed, label_glyphs, solvent_glyphs
 from spinledger.values.evidence import Stray
@@ -257,7 +258,7 @@ def _draw_trees(scene: _Scene) -> None:
         if tree is not None and stretch is not None:
             shown.append((entry, tree, stretch))
     tip = scene.lanes.ground + _FOOT
-    labels: list[_Label] = []
+    labels: list[RootLabel] = []
     for stretch in scene.axis.stretches:
         here = [one for one in shown if one[2] is stretch]
         trees = [tree for _, tree, _ in here]
@@ -276,94 +277,15 @@ def _draw_trees(scene: _Scene) -> None:
             if tree.state != "open":
                 xs = [stretch.x(shift) for shift in tree.tips_ppm]
                 draw_feet(scene.canvas, xs, top=scene.lanes.ground, bottom=tip)
-            labels.append(_label(entry, stretch.x(tree.root_ppm)))
-    _draw_labels(scene, labels)
-
-
-@dataclass(slots=True)
-class _Label:
-    """A root label that may be pushed sideways."""
-
-    root: float
-    at: float
-    width: float
-    words: str
-    count: str
-    state: str
-
-
-def _label(entry: Entry, x: float) -> _Label:
-    words = label_glyphs(entry.claim)
-    return _Label(
-        root=x,
-        at=x,
-        width=max(text_width(words, 11), 20),
-        words=words,
-        count=f"{entry.protons}\u00a0H",
-        state=entry.state,
-    )
-
-
-def _draw_labels(scene: _Scene, labels: list[_Label]) -> None:
-    rows = _placed(labels, scene.canvas.width)
-    soil = scene.lanes.soil
-    for label in labels:
-        if abs(label.at - label.root) > 0.5:
-            scene.canvas.path(
-                f"M{number(label.root)} {number(soil)}"
-                f"C{number(label.root)} {number(soil + 8)} "
-                f"{number(label.at)} {number(soil + 2)} "
-                f"{number(label.at)} {number(soil + 9)}",
-                stroke=BARK,
-                width=0.8,
+            labels.append(
+                RootLabel.of(
+                    x=stretch.x(tree.root_ppm),
+                    words=label_glyphs(entry.claim),
+                    n_protons=entry.protons,
+                    state=entry.state,
+                )
             )
-        scene.canvas.mark((label.root, soil), label.state, size=9)
-        scene.canvas.text(
-            (label.at, soil + 19),
-            label.words,
-            size=rows.size,
-            weight=600,
-            anchor="middle",
-        )
-        if rows.with_counts:
-            scene.canvas.text(
-                (label.at, soil + 30), label.count, size=9, fill=MUTED, anchor="middle"
-            )
-
-
-@dataclass(frozen=True, slots=True, kw_only=True)
-class _LabelRow:
-    """How the labels are set."""
-
-    size: float
-    with_counts: bool
-
-
-def _placed(labels: list[_Label], width: float) -> _LabelRow:
-    """Spread the labels sideways until none touches its neighbour."""
-    needed = sum(label.width + 8 for label in labels)
-    shrink = min(1.0, width / needed) if needed else 1.0
-    for label in labels:
-        label.width *= shrink
-    labels.sort(key=lambda label: label.root)
-    for _ in range(200):
-        moved = _push_apart(labels, 8 * shrink, width)
-        if not moved:
-            break
-    return _LabelRow(size=max(6.0, 11 * shrink), with_counts=shrink > 0.75)
-
-
-def _push_apart(labels: list[_Label], gap: float, width: float) -> bool:
-    moved = False
-    for left, right in pairwise(labels):
-        short = (left.width + right.width) / 2 + gap - (right.at - left.at)
-        if short > 0.05:
-            left.at -= short / 2
-            right.at += short / 2
-            moved = True
-    for label in labels:
-        label.at = min(max(label.at, label.width / 2), width - label.width / 2)
-    return moved
+    draw_roots(scene.canvas, labels, soil=scene.lanes.soil)
 
 
 def _draw_strays(scene: _Scene) -> None:

@@ -15,6 +15,7 @@ from rdkit.Chem.Draw import rdMolDraw2D
 from spinledger.report.palette import INK
 from spinledger.report.svg import Canvas, text_width
 from spinledger.report.words import label_glyphs
+from spinledger.structure.read import molecule
 from spinledger.values.ledger import Entry, Ledger
 from spinledger.values.structure import Structure
 
@@ -73,14 +74,14 @@ def sketch_svg(ledger: Ledger, *, width: float = 300.0, height: float = 190.0) -
     str
         SVG text.
     """
-    molecule = drawable(ledger.structure)
+    drawn = drawable(ledger.structure)
     scale = 1.0 + 0.012 * max(0, len(ledger.entries) - 12)
     width, height = width * min(scale, 1.4), height * min(scale, 1.6)
-    skeleton, points = _skeleton(molecule, width, height)
+    skeleton, points = _skeleton(drawn, width, height)
     name = ledger.structure.name or ledger.structure.smiles
     canvas = Canvas(width, height, title=f"Structure of {name}", scope="sketch")
     canvas.add(f"<g>{skeleton}</g>")
-    taken = _occupied(molecule, points)
+    taken = _occupied(drawn, points)
     for tag in _tags(ledger.entries):
         box = _place(tag, points, taken, (width, height))
         taken.append((box, 4.0))
@@ -110,27 +111,24 @@ def drawable(structure: Structure) -> Chem.Mol:
 
     Raises
     ------
-    ValueError
+    StructureError
         If the stored molfile text is damaged.
     """
-    molecule = Chem.MolFromMolBlock(structure.molblock, removeHs=False)
-    if molecule is None:
-        raise ValueError(f"structure.molblock of {structure.given!r} does not parse")
-    if not _has_layout(molecule):
-        rdDepictor.SetPreferCoordGen(True)
-        rdDepictor.Compute2DCoords(molecule)
-    return molecule
+    drawn = molecule(structure)
+    if not _has_layout(drawn):
+        rdDepictor.Compute2DCoords(drawn)
+    return drawn
 
 
-def _has_layout(molecule: Chem.Mol) -> bool:
-    if molecule.GetNumConformers() == 0:
+def _has_layout(drawn: Chem.Mol) -> bool:
+    if drawn.GetNumConformers() == 0:
         return False
-    positions = molecule.GetConformer().GetPositions()
+    positions = drawn.GetConformer().GetPositions()
     return len(positions) < 2 or bool((positions.max(0) - positions.min(0)).max() > 0.1)
 
 
 def _skeleton(
-    molecule: Chem.Mol, width: float, height: float, *, padding: float = 0.17
+    drawn: Chem.Mol, width: float, height: float, *, padding: float = 0.17
 ) -> tuple[str, list[Point]]:
     """Markup of atoms and bonds, and where each atom stands."""
     drawer = rdMolDraw2D.MolDraw2DSVG(round(width), round(height))
@@ -143,11 +141,11 @@ def _skeleton(
     options.minFontSize = 11
     options.maxFontSize = 12
     options.addStereoAnnotation = False
-    prepared = rdMolDraw2D.PrepareMolForDrawing(molecule, kekulize=True)
+    prepared = rdMolDraw2D.PrepareMolForDrawing(drawn, kekulize=True)
     drawer.DrawMolecule(prepared)
     drawer.FinishDrawing()
     points = []
-    for index in range(molecule.GetNumAtoms()):
+    for index in range(drawn.GetNumAtoms()):
         place = drawer.GetDrawCoords(index)
         points.append((float(place.x), float(place.y)))
     return _clean(drawer.GetDrawingText()), points
@@ -167,13 +165,13 @@ def _tags(entries: Sequence[Entry]) -> list[_Tag]:
     ]
 
 
-def _occupied(molecule: Chem.Mol, points: Sequence[Point]) -> list[tuple[_Box, float]]:
+def _occupied(drawn: Chem.Mol, points: Sequence[Point]) -> list[tuple[_Box, float]]:
     """Boxes of atom labels and along the bonds, each with how bad a hit is."""
     taken: list[tuple[_Box, float]] = []
-    for atom in molecule.GetAtoms():
+    for atom in drawn.GetAtoms():
         half = 8.0 if atom.GetSymbol() != "C" or atom.GetDegree() == 0 else 3.0
         taken.append((_around(points[atom.GetIdx()], half), 3.0))
-    for bond in molecule.GetBonds():
+    for bond in drawn.GetBonds():
         start = points[bond.GetBeginAtomIdx()]
         end = points[bond.GetEndAtomIdx()]
         for step in range(1, 8):

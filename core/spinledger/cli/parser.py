@@ -1,0 +1,267 @@
+"""Words of the command line."""
+
+from __future__ import annotations
+
+import argparse
+from collections.abc import Callable
+from pathlib import Path
+
+from spinledger import __version__
+
+_Subparsers = argparse._SubParsersAction
+
+
+def build_parser() -> argparse.ArgumentParser:
+    """Parser of all commands; each names the module that runs it."""
+    parser = argparse.ArgumentParser(
+        prog="spinledger",
+        description="Reconcile an acquired proton NMR spectrum with a claimed "
+        "structure, entry by entry.",
+        epilog='"spinledger COMMAND --help" explains a command.',
+    )
+    parser.add_argument(
+        "--version", action="version", version=f"spinledger {__version__}"
+    )
+    commands = parser.add_subparsers(
+        title="commands", dest="command", metavar="COMMAND", required=True
+    )
+    for add in (
+        _reconcile,
+        _rank,
+        _process,
+        _inspect,
+        _predict,
+        _batch,
+        _open,
+        _compare,
+        _sample,
+    ):
+        add(commands)
+    return parser
+
+
+def _command(
+    commands: _Subparsers[argparse.ArgumentParser], name: str, words: str
+) -> argparse.ArgumentParser:
+    parser = commands.add_parser(name, help=words, description=f"{words}.")
+    parser.add_argument(
+        "--traceback", action="store_true", help="show where an internal fault arose"
+    )
+    parser.set_defaults(module=name)
+    return parser
+
+
+def _data(parser: argparse.ArgumentParser) -> None:
+    parser.add_argument(
+        "data", metavar="DATA", type=Path, help="data folder, file or zip of one"
+    )
+
+
+def _matching_options(parser: argparse.ArgumentParser) -> None:
+    """Options that reconcile and rank share."""
+    _spectrum_options(parser)
+    parser.add_argument("--ph", type=_number(0, 14), help="pH of the sample")
+    parser.add_argument(
+        "--species", metavar="FILE.sdf", type=Path, help="further species of a mixture"
+    )
+    parser.add_argument(
+        "--strays", metavar="FILE.smi", type=Path, help="what else may be in the tube"
+    )
+    parser.add_argument(
+        "--contenders",
+        metavar="N",
+        type=_count(0),
+        help="enumerated isomers to test (default: a few within the time budget)",
+    )
+    parser.add_argument(
+        "--quick", action="store_true", help="no contenders, no advice, fewer starts"
+    )
+
+
+def _spectrum_options(parser: argparse.ArgumentParser) -> None:
+    parser.add_argument(
+        "--solvent", metavar="NAME", help="wins over the spectrum and its header"
+    )
+    parser.add_argument(
+        "--temperature", metavar="K", type=_number(100, 600), help="of the sample, in K"
+    )
+    parser.add_argument(
+        "--processed",
+        action="store_true",
+        help="take the maker's processed spectrum instead of the FID",
+    )
+
+
+def _output(parser: argparse.ArgumentParser) -> None:
+    parser.add_argument(
+        "--out", metavar="DIR", type=Path, required=True, help="folder for the results"
+    )
+
+
+def _reconcile(commands: _Subparsers[argparse.ArgumentParser]) -> None:
+    parser = _command(commands, "reconcile", "Reconcile a spectrum with a structure")
+    _data(parser)
+    parser.add_argument(
+        "--structure", metavar="FILE_OR_SMILES", required=True, help="claimed structure"
+    )
+    _output(parser)
+    _matching_options(parser)
+    parser.add_argument(
+        "--formats",
+        metavar="LIST",
+        help="comma list of json, csv, html, text, svg, docx, xlsx, nmredata, jcamp, "
+        "or all (default: json,csv,html,text,svg)",
+    )
+    parser.add_argument(
+        "--journal",
+        choices=("acs", "rsc"),
+        default="acs",
+        help="form of the experimental sentence (default: acs)",
+    )
+
+
+def _rank(commands: _Subparsers[argparse.ArgumentParser]) -> None:
+    parser = _command(commands, "rank", "Rank candidate structures by a spectrum")
+    _data(parser)
+    parser.add_argument(
+        "--candidates",
+        metavar="FILE.smi",
+        type=Path,
+        required=True,
+        help='one "SMILES name" a line, or an SD file',
+    )
+    _output(parser)
+    _matching_options(parser)
+
+
+def _process(commands: _Subparsers[argparse.ArgumentParser]) -> None:
+    parser = _command(commands, "process", "Process raw data to a spectrum")
+    _data(parser)
+    parser.add_argument(
+        "--out",
+        metavar="FILE",
+        type=Path,
+        help="spectrum.csv (columns ppm,intensity), or JCAMP-DX for .jdx and .dx",
+    )
+    parser.add_argument(
+        "--jcamp", metavar="FILE", type=Path, help="write JCAMP-DX as well"
+    )
+    parser.add_argument(
+        "--recipe", metavar="FILE", type=Path, help="run this stored recipe (JSON)"
+    )
+    parser.add_argument(
+        "--save-recipe", metavar="FILE", type=Path, help="store the recipe as JSON"
+    )
+    _spectrum_options(parser)
+
+
+def _inspect(commands: _Subparsers[argparse.ArgumentParser]) -> None:
+    parser = _command(commands, "inspect", "Show what a place holds")
+    _data(parser)
+    parser.add_argument("--json", action="store_true", help="print JSON")
+
+
+def _predict(commands: _Subparsers[argparse.ArgumentParser]) -> None:
+    parser = _command(commands, "predict", "Predict shifts and couplings")
+    parser.add_argument("structure", metavar="STRUCTURE", help="SMILES or file")
+    parser.add_argument("--solvent", metavar="NAME", help="default: CDCl3")
+    parser.add_argument(
+        "--field",
+        metavar="MHZ",
+        type=_number(20, 2000),
+        default=400.0,
+        help="proton frequency in MHz (default: 400)",
+    )
+    parser.add_argument("--ph", type=_number(0, 14), help="pH of the sample")
+    parser.add_argument(
+        "--temperature", metavar="K", type=_number(100, 600), help="in K"
+    )
+    parser.add_argument(
+        "--svg", metavar="FILE", type=Path, help="draw the simulated spectrum"
+    )
+    parser.add_argument("--json", action="store_true", help="print JSON")
+
+
+def _batch(commands: _Subparsers[argparse.ArgumentParser]) -> None:
+    parser = _command(commands, "batch", "Reconcile every row of a table")
+    parser.add_argument(
+        "table",
+        metavar="TABLE.csv",
+        type=Path,
+        help="columns data, structure, solvent, id",
+    )
+    _output(parser)
+    where = parser.add_mutually_exclusive_group()
+    where.add_argument(
+        "--workers",
+        metavar="N",
+        type=_count(1),
+        default=1,
+        help="processes (default 1)",
+    )
+    where.add_argument(
+        "--cluster", metavar="ADDRESS", help="dask.distributed scheduler"
+    )
+    parser.add_argument(
+        "--quick", action="store_true", help="no contenders, no advice, fewer starts"
+    )
+
+
+def _open(commands: _Subparsers[argparse.ArgumentParser]) -> None:
+    parser = _command(commands, "open", "Open the bench")
+    parser.add_argument(
+        "data", metavar="DATA", nargs="?", help="data or .sledger project to open"
+    )
+    parser.add_argument(
+        "--structure", metavar="FILE_OR_SMILES", help="claimed structure"
+    )
+    parser.set_defaults(module="bench")
+
+
+def _compare(commands: _Subparsers[argparse.ArgumentParser]) -> None:
+    parser = _command(commands, "compare", "Compare a ledger with a published list")
+    parser.add_argument(
+        "ledger", metavar="LEDGER", type=Path, help="ledger.json or its folder"
+    )
+    parser.add_argument(
+        "published", metavar="PUBLISHED.txt", type=Path, help="journal text"
+    )
+    parser.add_argument("--json", action="store_true", help="print JSON")
+
+
+def _sample(commands: _Subparsers[argparse.ArgumentParser]) -> None:
+    parser = _command(commands, "sample", "Reconcile several spectra of one tube")
+    parser.add_argument(
+        "data", metavar="DATA", nargs="+", type=Path, help="data folders or files"
+    )
+    parser.add_argument(
+        "--structure", metavar="FILE_OR_SMILES", required=True, help="claimed structure"
+    )
+    _output(parser)
+    _matching_options(parser)
+
+
+def _number(low: float, high: float) -> Callable[[str], float]:
+    """Type of an option that is a number within limits."""
+
+    def number(text: str) -> float:
+        value = float(text)
+        if not low <= value <= high:
+            raise argparse.ArgumentTypeError(
+                f"must be from {low:g} to {high:g}, got {text}"
+            )
+        return value
+
+    return number
+
+
+def _count(smallest: int) -> Callable[[str], int]:
+    """Type of an option that is a whole number."""
+
+    def count(text: str) -> int:
+        value = int(text)
+        if value < smallest:
+            raise argparse.ArgumentTypeError(f"must be {smallest} or more, got {text}")
+        return value
+
+    return count

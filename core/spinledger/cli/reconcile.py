@@ -1,0 +1,64 @@
+"""``spinledger reconcile``: one spectrum, one structure, one folder of reports."""
+
+from __future__ import annotations
+
+import argparse
+import datetime
+import sys
+
+from spinledger.batch import Job, run_job
+from spinledger.cli.inputs import options_of, solvent_of
+from spinledger.cli.progress import ProgressLine
+from spinledger.errors import UsageError
+from spinledger.report.context import ReportContext
+from spinledger.report.text import TextOptions
+from spinledger.report.write import DEFAULT_FORMATS, FILE_NAMES, check_extras
+
+
+def run(arguments: argparse.Namespace) -> int:
+    """Run the command; the verdict is in the files, so 0 is returned."""
+    formats = _formats(arguments.formats)
+    check_extras(formats)
+    job = Job(
+        data=arguments.data,
+        structure=arguments.structure,
+        folder=arguments.out,
+        solvent=solvent_of(arguments.solvent),
+        prefer_processed=arguments.processed,
+        options=options_of(arguments),
+        formats=formats,
+        context=ReportContext(date=today(), text=TextOptions(style=arguments.journal)),
+    )
+    with ProgressLine() as progress:
+        ledger = run_job(job, progress=progress)
+    verdict = ledger.verdict
+    chance = (
+        ""
+        if verdict.probability is None
+        else f", probability {verdict.probability:.2f}"
+    )
+    sys.stdout.write(f"{verdict.state}{chance}: {arguments.out}\n")
+    for reason in verdict.reasons:
+        sys.stdout.write(f"  {reason}\n")
+    return 0
+
+
+def today() -> str:
+    """Date as printed in a report: 1 December 2026."""
+    date = datetime.datetime.now().astimezone().date()
+    return f"{date.day} {date:%B %Y}"
+
+
+def _formats(words: str | None) -> tuple[str, ...]:
+    if words is None:
+        return DEFAULT_FORMATS
+    if words.strip() == "all":
+        return tuple(FILE_NAMES)
+    chosen = tuple(word.strip() for word in words.split(",") if word.strip())
+    unknown = [word for word in chosen if word not in FILE_NAMES]
+    if unknown or not chosen:
+        raise UsageError(
+            f"--formats: {unknown[0] if unknown else 'nothing'!r} is not known; known "
+            f"are {', '.join(FILE_NAMES)} and all"
+        )
+    return chosen
