@@ -3,6 +3,7 @@
 from __future__ import annotations
 
 from dataclasses import dataclass
+from itertools import pairwise
 
 import numpy as np
 import numpy.typing as npt
@@ -41,7 +42,7 @@ def fit_range(
     cuts = _block_cuts(points)
     return tuple(
         _fit_block(spectrum, points[low:high], (start, stop), width_hz, settings)
-        for low, high in zip(cuts[:-1], cuts[1:], strict=True)
+        for low, high in pairwise(cuts)
     )
 
 
@@ -103,7 +104,7 @@ def _fit_block(
     )
     index = np.arange(start, stop, stride)
     return fit_lines(
-        index * spectrum.step_hz,
+        index.astype(np.float64) * spectrum.step_hz,
         spectrum.intensities[index],
         points * spectrum.step_hz,
         width_hz=width_hz,
@@ -122,7 +123,7 @@ def _hump(
     stride = max(1, (stop - start) // 400)
     chosen = index[::stride]
     return fit_lines(
-        chosen * spectrum.step_hz,
+        chosen.astype(np.float64) * spectrum.step_hz,
         spectrum.intensities[chosen],
         np.array([centre * spectrum.step_hz]),
         width_hz=max((stop - start) * spectrum.step_hz / 4, 3 * spectrum.step_hz),

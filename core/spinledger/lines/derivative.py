@@ -12,13 +12,14 @@ Values = TypeVar("Values", npt.NDArray[np.float64], npt.NDArray[np.complex128])
 
 
 def negative_second_derivative(
-    values: Values, *, step_hz: float, sigma_hz: float
-) -> Values:
+    values: npt.NDArray[np.float64], *, step_hz: float, sigma_hz: float
+) -> npt.NDArray[np.float64]:
     """Minus the second derivative, smoothed by a Gaussian; lines become sharp maxima.
 
     Parameters
     ----------
-    values : numpy.ndarray, shape (n_points,), real or complex
+    values : numpy.ndarray, shape (n_points,)
+        Real spectrum.
     step_hz : float, Hz
         Distance of neighbouring points.
     sigma_hz : float, Hz
@@ -36,15 +37,42 @@ def negative_second_derivative(
     on the inverse transform. Two transforms, whatever the width of the Gaussian.
     """
     n_points = values.size
-    if np.iscomplexobj(values):
-        times_s = scipy.fft.fftfreq(n_points, d=step_hz)
-        echo = scipy.fft.ifft(values)
-        echo *= _window(times_s, sigma_hz)
-        return scipy.fft.fft(echo, overwrite_x=True)
     times_s = scipy.fft.rfftfreq(n_points, d=step_hz)
-    half = scipy.fft.rfft(values)
-    half *= _window(times_s, sigma_hz)
-    return scipy.fft.irfft(half, n_points, overwrite_x=True)
+    half = np.asarray(scipy.fft.rfft(values)) * _window(times_s, sigma_hz)
+    return np.asarray(scipy.fft.irfft(half, n_points))
+
+
+def complex_second_derivative(
+    values: npt.NDArray[np.complex128], *, step_hz: float, sigma_hz: float
+) -> npt.NDArray[np.complex128]:
+    """The same of a complex spectrum, shape (n_points,)."""
+    times_s = scipy.fft.fftfreq(values.size, d=step_hz)
+    echo = np.asarray(scipy.fft.ifft(values)) * _window(times_s, sigma_hz)
+    return np.asarray(scipy.fft.fft(echo))
+
+
+def curvature_magnitude(
+    values: npt.NDArray[np.float64] | npt.NDArray[np.complex128],
+    *,
+    step_hz: float,
+    sigma_hz: float,
+) -> npt.NDArray[np.float64]:
+    """Magnitude of the smoothed second derivative of a real or complex spectrum."""
+    if np.iscomplexobj(values):
+        return np.abs(
+            complex_second_derivative(
+                values.astype(np.complex128, copy=False),
+                step_hz=step_hz,
+                sigma_hz=sigma_hz,
+            )
+        )
+    return np.abs(
+        negative_second_derivative(
+            values.real.astype(np.float64, copy=False),
+            step_hz=step_hz,
+            sigma_hz=sigma_hz,
+        )
+    )
 
 
 def _window(

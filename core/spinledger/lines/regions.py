@@ -7,7 +7,7 @@ from dataclasses import dataclass
 import numpy as np
 import numpy.typing as npt
 
-from spinledger.lines.derivative import negative_second_derivative
+from spinledger.lines.derivative import curvature_magnitude
 from spinledger.lines.noise import EDGE_SHARE, quiet_rms
 from spinledger.values.arrays import locked_floats, locked_integers
 
@@ -111,9 +111,7 @@ def find_regions(
     spectrum itself join everything into one region at high signal-to-noise.
     """
     settings = search or RegionSearch()
-    curvature = np.abs(
-        negative_second_derivative(values, step_hz=step_hz, sigma_hz=settings.sigma_hz)
-    )
+    curvature = curvature_magnitude(values, step_hz=step_hz, sigma_hz=settings.sigma_hz)
     channels = 2.0 if np.iscomplexobj(values) else 1.0
     sd = quiet_rms(curvature, edge_share=settings.edge_share) / np.sqrt(channels)
     edge = int(settings.edge_share * values.size)

@@ -125,7 +125,8 @@ def process(
     water_at_carrier = presaturated or is_aqueous(facts.given or facts.header)
     recipe = starting_recipe(acquired)
     transformed = transform(acquired, recipe)
-    phase_sd, doubts = None, ()
+    phase_sd: float | None = None
+    doubts: tuple[str, ...] = ()
     if isinstance(acquired, Fid):
         phase = automatic_phase(transformed, water_at_carrier=water_at_carrier)
         if phase is not None:

@@ -52,7 +52,7 @@ def baseline_of(spectrum: Spectrum, step: Baseline) -> npt.NDArray[np.float64]:
     free = _free_bins(spectrum, step, size, n_bins)
     smooth = _robust_whittaker(binned, free, step.stiffness)
     # Linear between bin centres; the ends go on with the last slope.
-    centres = (np.arange(n_bins) + 0.5) * size - 0.5
+    centres = (np.arange(n_bins, dtype=np.float64) + 0.5) * size - 0.5
     return _stretched(smooth, centres, spectrum.n_points)
 
 

@@ -20,6 +20,8 @@ _SLOPE_REACH_RAD = np.radians(360.0)
 # Just enough to choose between optima that are equally good.
 _SLOPE_PENALTY = 2e-4 / (2 * np.pi) ** 2
 _N_STARTS = 4
+# Relative change of the cost at which a descent ends.
+_COARSE, _FINE = 1e-3, 1e-8
 
 
 @dataclass(frozen=True, slots=True, kw_only=True)
@@ -98,7 +100,8 @@ class NegativeAreaCost:
         heads = np.add.reduceat(turned[self._heads], self._size_starts) / self._sizes
         tails = np.add.reduceat(turned[self._tails], self._size_starts) / self._sizes
         first = np.repeat(heads, self._lengths)
-        return turned - first - np.repeat(tails - heads, self._lengths) * self._along
+        slopes = np.repeat(tails - heads, self._lengths)
+        return np.asarray(turned - first - slopes * self._along)
 
     def value_and_slope(
         self, angles_rad: npt.NDArray[np.float64]
@@ -145,57 +148,51 @@ def least_negative_area(
     slope_rad : float, rad, optional
         Hold the first-order phase at this value.
     """
-    constants = np.arange(-np.pi, np.pi - 1e-9, _GRID_RAD)
-    slopes = np.arange(-_SLOPE_REACH_RAD, _SLOPE_REACH_RAD + 1e-9, _GRID_RAD)
+    constants = np.arange(-np.pi, np.pi - 1e-9, _GRID_RAD, dtype=np.float64)
+    slopes = np.arange(
+        -_SLOPE_REACH_RAD, _SLOPE_REACH_RAD + 1e-9, _GRID_RAD, dtype=np.float64
+    )
     if slope_rad is not None:
         slopes = np.array([slope_rad])
     grid = cost.grid(constants, slopes)
     order = np.argsort(grid, axis=None, kind="stable")[:_N_STARTS]
-    fits = [
-        _descend(
-            cost,
-            slopes[place // constants.size],
-            constants[place % constants.size],
-            slope_rad,
-        )
+    starts = [
+        np.array([constants[place % constants.size], slopes[place // constants.size]])
         for place in order
     ]
-    return min(fits, key=lambda fit: fit.cost)
+    free = np.array([1.0, 1.0 if slope_rad is None else 0.0])
+    fits = [_descend(cost, start, free, _COARSE) for start in starts]
+    best = min(fits, key=lambda fit: fit.cost)
+    return _descend(cost, np.array([best.constant_rad, best.slope_rad]), free, _FINE)
 
 
 def _descend(
-    cost: NegativeAreaCost, slope: float, constant: float, held: float | None
+    cost: NegativeAreaCost,
+    start: npt.NDArray[np.float64],
+    free: npt.NDArray[np.float64],
+    tolerance: float,
 ) -> PhaseFit:
-    if held is not None:
-        result = minimize(
-            lambda angle: _first_only(cost, float(angle[0]), held),
-            np.array([constant]),
-            jac=True,
-            method="BFGS",
-            options={"gtol": 1e-7},
-        )
-        return PhaseFit(
-            constant_rad=float(result.x[0]), slope_rad=held, cost=float(result.fun)
-        )
+    """Minimum near a start; angles whose ``free`` is 0 stay where they are."""
+
+    def cost_and_gradient(
+        step: npt.NDArray[np.float64],
+    ) -> tuple[float, npt.NDArray[np.float64]]:
+        value, gradient = cost.value_and_slope(start + free * step)
+        return value, free * gradient
+
     result = minimize(
-        cost.value_and_slope,
-        np.array([constant, slope]),
+        cost_and_gradient,
+        np.zeros(2),
         jac=True,
-        method="BFGS",
-        options={"gtol": 1e-7},
+        method="L-BFGS-B",
+        options={"ftol": tolerance, "gtol": 1e-9},
     )
+    angles = start + free * np.asarray(result.x)
     return PhaseFit(
-        constant_rad=float(result.x[0]),
-        slope_rad=float(result.x[1]),
+        constant_rad=float(angles[0]),
+        slope_rad=float(angles[1]),
         cost=float(result.fun),
     )
-
-
-def _first_only(
-    cost: NegativeAreaCost, constant: float, slope: float
-) -> tuple[float, npt.NDArray[np.float64]]:
-    value, gradient = cost.value_and_slope(np.array([constant, slope]))
-    return value, gradient[:1]
 
 
 def _averaged(

@@ -36,7 +36,7 @@ def linear_phasor(
     turn = -slope_rad / n_points
     fine = np.exp(1j * (constant_rad + slope_rad * top + turn * np.arange(fine_size)))
     coarse = np.exp(1j * turn * fine_size * np.arange(coarse_size))
-    return np.multiply.outer(coarse, fine).reshape(-1)[:n_points]
+    return np.asarray(np.multiply.outer(coarse, fine).reshape(-1)[:n_points])
 
 
 def phased(

@@ -137,9 +137,12 @@ def _solvent_seen(seen: _Sightings, facts: SolventFacts) -> str | None:
         aqueous = is_aqueous(facts.header)
         return facts.header if aqueous else "D2O"
     chloroform = seen.chloroform
-    if chloroform is not None and chloroform.is_clean:
-        if _agrees(seen.standards, 7.26, chloroform.shift_ppm):
-            return "CDCl3"
+    if (
+        chloroform is not None
+        and chloroform.is_clean
+        and _agrees(seen.standards, 7.26, chloroform.shift_ppm)
+    ):
+        return "CDCl3"
     return None
 
 

@@ -86,7 +86,7 @@ def chloroform_candidates(
         & (clusters.sums > 10 * clusters.noise_sd)
     )
     found = []
-    for index in chosen:
+    for index in chosen.tolist():
         apart_hz = (shifts - shifts[index]) * spectrum.spectrometer_frequency_mhz
         near = (np.abs(apart_hz) < _NEAR_HZ) & (np.abs(apart_hz) > 0.1)
         found.append(

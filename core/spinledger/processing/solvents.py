@@ -277,5 +277,4 @@ def _water_table() -> dict[str, float]:
 
 def _rows(name: str) -> list[dict[str, str]]:
     table = resources.files("spinledger.processing") / "data" / name
-    with table.open(encoding="utf-8", newline="") as lines:
-        return list(csv.DictReader(lines))
+    return list(csv.DictReader(table.read_text(encoding="utf-8").splitlines()))

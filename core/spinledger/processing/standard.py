@@ -76,7 +76,7 @@ def standard_candidates(
     offsets_hz = shifts * spectrum.spectrometer_frequency_mhz
     found = [
         _candidate(spectrum, clusters, shifts, offsets_hz - offsets_hz[index], index)
-        for index in chosen
+        for index in chosen.tolist()
         if _stands_alone(clusters, offsets_hz - offsets_hz[index], index)
     ]
     best = sorted(found, key=lambda candidate: -candidate.score)

@@ -133,4 +133,5 @@ def _regression(
 
 def _binned(values: Values, size: int) -> Values:
     count = values.size // size
-    return values[: count * size].reshape(count, size).mean(axis=1)
+    means: Values = values[: count * size].reshape(count, size).mean(axis=1)
+    return means
