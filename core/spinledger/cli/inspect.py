@@ -53,8 +53,7 @@ def run(arguments: argparse.Namespace) -> int:
         return 0
     for name, value in _metadata(acquired).items():
         if name != "notes":
-            known = "not in the file" if value is None else value
-            sys.stdout.write(f"{_WORDS.get(name, name)}: {known}\n")
+            sys.stdout.write(f"{_WORDS.get(name, name)}: {_value(value)}\n")
     for note in acquired.metadata.notes:
         sys.stdout.write(f"note: {note}\n")
     return 0
@@ -83,3 +82,9 @@ def _metadata(acquired: Acquired) -> dict[str, Any]:
         facts["points"] = acquired.spectrum.n_points
         facts["sweep in Hz"] = acquired.spectrum.spectral_width_hz
     return facts
+
+
+def _value(value: object) -> str:
+    if value is None:
+        return "not in the file"
+    return f"{value:.8g}" if isinstance(value, float) else str(value)
