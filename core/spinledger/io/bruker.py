@@ -38,6 +38,7 @@ from spinledger.io.samples import (
     check_width,
     make_spectrum,
     plausible_carrier,
+    scaled,
 )
 from spinledger.values.acquisition import Fid, MakerSpectrum, Metadata
 
@@ -364,7 +365,7 @@ def _processed_part(
                 "points are there.",
             )
         values = values[:n_points]
-    return values * scale, notes
+    return scaled(values, scale), notes
 
 
 def _metadata(

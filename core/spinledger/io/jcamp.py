@@ -15,22 +15,17 @@ References
 
 from __future__ import annotations
 
-import re
 from dataclasses import dataclass
 from pathlib import Path
 
-import numpy as np
-import numpy.typing as npt
-
 from spinledger.errors import SpectrumFormatError
 from spinledger.io import normalise
-from spinledger.io.asdf import Ordinates, TableError, decode_table
+from spinledger.io.asdf import TableError
 from spinledger.io.checksum import file_sha256
 from spinledger.io.experiment import Experiment, field_text, summary_line
+from spinledger.io.jcamp_tables import Columns, read_columns
 from spinledger.io.limits import (
-    MAX_POINTS,
     MAX_TEXT_BYTES,
-    check_point_count,
     decode_text,
     read_text,
 )
@@ -44,6 +39,7 @@ from spinledger.io.samples import (
     make_spectrum,
     plausible_carrier,
 )
+from spinledger.io.sense import conjugated, is_mirrored
 from spinledger.values.acquisition import Fid, MakerSpectrum, Metadata
 
 KIND = "jcamp"
@@ -105,10 +101,17 @@ def read(path: Path, *, prefer_processed: bool = False) -> Fid | MakerSpectrum:
             path, "holds several spectra; save the proton spectrum to its own file"
         )
     try:
-        if blocks.fid is not None and not (prefer_processed and blocks.spectrum):
-            return _read_fid(path, blocks.fid)
-        if blocks.spectrum is not None:
+        if blocks.fid is None and blocks.spectrum is not None:
             return _read_spectrum(path, blocks.spectrum)
+        if blocks.fid is not None and blocks.spectrum is not None:
+            spectrum = _read_spectrum(path, blocks.spectrum)
+            if prefer_processed:
+                return spectrum
+            # Exporters differ in the sense of the FID: the spectrum beside it tells.
+            fid = _read_fid(path, blocks.fid)
+            return conjugated(fid) if is_mirrored(fid, spectrum.spectrum) else fid
+        if blocks.fid is not None:
+            return _read_fid(path, blocks.fid)
     except TableError as fault:
         raise SpectrumFormatError(path, f"cannot be used: {fault}") from fault
     raise SpectrumFormatError(path, _nothing_here(blocks))
@@ -229,194 +232,11 @@ def _metadata(
     )
 
 
-# ---- tables
-
-
-@dataclass(frozen=True, slots=True, eq=False, kw_only=True)
-class _Columns:
-    """Decoded ordinates with the axis that the header lays under them."""
-
-    real: npt.NDArray[np.float64]
-    imaginary: npt.NDArray[np.float64] | None
-    first_x: float | None
-    last_x: float | None
-    units: str
-    n_declared: int
-    notes: tuple[str, ...]
-
-    @property
-    def step_x(self) -> float | None:
-        """Step of the axis from first to last declared point."""
-        if self.first_x is None or self.last_x is None or self.n_declared < 2:
-            return None
-        return (self.last_x - self.first_x) / (self.n_declared - 1)
-
-
-def _columns(path: Path, block: Block) -> _Columns:
-    if "DATATABLE" in block.values:
-        return _ntuples(path, block)
-    if "XYDATA" in block.values:
-        return _xydata(path, block)
-    if "XYPOINTS" in block.values:
-        return _xypoints(block)
-    raise SpectrumFormatError(
-        path, "has a header but no data table; export it again with the data"
-    )
-
-
-def _decode(table: str, block: Block) -> tuple[str, Ordinates]:
-    form, _, body = table.partition("\n")
-    ordinates = decode_table(
-        body.split("\n"),
-        max_points=MAX_POINTS,
-        decimal_commas=block.has_decimal_commas,
-    )
-    return plain_label(form), ordinates
-
-
-def _checked(
-    path: Path, ordinates: Ordinates, n_declared: float | None
-) -> tuple[int, tuple[str, ...]]:
-    """Declared number of points, and notes on what does not add up."""
-    n_there = ordinates.values.size
-    n_points = n_there if n_declared is None else check_point_count(path, n_declared)
-    notes: list[str] = []
-    if ordinates.n_failed_checks:
-        notes.append(
-            f"{ordinates.n_failed_checks} check values of the data table do not agree; "
-            "the file may be damaged."
-        )
-    if n_there < n_points / 2:
-        raise SpectrumFormatError(
-            path,
-            f"holds only {n_there} of the {n_points} points that its header declares; "
-            "export it again",
-        )
-    if n_there != n_points:
-        notes.append(f"The header declares {n_points} points, {n_there} are there.")
-    return n_points, tuple(notes)
-
-
-def _xydata(path: Path, block: Block) -> _Columns:
-    tables = block.values["XYDATA"]
-    _, ordinates = _decode(tables[0], block)
-    n_points, notes = _checked(path, ordinates, block.number("NPOINTS"))
-    first_x = block.number("FIRSTX")
-    last_x = block.number("LASTX")
-    delta_x = block.number("DELTAX")
-    if last_x is None and first_x is not None and delta_x is not None:
-        last_x = first_x + delta_x * (n_points - 1)
-    factor = block.number("YFACTOR")
-    return _Columns(
-        real=ordinates.values[:n_points] * (1.0 if factor is None else factor),
-        imaginary=None,
-        first_x=first_x,
-        last_x=last_x,
-        units=(block.text("XUNITS") or "").upper(),
-        n_declared=n_points,
-        notes=notes,
-    )
-
-
-def _xypoints(block: Block) -> _Columns:
-    """Pairs of abscissa and ordinate, accepted where evenly spaced."""
-    _, _, body = block.values["XYPOINTS"][0].partition("\n")
-    if block.has_decimal_commas:
-        body = body.replace(",", ".")
-    words = re.split(r"[\s,;]+", body.strip(), maxsplit=2 * MAX_POINTS)
-    numbers = np.array(
-        [value for word in words if (value := parse_number(word)) is not None]
-    )
-    if numbers.size < 4 or numbers.size % 2:
-        raise TableError("the table of points is damaged")
-    x, y = numbers[0::2], numbers[1::2]
-    steps = np.diff(x)
-    if np.ptp(steps) > 0.01 * abs(float(np.mean(steps))):
-        raise TableError("the points are not evenly spaced, as in a peak list")
-    factor_x, factor_y = block.number("XFACTOR"), block.number("YFACTOR")
-    return _Columns(
-        real=y * (1.0 if factor_y is None else factor_y),
-        imaginary=None,
-        first_x=float(x[0]) * (1.0 if factor_x is None else factor_x),
-        last_x=float(x[-1]) * (1.0 if factor_x is None else factor_x),
-        units=(block.text("XUNITS") or "").upper(),
-        n_declared=x.size,
-        notes=(),
-    )
-
-
-_PAGE_VARIABLE = re.compile(r"\+\+\(?([A-Z])")
-
-
-def _ntuples(path: Path, block: Block) -> _Columns:
-    symbols = [symbol.upper() for symbol in block.listed("SYMBOL")]
-    names = [plain_label(name) for name in block.listed("VAR_NAME")]
-    parts: dict[str, npt.NDArray[np.float64]] = {}
-    n_points = 0
-    notes: tuple[str, ...] = ()
-    for table in block.values["DATATABLE"]:
-        form, ordinates = _decode(table, block)
-        symbol = _page_symbol(form)
-        if symbol in parts:
-            raise SpectrumFormatError(
-                path,
-                "holds an array of traces; save the 1D proton spectrum to its own file",
-            )
-        n_points, notes = _checked(
-            path, ordinates, _variable(block, symbols, symbol, "VAR_DIM")
-        )
-        factor = _variable(block, symbols, symbol, "FACTOR")
-        values = ordinates.values[:n_points]
-        parts[symbol] = values * (1.0 if factor is None else factor)
-    real_symbol, imaginary_symbol = _real_and_imaginary(symbols, names, list(parts))
-    x_symbol = symbols[0] if symbols else "X"
-    position = symbols.index(x_symbol) if x_symbol in symbols else 0
-    units = block.listed("UNITS")
-    return _Columns(
-        real=parts[real_symbol],
-        imaginary=None if imaginary_symbol is None else parts[imaginary_symbol],
-        first_x=_variable(block, symbols, x_symbol, "FIRST"),
-        last_x=_variable(block, symbols, x_symbol, "LAST"),
-        units=units[position].upper() if position < len(units) else "",
-        n_declared=n_points,
-        notes=notes,
-    )
-
-
-def _page_symbol(form: str) -> str:
-    """Symbol of the ordinate from a form such as "(X++(R..R)), XYDATA"."""
-    match = _PAGE_VARIABLE.search(form)
-    return match[1] if match else "R"
-
-
-def _variable(
-    block: Block, symbols: list[str], symbol: str, label: str
-) -> float | None:
-    items = block.listed(label)
-    if symbol not in symbols or symbols.index(symbol) >= len(items):
-        return None
-    return parse_number(items[symbols.index(symbol)])
-
-
-def _real_and_imaginary(
-    symbols: list[str], names: list[str], found: list[str]
-) -> tuple[str, str | None]:
-    """Which page symbols are the real and the imaginary part."""
-    named = dict(zip(symbols, names, strict=False))
-    imaginary = [
-        symbol for symbol in found if symbol == "I" or "IMAG" in named.get(symbol, "")
-    ]
-    real = [symbol for symbol in found if symbol not in imaginary]
-    if not real:
-        raise TableError("only the imaginary part is there")
-    return real[0], imaginary[0] if imaginary else None
-
-
 # ---- FID
 
 
 def _read_fid(path: Path, block: Block) -> Fid:
-    columns = _columns(path, block)
+    columns = read_columns(path, block)
     if columns.imaginary is None:
         raise SpectrumFormatError(
             path,
@@ -448,7 +268,7 @@ def _read_fid(path: Path, block: Block) -> Fid:
 
 
 def _fid_width(
-    path: Path, block: Block, columns: _Columns
+    path: Path, block: Block, columns: Columns
 ) -> tuple[float, tuple[str, ...]]:
     """Width from the dwell time of the axis; the makers' own label confirms it."""
     told_hz = block.number("$SW_h", "$SWH", "$SPECTRALWIDTH")
@@ -497,7 +317,7 @@ def _fid_delay(block: Block, n_points: int) -> tuple[float, tuple[str, ...]]:
 
 
 def _read_spectrum(path: Path, block: Block) -> MakerSpectrum:
-    columns = _columns(path, block)
+    columns = read_columns(path, block)
     if columns.units.startswith(("S", "MS", "MICROS")) and columns.units != "":
         raise SpectrumFormatError(
             path, "has a time axis but calls itself a spectrum; export it again"
@@ -537,7 +357,7 @@ class _ShiftAxis:
 
 
 def _shift_axis(
-    block: Block, first_x: float, step_x: float, columns: _Columns, observe_mhz: float
+    block: Block, first_x: float, step_x: float, columns: Columns, observe_mhz: float
 ) -> _ShiftAxis:
     """Axis from, in this order: ppm abscissae, OFFSET, shift reference, Hz from 0."""
     if columns.units == "PPM":

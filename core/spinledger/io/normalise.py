@@ -13,26 +13,27 @@ from spinledger.errors import SpectrumFormatError
 
 _MASS_FIRST = re.compile(r"(\d{1,3})\s*-?\s*([A-Za-z]{1,2})")
 _MASS_LAST = re.compile(r"([A-Za-z]{1,2})\s*-?\s*(\d{1,3})")
-_NAMED_NUCLEI = {
-    "proton": "1H",
-    "hydrogen": "1H",
-    "hydrogen atom": "1H",
-    "h": "1H",
-    "deuterium": "2H",
-    "carbon": "13C",
-    "carbon13": "13C",
-    "carbon atom": "13C",
-    "nitrogen": "15N",
-    "nitrogen14": "14N",
-    "nitrogen15": "15N",
-    "oxygen17": "17O",
-    "fluorine": "19F",
-    "fluorine19": "19F",
-    "silicon29": "29Si",
-    "phosphorus": "31P",
-    "phosphorus31": "31P",
-    "boron11": "11B",
-    "lithium7": "7Li",
+_WORD_MASS = re.compile(r"([A-Za-z]+)\s*-?\s*(\d{1,3})?")
+# Symbol and the isotope meant where none is named.
+_ELEMENTS = {
+    "proton": ("H", "1"),
+    "hydrogen": ("H", "1"),
+    "h": ("H", "1"),
+    "deuterium": ("H", "2"),
+    "lithium": ("Li", "7"),
+    "boron": ("B", "11"),
+    "carbon": ("C", "13"),
+    "nitrogen": ("N", "15"),
+    "oxygen": ("O", "17"),
+    "fluorine": ("F", "19"),
+    "sodium": ("Na", "23"),
+    "aluminium": ("Al", "27"),
+    "aluminum": ("Al", "27"),
+    "silicon": ("Si", "29"),
+    "phosphorus": ("P", "31"),
+    "selenium": ("Se", "77"),
+    "tin": ("Sn", "119"),
+    "platinum": ("Pt", "195"),
 }
 
 
@@ -57,9 +58,10 @@ def nucleus_name(written: str | None) -> str | None:
     cleaned = written.strip().strip("<>^\"'").strip()
     if not cleaned or cleaned.lower() in {"off", "none", "undefined", "unknown"}:
         return None
-    named = _NAMED_NUCLEI.get(cleaned.lower())
-    if named:
-        return named
+    word = _WORD_MASS.fullmatch(re.sub(r"\s*atom$", "", cleaned, flags=re.IGNORECASE))
+    element = _ELEMENTS.get(word[1].lower()) if word else None
+    if word and element:
+        return (word[2] or element[1]) + element[0]
     first = _MASS_FIRST.fullmatch(cleaned)
     if first:
         return first[1] + first[2].capitalize()

@@ -25,6 +25,16 @@ def as_floats(numbers: npt.NDArray[Any]) -> npt.NDArray[np.float64]:
         return numbers.astype(np.float64)
 
 
+def scaled(
+    values: npt.NDArray[np.float64], factor: float | None
+) -> npt.NDArray[np.float64]:
+    """Values times a factor of the header (1 if None); overflow is told later."""
+    if factor is None:
+        return values
+    with np.errstate(over="ignore", invalid="ignore"):
+        return values * factor
+
+
 def complex_from_parts(
     real: npt.NDArray[np.float64], imaginary: npt.NDArray[np.float64]
 ) -> npt.NDArray[np.complex128]:
