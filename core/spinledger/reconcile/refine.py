@@ -50,7 +50,7 @@ from spinledger.reconcile.refine_values import (
 from spinledger.spins.network import ClaimNetwork, Plan
 from spinledger.spins.synthesis import LineShape
 from spinledger.values.claim import ClaimSet
-from spinledger.values.evidence import Evidence
+from spinledger.values.evidence import Evidence, LineKernel
 
 __all__ = [
     "FROM_AFAR",
@@ -214,12 +214,19 @@ class _Run:
             fits_gauss_share=fits_gauss_share,
         )
 
-    def plan(self, shifts_hz: Floats, couplings_hz: Floats) -> Plan:
+    def plan(
+        self, shifts_hz: Floats, couplings_hz: Floats, broadening_hz: float = 0.0
+    ) -> Plan:
+        """Solving plan; broad views need fewer lines."""
+        effort = self.settings.effort
+        if broadening_hz > 0.0:
+            effort = replace(
+                effort,
+                bin_hz=max(effort.bin_hz, _BIN_SHARE * 2.0 * broadening_hz),
+                smallest=max(effort.smallest, 3e-4),
+            )
         return self.network.plan(
-            shifts_hz,
-            couplings_hz,
-            without=self.start.absent,
-            effort=self.settings.effort,
+            shifts_hz, couplings_hz, without=self.start.absent, effort=effort
         )
 
     def first_parameters(self) -> Floats:
@@ -235,12 +242,13 @@ class _Run:
 
     def stage(self, stage: Stage, parameters: Floats) -> tuple[Descent, Problem]:
         """Run one stage from the given parameters."""
-        plan = self.plan(self.start_shifts_hz, self.start_couplings_hz)
+        broadening_hz = stage.broadening_hz
+        plan = self.plan(self.start_shifts_hz, self.start_couplings_hz, broadening_hz)
         layout = self.layout(plan)
         shifts = layout.shifts_hz(parameters, self.start_shifts_hz)
         couplings = layout.couplings_hz(parameters, self.start_couplings_hz)
         if plan.is_cut:
-            plan = self.plan(shifts, couplings)
+            plan = self.plan(shifts, couplings, broadening_hz)
             layout = self.layout(plan)
         lines = self.network.lines(shifts, couplings, plan=plan)
         data = stage_data(
@@ -263,7 +271,11 @@ class _Run:
             data=data,
         )
         descent = descend(
-            problem, parameters, max_steps=stage.max_steps, budget=self.budget
+            problem,
+            parameters,
+            max_steps=stage.max_steps,
+            budget=self.budget,
+            small_gain=3e-3 if broadening_hz > 0.0 else 1e-3,
         )
         return descent, problem
 
@@ -282,50 +294,58 @@ class _Run:
         )
 
     def finish(self, problem: Problem, descent: Descent) -> tuple[Descent, Problem]:
-        """Weights by the misfit found, the Gauss share, and the common kernel."""
+        """Weights by the misfit found; Gauss share or common kernel, the better."""
         max_steps = self.settings.stages[-1].max_steps
+        data = _reweighted(self.prepared, problem, descent.evaluation)
+        tries = [self._with_gauss_share(problem, descent, data)]
+        kernel = self.prepared.evidence.kernel
+        if kernel is not None:
+            tries.append(_with_kernel(problem, descent, data, kernel=kernel))
+        fits = [
+            (descend(p, begin, max_steps=max_steps, budget=self.budget), p)
+            for p, begin in tries
+        ]
+        best, chosen = min(fits, key=lambda fit: fit[0].evaluation.cost)
+        chosen = replace(
+            chosen,
+            data=_reweighted(self.prepared, chosen, best.evaluation),
+            exact_slopes=self.settings.exact_slopes
+            and _exact_is_affordable(chosen.plan),
+        )
+        last = descend(
+            chosen,
+            best.evaluation.parameters,
+            max_steps=max_steps,
+            budget=self.budget,
+            small_gain=1e-5,
+        )
+        return last, chosen
+
+    def _with_gauss_share(
+        self, problem: Problem, descent: Descent, data: StageData
+    ) -> tuple[Problem, Floats]:
         layout = self.layout(problem.plan, fits_gauss_share=True)
         voigt = replace(
             problem,
             layout=_with_reach(layout, 0.0),
-            data=_reweighted(self.prepared, problem, descent.evaluation),
-            exact_slopes=self.settings.exact_slopes
-            and _exact_is_affordable(problem.plan),
+            data=data,
+            shape=replace(problem.shape, gauss_share=0.1),
         )
-        begin = np.append(descent.evaluation.parameters, 0.1)
-        first = descend(voigt, begin, max_steps=max_steps, budget=self.budget)
-        voigt = replace(voigt, data=_reweighted(self.prepared, voigt, first.evaluation))
-        best = descend(
-            voigt,
-            first.evaluation.parameters,
-            max_steps=max_steps,
-            budget=self.budget,
-            small_gain=1e-6,
-        )
-        kernel = self.prepared.evidence.kernel
-        if kernel is None or self.budget.is_used_up:
-            return best, voigt
-        common = replace(
-            voigt,
-            layout=problem.layout,
-            shape=replace(voigt.shape, kernel=kernel),
-        )
-        begin = best.evaluation.parameters[:-1].copy()
-        begin[problem.layout.n_moving] = np.log(kernel.width_hz)
-        shaped = descend(common, begin, max_steps=max_steps, budget=self.budget)
-        if shaped.evaluation.cost >= best.evaluation.cost:
-            return best, voigt
-        common = replace(
-            common, data=_reweighted(self.prepared, common, shaped.evaluation)
-        )
-        shaped = descend(
-            common,
-            shaped.evaluation.parameters,
-            max_steps=max_steps,
-            budget=self.budget,
-            small_gain=1e-6,
-        )
-        return shaped, common
+        return voigt, np.append(descent.evaluation.parameters, 0.1)
+
+
+def _with_kernel(
+    problem: Problem, descent: Descent, data: StageData, *, kernel: LineKernel
+) -> tuple[Problem, Floats]:
+    shaped = replace(problem, data=data, shape=replace(problem.shape, kernel=kernel))
+    begin = np.array(descent.evaluation.parameters)
+    begin[problem.layout.n_moving] = np.log(kernel.width_hz)
+    return shaped, begin
+
+
+# Bins of this share of the line width change a line by less than 2e-4 of its
+# height.
+_BIN_SHARE = 0.02
 
 
 def _apart(parameters: Floats, layout: Layout) -> Floats:

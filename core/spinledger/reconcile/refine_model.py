@@ -293,7 +293,7 @@ def _jacobian(problem: Problem, drawn: _Drawn, amplitudes: Floats) -> Floats:
         images, amplitude = piece.images, amplitudes[row]
         by_parameter, by_width = images.by_parameter, images.by_log_width
         by_share = images.by_gauss_share
-        if by_parameter is None or by_width is None or by_share is None:
+        if by_parameter is None or by_width is None:
             raise ValueError("lines: need derivatives for a Jacobian")
         for source, target in piece.overlaps:
             width_change = amplitude * by_width[source]
@@ -301,7 +301,7 @@ def _jacobian(problem: Problem, drawn: _Drawn, amplitudes: Floats) -> Floats:
                 jacobian[place, target] += amplitude * image[source]
             jacobian[layout.n_moving, target] += width_change
             jacobian[layout.n_moving + 1 + row, target] = width_change
-            if layout.fits_gauss_share:
+            if by_share is not None and layout.fits_gauss_share:
                 jacobian[-1, target] += amplitude * by_share[source]
     return jacobian
 

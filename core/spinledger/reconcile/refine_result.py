@@ -213,7 +213,7 @@ def _points_near(outcome: Outcome, claim: int) -> Flags:
 def _shape(outcome: Outcome) -> LineShape:
     shape = replace(outcome.problem.shape, extra_width_hz=0.0)
     if outcome.layout.fits_gauss_share:
-        shape = replace(shape, gauss_share=float(outcome.evaluation.parameters[-1]))
+        return replace(shape, gauss_share=float(outcome.evaluation.parameters[-1]))
     return shape
 
 
