@@ -113,6 +113,7 @@ def write_varian(
         "reffrq": FREQUENCY_MHZ,
         "rfl": WIDTH_HZ / 2 - CARRIER_PPM * FREQUENCY_MHZ,
         "rfp": 0,
+        "np": 2 * fid.size,
         "ct": 16,
         "d1": 1.5,
         "pw": 4.0,
@@ -166,7 +167,7 @@ def write_jeol(path: Path, fid: ComplexArray | None = None, **changed: object) -
     header[24] = 3  # complex
     header[32:34] = bytes((0x01, 28))  # seconds
     header[48 : 48 + 5] = b"title"
-    struct.pack_into(">I", header, 176, fid.size)
+    struct.pack_into(">8I", header, 176, fid.size, *(1,) * 7)
     struct.pack_into(">I", header, 240, fid.size - 1)
     struct.pack_into(">d", header, 336, (fid.size - 1) / WIDTH_HZ)
     header[808 : 808 + 6] = b"Proton"

@@ -105,7 +105,7 @@ def read(folder: Path, *, prefer_processed: bool = False) -> Fid | MakerSpectrum
         If the data are not 1D proton data, damaged, or lack a parameter.
     """
     place = _locate(folder)
-    if _n_dimensions(place) != 1:
+    if _n_dimensions(place) == 2:
         raise SpectrumFormatError(
             folder,
             "holds a 2D or arrayed experiment; give the folder of the 1D proton "
@@ -170,13 +170,15 @@ def _first_processed(pdata: Path) -> Path | None:
     return None
 
 
-def _n_dimensions(place: _Place) -> int:
+def _n_dimensions(place: _Place) -> int | None:
+    """1, 2 for anything more, or None where there are no data."""
     if place.fid is not None:
         return 1
     if place.ser is not None:
         return 2
-    processed = place.processed
-    return 1 if processed is not None and (processed / "1r").is_file() else 2
+    if place.processed is not None:
+        return 1 if (place.processed / "1r").is_file() else 2
+    return 2 if any(place.folder.glob("pdata/*/2rr")) else None
 
 
 def _parameters(path: Path | None) -> Block:

@@ -24,7 +24,21 @@ from spinledger.io.samples import scaled
 
 @dataclass(frozen=True, slots=True, eq=False, kw_only=True)
 class Columns:
-    """Decoded ordinates with the axis that the header lays under them."""
+    """Decoded ordinates with the axis that the header lays under them.
+
+    Attributes
+    ----------
+    real, imaginary : numpy.ndarray, shape (n_points,)
+        In the order of the file; there may be no imaginary part.
+    first_x, last_x : float or None
+        Abscissae of the first and last declared point, in ``units``.
+    units : str
+        Upper case: "HZ", "PPM", "SECONDS", ...
+    n_declared : int
+        Points by the header.
+    notes : tuple of str
+        What does not add up, one sentence each.
+    """
 
     real: npt.NDArray[np.float64]
     imaginary: npt.NDArray[np.float64] | None

@@ -318,11 +318,19 @@ def digital_filter_delay(orders: str | None, factors: str | None) -> float | Non
     >>> round(digital_filter_delay("2 41 73", "6 2"), 2)
     19.67
     """
-    if not orders or not factors:
+    if not (orders and orders.strip()) or not factors:
         return None
-    lengths = _stage_numbers(orders)
-    rates = _stage_numbers(f"{len(lengths)} {factors}") if lengths else None
-    if lengths is None or rates is None or len(rates) != len(lengths):
+    count, *numbers = orders.split()
+    has_spaces = bool(numbers)
+    if not has_spaces:  # then the count is the first digit
+        count, numbers = count[0], [count[1:]]
+    if not (count.isdecimal() and count.isascii()) or not 1 <= int(count) <= 9:
+        return None
+    if has_spaces and len(numbers) != int(count):
+        return None
+    lengths = _stage_numbers(numbers, int(count))
+    rates = _stage_numbers(factors.split(), int(count))
+    if lengths is None or rates is None:
         return None
     if min(rates) < 1 or min(lengths) < 1:
         return None
@@ -332,20 +340,17 @@ def digital_filter_delay(orders: str | None, factors: str | None) -> float | Non
     )
 
 
-def _stage_numbers(text: str) -> list[int] | None:
-    """Numbers after the leading count, apart by spaces or in equal columns."""
-    words = text.split()
-    if not words or not all(word.isdecimal() and word.isascii() for word in words):
+def _stage_numbers(words: list[str], n_stages: int) -> list[int] | None:
+    """One number a stage, apart by spaces or in columns of equal width."""
+    if not all(word.isdecimal() and word.isascii() for word in words):
         return None
-    if len(words) > 1 and int(words[0]) == len(words) - 1:
-        return [int(word) for word in words[1:]]
-    digits = "".join(words)
-    n_stages = int(digits[0])
-    body = digits[1:]
-    if n_stages < 1 or len(body) % n_stages:
+    if len(words) == n_stages:
+        return [int(word) for word in words]
+    if len(words) != 1 or len(words[0]) % n_stages:
         return None
-    width = len(body) // n_stages
-    return [int(body[i * width : (i + 1) * width]) for i in range(n_stages)]
+    width = len(words[0]) // n_stages
+    columns = (words[0][i * width : (i + 1) * width] for i in range(n_stages))
+    return [int(column) for column in columns]
 
 
 def _metadata(
