@@ -38,9 +38,11 @@ from spinledger.report.text import experimental_runs, reference_sentence
 from spinledger.report.words import fixed, outgoing
 from spinledger.values.ledger import Ledger
 
+_INK = RGBColor(0x1D, 0x22, 0x26)
 _MUTED = RGBColor(0x57, 0x5D, 0x62)
 # Millimetres of the 178 between the margins of an A4 page.
 _ASSIGNMENT_WIDTHS = (18, 20, 15, 15, 48, 23, 18, 21)
+_LISTING_WIDTHS = (45, 25, 33, 75)
 
 
 def report_docx(ledger: Ledger, context: ReportContext | None = None) -> bytes:
@@ -83,8 +85,9 @@ def _page(document: Any) -> None:
         setattr(section, side, Mm(16))
     style = document.styles["Normal"]
     style.font.size = Pt(9)
-    style.font.name = "Source Sans 3"
     style.paragraph_format.space_after = Pt(4)
+    for name in ("Title", "Heading 1", "Heading 2"):
+        document.styles[name].font.color.rgb = _INK
 
 
 def _opening(document: Any, ledger: Ledger, context: ReportContext) -> None:
@@ -105,10 +108,12 @@ def _opening(document: Any, ledger: Ledger, context: ReportContext) -> None:
 def _assignment(document: Any, ledger: Ledger) -> None:
     document.add_heading("Assignment", level=2)
     rows = [row.cells for row in assignment_rows(ledger)]
-    table = _table(document, ASSIGNMENT_HEAD, [*rows, balance_cells(ledger)])
-    for column, width in zip(table.columns, _ASSIGNMENT_WIDTHS, strict=True):
-        for cell in column.cells:
-            cell.width = Mm(width)
+    table = _table(
+        document,
+        ASSIGNMENT_HEAD,
+        [*rows, balance_cells(ledger)],
+        widths_mm=_ASSIGNMENT_WIDTHS,
+    )
     _double_rule(table.rows[-1])
     doubt = fixed(accuracy_ppm(ledger), 3)
     _muted(
@@ -138,7 +143,7 @@ def _listing(
 ) -> None:
     document.add_heading(title, level=2)
     if rows:
-        _table(document, head, rows)
+        _table(document, head, rows, widths_mm=_LISTING_WIDTHS)
     else:
         document.add_paragraph("None.")
 
@@ -154,7 +159,7 @@ def _bullets(document: Any, title: str, sentences: Iterable[str]) -> None:
 
 def _audit(document: Any, ledger: Ledger, context: ReportContext) -> None:
     document.add_heading("Audit trail", level=2)
-    _table(document, ("What", "Value"), audit_rows(ledger))
+    _table(document, ("What", "Value"), audit_rows(ledger), widths_mm=(38, 140))
     for line in recipe_lines(ledger):
         document.add_paragraph(line, style="List Number")
     for edit in ledger.edits:
@@ -165,9 +170,15 @@ def _audit(document: Any, ledger: Ledger, context: ReportContext) -> None:
     _muted(document.add_paragraph(), f"Made with {made_with}.")
 
 
-def _table(document: Any, head: Sequence[str], rows: Sequence[Sequence[str]]) -> Any:
+def _table(
+    document: Any,
+    head: Sequence[str],
+    rows: Sequence[Sequence[str]],
+    *,
+    widths_mm: Sequence[float],
+) -> Any:
     table = document.add_table(rows=1, cols=len(head))
-    table.autofit = True
+    table.autofit = False
     for cell, name in zip(table.rows[0].cells, head, strict=True):
         _fill(cell, name, is_muted=True)
     _repeat(table.rows[0])
@@ -175,6 +186,10 @@ def _table(document: Any, head: Sequence[str], rows: Sequence[Sequence[str]]) ->
         cells = table.add_row().cells
         for rank, (cell, value) in enumerate(zip(cells, values, strict=True)):
             _fill(cell, value, is_bold=rank == 0)
+    for column, width in zip(table.columns, widths_mm, strict=True):
+        column.width = Mm(width)
+        for cell in column.cells:
+            cell.width = Mm(width)
     return table
 
 

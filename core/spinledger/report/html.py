@@ -110,8 +110,8 @@ def _verdict(ledger: Ledger, context: ReportContext) -> str:
     reasons = " ".join(outgoing(one) for one in ledger.verdict.reasons)
     excluded = [one for one in ledger.contenders if one.excluded]
     lines = [
-        f'<h2 class="verdict">{escape(verdict_title(ledger))} '
-        f'<span class="probability">{escape(probability_words(ledger))}</span></h2>',
+        f'<h2 class="verdict">{escape(verdict_title(ledger))}</h2>'
+        f'<p class="probability">{escape(probability_words(ledger))}</p>',
         f"<p>{escape(reasons)}</p>" if reasons else "",
         _before_edits(ledger, context),
     ]

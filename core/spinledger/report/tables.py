@@ -22,6 +22,15 @@ from spinledger.report.words import (
 )
 from spinledger.values.evidence import Stray
 from spinledger.values.ledger import Contender, Entry, EntryCoupling, Ledger
+from spinledger.values.recipe import (
+    Apodize,
+    Baseline,
+    FourierTransform,
+    Phase,
+    Reference,
+    RemoveDelay,
+    ZeroFill,
+)
 
 ASSIGNMENT_HEAD = (
     "Claim",
@@ -112,7 +121,7 @@ def audit_rows(ledger: Ledger) -> tuple[tuple[str, str], ...]:
 
 def recipe_lines(ledger: Ledger) -> tuple[str, ...]:
     """Processing steps in order, one line each."""
-    return tuple(_step_words(step) for step in ledger.evidence.recipe.to_json())
+    return tuple(_step_words(step) for step in ledger.evidence.recipe.steps)
 
 
 def probability_words(ledger: Ledger) -> str:
@@ -243,26 +252,52 @@ def _probability(value: float) -> str:
     return "over 0.999" if value > 0.999 else f"{value:.3g}"
 
 
-def _step_words(step: dict[str, object]) -> str:
-    words = {
-        "RemoveDelay": "Digital-filter delay taken out",
-        "Apodize": "Window",
-        "ZeroFill": "Zero filling",
-        "FourierTransform": "Fourier transform",
-        "Phase": "Phase",
-        "Baseline": "Baseline",
-        "Reference": "Reference",
-    }
-    name = str(step.get("step"))
-    details = [
-        f"{key.replace('_', ' ')} {_value(value)}"
-        for key, value in step.items()
-        if key not in ("step", "why", "masked_ppm") and value not in (None, "")
-    ]
-    return f"{words.get(name, name)}: {', '.join(details)}"
+def _step_words(step: object) -> str:
+    """One processing step in plain words."""
+    match step:
+        case RemoveDelay():
+            return f"Digital-filter delay of {step.group_delay_points:.6g} points taken out"
+        case Apodize():
+            return _window_words(step)
+        case ZeroFill():
+            return f"Filled with zeros to {step.n_points} complex points"
+        case FourierTransform():
+            half = ", first point halved" if step.halve_first_point else ""
+            return f"Fourier transform{half}"
+        case Phase():
+            who = "automatic" if step.automatic else "by hand"
+            return (
+                f"Phase {fixed(step.phase0_deg, 1)}° and {fixed(step.phase1_deg, 1)}° "
+                f"first order, {who}"
+            )
+        case Baseline():
+            return _baseline_words(step)
+        case Reference():
+            return (
+                f"Axis moved by {signed(step.offset_ppm, 4)} ppm, reference {step.by}, "
+                f"sd {step.sd_ppm:.2g} ppm"
+            )
+    raise TypeError(f"step: no words for {type(step).__name__}")
 
 
-def _value(value: object) -> str:
-    if isinstance(value, bool):
-        return "yes" if value else "no"
-    return f"{value:.6g}" if isinstance(value, float) else str(value)
+def _window_words(step: Apodize) -> str:
+    details = []
+    if step.line_broadening_hz:
+        details.append(f"{fixed(step.line_broadening_hz, 2)} Hz Lorentzian")
+    if step.gaussian_hz:
+        details.append(f"{fixed(step.gaussian_hz, 2)} Hz Gaussian")
+    if step.kind == "sine_bell":
+        details.append(
+            f"power {step.sine_power:g}, start {fixed(step.sine_offset_deg, 0)}°"
+        )
+    name = step.kind.replace("_", " ")
+    return f"Window {name}{': ' if details else ''}{', '.join(details)}"
+
+
+def _baseline_words(step: Baseline) -> str:
+    if step.method == "none":
+        return "No baseline correction"
+    return (
+        f"Baseline {step.method}, stiffness {step.stiffness:.3g} on {step.n_bins} bins, "
+        f"{len(step.masked_ppm)} stretches with signals left out"
+    )
