@@ -210,7 +210,7 @@ def _shake_difference(own: Evaluation, other: Evaluation) -> str:
 def _losers(evaluation: Evaluation) -> set[float]:
     solution = evaluation.solution
     places = _places(evaluation)
-    found = set()
+    found: set[float] = set()
     if solution is None:
         return found
     for coupling in evaluation.claims.couplings:

@@ -155,7 +155,7 @@ def assess(
         Stretches left out by hand take no part.
     """
     misfit = spectrum_misfit(evidence, refinement, constraints)
-    offset_ppm = reference_offset(evidence, claims, refinement, absent)
+    offset_ppm = reference_offset(evidence, claims, refinement, absent | hidden)
     rows = _claim_rows(
         claims, refinement, misfit, offset_ppm, absent=absent, hidden=hidden
     )
@@ -338,7 +338,7 @@ def _claim_rows(
     common_width = _common_width(claims, refinement, absent | hidden)
     rows = []
     for index, claim in enumerate(claims.claims):
-        if index in absent:
+        if index in absent or index in hidden:
             continue
         gap = float(refinement.shifts_ppm[index]) - claim.shift_ppm - offset_ppm
         sd = float(np.hypot(claim.shift_sd_ppm, SHIFT_EXTRA_SD_PPM))
@@ -348,7 +348,7 @@ def _claim_rows(
         rows.append(
             ClaimResidual(
                 claim=index,
-                is_counted=is_counted and index not in hidden,
+                is_counted=is_counted,
                 shift_z=gap / sd,
                 amplitude_log=float(np.log(max(amplitude, 0.05))),
                 width_log=float(np.log(width / common_width)),

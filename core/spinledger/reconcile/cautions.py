@@ -16,7 +16,7 @@ def cautions(evaluation: Evaluation) -> tuple[str, ...]:
     """Cautions for one ledger, fixed ones first."""
     said = ["consistent is not proven, and only the listed contenders were tested"]
     mol = molecule(evaluation.structure)
-    if Chem.FindMolChiralCenters(
+    if Chem.FindMolChiralCenters(  # type: ignore[no-untyped-call]  # RDKit
         mol, includeUnassigned=True, useLegacyImplementation=False
     ):
         said.append(

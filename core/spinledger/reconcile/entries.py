@@ -8,7 +8,6 @@ from __future__ import annotations
 from dataclasses import dataclass, replace
 
 import numpy as np
-import numpy.typing as npt
 
 from spinledger.reconcile.assess import ClaimResidual, expected_protons
 from spinledger.reconcile.envelopes import (
@@ -30,7 +29,8 @@ from spinledger.reconcile.words import (
     optional_reason,
     shift_reason,
 )
-from spinledger.spins.tree import splitting_tree
+from spinledger.spins.network import ClaimNetwork
+from spinledger.spins.tree import Resolution, splitting_tree
 from spinledger.values.claim import Claim
 from spinledger.values.evidence import Evidence
 from spinledger.values.ledger import (
@@ -79,10 +79,16 @@ class _Page:
     envelopes: tuple[Envelope, ...]
     integrals: dict[int, float]
     disputed: dict[int, frozenset[int]]
+    network: ClaimNetwork
+    in_full: bool
 
 
 def book_entries(
-    evidence: Evidence, solution: Solution, constraints: Constraints | None = None
+    evidence: Evidence,
+    solution: Solution,
+    constraints: Constraints | None = None,
+    *,
+    in_full: bool = True,
 ) -> Booking:
     """One entry a claim, in the order of the claims.
 
@@ -91,6 +97,8 @@ def book_entries(
     evidence : Evidence
     solution : Solution
     constraints : Constraints, optional
+    in_full : bool
+        False leaves out the multiplicities, which take simulations.
     """
     lines = {one.claim: one for one in solution.best.refinement.claim_lines}
     ranges = claim_ranges(evidence, solution, lines)
@@ -105,6 +113,8 @@ def book_entries(
         envelopes=envelopes,
         integrals=integrals,
         disputed=_booked_once(solution),
+        network=ClaimNetwork(solution.claims),
+        in_full=in_full,
     )
     return Booking(
         entries=tuple(
@@ -171,8 +181,6 @@ def _entry(page: _Page, index: int) -> Entry:
     expected = expected_protons(solution.claims, claim)
     spread = float(np.hypot(INTEGRAL_SD_SHARE * expected, integral_sd))
     reasons = _reasons(page, index, residual, envelope)
-    predicted = np.array([one.shift_ppm for one in solution.claims.claims])
-    drawn = np.array([one.j_hz for one in solution.claims.couplings])
     return Entry(
         claim=claim.label,
         atoms=claim.atoms,
@@ -186,9 +194,10 @@ def _entry(page: _Page, index: int) -> Entry:
         range_ppm=page.ranges[index],
         integral_protons=integral,
         integral_sd_protons=integral_sd,
-        multiplicity=_broad(page, index)
-        + _multiplicity(page, index, refinement.shifts_ppm, refinement.couplings_hz),
-        predicted_multiplicity=_multiplicity(page, index, predicted, drawn),
+        multiplicity=_measured_multiplicity(page, index) if page.in_full else None,
+        predicted_multiplicity=(
+            _drawn_multiplicity(page, index) if page.in_full else ""
+        ),
         width_hz=float(refinement.widths_hz[index]),
         couplings=entry_couplings(solution, index, page.disputed.get(index)),
         group=_group(solution, index, envelope),
@@ -222,9 +231,7 @@ def _unplaced(page: _Page, index: int) -> Entry:
     elif claim.visibility == "optional":
         row = _row(claim, "silent", claim.why or optional_reason(claim))
     else:
-        predicted = np.array([one.shift_ppm for one in solution.claims.claims])
-        drawn = np.array([one.j_hz for one in solution.claims.couplings])
-        shape = _multiplicity(page, index, predicted, drawn)
+        shape = _drawn_multiplicity(page, index)
         row = _row(claim, "open", "", (open_reason(claim, shape),))
     return _with_couplings(row, couplings)
 
@@ -274,15 +281,31 @@ def _is_bleached(page: _Page, shift_ppm: float, ratio: float) -> bool:
     )
 
 
-def _multiplicity(
-    page: _Page,
-    index: int,
-    shifts_ppm: npt.NDArray[np.float64],
-    couplings_hz: npt.NDArray[np.float64],
-) -> str:
-    frequency = page.evidence.spectrum.spectrometer_frequency_mhz
+def _measured_multiplicity(page: _Page, index: int) -> str:
+    refinement = page.solution.best.refinement
     tree = splitting_tree(
-        page.solution.claims, index, shifts_ppm * frequency, couplings_hz
+        page.network,
+        index,
+        refinement.shifts_ppm * page.evidence.spectrum.spectrometer_frequency_mhz,
+        refinement.couplings_hz,
+        resolution=Resolution(
+            width_hz=float(refinement.widths_hz[index]),
+            determined=refinement.determined,
+        ),
+        absent=page.solution.absent,
+    )
+    return _broad(page, index) + tree.multiplicity
+
+
+def _drawn_multiplicity(page: _Page, index: int) -> str:
+    claims = page.solution.claims
+    predicted = np.array([one.shift_ppm for one in claims.claims])
+    tree = splitting_tree(
+        page.network,
+        index,
+        predicted * page.evidence.spectrum.spectrometer_frequency_mhz,
+        np.array([one.j_hz for one in claims.couplings]),
+        absent=page.solution.absent,
     )
     return tree.multiplicity
 

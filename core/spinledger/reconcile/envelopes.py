@@ -5,6 +5,7 @@ Shifts in ppm, areas in intensity * Hz, integrals in protons.
 
 from __future__ import annotations
 
+from collections import defaultdict
 from dataclasses import dataclass
 
 import numpy as np
@@ -20,6 +21,8 @@ from spinledger.values.ledger import Balance, ClaimLines
 LINE_SHARE_IN_RANGE = 0.015
 RANGE_MARGIN_WIDTHS = 1.5
 OVERLAP_SHARE = 0.1
+LINE_BIN_HZ = 2.0
+OWNED_SHARE = 0.3
 
 
 @dataclass(frozen=True, slots=True, kw_only=True)
@@ -46,19 +49,45 @@ class Envelope:
 def claim_ranges(
     evidence: Evidence, solution: Solution, lines: dict[str, ClaimLines]
 ) -> dict[int, tuple[float, float]]:
-    """Range of every placed claim: its lines and one and a half widths beyond."""
+    """Range of every placed claim: its lines and one and a half widths beyond.
+
+    Strong coupling lends every proton faint lines among its partner's; lines
+    that another claim owns for the most part do not widen a range.
+    """
     frequency = evidence.spectrum.spectrometer_frequency_mhz
+    placed = {
+        index: lines[claim.label]
+        for index, claim in enumerate(solution.claims.claims)
+        if claim.label in lines
+        and lines[claim.label].shifts_ppm.size
+        and index not in solution.hidden
+    }
+    crowd = _crowd(list(placed.values()), frequency)
     ranges = {}
-    for index, claim in enumerate(solution.claims.claims):
-        own = lines.get(claim.label)
-        if own is None or own.shifts_ppm.size == 0 or index in solution.hidden:
-            continue
+    for index, own in placed.items():
         tall = own.protons >= LINE_SHARE_IN_RANGE * own.protons.max()
+        bins = np.round(own.shifts_ppm * frequency / LINE_BIN_HZ).astype(np.int64)
+        mine = _crowd([own], frequency)
+        owned = np.array(
+            [mine[b] >= OWNED_SHARE * max(crowd[b], 1e-12) for b in bins.tolist()]
+        )
+        kept = tall & owned if (tall & owned).any() else tall
         margin = RANGE_MARGIN_WIDTHS * own.width_hz / frequency
-        low = float(own.shifts_ppm[tall].min()) - margin
-        high = float(own.shifts_ppm[tall].max()) + margin
+        low = float(own.shifts_ppm[kept].min()) - margin
+        high = float(own.shifts_ppm[kept].max()) + margin
         ranges[index] = (low, high)
     return ranges
+
+
+def _crowd(lines: list[ClaimLines], frequency_mhz: float) -> dict[int, float]:
+    """Protons by place, each line counted in its bin and the two beside it."""
+    crowd: dict[int, float] = defaultdict(float)
+    for one in lines:
+        bins = np.round(one.shifts_ppm * frequency_mhz / LINE_BIN_HZ).astype(np.int64)
+        for place, protons in zip(bins.tolist(), one.protons.tolist(), strict=True):
+            for near in (place - 1, place, place + 1):
+                crowd[near] += abs(protons)
+    return crowd
 
 
 def shared_envelopes(

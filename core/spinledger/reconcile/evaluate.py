@@ -111,8 +111,19 @@ def claims_of(structure: Structure, bench: Bench) -> ClaimSet:
     return joined(sets)
 
 
-def evaluate(structure: Structure, bench: Bench, limits: Limits) -> Evaluation:
-    """Claims, match, refinement, booking and own verdict of one structure."""
+def evaluate(
+    structure: Structure, bench: Bench, limits: Limits, *, in_full: bool = False
+) -> Evaluation:
+    """Claims, match, refinement, booking and own verdict of one structure.
+
+    Parameters
+    ----------
+    structure : Structure
+    bench : Bench
+    limits : Limits
+    in_full : bool
+        Book multiplicities too, which a ranking does not need.
+    """
     claims = claims_of(structure, bench)
     evidence = released(bench.evidence, structure)
     shared = bench.coarse if evidence is bench.evidence else None
@@ -124,7 +135,7 @@ def evaluate(structure: Structure, bench: Bench, limits: Limits) -> Evaluation:
         )
     if solution is None:
         return _not_judged(structure, claims, evidence)
-    booking = book_entries(evidence, solution, constraints)
+    booking = book_entries(evidence, solution, constraints, in_full=in_full)
     misfit = spectrum_misfit(evidence, solution.best.refinement, constraints)
     unowned = unowned_stretches(evidence, misfit, booking.area_per_proton)
     explained = _explained(evidence, solution, bench, unowned)

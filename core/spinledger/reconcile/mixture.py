@@ -5,7 +5,7 @@ from __future__ import annotations
 from collections.abc import Sequence
 from dataclasses import replace
 
-from spinledger.values.claim import ClaimSet, CouplingClaim, Particle
+from spinledger.values.claim import Claim, ClaimSet, CouplingClaim, Particle
 
 # A user's mixture says what is there, not how much.
 UNKNOWN_SHARE_SD = 0.5
@@ -29,7 +29,7 @@ def joined(sets: Sequence[ClaimSet]) -> ClaimSet:
         raise ValueError("sets: need one claim set or more")
     if len(sets) == 1:
         return sets[0]
-    claims = []
+    claims: list[Claim] = []
     particles: list[Particle] = []
     couplings: list[CouplingClaim] = []
     shares: list[tuple[float, float]] = []

@@ -162,10 +162,10 @@ def _in_order(
                 reasons=(*said, *verdict_reasons(row)),
             )
         )
-    for number, row in enumerate(rows):
-        if isinstance(row, Evaluation) and row.logit is not None:
+    for number, left in enumerate(rows):
+        if isinstance(left, Evaluation) and left.logit is not None:
             continue
-        reasons = (row,) if isinstance(row, str) else verdict_reasons(row)
+        reasons = (left,) if isinstance(left, str) else verdict_reasons(left)
         ranked.append(
             RankedCandidate(
                 name=candidates[number].name,

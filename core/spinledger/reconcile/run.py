@@ -89,7 +89,7 @@ def reconcile(
     report("matching claims to the spectrum", 0.05)
     bench = lay_out(evidence, chosen)
     limits = limits_of(chosen, cancelled)
-    own = evaluate(structure, bench, limits)
+    own = evaluate(structure, bench, limits, in_full=True)
     report("testing contenders", 0.5)
     contenders, tested = _contenders(own, bench, limits, report)
     report("weighing further measurements", 0.95)

@@ -10,7 +10,7 @@ from collections.abc import Callable
 from dataclasses import dataclass
 
 from spinledger.reconcile.assess import Assessment, assess
-from spinledger.reconcile.coarse import CoarseSpectrum
+from spinledger.reconcile.coarse import CoarseSpectrum, FloatArray
 from spinledger.reconcile.exchange import Odds, best_order
 from spinledger.reconcile.match import (
     Hypothesis,
@@ -19,7 +19,15 @@ from spinledger.reconcile.match import (
 )
 from spinledger.reconcile.options import Constraints
 from spinledger.reconcile.refine import refine
-from spinledger.reconcile.refine_values import Refinement, Start
+from spinledger.reconcile.refine_data import PreparedEvidence, prepare
+from spinledger.reconcile.refine_values import (
+    QUICK,
+    Refinement,
+    RefineSettings,
+    Stage,
+    Start,
+)
+from spinledger.spins.network import ClaimNetwork
 from spinledger.values.claim import ClaimSet
 from spinledger.values.evidence import Evidence
 
@@ -29,6 +37,16 @@ COST_WINDOW = 6.0
 # A fit this good needs only its near ties beside it.
 GOOD_RESIDUAL = 0.05
 NEAR_TIE_COST = 3.0
+MAX_FINISHED = 2
+FINISH_WINDOW = 4.0
+# From a quick fit on, only the sharper stages are needed.
+FINISH = RefineSettings(
+    stages=(
+        Stage(broadening_hz=2.0, max_steps=8),
+        Stage(broadening_hz=0.5, max_steps=12),
+        Stage(broadening_hz=0.0, max_steps=20),
+    )
+)
 
 
 @dataclass(frozen=True, slots=True, kw_only=True)
@@ -138,49 +156,100 @@ def solve(
         for one in found.hypotheses[: limits.max_refined]
         if one.cost <= best_cost + COST_WINDOW
     ]
-    fits: list[Fitted] = []
+    sketchpad = _Sketchpad(
+        prepared=prepare(evidence, constraints),
+        network=ClaimNetwork(claims),
+        constraints=constraints,
+    )
+    sketches: list[Fitted] = []
     is_complete = True
     for one in starts:
         limits.checked()
-        if fits and limits.is_over():
+        if sketches and limits.is_over():
             is_complete = False
             break
-        if _is_good(fits) and one.cost > best_cost + NEAR_TIE_COST:
+        if _is_good(sketches) and one.cost > best_cost + NEAR_TIE_COST:
             break
-        fits.append(_fitted(evidence, claims, one, constraints))
-    fits.sort(key=lambda fit: fit.assessment.selection_score)
+        sketches.append(sketchpad.fitted(one, one.shifts_ppm, None, QUICK))
+    sketches.sort(key=_score)
+    fits: list[Fitted] = []
+    for sketch in sketches[:MAX_FINISHED]:
+        limits.checked()
+        if fits and (_is_far(sketch, sketches[0]) or limits.is_over()):
+            break
+        refined = sketch.refinement
+        fits.append(
+            sketchpad.fitted(
+                sketch.hypothesis, refined.shifts_ppm, refined.couplings_hz, FINISH
+            )
+        )
+    fits.sort(key=_score)
     best, odds = _ordered(evidence, claims, fits[0], constraints)
     return Solution(
         claims=claims,
         best=best,
-        others=tuple(fits[1:]),
+        others=(*fits[1:], *sketches[len(fits) :]),
         odds=odds,
         match_cost=best_cost,
         is_complete=is_complete,
     )
 
 
+def _score(fit: Fitted) -> float:
+    return fit.assessment.selection_score
+
+
+def _is_far(fit: Fitted, best: Fitted) -> bool:
+    """Whether a quick fit stands too far behind to be finished."""
+    return _score(fit) > _score(best) + FINISH_WINDOW
+
+
 def _is_good(fits: list[Fitted]) -> bool:
     return any(fit.assessment.residual_share < GOOD_RESIDUAL for fit in fits)
 
 
-def _fitted(
-    evidence: Evidence,
-    claims: ClaimSet,
-    hypothesis: Hypothesis,
-    constraints: Constraints | None,
-) -> Fitted:
-    start = Start(
-        shifts_ppm=hypothesis.shifts_ppm,
-        couplings_hz=starting_couplings(claims, constraints),
-        absent=hypothesis.absent,
-    )
-    refinement = refine(evidence, claims, start, constraints=constraints)
-    return Fitted(
-        hypothesis=hypothesis,
-        refinement=refinement,
-        assessment=_assessed(evidence, claims, hypothesis, refinement, constraints),
-    )
+@dataclass(frozen=True, slots=True, eq=False, kw_only=True)
+class _Sketchpad:
+    """What the refinements of one claim set share."""
+
+    prepared: PreparedEvidence
+    network: ClaimNetwork
+    constraints: Constraints | None
+
+    def fitted(
+        self,
+        hypothesis: Hypothesis,
+        shifts_ppm: FloatArray,
+        couplings_hz: FloatArray | None,
+        settings: RefineSettings,
+    ) -> Fitted:
+        """Refine from given shifts; a hidden claim shows no lines but couples."""
+        claims = self.network.claims
+        if couplings_hz is None:
+            couplings_hz = starting_couplings(claims, self.constraints)
+        start = Start(
+            shifts_ppm=shifts_ppm,
+            couplings_hz=couplings_hz,
+            absent=hypothesis.absent | hypothesis.hidden,
+        )
+        refinement = refine(
+            self.prepared,
+            self.network,
+            start,
+            constraints=self.constraints,
+            settings=settings,
+        )
+        return Fitted(
+            hypothesis=hypothesis,
+            refinement=refinement,
+            assessment=_assessed(
+                self.prepared.evidence,
+                claims,
+                hypothesis,
+                refinement,
+                self.constraints,
+            ),
+        )
 
 
 def _assessed(
