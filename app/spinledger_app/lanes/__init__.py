@@ -1,0 +1,1 @@
+"""The three lanes on one shift axis: mapping, folds, traces, trees, painting."""

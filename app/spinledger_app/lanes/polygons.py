@@ -1,0 +1,23 @@
+"""Long polylines for Qt straight from arrays, without a Python loop."""
+
+from __future__ import annotations
+
+import numpy as np
+import numpy.typing as npt
+import shiboken6
+from PySide6.QtGui import QPolygonF
+
+
+def polygon(xs: npt.NDArray[np.float64], ys: npt.NDArray[np.float64]) -> QPolygonF:
+    """Polygon of the points (xs, ys), both shape (n,), logical px."""
+    result = QPolygonF()
+    n = xs.size
+    if n == 0:
+        return result
+    result.resize(n)
+    # QPointF is two doubles; the polygon's own storage is filled in place.
+    memory = shiboken6.VoidPtr(result.data(), n * 16, True)
+    points = np.frombuffer(memory, dtype=np.float64).reshape(n, 2)
+    points[:, 0] = xs
+    points[:, 1] = ys
+    return result

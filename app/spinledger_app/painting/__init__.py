@@ -1,0 +1,1 @@
+"""Brush work that all panels share: text, rules, state marks, icons."""

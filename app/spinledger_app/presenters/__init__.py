@@ -1,0 +1,1 @@
+"""One presenter a panel: project in, what to show out; no widgets here."""

@@ -1,0 +1,280 @@
+"""What the lanes show: traces, signals, strays and trees of evidence and ledger."""
+
+from __future__ import annotations
+
+from collections.abc import Sequence
+
+import numpy as np
+
+from spinledger.values.evidence import Evidence, Signal, Stray
+from spinledger.values.ledger import Ledger
+
+from spinledger_app.lanes.folds import filled_stretches
+from spinledger_app.lanes.pyramid import Pyramid
+from spinledger_app.lanes.scene import (
+    Foot,
+    IntegralCurve,
+    LaneScene,
+    SignalMark,
+    Trace,
+)
+from spinledger_app.lanes.shift_map import Stretch
+from spinledger_app.presenters.trees import trees
+from spinledger_app.presenters.wording import chemical, number, protons, say
+
+_AXIS_LEAST = Stretch(high_ppm=9.0, low_ppm=-0.5)
+_AXIS_MARGIN_PPM = 0.6
+_INTEGRAL_POINTS = 160
+# Solvent, water and reference lines may rise out of the lane; claims must not.
+_MAY_BE_CUT = ("solvent", "water", "reference", "satellite", "sideband")
+
+
+def measured_trace(evidence: Evidence) -> Trace:
+    """The measured spectrum, ready to be drawn."""
+    spectrum = evidence.spectrum
+    return Trace(
+        pyramid=Pyramid(spectrum.intensities),
+        first_point_ppm=spectrum.first_point_ppm,
+        step_ppm=spectrum.step_ppm,
+    )
+
+
+def lane_scene(
+    evidence: Evidence,
+    ledger: Ledger | None,
+    *,
+    measured: Trace | None = None,
+    excluded_ppm: tuple[tuple[float, float], ...] = (),
+) -> LaneScene:
+    """Scene of one project; pure arithmetic, safe outside the window's thread.
+
+    Parameters
+    ----------
+    measured : Trace or None
+        The evidence's trace where it is already at hand.
+    """
+    spectrum = evidence.spectrum
+    trace = measured if measured is not None else measured_trace(evidence)
+    strays = evidence.strays if ledger is None else ledger.strays
+    marks = signal_marks(evidence, ledger, strays)
+    grown = trees(ledger) if ledger is not None else ()
+    whole = whole_axis(evidence)
+    homeless = [tree.root_ppm for tree in grown if tree.state in ("open", "silent")]
+    ranges = [(mark.low_ppm, mark.high_ppm) for mark in marks]
+    model = None if ledger is None or ledger.model is None else ledger.model.intensities
+    residue = None
+    if model is not None and model.size == spectrum.n_points:
+        residue = _trace((spectrum.intensities - model) / evidence.noise_sd, trace)
+    return LaneScene(
+        frequency_mhz=spectrum.spectrometer_frequency_mhz,
+        whole=whole,
+        folds=filled_stretches(
+            spectrum,
+            [r for r in ranges if r[1] > whole.low_ppm and r[0] < whole.high_ppm],
+            whole=whole,
+            lines=[line for signal in evidence.signals for line in signal.lines],
+            places_ppm=[p for p in homeless if whole.holds(p)],
+        ),
+        measured=trace,
+        noise_sd=evidence.noise_sd,
+        full_height=full_height(trace, marks, strays),
+        model=None if model is None else _trace(model, trace),
+        residue=residue,
+        signals=marks,
+        feet=_feet(evidence, marks),
+        trees=grown,
+        integrals=_integrals(evidence, strays),
+        excluded_ppm=excluded_ppm,
+        partners={} if ledger is None else _partners(ledger),
+    )
+
+
+def whole_axis(evidence: Evidence) -> Stretch:
+    """Continuous axis: all signals with a margin, 9 to -0.5 ppm at least."""
+    spectrum = evidence.spectrum
+    lows = [signal.low_ppm for signal in evidence.signals]
+    highs = [signal.high_ppm for signal in evidence.signals]
+    high = max([_AXIS_LEAST.high_ppm, *(h + _AXIS_MARGIN_PPM for h in highs)])
+    low = min([_AXIS_LEAST.low_ppm, *(one - _AXIS_MARGIN_PPM / 2 for one in lows)])
+    high = min(high, spectrum.first_point_ppm)
+    low = max(low, spectrum.last_point_ppm)
+    return Stretch(high_ppm=high, low_ppm=low)
+
+
+def signal_marks(
+    evidence: Evidence, ledger: Ledger | None, strays: Sequence[Stray]
+) -> tuple[SignalMark, ...]:
+    """Brackets: signals with their protons and owners, strays by name."""
+    unit = proton_area(evidence, ledger)
+    marks = []
+    for index, signal in enumerate(evidence.signals):
+        owners = _owners(signal, ledger)
+        stray = _stray_over(signal, strays)
+        if stray is not None and not owners:
+            continue
+        amount = signal.area / unit if unit else 0.0
+        marks.append(
+            SignalMark(
+                key=f"signal {index}",
+                low_ppm=signal.low_ppm,
+                high_ppm=signal.high_ppm,
+                text=number(amount, 2),
+                claims=owners,
+                tip=_signal_tip(signal, amount, owners),
+            )
+        )
+    marks += [_stray_mark(i, stray) for i, stray in enumerate(strays)]
+    return tuple(sorted(marks, key=lambda mark: -mark.centre_ppm))
+
+
+def _stray_mark(index: int, stray: Stray) -> SignalMark:
+    is_known = stray.kind != "unexplained"
+    return SignalMark(
+        key=f"stray {index}",
+        low_ppm=stray.low_ppm,
+        high_ppm=stray.high_ppm,
+        text="",
+        stray="known" if is_known else "unexplained",
+        name=stray_name(stray),
+        tip=stray.why,
+    )
+
+
+def stray_name(stray: Stray) -> str:
+    """Short name of a stray: the substance where the reason opens with one."""
+    if stray.kind == "unexplained":
+        return say("unexplained")
+    head = stray.why.split(":")[0].split(",")[0].strip().rstrip(".")
+    if 0 < len(head) <= 18 and " is " not in head:
+        return chemical(head)
+    return say(stray.kind)
+
+
+def proton_area(evidence: Evidence, ledger: Ledger | None) -> float:
+    """Area of one proton: the model's, or before it the smallest clear signal's."""
+    if ledger is not None and ledger.model is not None:
+        return ledger.model.area_per_proton
+    owned = [
+        signal.area
+        for signal in evidence.signals
+        if _stray_over(signal, evidence.strays) is None and signal.area > 0
+    ]
+    if not owned:
+        return 0.0
+    clear = [area for area in owned if area > 0.08 * max(owned)]
+    return min(clear)
+
+
+def full_height(
+    trace: Trace, marks: Sequence[SignalMark], strays: Sequence[Stray]
+) -> float:
+    """Intensity that fills the lane: the tallest signal that no known stray makes."""
+    cut = [
+        (stray.low_ppm, stray.high_ppm) for stray in strays if stray.kind in _MAY_BE_CUT
+    ]
+    heights = [
+        trace.highest(mark.high_ppm, mark.low_ppm)
+        for mark in marks
+        if (mark.low_ppm, mark.high_ppm) not in cut
+    ]
+    tallest = max(heights, default=0.0)
+    if tallest > 0:
+        return tallest
+    whole = trace.pyramid.extremes(0, trace.pyramid.n_points)[1]
+    return whole if whole > 0 else 1.0
+
+
+def _trace(values: np.ndarray, like: Trace) -> Trace:  # type: ignore[type-arg]
+    return Trace(
+        pyramid=Pyramid(np.asarray(values, dtype=np.float64)),
+        first_point_ppm=like.first_point_ppm,
+        step_ppm=like.step_ppm,
+    )
+
+
+def _owners(signal: Signal, ledger: Ledger | None) -> tuple[str, ...]:
+    if ledger is None:
+        return ()
+    owners = []
+    for entry in ledger.entries:
+        if entry.shift_ppm is None:
+            continue
+        low, high = entry.range_ppm or (entry.shift_ppm, entry.shift_ppm)
+        shared = min(high, signal.high_ppm) - max(low, signal.low_ppm)
+        is_inside = signal.low_ppm <= entry.shift_ppm <= signal.high_ppm
+        if is_inside or shared > 0.3 * (signal.high_ppm - signal.low_ppm):
+            owners.append(entry.claim)
+    return tuple(owners)
+
+
+def _stray_over(signal: Signal, strays: Sequence[Stray]) -> Stray | None:
+    width = signal.high_ppm - signal.low_ppm
+    for stray in strays:
+        shared = min(stray.high_ppm, signal.high_ppm) - max(
+            stray.low_ppm, signal.low_ppm
+        )
+        if shared > 0.5 * width:
+            return stray
+    return None
+
+
+def _signal_tip(signal: Signal, amount: float, owners: tuple[str, ...]) -> str:
+    centre = (signal.low_ppm + signal.high_ppm) / 2
+    parts = [
+        say("Signal at {0} ppm").replace("{0}", number(centre, 3)),
+        say("{0} to {1} ppm")
+        .replace("{0}", number(signal.high_ppm, 3))
+        .replace("{1}", number(signal.low_ppm, 3)),
+        protons(amount),
+    ]
+    if owners:
+        parts.append(say("owned by {0}").replace("{0}", ", ".join(owners)))
+    return ", ".join(parts)
+
+
+def _feet(evidence: Evidence, marks: Sequence[SignalMark]) -> tuple[Foot, ...]:
+    feet = []
+    for signal in evidence.signals:
+        strongest = max((line.area for line in signal.lines), default=0.0)
+        for line in signal.lines:
+            if line.area < 0.01 * strongest:
+                continue
+            owners = next(
+                (m.claims for m in marks if m.low_ppm <= line.shift_ppm <= m.high_ppm),
+                (),
+            )
+            feet.append(Foot(shift_ppm=line.shift_ppm, claims=owners))
+    return tuple(feet)
+
+
+def _integrals(
+    evidence: Evidence, strays: Sequence[Stray]
+) -> tuple[IntegralCurve, ...]:
+    curves = []
+    spectrum = evidence.spectrum
+    for signal in evidence.signals:
+        stray = _stray_over(signal, strays)
+        if stray is not None and stray.kind in _MAY_BE_CUT:
+            continue
+        window = spectrum.window(signal.low_ppm, signal.high_ppm)
+        running = np.cumsum(spectrum.intensities[window])
+        if running.size < 2 or running[-1] <= 0:
+            continue
+        at = np.linspace(0, running.size - 1, _INTEGRAL_POINTS)
+        shares = np.interp(at, np.arange(running.size), running / running[-1])
+        curves.append(
+            IntegralCurve(
+                low_ppm=signal.low_ppm,
+                high_ppm=signal.high_ppm,
+                shares=shares,
+                amount=signal.area,
+            )
+        )
+    return tuple(curves)
+
+
+def _partners(ledger: Ledger) -> dict[str, tuple[str, ...]]:
+    return {
+        entry.claim: tuple(dict.fromkeys(c.partner for c in entry.couplings))
+        for entry in ledger.entries
+    }

@@ -1,0 +1,393 @@
+"""The drawn structure as plain values: atoms, bonds, and where claims' tags go.
+
+Coordinates of a drawing are in bond lengths, y upwards; of tags in logical px.
+The drawing is made in the working process; the placing of tags needs no RDKit.
+"""
+
+from __future__ import annotations
+
+import math
+from collections.abc import Callable, Sequence
+from dataclasses import dataclass
+
+from spinledger.values.structure import Structure
+
+_ANGLES = 24
+_RADII_PX = (24.0, 34.0, 46.0, 60.0, 78.0, 98.0)
+_TAG_HEIGHT_PX = 20.0
+_STACK_PX = 24.0
+
+
+@dataclass(frozen=True, slots=True, kw_only=True)
+class DrawnAtom:
+    """A heavy atom: place, and the text where it is not a bare carbon.
+
+    ``hydrogens`` is what stands at its free side: "H", "H2", or "".
+    """
+
+    x: float
+    y: float
+    symbol: str = ""
+    hydrogens: str = ""
+    charge: str = ""
+
+
+@dataclass(frozen=True, slots=True, kw_only=True)
+class DrawnBond:
+    """A bond: 1 to 3 lines, or a wedge from its narrow end at ``start``.
+
+    ``inward`` is the side (+1 left, -1 right of start to end) on which the
+    second line of a ring's double bond lies, 0 for both sides alike.
+    """
+
+    start: int
+    end: int
+    order: int = 1
+    wedge: str = ""
+    inward: int = 0
+
+
+@dataclass(frozen=True, slots=True, kw_only=True)
+class Drawing:
+    """A structure ready to be painted."""
+
+    atoms: tuple[DrawnAtom, ...]
+    bonds: tuple[DrawnBond, ...]
+    formula: str = ""
+    mass: str = ""
+    stereo: str = ""
+
+    @property
+    def bounds(self) -> tuple[float, float, float, float]:
+        """Smallest x and y, largest x and y; bond lengths."""
+        xs = [atom.x for atom in self.atoms] or [0.0]
+        ys = [atom.y for atom in self.atoms] or [0.0]
+        return min(xs), min(ys), max(xs), max(ys)
+
+
+@dataclass(frozen=True, slots=True, kw_only=True)
+class TagWish:
+    """A claim's tag that wants to stand near one of its atoms."""
+
+    claim: str
+    state: str
+    atoms: tuple[int, ...]
+    width: float
+
+
+@dataclass(frozen=True, slots=True, kw_only=True)
+class PlacedTag:
+    """A tag at its place, with a leader where it stands far from its atom."""
+
+    claim: str
+    state: str
+    left: float
+    top: float
+    width: float
+    height: float
+    atom: int
+    is_led: bool
+
+    @property
+    def centre(self) -> tuple[float, float]:
+        """Middle of the tag."""
+        return self.left + self.width / 2, self.top + self.height / 2
+
+
+def drawing_of(structure: Structure) -> Drawing:
+    """Flat drawing of a structure, atoms in the given order.
+
+    Runs RDKit: for the working process.
+    """
+    from rdkit import Chem
+    from rdkit.Chem import Descriptors, rdMolDescriptors
+
+    from spinledger.report.sketch import drawable
+
+    mol = Chem.Mol(drawable(structure))
+    Chem.Kekulize(mol, clearAromaticFlags=False)
+    conformer = mol.GetConformer()
+    Chem.WedgeMolBonds(mol, conformer)
+    length = _bond_length(mol)
+    atoms = tuple(_atom(mol, atom, conformer, length) for atom in mol.GetAtoms())
+    bonds = tuple(_bond(mol, bond, conformer) for bond in mol.GetBonds())
+    return Drawing(
+        atoms=atoms,
+        bonds=bonds,
+        formula=rdMolDescriptors.CalcMolFormula(mol),
+        mass=f"{Descriptors.MolWt(mol):.2f}",
+        stereo=_stereo(mol),
+    )
+
+
+def _bond_length(mol: object) -> float:
+    lengths = []
+    conformer = mol.GetConformer()  # type: ignore[attr-defined]
+    for bond in mol.GetBonds():  # type: ignore[attr-defined]
+        a = conformer.GetAtomPosition(bond.GetBeginAtomIdx())
+        b = conformer.GetAtomPosition(bond.GetEndAtomIdx())
+        lengths.append(math.hypot(a.x - b.x, a.y - b.y))
+    lengths = sorted(one for one in lengths if one > 1e-6)
+    return lengths[len(lengths) // 2] if lengths else 1.0
+
+
+def _atom(mol: object, atom: object, conformer: object, length: float) -> DrawnAtom:
+    place = conformer.GetAtomPosition(atom.GetIdx())  # type: ignore[attr-defined]
+    symbol = atom.GetSymbol()  # type: ignore[attr-defined]
+    degree = atom.GetDegree()  # type: ignore[attr-defined]
+    charge = atom.GetFormalCharge()  # type: ignore[attr-defined]
+    isotope = atom.GetIsotope()  # type: ignore[attr-defined]
+    n_hydrogens = atom.GetTotalNumHs()  # type: ignore[attr-defined]
+    is_bare = symbol == "C" and degree > 0 and not charge and not isotope
+    marks = {"2H": "D", "3H": "T"}
+    written = f"{isotope}{symbol}" if isotope else symbol
+    written = marks.get(written, written)
+    sign = "" if not charge else ("+" if charge > 0 else "−")
+    return DrawnAtom(
+        x=place.x / length,
+        y=place.y / length,
+        symbol="" if is_bare else written,
+        hydrogens=""
+        if is_bare or not n_hydrogens
+        else ("H" if n_hydrogens == 1 else f"H{n_hydrogens}"),
+        charge=sign if abs(charge) < 2 else f"{abs(charge)}{sign}",
+    )
+
+
+def _bond(mol: object, bond: object, conformer: object) -> DrawnBond:
+    from rdkit import Chem
+
+    start, end = bond.GetBeginAtomIdx(), bond.GetEndAtomIdx()  # type: ignore[attr-defined]
+    wedges = {Chem.BondDir.BEGINWEDGE: "wedge", Chem.BondDir.BEGINDASH: "hash"}
+    order = {
+        Chem.BondType.DOUBLE: 2,
+        Chem.BondType.TRIPLE: 3,
+    }.get(bond.GetBondType(), 1)  # type: ignore[attr-defined]
+    return DrawnBond(
+        start=start,
+        end=end,
+        order=order,
+        wedge=wedges.get(bond.GetBondDir(), ""),  # type: ignore[attr-defined]
+        inward=_ring_side(mol, bond, conformer) if order == 2 else 0,
+    )
+
+
+def _ring_side(mol: object, bond: object, conformer: object) -> int:
+    start, end = bond.GetBeginAtomIdx(), bond.GetEndAtomIdx()  # type: ignore[attr-defined]
+    rings = [
+        ring
+        for ring in mol.GetRingInfo().AtomRings()  # type: ignore[attr-defined]
+        if start in ring and end in ring
+    ]
+    if not rings:
+        return 0
+    ring = min(rings, key=lambda one: (len(one) != 6, len(one)))
+    places = [conformer.GetAtomPosition(i) for i in ring]  # type: ignore[attr-defined]
+    cx = sum(p.x for p in places) / len(places)
+    cy = sum(p.y for p in places) / len(places)
+    a = conformer.GetAtomPosition(start)  # type: ignore[attr-defined]
+    b = conformer.GetAtomPosition(end)  # type: ignore[attr-defined]
+    cross = (b.x - a.x) * (cy - a.y) - (b.y - a.y) * (cx - a.x)
+    return 1 if cross > 0 else -1
+
+
+def _stereo(mol: object) -> str:
+    from rdkit import Chem
+
+    Chem.AssignCIPLabels(mol)
+    found = []
+    for atom in mol.GetAtoms():  # type: ignore[attr-defined]
+        if atom.HasProp("_CIPCode"):
+            found.append(atom.GetProp("_CIPCode"))
+    if not found or len(found) > 4:
+        return f"{len(found)} stereocentres" if found else ""
+    return "(" + ",".join(found) + ")"
+
+
+def fitted(
+    drawing: Drawing,
+    room: tuple[float, float, float, float],
+    *,
+    longest_px: float = 42.0,
+) -> tuple[list[tuple[float, float]], float]:
+    """Places of the atoms in a rectangle (left, top, width, height), and the scale.
+
+    The longest bond is at most ``longest_px``.
+    """
+    left, top, width, height = room
+    x0, y0, x1, y1 = drawing.bounds
+    scale = min(
+        longest_px,
+        width / max(x1 - x0, 1e-6),
+        height / max(y1 - y0, 1e-6),
+    )
+    cx, cy = (x0 + x1) / 2, (y0 + y1) / 2
+    middle_x, middle_y = left + width / 2, top + height / 2
+    places = [
+        (middle_x + (atom.x - cx) * scale, middle_y - (atom.y - cy) * scale)
+        for atom in drawing.atoms
+    ]
+    return places, scale
+
+
+def place_tags(
+    drawing: Drawing,
+    places: Sequence[tuple[float, float]],
+    wishes: Sequence[TagWish],
+    *,
+    size: tuple[float, float],
+    height: float = _TAG_HEIGHT_PX,
+    label_width: Callable[[DrawnAtom], float] = lambda atom: 0.0,
+) -> tuple[PlacedTag, ...]:
+    """Tags outside the skeleton, none over a bond, an atom's text or another tag.
+
+    Each tag tries the widest free angle of its atom first, then other angles,
+    then further out; several tags of one atom stack downwards.
+
+    Parameters
+    ----------
+    places : sequence of (x, y)
+        Of the atoms, px.
+    size : (width, height)
+        Of the panel.
+    label_width : callable
+        Width of an atom's text, px.
+    """
+    texts = [
+        _Box.about(x, y, max(label_width(atom), 6.0) + 6, 20.0)
+        for (x, y), atom in zip(places, drawing.atoms, strict=True)
+        if atom.symbol
+    ]
+    segments = [(places[b.start], places[b.end]) for b in drawing.bonds]
+    placed: list[PlacedTag] = []
+    for wish in wishes:
+        tag = _best_place(
+            drawing, places, wish, size=size, height=height,
+            blocked=(texts, segments, placed),
+        )  # fmt: skip
+        placed.append(tag)
+    return tuple(placed)
+
+
+@dataclass(frozen=True, slots=True)
+class _Box:
+    left: float
+    top: float
+    right: float
+    bottom: float
+
+    @classmethod
+    def about(cls, x: float, y: float, width: float, height: float) -> _Box:
+        return cls(x - width / 2, y - height / 2, x + width / 2, y + height / 2)
+
+    def overlap(self, other: _Box) -> float:
+        wide = min(self.right, other.right) - max(self.left, other.left)
+        high = min(self.bottom, other.bottom) - max(self.top, other.top)
+        return wide * high if wide > 0 and high > 0 else 0.0
+
+
+_Blocked = tuple[
+    list[_Box],
+    list[tuple[tuple[float, float], tuple[float, float]]],
+    list[PlacedTag],
+]
+
+
+def _best_place(
+    drawing: Drawing,
+    places: Sequence[tuple[float, float]],
+    wish: TagWish,
+    *,
+    size: tuple[float, float],
+    height: float,
+    blocked: _Blocked,
+) -> PlacedTag:
+    best: tuple[float, PlacedTag] | None = None
+    for atom in wish.atoms or (0,):
+        if atom >= len(places):
+            continue
+        x, y = places[atom]
+        free = _widest_free_angle(drawing, places, atom)
+        stacked = sum(one.atom == atom for one in blocked[2])
+        for rank, (dx, dy) in enumerate(_offsets(free, wish.width, height, stacked)):
+            box = _Box.about(x + dx, y + dy, wish.width, height)
+            cost = _cost(box, size, blocked) + 0.9 * rank
+            cost += 0.25 * math.hypot(dx, dy)
+            if best is None or cost < best[0]:
+                is_led = math.hypot(dx, dy) > 46 + wish.width / 3
+                best = cost, PlacedTag(
+                    claim=wish.claim, state=wish.state, left=round(box.left),
+                    top=round(box.top), width=wish.width, height=height, atom=atom,
+                    is_led=is_led,
+                )  # fmt: skip
+    if best is None:
+        raise ValueError(f"atoms: {wish.claim} names no atom of the drawing")
+    return best[1]
+
+
+def _offsets(
+    free: float, width: float, height: float, stacked: int
+) -> list[tuple[float, float]]:
+    """Centres to try, nearest wish first, relative to the atom."""
+    offsets = []
+    for radius in _RADII_PX:
+        for step in range(_ANGLES):
+            turn = (step + 1) // 2 * (1 if step % 2 else -1)
+            angle = free + turn * 2 * math.pi / _ANGLES
+            # The tag's own size is added along the direction, so that it clears.
+            reach_x = radius * 0.85 + width / 2 * abs(math.cos(angle))
+            dx = math.cos(angle) * reach_x
+            dy = -math.sin(angle) * (radius + (height - 20) / 2)
+            offsets.append((dx, dy))
+    if stacked:
+        down = offsets[0][1] + _STACK_PX * stacked
+        offsets.insert(0, (offsets[0][0], down))
+    return offsets
+
+
+def _widest_free_angle(
+    drawing: Drawing, places: Sequence[tuple[float, float]], atom: int
+) -> float:
+    """Middle of the widest gap between the bonds of an atom, radians, y upwards."""
+    x, y = places[atom]
+    angles = []
+    for bond in drawing.bonds:
+        if atom in (bond.start, bond.end):
+            other = bond.end if bond.start == atom else bond.start
+            angles.append(math.atan2(-(places[other][1] - y), places[other][0] - x))
+    if not angles:
+        return math.pi / 2
+    angles.sort()
+    gaps = [
+        (after - before, before)
+        for before, after in zip(
+            angles, [*angles[1:], angles[0] + 2 * math.pi], strict=True
+        )
+    ]
+    width, start = max(gaps)
+    return start + width / 2
+
+
+def _cost(box: _Box, size: tuple[float, float], blocked: _Blocked) -> float:
+    texts, segments, placed = blocked
+    outside = (
+        max(0.0, 4 - box.left)
+        + max(0.0, 4 - box.top)
+        + max(0.0, box.right - size[0] + 4)
+        + max(0.0, box.bottom - size[1] + 4)
+    )
+    cost = 60.0 * outside
+    for text in texts:
+        cost += 2.0 * box.overlap(text)
+    grown = _Box(box.left - 3, box.top - 3, box.right + 3, box.bottom + 3)
+    for tag in placed:
+        other = _Box(tag.left, tag.top, tag.left + tag.width, tag.top + tag.height)
+        cost += 4.0 * grown.overlap(other)
+    for (x0, y0), (x1, y1) in segments:
+        hits = 0
+        for i in range(13):
+            x, y = x0 + (x1 - x0) * i / 12, y0 + (y1 - y0) * i / 12
+            if grown.left < x < grown.right and grown.top < y < grown.bottom:
+                hits += 1
+        cost += 40.0 * hits
+    return cost

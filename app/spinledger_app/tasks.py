@@ -1,0 +1,188 @@
+"""What the working process does; every function takes progress and cancelled.
+
+Heavy imports stand inside the functions: the window's process reads this module
+too, and must not load what it never runs.
+"""
+
+from __future__ import annotations
+
+from collections.abc import Callable, Sequence
+from dataclasses import dataclass
+from pathlib import Path
+
+from spinledger.project.document import Project, ProjectOptions
+from spinledger.reconcile.options import ReconcileOptions
+from spinledger.report.context import ReportContext
+from spinledger.values.acquisition import Acquired
+from spinledger.values.evidence import Evidence
+from spinledger.values.ledger import Ledger
+from spinledger.values.recipe import Recipe
+from spinledger.values.structure import Structure
+
+from spinledger_app.presenters.structure import Drawing
+
+Progress = Callable[[str, float], None]
+Cancelled = Callable[[], bool]
+
+
+@dataclass(frozen=True, slots=True, eq=False, kw_only=True)
+class ReadSpectrum:
+    """A spectrum as it was read, and what it says."""
+
+    acquired: Acquired
+    evidence: Evidence
+
+
+@dataclass(frozen=True, slots=True, kw_only=True)
+class ReadClaim:
+    """A structure and its drawing."""
+
+    structure: Structure
+    drawing: Drawing
+
+
+def warm_up(progress: Progress, cancelled: Cancelled) -> None:
+    """Load what the first real task would have to wait for."""
+    import spinledger.detection.evidence
+    import spinledger.io.read
+    import spinledger.reconcile.run  # noqa: F401 - loaded for its side of the cache
+
+
+def read_spectrum(
+    progress: Progress, cancelled: Cancelled, path: Path, options: ProjectOptions
+) -> ReadSpectrum:
+    """Read a data set and gather its evidence."""
+    from spinledger.io.read import read_acquired
+
+    progress("reading", 0.1)
+    acquired = read_acquired(path, prefer_processed=options.prefer_processed)
+    progress("processing", 0.4)
+    evidence = gather(progress, cancelled, acquired, options, None)
+    return ReadSpectrum(acquired=acquired, evidence=evidence)
+
+
+def gather(
+    progress: Progress,
+    cancelled: Cancelled,
+    acquired: Acquired,
+    options: ProjectOptions,
+    recipe: Recipe | None,
+) -> Evidence:
+    """Evidence of a spectrum by a recipe, or by the program's own."""
+    from spinledger.detection.evidence import gather_evidence
+
+    progress("processing", 0.5)
+    return gather_evidence(
+        acquired,
+        solvent=options.solvent,
+        temperature_k=options.temperature_k,
+        recipe=recipe,
+    )
+
+
+def read_claim(progress: Progress, cancelled: Cancelled, text: str) -> ReadClaim:
+    """Structure from SMILES, InChI, a molfile text or a file, with its drawing."""
+    from spinledger.structure.read import read_structure
+
+    from spinledger_app.presenters.structure import drawing_of
+
+    structure = read_structure(text)
+    return ReadClaim(structure=structure, drawing=drawing_of(structure))
+
+
+def draw_structure(
+    progress: Progress, cancelled: Cancelled, structure: Structure
+) -> Drawing:
+    """Drawing of a structure that was read before."""
+    from spinledger_app.presenters.structure import drawing_of
+
+    return drawing_of(structure)
+
+
+def draw_smiles(
+    progress: Progress, cancelled: Cancelled, smiles: Sequence[str]
+) -> dict[str, Drawing]:
+    """Drawings of contenders by their SMILES; those that do not parse are left out."""
+    from spinledger.errors import StructureError
+    from spinledger.structure.read import read_structure
+
+    from spinledger_app.presenters.structure import drawing_of
+
+    drawings = {}
+    for one in smiles:
+        try:
+            drawings[one] = drawing_of(read_structure(one))
+        except StructureError:
+            continue  # the card says why in words
+    return drawings
+
+
+def solve(
+    progress: Progress,
+    cancelled: Cancelled,
+    evidence: Evidence,
+    structure: Structure,
+    options: ReconcileOptions,
+) -> Ledger:
+    """Reconcile evidence and structure."""
+    from spinledger.reconcile.run import reconcile
+
+    return reconcile(
+        evidence, structure, options=options, progress=progress, cancelled=cancelled
+    )
+
+
+def write_report(
+    progress: Progress,
+    cancelled: Cancelled,
+    ledger: Ledger,
+    folder: Path,
+    formats: Sequence[str],
+    context: ReportContext,
+) -> tuple[Path, ...]:
+    """Write the report's files into a folder, all or none."""
+    from spinledger.report.write import write_reports
+
+    return write_reports(
+        ledger, folder, formats=tuple(formats), context=context, progress=progress
+    )
+
+
+def write_pdf(
+    progress: Progress,
+    cancelled: Cancelled,
+    ledger: Ledger,
+    path: Path,
+    context: ReportContext,
+) -> Path:
+    """Write the report as PDF."""
+    from spinledger_app.pdf_report import write_pdf_report
+
+    progress("setting the pages", 0.3)
+    return write_pdf_report(ledger, path, context)
+
+
+def experimental_sentence(
+    progress: Progress, cancelled: Cancelled, ledger: Ledger
+) -> str:
+    """The experimental-section text of a ledger."""
+    from spinledger.report.text import experimental_text
+
+    return experimental_text(ledger)
+
+
+def load(progress: Progress, cancelled: Cancelled, path: Path) -> Project:
+    """Read a project file."""
+    from spinledger.project.storage import load_project
+
+    return load_project(path)
+
+
+def save(
+    progress: Progress, cancelled: Cancelled, project: Project, path: Path
+) -> Path:
+    """Write a project file, whole or not at all."""
+    from spinledger.project.storage import save_project
+
+    save_project(project, path)
+    return path

@@ -1,0 +1,1 @@
+"""Widgets: show_…() in, signals out; no decisions, no numerics."""

@@ -1,0 +1,171 @@
+"""Contenders: other structures that could own the same spectrum, one card each."""
+
+from __future__ import annotations
+
+from PySide6.QtCore import QRectF, QSize, Qt, Signal
+from PySide6.QtGui import QKeyEvent, QMouseEvent, QPainter, QPaintEvent
+from PySide6.QtWidgets import QFrame, QScrollArea, QSizePolicy, QVBoxLayout, QWidget
+
+from spinledger_app.painting.ink import (
+    CAPTION,
+    SECOND,
+    SECOND_STRONG,
+    STRONG,
+    Face,
+    Ink,
+)
+from spinledger_app.painting.molecule import paint_molecule
+from spinledger_app.presenters.contenders import CardText, ContendersText
+from spinledger_app.presenters.structure import Drawing, fitted
+from spinledger_app.presenters.wording import say
+from spinledger_app.theme import Look
+
+_MARGIN = 16
+_HEAD_PX = 40
+_CARD_PX = 82
+
+
+class Card(QWidget):
+    """Thumbnail, name, whether it stands, and why."""
+
+    activated = Signal(str)
+
+    def __init__(
+        self, look: Look, text: CardText, parent: QWidget | None = None
+    ) -> None:
+        super().__init__(parent)
+        self.look = look
+        self.text = text
+        self.drawing: Drawing | None = None
+        self.setFocusPolicy(Qt.FocusPolicy.StrongFocus)
+        self.setProperty("focusInside", True)
+        self.setSizePolicy(QSizePolicy.Policy.Preferred, QSizePolicy.Policy.Fixed)
+        self.setToolTip(text.tip)
+        self.setAccessibleName(f"{text.name}, {text.word}. {text.why}")
+
+    def sizeHint(self) -> QSize:
+        """One card."""
+        return QSize(240, self.look.px(_CARD_PX))
+
+    def paintEvent(self, event: QPaintEvent) -> None:
+        """Paint the card."""
+        painter = QPainter(self)
+        ink = Ink(painter, self.look, self)
+        px = self.look.px
+        text = self.text
+        height = self.height()
+        if self.underMouse():
+            ink.fill(QRectF(self.rect()), "hover")
+        ink.hline(_MARGIN, self.width() - _MARGIN, 0)
+        thumb = px(76 if self.width() < px(300) else 96)
+        if self.drawing is not None:
+            room = (_MARGIN + 2.0, 12.0, thumb - 8.0, height - 22.0)
+            places, scale = fitted(self.drawing, room, longest_px=17)
+            colour = "ink" if text.stands else "muted"
+            paint_molecule(
+                ink, self.drawing, places, scale, colour=colour, size=11, width=1.15
+            )
+        if text.stands:
+            ink.fill(QRectF(0, 1, 4, height - 1), "accent")
+        else:
+            start, end = (_MARGIN, height - 14), (_MARGIN + thumb - 12, 16)
+            ink.line(start, end, "muted", 1.5)
+        left = _MARGIN + thumb + 8
+        room_px = self.width() - left - 10
+        ink.text(left, px(20), text.name, SECOND_STRONG, max_width=room_px)
+        colour = "accent" if text.stands else "muted"
+        face = Face(size=13, weight=600, colour=colour)
+        ink.text(left, px(37), text.word, face, max_width=room_px)
+        ink.wrapped(left, px(54), room_px, text.why, CAPTION, max_lines=2)
+        painter.end()
+
+    def mouseReleaseEvent(self, event: QMouseEvent) -> None:
+        """Open the contender's menu."""
+        self.activated.emit(self.text.smiles)
+
+    def keyPressEvent(self, event: QKeyEvent) -> None:
+        """Open the contender's menu with Enter."""
+        if event.key() in (Qt.Key.Key_Return, Qt.Key.Key_Enter, Qt.Key.Key_Space):
+            self.activated.emit(self.text.smiles)
+        else:
+            super().keyPressEvent(event)
+
+    def enterEvent(self, event: object) -> None:
+        """Paint the hover fill."""
+        self.update()
+
+    def leaveEvent(self, event: object) -> None:
+        """Paint without it."""
+        self.update()
+
+
+class ContendersView(QWidget):
+    """Heading over a column of cards."""
+
+    card_activated = Signal(str)
+
+    def __init__(self, look: Look, parent: QWidget | None = None) -> None:
+        super().__init__(parent)
+        self.look = look
+        self.cards: list[Card] = []
+        self._text = ContendersText(remark="", cards=())
+        self._column = QVBoxLayout()
+        self._build()
+
+    def _build(self) -> None:
+        self.setMinimumSize(self.look.px(240), self.look.px(120))
+        self.setAccessibleName(say("Contenders"))
+        inner = QWidget()
+        self._column = QVBoxLayout(inner)
+        self._column.setContentsMargins(0, 0, 0, 0)
+        self._column.setSpacing(0)
+        self._column.addStretch(1)
+        self.scroll = QScrollArea(self)
+        self.scroll.setWidgetResizable(True)
+        self.scroll.setFrameShape(QFrame.Shape.NoFrame)
+        self.scroll.setFocusPolicy(Qt.FocusPolicy.NoFocus)
+        self.scroll.setHorizontalScrollBarPolicy(Qt.ScrollBarPolicy.ScrollBarAlwaysOff)
+        self.scroll.setWidget(inner)
+        outer = QVBoxLayout(self)
+        outer.setContentsMargins(0, self.look.px(_HEAD_PX), 0, 0)
+        outer.addWidget(self.scroll)
+
+    def show_contenders(self, text: ContendersText) -> None:
+        """Show other contenders; thumbnails come by :meth:`show_thumbnails`."""
+        self._text = text
+        for card in self.cards:
+            self._column.removeWidget(card)
+            card.hide()
+            card.deleteLater()
+        self.cards = []
+        for index, one in enumerate(text.cards):
+            card = Card(self.look, one)
+            card.activated.connect(self.card_activated)
+            self._column.insertWidget(index, card)
+            self.cards.append(card)
+        self.scroll.setVisible(bool(text.cards))
+        self.update()
+
+    def show_thumbnails(self, drawings: dict[str, Drawing]) -> None:
+        """Drawings by SMILES."""
+        for card in self.cards:
+            card.drawing = drawings.get(card.text.smiles)
+            card.update()
+
+    def sizeHint(self) -> QSize:
+        """Room for three cards."""
+        return QSize(256, 292)
+
+    def paintEvent(self, event: QPaintEvent) -> None:
+        """Paint heading and, where there is no card, the sentence."""
+        painter = QPainter(self)
+        ink = Ink(painter, self.look, self)
+        px = self.look.px
+        ink.fill(QRectF(self.rect()), "panel")
+        ink.text(_MARGIN, px(25), say("Contenders"), STRONG)
+        right = self.width() - _MARGIN
+        ink.text(right, px(25), self._text.remark, SECOND, align="right")
+        if not self._text.cards:
+            width = self.width() - 2 * _MARGIN
+            ink.wrapped(_MARGIN, px(52), width, self._text.sentence, SECOND)
+        painter.end()
