@@ -4,6 +4,7 @@ Nothing here was measured and nothing was solved; the numbers only have to be
 consistent with each other.
 """
 
+import functools
 from dataclasses import replace
 
 import numpy as np
@@ -185,6 +186,7 @@ def _add_line(
     return area * half / np.pi / (distance**2 + half**2)
 
 
+@functools.cache
 def invented_spectrum() -> tuple[Spectrum, np.ndarray, float]:
     """Measured spectrum, model intensities and noise sd."""
     width_hz = 10.0 * FIELD_MHZ
@@ -371,6 +373,7 @@ def _entry(label: str) -> Entry:
     )
 
 
+@functools.cache
 def invented_ledger() -> Ledger:
     """Everything settled, one line unexplained."""
     _, model, _ = invented_spectrum()

@@ -54,6 +54,11 @@ def write_files(folder: Path, contents: Mapping[str, bytes]) -> None:
         If anything cannot be written; then nothing has changed.
     """
     check_writable(folder)
+    for name in contents:
+        if (folder / name).is_dir():
+            raise OutputError(
+                folder / name, "a folder stands where this file belongs; move it away"
+            )
     made = _make_parents(folder)
     staging: Path | None = None
     try:
@@ -65,12 +70,9 @@ def write_files(folder: Path, contents: Mapping[str, bytes]) -> None:
             _write_through(staging / name, content)
         _move(staging, folder, list(contents))
     except OSError as error:
-        for parent in reversed(made):
-            _remove_if_empty(parent)
+        _clean(staging, made)
         raise _unwritable(folder, error) from error
-    finally:
-        if staging is not None:
-            shutil.rmtree(staging, ignore_errors=True)
+    _clean(staging, [])
 
 
 def write_file(path: Path, content: bytes) -> None:
@@ -138,9 +140,13 @@ def _umask() -> int:
     return mask
 
 
-def _remove_if_empty(folder: Path) -> None:
-    if folder.is_dir() and not any(folder.iterdir()):
-        folder.rmdir()
+def _clean(staging: Path | None, made: list[Path]) -> None:
+    """Take away the hidden folder, and the parents that were made for nothing."""
+    if staging is not None:
+        shutil.rmtree(staging, ignore_errors=True)
+    for parent in reversed(made):
+        if parent.is_dir() and not any(parent.iterdir()):
+            parent.rmdir()
 
 
 def _unwritable(path: Path, error: OSError) -> OutputError:
