@@ -8,6 +8,7 @@ import json
 import os
 import tempfile
 import zipfile
+import zlib
 from dataclasses import replace
 from pathlib import Path
 from typing import Any
@@ -26,6 +27,16 @@ _DOCUMENT = "project.json"
 _MANIFEST = "manifest.json"
 # 4 GiB: more than any project holds; a crafted archive must not fill the memory.
 _LARGEST_BYTES = 4 * 1024**3
+# What zipfile raises on hurt archives: bad data, unknown method, encrypted flag.
+_ZIP_FAULTS = (
+    zipfile.BadZipFile,
+    zlib.error,
+    EOFError,
+    ValueError,
+    KeyError,
+    NotImplementedError,
+    RuntimeError,
+)
 
 
 class ProjectFileError(SpinLedgerError, ValueError):
@@ -95,7 +106,9 @@ def load_project(path: Path) -> Project:
             return _unpacked(archive, path)
     except FileNotFoundError as error:
         raise ProjectFileError(path, "there is no such file") from error
-    except zipfile.BadZipFile as error:
+    except ProjectFileError:
+        raise
+    except _ZIP_FAULTS as error:
         raise ProjectFileError(
             path, "this is not a project file, or it is damaged; open a saved copy"
         ) from error
@@ -206,7 +219,7 @@ def _checked_entries(
     for name, expected in hashes.items():
         try:
             data = archive.read(name)
-        except (KeyError, zipfile.BadZipFile, EOFError, ValueError) as error:
+        except _ZIP_FAULTS as error:
             raise _damaged(path, name) from error
         if hashlib.sha256(data).hexdigest() != expected:
             raise _damaged(path, name)
@@ -238,7 +251,7 @@ def _decoded(entries: dict[str, bytes]) -> Project:
 def _json_entry(archive: zipfile.ZipFile, name: str, path: Path) -> dict[str, Any]:
     try:
         tree = json.loads(archive.read(name))
-    except (ValueError, zipfile.BadZipFile, EOFError) as error:
+    except _ZIP_FAULTS as error:
         raise _damaged(path, name) from error
     if not isinstance(tree, dict):
         raise _damaged(path, name)
