@@ -213,6 +213,7 @@ def solvent_facts(
         header=header,
         temperature_k=temperature_k or acquired.metadata.temperature_k,
         is_maker_axis=not isinstance(acquired, Fid),
+        has_axis=not isinstance(acquired, Fid) or acquired.carrier_ppm is not None,
     )
 
 

@@ -55,7 +55,11 @@ class StandardCandidate:
 
 
 def standard_candidates(
-    spectrum: Spectrum, clusters: Clusters, *, centre_ppm: float = 0.0
+    spectrum: Spectrum,
+    clusters: Clusters,
+    *,
+    centre_ppm: float = 0.0,
+    reach_ppm: float = 0.0,
 ) -> tuple[StandardCandidate, ...]:
     """Lines that may be the standard's, best first.
 
@@ -68,10 +72,13 @@ def standard_candidates(
     centre_ppm : float, ppm
         Where zero is expected on the axis as it stands; 0.6 ppm about it are
         searched.
+    reach_ppm : float, ppm
+        How much wider than that is searched.
     """
     shifts = spectrum.first_point_ppm - spectrum.step_ppm * clusters.points
     chosen = np.flatnonzero(
-        (np.abs(shifts - centre_ppm) < _WINDOW_PPM) & (clusters.widths_hz < _WIDEST_HZ)
+        (np.abs(shifts - centre_ppm) < _WINDOW_PPM + reach_ppm)
+        & (clusters.widths_hz < _WIDEST_HZ)
     )
     offsets_hz = shifts * spectrum.spectrometer_frequency_mhz
     found = [
