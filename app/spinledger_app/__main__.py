@@ -18,7 +18,8 @@ def main(argv: Sequence[str] | None = None) -> int:
     """
     multiprocessing.freeze_support()
     arguments = _parser().parse_args(argv)
-    from spinledger_app.application import run
+    # Qt loads only once the arguments are understood.
+    from spinledger_app.application import run  # noqa: PLC0415
 
     return run(
         places=[place for place in (arguments.data,) if place],

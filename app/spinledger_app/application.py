@@ -9,7 +9,6 @@ from PySide6.QtCore import QCoreApplication, QSettings, QTimer
 from PySide6.QtWidgets import QApplication
 
 from spinledger.project.document import Project
-
 from spinledger_app import tasks
 from spinledger_app.bench import Bench
 from spinledger_app.desk import Desk

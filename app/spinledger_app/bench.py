@@ -24,7 +24,6 @@ from spinledger.report.context import context_of
 from spinledger.values.evidence import Evidence
 from spinledger.values.ledger import Ledger
 from spinledger.values.recipe import Recipe
-
 from spinledger_app import tasks
 from spinledger_app.lanes.scene import LaneScene
 from spinledger_app.presenters.scenes import SceneStore

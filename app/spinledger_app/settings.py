@@ -31,7 +31,7 @@ class BenchSettings:
     def text_scale(self) -> float:
         """1.0, 1.15 or 1.3."""
         value = self._store.value("text_scale", 1.0, type=float)
-        return float(value) if value in (1.0, 1.15, 1.3) else 1.0  # type: ignore[arg-type]
+        return float(value) if value in (1.0, 1.15, 1.3) else 1.0
 
     @text_scale.setter
     def text_scale(self, scale: float) -> None:

@@ -4,6 +4,8 @@ Heavy imports stand inside the functions: the window's process reads this module
 too, and must not load what it never runs.
 """
 
+# ruff: noqa: PLC0415 - see above
+
 from __future__ import annotations
 
 from collections.abc import Callable, Sequence
@@ -18,7 +20,6 @@ from spinledger.values.evidence import Evidence
 from spinledger.values.ledger import Ledger
 from spinledger.values.recipe import Recipe
 from spinledger.values.structure import Structure
-
 from spinledger_app.presenters.structure import Drawing
 
 Progress = Callable[[str, float], None]
@@ -41,7 +42,7 @@ class ReadClaim:
     drawing: Drawing
 
 
-def warm_up(progress: Progress, cancelled: Cancelled) -> None:
+def warm_up(_progress: Progress, _cancelled: Cancelled) -> None:
     """Load what the first real task would have to wait for."""
     import spinledger.detection.evidence
     import spinledger.io.read
@@ -63,7 +64,7 @@ def read_spectrum(
 
 def gather(
     progress: Progress,
-    cancelled: Cancelled,
+    _cancelled: Cancelled,
     acquired: Acquired,
     options: ProjectOptions,
     recipe: Recipe | None,
@@ -80,33 +81,31 @@ def gather(
     )
 
 
-def read_claim(progress: Progress, cancelled: Cancelled, text: str) -> ReadClaim:
+def read_claim(_progress: Progress, _cancelled: Cancelled, text: str) -> ReadClaim:
     """Structure from SMILES, InChI, a molfile text or a file, with its drawing."""
     from spinledger.structure.read import read_structure
-
-    from spinledger_app.presenters.structure import drawing_of
+    from spinledger_app.presenters.drawing import drawing_of
 
     structure = read_structure(text)
     return ReadClaim(structure=structure, drawing=drawing_of(structure))
 
 
 def draw_structure(
-    progress: Progress, cancelled: Cancelled, structure: Structure
+    _progress: Progress, _cancelled: Cancelled, structure: Structure
 ) -> Drawing:
     """Drawing of a structure that was read before."""
-    from spinledger_app.presenters.structure import drawing_of
+    from spinledger_app.presenters.drawing import drawing_of
 
     return drawing_of(structure)
 
 
 def draw_smiles(
-    progress: Progress, cancelled: Cancelled, smiles: Sequence[str]
+    _progress: Progress, _cancelled: Cancelled, smiles: Sequence[str]
 ) -> dict[str, Drawing]:
     """Drawings of contenders by their SMILES; those that do not parse are left out."""
     from spinledger.errors import StructureError
     from spinledger.structure.read import read_structure
-
-    from spinledger_app.presenters.structure import drawing_of
+    from spinledger_app.presenters.drawing import drawing_of
 
     drawings = {}
     for one in smiles:
@@ -134,7 +133,7 @@ def solve(
 
 def write_report(
     progress: Progress,
-    cancelled: Cancelled,
+    _cancelled: Cancelled,
     ledger: Ledger,
     folder: Path,
     formats: Sequence[str],
@@ -150,7 +149,7 @@ def write_report(
 
 def write_pdf(
     progress: Progress,
-    cancelled: Cancelled,
+    _cancelled: Cancelled,
     ledger: Ledger,
     path: Path,
     context: ReportContext,
@@ -163,7 +162,7 @@ def write_pdf(
 
 
 def experimental_sentence(
-    progress: Progress, cancelled: Cancelled, ledger: Ledger
+    _progress: Progress, _cancelled: Cancelled, ledger: Ledger
 ) -> str:
     """The experimental-section text of a ledger."""
     from spinledger.report.text import experimental_text
@@ -171,7 +170,7 @@ def experimental_sentence(
     return experimental_text(ledger)
 
 
-def load(progress: Progress, cancelled: Cancelled, path: Path) -> Project:
+def load(_progress: Progress, _cancelled: Cancelled, path: Path) -> Project:
     """Read a project file."""
     from spinledger.project.storage import load_project
 
@@ -179,7 +178,7 @@ def load(progress: Progress, cancelled: Cancelled, path: Path) -> Project:
 
 
 def save(
-    progress: Progress, cancelled: Cancelled, project: Project, path: Path
+    _progress: Progress, _cancelled: Cancelled, project: Project, path: Path
 ) -> Path:
     """Write a project file, whole or not at all."""
     from spinledger.project.storage import save_project

@@ -7,6 +7,7 @@ import itertools
 import logging
 import multiprocessing
 import os
+import signal
 import threading
 import time
 from collections.abc import Callable
@@ -102,7 +103,7 @@ class WorkerPool(QObject):
             executor.submit(_run, warm_up, (), 0, self._queue, manager.Event())
         self._ready.emit()
 
-    def run(  # noqa: PLR0913 - a call and all that may come of it
+    def run(
         self,
         task: Callable[..., Any],
         *arguments: Any,
@@ -267,15 +268,11 @@ def sentence_of(error: BaseException) -> str:
 
 
 def _ignore_interrupts() -> None:
-    import signal
-
     signal.signal(signal.SIGINT, signal.SIG_IGN)
 
 
 def _calm_down() -> None:
     """Let the window have the processor first; called once in each process."""
-    import signal
-
     signal.signal(signal.SIGINT, signal.SIG_IGN)
     for name in _ONE_THREAD:
         os.environ[name] = "1"

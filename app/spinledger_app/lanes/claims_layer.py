@@ -24,7 +24,7 @@ from spinledger_app.lanes.leaves import (
     funnel_side,
     leaf_path,
 )
-from spinledger_app.lanes.scene import Level, LaneScene
+from spinledger_app.lanes.scene import LaneScene, Level
 from spinledger_app.lanes.shift_map import ShiftMap
 from spinledger_app.painting.ink import (
     CAPTION,

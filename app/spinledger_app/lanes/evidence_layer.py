@@ -19,7 +19,10 @@ from spinledger_app.painting.marks import paint_mark
 
 # With fewer points than this in a column the points themselves are joined.
 _POINTS_PER_COLUMN = 2.0
-_TEXT_GAP_PX = 6.0
+_TEXT_GAP_PX = 3.0
+
+
+ToY = Callable[[npt.NDArray[np.float64]], npt.NDArray[np.float64]]
 
 
 @dataclass(frozen=True, slots=True, kw_only=True)
@@ -36,7 +39,7 @@ def curve(
     trace: Trace,
     shift_map: ShiftMap,
     stretch: int,
-    to_y: Callable[[npt.NDArray[np.float64]], npt.NDArray[np.float64]],
+    to_y: ToY,
     device_ratio: float,
 ) -> Curve | None:
     """Trace in one stretch; extremes per device column where points crowd.
@@ -54,7 +57,8 @@ def curve(
         return None
     high = trace.first_point_ppm - start * trace.step_ppm
     low = trace.first_point_ppm - stop * trace.step_ppm
-    x0, x1 = shift_map.xs_of(np.array([high, low]), stretch)
+    x0 = shift_map.x_of(high, stretch) or 0.0
+    x1 = shift_map.x_of(low, stretch) or 0.0
     n_columns = max(1, round((x1 - x0) * device_ratio))
     if (stop - start) / n_columns < _POINTS_PER_COLUMN:
         return _joined_points(trace, shift_map, stretch, (start, stop), to_y)
@@ -73,11 +77,11 @@ def _joined_points(
     shift_map: ShiftMap,
     stretch: int,
     bounds: tuple[float, float],
-    to_y: Callable[[npt.NDArray[np.float64]], npt.NDArray[np.float64]],
+    to_y: ToY,
 ) -> Curve:
     first = max(0, int(bounds[0]) - 1)
     last = min(trace.pyramid.n_points, int(np.ceil(bounds[1])) + 2)
-    shifts = trace.first_point_ppm - trace.step_ppm * np.arange(first, last)
+    shifts = trace.first_point_ppm - trace.step_ppm * np.arange(first, last, dtype=np.float64)
     xs = shift_map.xs_of(shifts, stretch)
     ys = to_y(trace.pyramid.values[first:last])
     return Curve(xs=xs, ys=ys, upper_xs=xs, upper_ys=ys)
@@ -126,8 +130,13 @@ def paint_evidence(  # noqa: PLR0913 - scene, place and three choices
         ink.painter.save()
         _clip(ink, shift_map, index, layout.evidence_top, layout.seam, layout)
         if scene.model is not None:
-            _paint_model(ink, scene.model, shift_map, index, to_y, layout, ratio)
-        _paint_measured(ink, scene.measured, shift_map, index, to_y, ratio)
+            modelled = curve(scene.model, shift_map, index, to_y, ratio)
+            if modelled is not None:
+                _paint_model(ink, modelled, layout)
+        drawn = curve(scene.measured, shift_map, index, to_y, ratio)
+        if drawn is not None:
+            ink.painter.setPen(QPen(ink.colour("trace"), 1.0))
+            ink.painter.drawPolyline(polygon(drawn.xs, drawn.ys))
         if show_integrals:
             _paint_integrals(ink, scene, shift_map, index, layout)
         ink.painter.restore()
@@ -139,7 +148,7 @@ def paint_evidence(  # noqa: PLR0913 - scene, place and three choices
     ink.hline(left, right, layout.baseline)
 
 
-def _clip(  # noqa: PLR0913 - a rectangle from map and layout
+def _clip(
     ink: Ink,
     shift_map: ShiftMap,
     index: int,
@@ -154,21 +163,9 @@ def _clip(  # noqa: PLR0913 - a rectangle from map and layout
     )
 
 
-def _paint_model(  # noqa: PLR0913 - as its caller
-    ink: Ink,
-    trace: Trace,
-    shift_map: ShiftMap,
-    index: int,
-    to_y: Callable[[npt.NDArray[np.float64]], npt.NDArray[np.float64]],
-    layout: LaneLayout,
-    ratio: float,
-) -> None:
-    drawn = curve(trace, shift_map, index, to_y, ratio)
-    if drawn is None:
-        return
-    tokens = ink.look.tokens
+def _paint_model(ink: Ink, drawn: Curve, layout: LaneLayout) -> None:
     colour = ink.colour("model_fill")
-    colour.setAlpha(tokens.model_fill_alpha)
+    colour.setAlpha(ink.look.tokens.model_fill_alpha)
     xs = np.concatenate(([drawn.upper_xs[0]], drawn.upper_xs, [drawn.upper_xs[-1]]))
     ys = np.concatenate(([layout.baseline], drawn.upper_ys, [layout.baseline]))
     painter = ink.painter
@@ -178,21 +175,6 @@ def _paint_model(  # noqa: PLR0913 - as its caller
     painter.setBrush(Qt.BrushStyle.NoBrush)
     painter.setPen(QPen(ink.colour("model_edge"), 1.3))
     painter.drawPolyline(polygon(drawn.upper_xs, drawn.upper_ys))
-
-
-def _paint_measured(  # noqa: PLR0913 - as its caller
-    ink: Ink,
-    trace: Trace,
-    shift_map: ShiftMap,
-    index: int,
-    to_y: Callable[[npt.NDArray[np.float64]], npt.NDArray[np.float64]],
-    ratio: float,
-) -> None:
-    drawn = curve(trace, shift_map, index, to_y, ratio)
-    if drawn is None:
-        return
-    ink.painter.setPen(QPen(ink.colour("trace"), 1.0))
-    ink.painter.drawPolyline(polygon(drawn.xs, drawn.ys))
 
 
 def _paint_integrals(

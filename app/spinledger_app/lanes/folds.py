@@ -5,6 +5,7 @@ Shifts in ppm, smoothing widths in Hz.
 
 from __future__ import annotations
 
+import itertools
 from collections.abc import Iterable, Sequence
 
 import numpy as np
@@ -12,7 +13,6 @@ import numpy.typing as npt
 
 from spinledger.values.evidence import Line
 from spinledger.values.spectrum import Spectrum
-
 from spinledger_app.lanes.shift_map import Stretch
 
 SMOOTHING_HZ = (2.0, 8.0, 32.0, 80.0)
@@ -77,8 +77,11 @@ def _spans_by_area(
     cells = spectrum.intensities[: n_cells * points_per_cell]
     means = cells.reshape(n_cells, points_per_cell).mean(axis=1)
     cell_ppm = spectrum.step_ppm * points_per_cell
-    centres = spectrum.first_point_ppm - cell_ppm * (np.arange(n_cells) + 0.5)
-    tails = _tails(centres * spectrum.spectrometer_frequency_mhz, lines, spectrum)
+    cells_at = np.arange(n_cells, dtype=np.float64) + 0.5
+    centres = spectrum.first_point_ppm - cell_ppm * cells_at
+    tails = _tails(
+        np.asarray(centres * spectrum.spectrometer_frequency_mhz), lines, spectrum
+    )
     filled = np.zeros(n_cells, dtype=bool)
     for width_hz in SMOOTHING_HZ:
         filled |= _outstanding(means, tails, max(1, round(width_hz / _CELL_HZ)))
@@ -141,9 +144,7 @@ def _merged(
 
 
 def _closest_joined(spans: list[tuple[float, float]]) -> list[tuple[float, float]]:
-    folds = [
-        after[0] - before[1] for before, after in zip(spans, spans[1:], strict=False)
-    ]
+    folds = [after[0] - before[1] for before, after in itertools.pairwise(spans)]
     index = int(np.argmin(folds))
     joined = (spans[index][0], spans[index + 1][1])
     return [*spans[:index], joined, *spans[index + 2 :]]

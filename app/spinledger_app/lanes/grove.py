@@ -2,6 +2,7 @@
 
 from __future__ import annotations
 
+import itertools
 from collections.abc import Callable, Sequence
 from dataclasses import dataclass, replace
 from typing import Literal
@@ -175,7 +176,7 @@ def _style(tree: TreeShape, xs: Sequence[float], px_per_hz: float) -> Style:
         return "broad"
     if px_per_hz < STEM_ONLY_BELOW:
         return "stem"
-    closest = min((b - a for a, b in zip(xs, xs[1:], strict=False)), default=99.0)
+    closest = min((b - a for a, b in itertools.pairwise(xs)), default=99.0)
     if len(xs) > HEDGE_LEAVES and closest < HEDGE_SPACING_PX:
         return "hedge"
     return "branches"

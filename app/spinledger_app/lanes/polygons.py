@@ -16,8 +16,9 @@ def polygon(xs: npt.NDArray[np.float64], ys: npt.NDArray[np.float64]) -> QPolygo
         return result
     result.resize(n)
     # QPointF is two doubles; the polygon's own storage is filled in place.
-    memory = shiboken6.VoidPtr(result.data(), n * 16, True)
-    points = np.frombuffer(memory, dtype=np.float64).reshape(n, 2)
+    # The stubs know neither of these calls; both are the binding's own way.
+    memory = shiboken6.VoidPtr(result.data(), n * 16, True)  # type: ignore[call-arg,arg-type]
+    points = np.frombuffer(memory, dtype=np.float64).reshape(n, 2)  # type: ignore[call-overload]
     points[:, 0] = xs
     points[:, 1] = ys
     return result

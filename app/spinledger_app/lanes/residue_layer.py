@@ -101,7 +101,6 @@ def paint_residue(
         ink.painter.setPen(QPen(pen, 1.0))
         ink.painter.drawPolyline(polygon(drawn.xs, drawn.ys))
         ink.painter.restore()
-    _paint_ticks(ink, scale, layout)
 
 
 def _paint_lines_beyond(
@@ -115,7 +114,11 @@ def _paint_lines_beyond(
                 ink.hline(left, right, y, "grid")
 
 
-def _paint_ticks(ink: Ink, scale: ResidueScale, layout: LaneLayout) -> None:
+def paint_residue_ticks(
+    ink: Ink, scene: LaneScene, shift_map: ShiftMap, layout: LaneLayout
+) -> None:
+    """Ticks and numbers in the gutter; painted after it."""
+    scale = residue_scale(scene, shift_map, layout)
     # The lane's name and unit stand in the same gutter.
     blocked = layout.claims_bottom + ink.look.px(24), layout.axis_top - ink.look.px(21)
     last_y = float("inf")

@@ -22,7 +22,7 @@ _BORDER_PX = 4.0
 
 @dataclass(frozen=True, slots=True, kw_only=True)
 class Target:
-    """One thing under the mouse: a claim's root, a branch, a signal, a fold …
+    """One thing under the mouse: a claim's root, a branch, a signal, a fold.
 
     ``claim`` and ``level`` for trees, ``signal`` for signals and strays,
     ``index`` for folds and lane borders.
@@ -46,7 +46,7 @@ def border_at(y: float, layout: LaneLayout) -> int | None:
     return None
 
 
-def target_at(
+def target_at(  # noqa: PLR0913 - a place and the whole view
     x: float,
     y: float,
     *,

@@ -64,7 +64,7 @@ class Ink:
         """Colour by token; colours pass through."""
         return token if isinstance(token, QColor) else self.look.colour(token)
 
-    def text(  # noqa: PLR0913 - place, words and how they are set
+    def text(
         self,
         x: float,
         baseline: float,
@@ -129,7 +129,7 @@ class Ink:
         )
         return width
 
-    def wrapped(  # noqa: PLR0913 - place, room, words and how they are set
+    def wrapped(
         self,
         x: float,
         baseline: float,
@@ -160,7 +160,7 @@ class Ink:
         self.painter.drawRoundedRect(rect, radius, radius)
         self.painter.setBrush(Qt.BrushStyle.NoBrush)
 
-    def box(  # noqa: PLR0913 - a rectangle with all it can have
+    def box(
         self,
         rect: QRectF,
         *,
@@ -209,7 +209,7 @@ class Ink:
         self.painter.setPen(pen)
         self.painter.drawLine(QPointF(*start), QPointF(*end))
 
-    def stroke(  # noqa: PLR0913 - a stroke with all it can have
+    def stroke(
         self,
         path: QPainterPath,
         colour: str | QColor,

@@ -46,9 +46,10 @@ def paint_molecule(  # noqa: PLR0913 - what, where and how large
     gap = size * 0.62
     for bond in drawing.bonds:
         _paint_bond(ink, drawing, places, bond, (scale, gap, width), colour)
-    for atom, (x, y) in zip(drawing.atoms, places, strict=True):
+    face = Face(size=size, weight=600, colour=colour)
+    for index, atom in enumerate(drawing.atoms):
         if atom.symbol:
-            _paint_atom(ink, drawing, places, atom, (x, y), size, colour)
+            _paint_atom(ink, drawing, places, index, face)
 
 
 def _paint_bond(
@@ -127,22 +128,19 @@ def _paint_wedge(
         )
 
 
-def _paint_atom(  # noqa: PLR0913 - an atom in its surroundings
+def _paint_atom(
     ink: Ink,
     drawing: Drawing,
     places: Sequence[_Point],
-    atom: DrawnAtom,
-    place: _Point,
-    size: float,
-    colour: str,
+    index: int,
+    face: Face,
 ) -> None:
-    x, y = place
-    index = places.index(place)
+    x, y = places[index]
+    atom, size = drawing.atoms[index], face.size
     look = ink.look
     hydrogens = formula(atom.hydrogens)
     own = look.width(atom.symbol, size, 600)
     baseline = y + look.metrics(size, 600).capHeight() / 2
-    face = Face(size=size, weight=600, colour=colour)
     if hydrogens and _is_bound_on_right(drawing, places, index):
         text, left = (
             hydrogens + atom.symbol + atom.charge,

@@ -5,7 +5,6 @@ from __future__ import annotations
 from dataclasses import dataclass
 
 from spinledger.values.ledger import Contender, Ledger
-
 from spinledger_app.presenters.structure import Drawing
 from spinledger_app.presenters.wording import say
 

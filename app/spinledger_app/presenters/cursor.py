@@ -3,7 +3,6 @@
 from __future__ import annotations
 
 from spinledger.project.document import Project
-
 from spinledger_app.lanes.camera import Camera
 from spinledger_app.lanes.scene import LaneScene
 from spinledger_app.lanes.shift_map import ShiftMap

@@ -4,6 +4,7 @@ from __future__ import annotations
 
 import re
 
+from spinledger.project.document import Project
 from spinledger.project.edits import (
     Edit,
     FixCoupling,
@@ -12,9 +13,7 @@ from spinledger.project.edits import (
     SwapClaims,
     UnlinkClaim,
 )
-from spinledger.project.document import Project
 from spinledger.values.ledger import Entry, Ledger
-
 from spinledger_app.lanes.scene import LaneScene, SignalMark
 from spinledger_app.presenters.wording import say
 
@@ -88,9 +87,9 @@ def _pin_at(claim: str, place: Entry) -> PinClaim | None:
 def swap_partner(ledger: Ledger, claim: str) -> str | None:
     """The claim that one would exchange with: the pair's other half, or the group's."""
     for one in ledger.claims.claims:
-        if one.label == claim and one.pair is not None:
-            if entry_of(ledger, one.pair) is not None:
-                return one.pair
+        pair = one.pair if one.label == claim else None
+        if pair is not None and entry_of(ledger, pair) is not None:
+            return pair
     entry = entry_of(ledger, claim)
     if entry is None:
         return None

@@ -5,10 +5,10 @@ from __future__ import annotations
 from collections.abc import Sequence
 
 import numpy as np
+import numpy.typing as npt
 
 from spinledger.values.evidence import Evidence, Signal, Stray
 from spinledger.values.ledger import Ledger
-
 from spinledger_app.lanes.folds import filled_stretches
 from spinledger_app.lanes.pyramid import Pyramid
 from spinledger_app.lanes.scene import (
@@ -184,7 +184,7 @@ def full_height(
     return whole if whole > 0 else 1.0
 
 
-def _trace(values: np.ndarray, like: Trace) -> Trace:  # type: ignore[type-arg]
+def _trace(values: npt.NDArray[np.float64], like: Trace) -> Trace:
     return Trace(
         pyramid=Pyramid(np.asarray(values, dtype=np.float64)),
         first_point_ppm=like.first_point_ppm,

@@ -7,7 +7,6 @@ from dataclasses import dataclass
 
 from spinledger.values.evidence import Stray
 from spinledger.values.ledger import Entry, EntryCoupling, Ledger, Verdict
-
 from spinledger_app.presenters.lanes import stray_name
 from spinledger_app.presenters.wording import (
     couplings,
@@ -167,7 +166,7 @@ def ledger_text(
         row_text(entry, is_pinned=entry.claim in pinned) for entry in ledger.entries
     )
     strays = stray_texts(ledger.strays)
-    tally = {state: 0 for state in STATES}
+    tally = dict.fromkeys(STATES, 0)
     for row in rows:
         tally[row.state] += 1
     tally["stray"] = len(strays)

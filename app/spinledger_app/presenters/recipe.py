@@ -17,7 +17,6 @@ from spinledger.values.recipe import (
     Step,
     ZeroFill,
 )
-
 from spinledger_app.presenters.wording import MINUS, chemical, number, say
 
 _KIBI = 1024

@@ -9,7 +9,6 @@ from spinledger.project.constraints import standing_constraints
 from spinledger.project.document import Project
 from spinledger.values.evidence import Evidence
 from spinledger.values.ledger import Ledger
-
 from spinledger_app.lanes.scene import LaneScene
 from spinledger_app.presenters.lanes import lane_scene
 

@@ -1,7 +1,6 @@
 """The drawn structure as plain values: atoms, bonds, and where claims' tags go.
 
 Coordinates of a drawing are in bond lengths, y upwards; of tags in logical px.
-The drawing is made in the working process; the placing of tags needs no RDKit.
 """
 
 from __future__ import annotations
@@ -9,8 +8,6 @@ from __future__ import annotations
 import math
 from collections.abc import Callable, Sequence
 from dataclasses import dataclass
-
-from spinledger.values.structure import Structure
 
 _ANGLES = 24
 _RADII_PX = (24.0, 34.0, 46.0, 60.0, 78.0, 98.0)
@@ -94,116 +91,6 @@ class PlacedTag:
         return self.left + self.width / 2, self.top + self.height / 2
 
 
-def drawing_of(structure: Structure) -> Drawing:
-    """Flat drawing of a structure, atoms in the given order.
-
-    Runs RDKit: for the working process.
-    """
-    from rdkit import Chem
-    from rdkit.Chem import Descriptors, rdMolDescriptors
-
-    from spinledger.report.sketch import drawable
-
-    mol = Chem.Mol(drawable(structure))
-    Chem.Kekulize(mol, clearAromaticFlags=False)
-    conformer = mol.GetConformer()
-    Chem.WedgeMolBonds(mol, conformer)
-    length = _bond_length(mol)
-    atoms = tuple(_atom(mol, atom, conformer, length) for atom in mol.GetAtoms())
-    bonds = tuple(_bond(mol, bond, conformer) for bond in mol.GetBonds())
-    return Drawing(
-        atoms=atoms,
-        bonds=bonds,
-        formula=rdMolDescriptors.CalcMolFormula(mol),
-        mass=f"{Descriptors.MolWt(mol):.2f}",
-        stereo=_stereo(mol),
-    )
-
-
-def _bond_length(mol: object) -> float:
-    lengths = []
-    conformer = mol.GetConformer()  # type: ignore[attr-defined]
-    for bond in mol.GetBonds():  # type: ignore[attr-defined]
-        a = conformer.GetAtomPosition(bond.GetBeginAtomIdx())
-        b = conformer.GetAtomPosition(bond.GetEndAtomIdx())
-        lengths.append(math.hypot(a.x - b.x, a.y - b.y))
-    lengths = sorted(one for one in lengths if one > 1e-6)
-    return lengths[len(lengths) // 2] if lengths else 1.0
-
-
-def _atom(mol: object, atom: object, conformer: object, length: float) -> DrawnAtom:
-    place = conformer.GetAtomPosition(atom.GetIdx())  # type: ignore[attr-defined]
-    symbol = atom.GetSymbol()  # type: ignore[attr-defined]
-    degree = atom.GetDegree()  # type: ignore[attr-defined]
-    charge = atom.GetFormalCharge()  # type: ignore[attr-defined]
-    isotope = atom.GetIsotope()  # type: ignore[attr-defined]
-    n_hydrogens = atom.GetTotalNumHs()  # type: ignore[attr-defined]
-    is_bare = symbol == "C" and degree > 0 and not charge and not isotope
-    marks = {"2H": "D", "3H": "T"}
-    written = f"{isotope}{symbol}" if isotope else symbol
-    written = marks.get(written, written)
-    sign = "" if not charge else ("+" if charge > 0 else "−")
-    return DrawnAtom(
-        x=place.x / length,
-        y=place.y / length,
-        symbol="" if is_bare else written,
-        hydrogens=""
-        if is_bare or not n_hydrogens
-        else ("H" if n_hydrogens == 1 else f"H{n_hydrogens}"),
-        charge=sign if abs(charge) < 2 else f"{abs(charge)}{sign}",
-    )
-
-
-def _bond(mol: object, bond: object, conformer: object) -> DrawnBond:
-    from rdkit import Chem
-
-    start, end = bond.GetBeginAtomIdx(), bond.GetEndAtomIdx()  # type: ignore[attr-defined]
-    wedges = {Chem.BondDir.BEGINWEDGE: "wedge", Chem.BondDir.BEGINDASH: "hash"}
-    order = {
-        Chem.BondType.DOUBLE: 2,
-        Chem.BondType.TRIPLE: 3,
-    }.get(bond.GetBondType(), 1)  # type: ignore[attr-defined]
-    return DrawnBond(
-        start=start,
-        end=end,
-        order=order,
-        wedge=wedges.get(bond.GetBondDir(), ""),  # type: ignore[attr-defined]
-        inward=_ring_side(mol, bond, conformer) if order == 2 else 0,
-    )
-
-
-def _ring_side(mol: object, bond: object, conformer: object) -> int:
-    start, end = bond.GetBeginAtomIdx(), bond.GetEndAtomIdx()  # type: ignore[attr-defined]
-    rings = [
-        ring
-        for ring in mol.GetRingInfo().AtomRings()  # type: ignore[attr-defined]
-        if start in ring and end in ring
-    ]
-    if not rings:
-        return 0
-    ring = min(rings, key=lambda one: (len(one) != 6, len(one)))
-    places = [conformer.GetAtomPosition(i) for i in ring]  # type: ignore[attr-defined]
-    cx = sum(p.x for p in places) / len(places)
-    cy = sum(p.y for p in places) / len(places)
-    a = conformer.GetAtomPosition(start)  # type: ignore[attr-defined]
-    b = conformer.GetAtomPosition(end)  # type: ignore[attr-defined]
-    cross = (b.x - a.x) * (cy - a.y) - (b.y - a.y) * (cx - a.x)
-    return 1 if cross > 0 else -1
-
-
-def _stereo(mol: object) -> str:
-    from rdkit import Chem
-
-    Chem.AssignCIPLabels(mol)
-    found = []
-    for atom in mol.GetAtoms():  # type: ignore[attr-defined]
-        if atom.HasProp("_CIPCode"):
-            found.append(atom.GetProp("_CIPCode"))
-    if not found or len(found) > 4:
-        return f"{len(found)} stereocentres" if found else ""
-    return "(" + ",".join(found) + ")"
-
-
 def fitted(
     drawing: Drawing,
     room: tuple[float, float, float, float],
@@ -237,7 +124,7 @@ def place_tags(
     *,
     size: tuple[float, float],
     height: float = _TAG_HEIGHT_PX,
-    label_width: Callable[[DrawnAtom], float] = lambda atom: 0.0,
+    label_width: Callable[[DrawnAtom], float],
 ) -> tuple[PlacedTag, ...]:
     """Tags outside the skeleton, none over a bond, an atom's text or another tag.
 

@@ -4,7 +4,6 @@ from __future__ import annotations
 
 from spinledger.project.document import Project
 from spinledger.values.claim import Claim
-
 from spinledger_app.presenters.ledger import row_text
 from spinledger_app.presenters.structure import Drawing
 from spinledger_app.presenters.wording import chemical, say, shift_sd

@@ -11,7 +11,6 @@ import numpy.typing as npt
 
 from spinledger.values.evidence import Line
 from spinledger.values.ledger import ClaimLines, Entry, EntryCoupling, Ledger
-
 from spinledger_app.lanes.scene import Leaf, Level, TreeShape
 
 # Below this a splitting is hidden in the line width of ordinary spectra.
@@ -190,7 +189,8 @@ def _merged_lines(
     apart = np.abs(np.diff(shifts)) * frequency_mhz > _SAME_LINE_HZ
     group = np.concatenate(([0], np.cumsum(apart)))
     total = np.bincount(group, areas)
-    return np.bincount(group, areas * shifts) / total, total
+    centres = np.asarray(np.bincount(group, areas * shifts) / total, dtype=np.float64)
+    return centres, np.asarray(total, dtype=np.float64)
 
 
 def _drawn_j(coupling: EntryCoupling, *, use_found: bool) -> float:

@@ -4,7 +4,7 @@ from __future__ import annotations
 
 from PySide6.QtCore import QRectF, QSize, Qt, Signal
 from PySide6.QtGui import QKeyEvent, QMouseEvent, QPainter, QPaintEvent
-from PySide6.QtWidgets import QFrame, QScrollArea, QSizePolicy, QVBoxLayout, QWidget
+from PySide6.QtWidgets import QSizePolicy, QVBoxLayout, QWidget
 
 from spinledger_app.painting.ink import (
     CAPTION,
@@ -19,6 +19,7 @@ from spinledger_app.presenters.contenders import CardText, ContendersText
 from spinledger_app.presenters.structure import Drawing, fitted
 from spinledger_app.presenters.wording import say
 from spinledger_app.theme import Look
+from spinledger_app.views.controls import OverlayScroll
 
 _MARGIN = 16
 _HEAD_PX = 40
@@ -59,7 +60,7 @@ class Card(QWidget):
         ink.hline(_MARGIN, self.width() - _MARGIN, 0)
         thumb = px(76 if self.width() < px(300) else 96)
         if self.drawing is not None:
-            room = (_MARGIN + 2.0, 12.0, thumb - 8.0, height - 22.0)
+            room = (_MARGIN + 8.0, 14.0, thumb - 26.0, height - 28.0)
             places, scale = fitted(self.drawing, room, longest_px=17)
             colour = "ink" if text.stands else "muted"
             paint_molecule(
@@ -120,15 +121,11 @@ class ContendersView(QWidget):
         self._column.setContentsMargins(0, 0, 0, 0)
         self._column.setSpacing(0)
         self._column.addStretch(1)
-        self.scroll = QScrollArea(self)
-        self.scroll.setWidgetResizable(True)
-        self.scroll.setFrameShape(QFrame.Shape.NoFrame)
-        self.scroll.setFocusPolicy(Qt.FocusPolicy.NoFocus)
-        self.scroll.setHorizontalScrollBarPolicy(Qt.ScrollBarPolicy.ScrollBarAlwaysOff)
-        self.scroll.setWidget(inner)
+        self.area = OverlayScroll(self)
+        self.area.setWidget(inner)
         outer = QVBoxLayout(self)
         outer.setContentsMargins(0, self.look.px(_HEAD_PX), 0, 0)
-        outer.addWidget(self.scroll)
+        outer.addWidget(self.area)
 
     def show_contenders(self, text: ContendersText) -> None:
         """Show other contenders; thumbnails come by :meth:`show_thumbnails`."""
@@ -143,7 +140,7 @@ class ContendersView(QWidget):
             card.activated.connect(self.card_activated)
             self._column.insertWidget(index, card)
             self.cards.append(card)
-        self.scroll.setVisible(bool(text.cards))
+        self.area.setVisible(bool(text.cards))
         self.update()
 
     def show_thumbnails(self, drawings: dict[str, Drawing]) -> None:

@@ -3,11 +3,14 @@
 from __future__ import annotations
 
 from PySide6.QtCore import QEvent, QObject, QRect, QRectF, QSize, Qt
-from PySide6.QtGui import QEnterEvent, QPainter, QPaintEvent, QPen
+from PySide6.QtGui import QEnterEvent, QPainter, QPaintEvent, QPen, QResizeEvent
 from PySide6.QtWidgets import (
     QAbstractButton,
     QApplication,
+    QFrame,
     QPushButton,
+    QScrollArea,
+    QScrollBar,
     QSizePolicy,
     QSplitter,
     QSplitterHandle,
@@ -27,7 +30,7 @@ _SPLIT_REACH_PX = 4
 class BenchButton(QPushButton):
     """A button with its key beside its word; ``is_primary`` for the first choice."""
 
-    def __init__(  # noqa: PLR0913 - words and manner of one control
+    def __init__(
         self,
         look: Look,
         text: str,
@@ -148,6 +151,37 @@ class TextLink(QAbstractButton):
         super().enterEvent(event)
 
 
+class OverlayScroll(QScrollArea):
+    """A column that scrolls upright; the bar lies over it and takes no width."""
+
+    def __init__(self, parent: QWidget | None = None) -> None:
+        super().__init__(parent)
+        self.setWidgetResizable(True)
+        self.setFrameShape(QFrame.Shape.NoFrame)
+        self.setFocusPolicy(Qt.FocusPolicy.NoFocus)
+        self.setHorizontalScrollBarPolicy(Qt.ScrollBarPolicy.ScrollBarAlwaysOff)
+        self.setVerticalScrollBarPolicy(Qt.ScrollBarPolicy.ScrollBarAlwaysOff)
+        self.bar = QScrollBar(Qt.Orientation.Vertical, self)
+        hidden = self.verticalScrollBar()
+        hidden.rangeChanged.connect(self._take_range)
+        hidden.valueChanged.connect(self.bar.setValue)
+        self.bar.valueChanged.connect(hidden.setValue)
+        self.bar.hide()
+
+    def _take_range(self, least: int, most: int) -> None:
+        self.bar.setRange(least, most)
+        self.bar.setPageStep(self.verticalScrollBar().pageStep())
+        self.bar.setSingleStep(20)
+        self.bar.setVisible(most > least)
+
+    def resizeEvent(self, event: QResizeEvent) -> None:
+        """Keep the bar at the right edge."""
+        super().resizeEvent(event)
+        width = self.bar.sizeHint().width()
+        self.bar.setGeometry(self.width() - width, 0, width, self.height())
+        self.bar.raise_()
+
+
 class FocusRing(QWidget):
     """A 2 px accent ring about whatever the keyboard is on.
 
@@ -189,6 +223,11 @@ class FocusRing(QWidget):
 
     def _follow(self, before: QWidget | None, now: QWidget | None) -> None:
         self._followed = now
+        self._place()
+
+    def rest(self) -> None:
+        """Show no ring until the next key: the focus went somewhere by itself."""
+        self._is_by_keys = False
         self._place()
 
     def refresh(self) -> None:

@@ -31,7 +31,6 @@ from spinledger.processing.solvents import canonical_solvent, solvent_names
 from spinledger.project.document import Sample
 from spinledger.values.evidence import Evidence
 from spinledger.values.recipe import Apodize, Phase, Recipe, Step
-
 from spinledger_app.presenters.recipe import with_phase
 from spinledger_app.presenters.wording import say
 from spinledger_app.theme import Look

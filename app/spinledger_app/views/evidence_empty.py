@@ -8,7 +8,7 @@ from PySide6.QtWidgets import QWidget
 
 from spinledger_app.lanes.axis_layer import paint_axis
 from spinledger_app.lanes.grove import Grove
-from spinledger_app.lanes.layout import lane_layout
+from spinledger_app.lanes.layout import LaneLayout, lane_layout
 from spinledger_app.lanes.shift_map import ShiftMap, Stretch
 from spinledger_app.painting.ink import BODY_MUTED, SECOND, Face, Ink, wrap
 from spinledger_app.presenters.wording import say
@@ -81,7 +81,7 @@ class EvidenceEmpty(QWidget):
         self.open_button.setGeometry(x, y, first_hint.width(), first_hint.height())
         second.setGeometry(x + first_hint.width() + 12, y, hint.width(), hint.height())
 
-    def _lanes(self):  # type: ignore[no-untyped-def]
+    def _lanes(self) -> LaneLayout:
         return lane_layout(
             self.width(),
             self.height(),

@@ -26,7 +26,7 @@ from spinledger_app.lanes.claims_layer import BranchHandle, ClaimsPainter
 from spinledger_app.lanes.evidence_layer import paint_brackets, paint_evidence
 from spinledger_app.lanes.grove import LARGE_LEAVES_FROM, Grove, plant
 from spinledger_app.lanes.layout import DEFAULT_SHARES, LaneLayout, lane_layout
-from spinledger_app.lanes.residue_layer import paint_residue
+from spinledger_app.lanes.residue_layer import paint_residue, paint_residue_ticks
 from spinledger_app.lanes.scene import LaneScene, TreeShape
 from spinledger_app.lanes.shift_map import ShiftMap
 from spinledger_app.lanes.targets import NOTHING, Target, target_at
@@ -100,6 +100,7 @@ class LanesView(QWidget):
     def _build(self) -> None:
         self.setMouseTracking(True)
         self.setFocusPolicy(Qt.FocusPolicy.StrongFocus)
+        self.setProperty("focusInside", True)
         self.setSizePolicy(QSizePolicy.Policy.Expanding, QSizePolicy.Policy.Expanding)
         self.setMinimumSize(480, 420)
         self.setAccessibleName(say("Lanes: evidence, claims and residue"))
@@ -319,7 +320,7 @@ class LanesView(QWidget):
             self._base = self._painted_base()
         painter.drawPixmap(0, 0, self._base)
         if self.scene is not None and self.map is not None:
-            self._paint_overlay(Ink(painter, self.look, self), self.map)
+            self._paint_overlay(Ink(painter, self.look, self), self.scene, self.map)
         painter.end()
 
     def _painted_base(self) -> QPixmap:
@@ -337,6 +338,8 @@ class LanesView(QWidget):
         ink.hline(0, layout.width, layout.claims_bottom, "rule")
         ink.hline(0, layout.gutter, layout.seam, "rule")
         if self.scene is not None and self.map is not None:
+            if self.scene.residue is not None:
+                paint_residue_ticks(ink, self.scene, self.map, layout)
             paint_axis(ink, self.map, layout, self.scene.frequency_mhz)
             paint_folds(ink, self.map, layout)
         painter.end()
@@ -437,32 +440,32 @@ class LanesView(QWidget):
                 face = Face(size=12, colour="muted")
                 ink.text(rect.center().x(), y, text, face, align="centre")
 
-    def _paint_overlay(self, ink: Ink, shift_map: ShiftMap) -> None:
-        scene = self.scene
-        assert scene is not None
+    def _paint_overlay(self, ink: Ink, scene: LaneScene, shift_map: ShiftMap) -> None:
         marks = self.marks
         layout = self.layout_now
-        if marks.hovered is not None and marks.hovered != marks.selected:
-            self._tint_claim(ink, scene, shift_map, marks.hovered)
-        elif marks.hovered is None and marks.hovered_signal is not None:
-            mark = scene.signal(marks.hovered_signal)
-            if mark is not None:
-                self._tint(ink, shift_map, mark.low_ppm, mark.high_ppm)
+        self._paint_hovered(ink, scene, shift_map)
         if marks.chosen_signal is not None:
             self._paint_chosen(ink, scene, shift_map, marks.chosen_signal)
         if self.region_ppm is not None:
-            self._paint_region(ink, scene, shift_map)
-        if self.lit_fold is not None:
-            for index, strip in fold_rects(shift_map, layout):
-                if index == self.lit_fold:
-                    for x in (strip.left(), strip.center().x(), strip.right() - 1):
-                        top, bottom = layout.evidence_top, layout.axis_top
-                        ink.vline(round(x), top, bottom, "accent")
+            self._paint_region(ink, scene, shift_map, self.region_ppm)
+        for index, strip in fold_rects(shift_map, layout):
+            if index == self.lit_fold:
+                for x in (strip.left(), strip.center().x(), strip.right() - 1):
+                    ink.vline(round(x), layout.evidence_top, layout.axis_top, "accent")
         if self.cursor_x is not None and self._gestures.is_idle:
-            ink.vline(
-                round(self.cursor_x), layout.evidence_top, layout.axis_top, "accent"
-            )
+            x = round(self.cursor_x)
+            ink.vline(x, layout.evidence_top, layout.axis_top, "accent")
         self._gestures.paint(ink)
+
+    def _paint_hovered(self, ink: Ink, scene: LaneScene, shift_map: ShiftMap) -> None:
+        marks = self.marks
+        if marks.hovered is not None:
+            if marks.hovered != marks.selected:
+                self._tint_claim(ink, scene, shift_map, marks.hovered)
+        elif marks.hovered_signal is not None:
+            mark = scene.signal(marks.hovered_signal)
+            if mark is not None:
+                self._tint(ink, shift_map, mark.low_ppm, mark.high_ppm)
 
     def _paint_chosen(
         self, ink: Ink, scene: LaneScene, shift_map: ShiftMap, key: str
@@ -477,9 +480,14 @@ class LanesView(QWidget):
         text = say("Now click the proton that owns it. Esc lets go.")
         self.paint_flag(ink, rect.center().x(), self.layout_now.bracket + 14, text)
 
-    def _paint_region(self, ink: Ink, scene: LaneScene, shift_map: ShiftMap) -> None:
-        assert self.region_ppm is not None
-        low, high = self.region_ppm
+    def _paint_region(
+        self,
+        ink: Ink,
+        scene: LaneScene,
+        shift_map: ShiftMap,
+        region_ppm: tuple[float, float],
+    ) -> None:
+        low, high = region_ppm
         rect = self._range_rect(shift_map, low, high)
         if rect is None:
             return

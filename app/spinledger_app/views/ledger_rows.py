@@ -180,7 +180,8 @@ class LedgerRow(QWidget):
         height = self.height_px
         if self._body is not None:
             room = max(self.width() - 2 * MARGIN, 100)
-            height += self._body.layout().totalHeightForWidth(room)
+            layout = self._body.layout()
+            height += 0 if layout is None else layout.totalHeightForWidth(room)
         return QSize(340, height)
 
     def minimumSizeHint(self) -> QSize:

@@ -6,9 +6,7 @@ from PySide6.QtCore import QEvent, QPoint, QRectF, QSize, Qt, Signal
 from PySide6.QtGui import QPainter, QPaintEvent, QResizeEvent
 from PySide6.QtWidgets import (
     QAbstractButton,
-    QFrame,
     QHBoxLayout,
-    QScrollArea,
     QSizePolicy,
     QVBoxLayout,
     QWidget,
@@ -20,6 +18,7 @@ from spinledger_app.presenters.ledger import STATES, LedgerText, RowText
 from spinledger_app.presenters.wording import say
 from spinledger_app.selection import Marks
 from spinledger_app.theme import Look
+from spinledger_app.views.controls import OverlayScroll
 from spinledger_app.views.gauge import paint_gauge_key
 from spinledger_app.views.ledger_empty import LedgerEmpty
 from spinledger_app.views.ledger_rows import (
@@ -255,7 +254,7 @@ class LedgerView(QWidget):
         self.balance.claim_hovered.connect(self.claim_hovered)
         self.balance.claim_clicked.connect(self.claim_clicked)
 
-    def _scroll_area(self) -> QScrollArea:
+    def _scroll_area(self) -> OverlayScroll:
         self._list = QWidget()
         self._list_layout = QVBoxLayout(self._list)
         self._list_layout.setContentsMargins(0, 0, 0, 0)
@@ -264,13 +263,9 @@ class LedgerView(QWidget):
         self._list_layout.addWidget(self.stray_heading)
         self._list_layout.addWidget(self.advice_heading)
         self._list_layout.addStretch(1)
-        self.scroll = QScrollArea()
-        self.scroll.setWidgetResizable(True)
-        self.scroll.setFrameShape(QFrame.Shape.NoFrame)
-        self.scroll.setHorizontalScrollBarPolicy(Qt.ScrollBarPolicy.ScrollBarAlwaysOff)
-        self.scroll.setFocusPolicy(Qt.FocusPolicy.NoFocus)
-        self.scroll.setWidget(self._list)
-        return self.scroll
+        self.area = OverlayScroll()
+        self.area.setWidget(self._list)
+        return self.area
 
     def _tally_bar(self) -> QWidget:
         bar = QWidget()
@@ -377,7 +372,7 @@ class LedgerView(QWidget):
         widest = max(
             (label_width(self.look, row.claim) for row in self.text.rows), default=0.0
         )
-        return columns_for(self.look, self.scroll.viewport().width(), widest)
+        return columns_for(self.look, self.area.viewport().width(), widest)
 
     def _row_height(self) -> int:
         px = self.look.px
@@ -453,7 +448,7 @@ class LedgerView(QWidget):
         for row in self.rows:
             if row.claim == claim:
                 self._list_layout.activate()
-                self.scroll.ensureWidgetVisible(row, 0, 8)
+                self.area.ensureWidgetVisible(row, 0, 8)
 
     def row_of(self, claim: str) -> LedgerRow | None:
         """Row of a claim."""
@@ -464,7 +459,7 @@ class LedgerView(QWidget):
         focused = next((i for i, row in enumerate(shown) if row.hasFocus()), None)
         if focused is not None and 0 <= focused + by < len(shown):
             shown[focused + by].setFocus(Qt.FocusReason.TabFocusReason)
-            self.scroll.ensureWidgetVisible(shown[focused + by], 0, 8)
+            self.area.ensureWidgetVisible(shown[focused + by], 0, 8)
 
     def resizeEvent(self, event: QResizeEvent) -> None:
         """Lay the columns out again."""

@@ -175,10 +175,12 @@ class MainWindow(QMainWindow):
 
     def show_spectrum(self, has_spectrum: bool) -> None:
         """Lanes, or the empty state."""
-        self.middle.setCurrentWidget(self.lanes if has_spectrum else self.lanes_empty)
+        if has_spectrum and self.middle.currentWidget() is self.lanes_empty:
+            self.ring.rest()
         focused = self.focusWidget()
         if not has_spectrum and (focused is None or not focused.isVisible()):
             self.lanes_empty.open_button.setFocus(Qt.FocusReason.OtherFocusReason)
+        self.middle.setCurrentWidget(self.lanes if has_spectrum else self.lanes_empty)
 
     def show_structure_size(self, has_structure: bool) -> None:
         """Contenders take more room once there is a structure."""

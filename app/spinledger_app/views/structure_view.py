@@ -137,7 +137,7 @@ class StructureCanvas(QWidget):
             for tag in self.tags:
                 if tag.is_led:
                     x, y = self._places[tag.atom]
-                    cx, cy = tag.centre
+                    _, cy = tag.centre
                     near_x = min(max(x, tag.left), tag.left + tag.width)
                     near_y = tag.top if cy > y else tag.top + tag.height
                     ink.line((x, y), (near_x, near_y), "rule", 1.0)

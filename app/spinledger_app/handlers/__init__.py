@@ -1,0 +1,1 @@
+"""What actions, clicks and drags do: gestures into edits and questions."""

@@ -1,0 +1,155 @@
+"""Processing by hand, and regions of the spectrum."""
+
+from __future__ import annotations
+
+from collections.abc import Callable
+
+from spinledger.project.edits import (
+    ExcludeRegion,
+    IncludeRegion,
+    MarkImpurity,
+    SetReference,
+)
+from spinledger_app.handlers.context import Context
+from spinledger_app.presenters.wording import say
+from spinledger_app.views import dialogs
+
+
+class ProcessHandlers:
+    """What the Process menu and the chips do."""
+
+    def __init__(self, context: Context) -> None:
+        self.context = context
+        self.window, self.bench = context.window, context.bench
+        self.settings, self.look = context.settings, context.look
+
+    def actions(self) -> dict[str, Callable[[], None]]:
+        """Handlers by the names of the action table."""
+        return {
+            "solvent": self.solvent,
+            "phase": self.phase,
+            "window": self.apodization,
+            "automatic": self.automatic,
+            "reference": self.reference,
+            "exclude": self.exclude,
+            "include": self.include,
+            "impurity": self.impurity,
+        }
+
+    def solvent(self) -> None:
+        """Ask for the solvent."""
+        evidence = self.bench.project.evidence
+        if evidence is None:
+            return
+        chosen = dialogs.ask_solvent(self.look, self.window, evidence)
+        if chosen is not None:
+            self.bench.set_solvent(chosen or None)
+
+    def phase(self) -> None:
+        """Change the phase by hand."""
+        self._process(dialogs.PhaseDialog)
+
+    def apodization(self) -> None:
+        """Change the window of the FID."""
+        self._process(dialogs.WindowDialog)
+
+    def _process(
+        self, kind: type[dialogs.PhaseDialog] | type[dialogs.WindowDialog]
+    ) -> None:
+        evidence = self.bench.project.evidence
+        if evidence is None:
+            return
+        dialog = kind(self.look, evidence.recipe, self.window)
+        if not dialog.can_change:
+            self.window.status.show_message(
+                say("This spectrum came processed; there is no such step to change."),
+                is_error=True,
+            )
+        elif dialog.exec():
+            recipe = dialog.recipe()
+            if recipe != evidence.recipe:
+                self.bench.set_recipe(recipe, dialog.what())
+
+    def automatic(self) -> None:
+        """Give the processing back to the program."""
+        self.bench.set_recipe(None, say("processed automatically again"))
+
+    def reference(self) -> None:
+        """Ask for the shift of the line that was clicked or is marked."""
+        lanes = self.window.lanes
+        near = self.context.last_ppm or 0.0
+        if lanes.region_ppm is not None:
+            near = sum(lanes.region_ppm) / 2
+        scene = self.bench.scene
+        feet = [foot.shift_ppm for foot in scene.feet] if scene is not None else []
+        line = min(feet, key=lambda ppm: abs(ppm - near), default=near)
+        value = dialogs.ask_number(
+            self.look,
+            self.window,
+            say("Set the shift of a line"),
+            say("The line at {0} ppm belongs at (ppm)").replace("{0}", f"{line:.4f}"),
+            line,
+        )
+        if value is not None:
+            self.bench.edit(SetReference(line_ppm=line, to_ppm=value))
+
+    def _region(self) -> tuple[float, float] | None:
+        """The marked region, else the signal that is chosen or pointed at."""
+        lanes, scene = self.window.lanes, self.bench.scene
+        if lanes.region_ppm is not None:
+            return lanes.region_ppm
+        marks = self.bench.selection.marks
+        key = marks.chosen_signal or marks.hovered_signal
+        mark = scene.signal(key) if scene is not None and key else None
+        if mark is None:
+            self.window.status.show_message(
+                say("Drag over a region, or click a signal first."), is_error=True
+            )
+            return None
+        return mark.low_ppm, mark.high_ppm
+
+    def exclude(self) -> None:
+        """Leave a region out."""
+        region = self._region()
+        if region is not None:
+            self.bench.selection.choose(None)
+            self.bench.edit(ExcludeRegion(low_ppm=region[0], high_ppm=region[1]))
+
+    def include(self) -> None:
+        """Take a region in again."""
+        region = self._region()
+        if region is not None:
+            self.bench.edit(IncludeRegion(low_ppm=region[0], high_ppm=region[1]))
+
+    def impurity(self) -> None:
+        """Mark a region as something else in the tube."""
+        region = self._region()
+        if region is None:
+            return
+        name = dialogs.ask_text(
+            self.look, self.window, say("Impurity"), say("What is it? May stay empty.")
+        )
+        if name is not None:
+            self.bench.selection.choose(None)
+            self.bench.edit(
+                MarkImpurity(low_ppm=region[0], high_ppm=region[1], name=name)
+            )
+
+    def open_chip(self, step: int) -> None:
+        """Open what a chip of the recipe lets one change."""
+        evidence = self.bench.project.evidence
+        if evidence is None or step < 0:
+            self.solvent()
+            return
+        name = type(evidence.recipe.steps[step]).__name__
+        handler = {
+            "Phase": self.phase,
+            "Apodize": self.apodization,
+            "Reference": self.reference,
+        }.get(name)
+        if handler is not None:
+            handler()
+        else:
+            self.window.status.show_message(
+                say("This step has nothing to set by hand.")
+            )
