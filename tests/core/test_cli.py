@@ -12,7 +12,7 @@ import numpy as np
 import pytest
 
 from invented_ledger import invented_ledger
-from spinledger.batch import BatchTableError, read_table
+from spinledger.batch.table import BatchTableError, read_table
 from spinledger.cli import main
 from spinledger.cli.inputs import read_candidates
 from spinledger.cli.progress import ProgressLine

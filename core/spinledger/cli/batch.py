@@ -6,7 +6,8 @@ import argparse
 import sys
 import time
 
-from spinledger.batch import RowResult, run_table
+from spinledger.batch.row import RowResult
+from spinledger.batch.run import run_table
 from spinledger.cli.progress import ProgressLine
 from spinledger.reconcile.options import ReconcileOptions
 

@@ -6,7 +6,7 @@ import argparse
 import datetime
 import sys
 
-from spinledger.batch import Job, run_job
+from spinledger.batch.job import Job, run_job
 from spinledger.cli.inputs import options_of, solvent_of
 from spinledger.cli.progress import ProgressLine
 from spinledger.errors import UsageError

@@ -7,7 +7,7 @@ import re
 import sys
 from pathlib import Path
 
-from spinledger.batch import Job, run_job
+from spinledger.batch.job import Job, run_job
 from spinledger.cli.inputs import options_of, solvent_of
 from spinledger.cli.progress import ProgressLine
 from spinledger.cli.reconcile import today

@@ -7,6 +7,7 @@ from __future__ import annotations
 
 import math
 
+from spinledger.report.words import outgoing
 from spinledger.values.ledger import Ledger
 
 # Concentration and temperature move a shift by this much, whatever the fit
@@ -53,7 +54,7 @@ def printed_cautions(ledger: Ledger) -> tuple[str, ...]:
         *_assumptions(ledger),
         *ledger.evidence.quality.doubts,
     ]
-    return tuple(dict.fromkeys(sentence for sentence in found if sentence))
+    return tuple(dict.fromkeys(outgoing(sentence) for sentence in found if sentence))
 
 
 def _fixed(ledger: Ledger) -> list[str]:

@@ -273,7 +273,7 @@ def _structure_facts(ledger: Ledger) -> tuple[tuple[str, str], ...]:
     species = [one for one in ledger.claims.species_smiles if one != structure.smiles]
     if species:
         facts.append(("In solution", " and ".join(ledger.claims.species_smiles)))
-    facts += [("Note", note) for note in ledger.claims.notes]
+    facts += [("Note", outgoing(note)) for note in ledger.claims.notes]
     return tuple(facts)
 
 

@@ -112,7 +112,7 @@ def audit_rows(ledger: Ledger) -> tuple[tuple[str, str], ...]:
         ("Acquired", metadata.acquired_on or "not in the file"),
         ("Scans", str(metadata.n_scans or "not in the file")),
         ("Pulse program", metadata.pulse_program or "not in the file"),
-        ("Reference", f"{evidence.reference.by}: {evidence.reference.why}"),
+        ("Reference", f"{evidence.reference.by}: {outgoing(evidence.reference.why)}"),
         ("Solvent seen", evidence.solvent_seen or "none"),
         ("Solvent in the file", evidence.solvent_header or "none"),
     ]

@@ -50,11 +50,35 @@ def outgoing_verdict(verdict: Verdict) -> str:
     return _VERDICTS[verdict.state]
 
 
+def outgoing_word(verdict: str) -> str:
+    """Words for a verdict's state as it stands in a file; unknown ones stay."""
+    return next(
+        (words for state, words in _VERDICTS.items() if state == verdict), verdict
+    )
+
+
 def outgoing(sentence: str) -> str:
-    """Sentence with the words of the bench replaced by the outgoing ones."""
+    """Sentence as it leaves: outgoing words for those of the bench, capital, stop."""
     for pattern, word in _BENCH_WORDS:
         sentence = pattern.sub(word, sentence)
-    return sentence
+    return as_sentence(sentence)
+
+
+def as_sentence(text: str) -> str:
+    """Text with a capital in front and a full stop behind; labels stay as they are.
+
+    Examples
+    --------
+    >>> as_sentence("all 5 H agree"), as_sentence("2-HA stands alone.")
+    ('All 5 H agree.', '2-HA stands alone.')
+    """
+    stripped = text.strip()
+    if not stripped:
+        return ""
+    first = stripped.split()[0]
+    if first.isalpha() and first.islower():
+        stripped = stripped[0].upper() + stripped[1:]
+    return stripped if stripped[-1] in ".?:;" else f"{stripped}."
 
 
 def signed(value: float, digits: int) -> str:

@@ -78,6 +78,12 @@ def test_only_outgoing_words_leave_the_laboratory() -> None:
     )
 
 
+def test_fragments_become_sentences_and_labels_stay() -> None:
+    assert outgoing("all 5 H agree") == "All 5 H agree."
+    assert outgoing("β-H stands alone") == "β-H stands alone."
+    assert outgoing("") == ""
+
+
 def test_a_hidden_carbon_proton_is_not_said_to_be_exchanged() -> None:
     ledger = invented_ledger()
     hidden = next(one for one in ledger.entries if one.claim == "4-H")

@@ -1,0 +1,1 @@
+"""Jobs from raw data to written reports, one by one or by the table."""
