@@ -155,7 +155,7 @@ def write_pdf(
     context: ReportContext,
 ) -> Path:
     """Write the report as PDF."""
-    from spinledger_app.pdf_report import write_pdf_report
+    from spinledger_app.pdf.report import write_pdf_report
 
     progress("setting the pages", 0.3)
     return write_pdf_report(ledger, path, context)

@@ -81,7 +81,9 @@ def _joined_points(
 ) -> Curve:
     first = max(0, int(bounds[0]) - 1)
     last = min(trace.pyramid.n_points, int(np.ceil(bounds[1])) + 2)
-    shifts = trace.first_point_ppm - trace.step_ppm * np.arange(first, last, dtype=np.float64)
+    shifts = trace.first_point_ppm - trace.step_ppm * np.arange(
+        first, last, dtype=np.float64
+    )
     xs = shift_map.xs_of(shifts, stretch)
     ys = to_y(trace.pyramid.values[first:last])
     return Curve(xs=xs, ys=ys, upper_xs=xs, upper_ys=ys)
@@ -116,7 +118,7 @@ def paint_evidence(  # noqa: PLR0913 - scene, place and three choices
     """Paint the evidence lane without its gutter."""
     gains = stretch_gains(scene, shift_map, own_gains=own_gains)
     height = layout.baseline - layout.curve_top
-    ratio = ink.painter.device().devicePixelRatioF()
+    ratio = ink.columns_per_px
     for index in shift_map.visible():
         unit = gains[index] * gain * height / scene.full_height
 

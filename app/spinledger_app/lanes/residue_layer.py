@@ -77,7 +77,7 @@ def paint_residue(
     """Paint the residue lane with its ticks; nothing but the band before a model."""
     scale = residue_scale(scene, shift_map, layout)
     band = LINEAR_SD * scale.px_per_unit
-    ratio = ink.painter.device().devicePixelRatioF()
+    ratio = ink.columns_per_px
     for index in shift_map.visible():
         start, end = shift_map.span(index)
         left, right = max(start, layout.left), min(end, layout.right)

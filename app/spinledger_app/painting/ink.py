@@ -48,6 +48,11 @@ class Ink:
     look : Look
     owner : QWidget or None
         The widget that is painted, for the text log.
+
+    Attributes
+    ----------
+    columns_per_px : float
+        How finely curves are drawn: the device's pixels, more for paper.
     """
 
     def __init__(
@@ -56,6 +61,7 @@ class Ink:
         self.painter = painter
         self.look = look
         self._owner = owner
+        self.columns_per_px = painter.device().devicePixelRatioF()
         painter.setRenderHints(
             QPainter.RenderHint.Antialiasing | QPainter.RenderHint.TextAntialiasing
         )

@@ -26,7 +26,7 @@ def drawing_of(structure: Structure) -> Drawing:
         atoms=atoms,
         bonds=bonds,
         formula=rdMolDescriptors.CalcMolFormula(mol),
-        mass=f"{Descriptors.MolWt(mol):.2f}",
+        mass=f"{Descriptors.MolWt(mol):.2f}",  # type: ignore[attr-defined]
         stereo=_stereo(mol),
     )
 
