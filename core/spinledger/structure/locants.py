@@ -15,6 +15,7 @@ from typing import Final
 from rdkit import Chem
 
 from spinledger.structure.ring_templates import RING_TEMPLATES
+from spinledger.structure.sugars import is_sugar_ring, sugar_numbers
 
 # Principal groups, highest first, with the carbon that bears them (order of
 # seniority as in systematic nomenclature).
@@ -30,6 +31,8 @@ _PRINCIPAL: Final = (
     "[#6][NX3;!$(N-C=O),NX4]",
 )
 _MOST_PRIMES: Final = 9
+# A sugar has primes beside anything else (nucleosides, glycosides).
+_SUGAR_RANK: Final = 99
 
 
 @dataclass(frozen=True, slots=True, kw_only=True)
@@ -77,13 +80,15 @@ def _parts(mol: Chem.Mol, fragment: Sequence[int]) -> Iterator[_Part]:
     senior = _seniorities(mol)
     inside = set(fragment)
     for system in _ring_systems(mol):
-        if system <= inside:
+        if not system <= inside:
+            continue
+        if is_sugar_ring(mol, system):
+            numbers, rank = sugar_numbers(mol, system), _SUGAR_RANK
+        else:
             numbers = _ring_numbers(mol, system, senior)
-            yield _Part(
-                numbers=numbers,
-                is_ring=True,
-                seniority=_of_part(mol, system, senior),
-            )
+            rank = _of_part(mol, system, senior)
+        inside -= set(numbers)
+        yield _Part(numbers=numbers, is_ring=True, seniority=rank)
     for chain in _chains(mol, inside):
         for numbers in _chain_numbers(mol, chain, senior):
             yield _Part(
@@ -188,12 +193,8 @@ def _ring_key(
         ranks = [senior.get(index), *(senior.get(n.GetIdx()) for n in outside)]
         if best in ranks:
             principal.append(place)
-    # A ring oxygen next to an anomeric carbon: sugars count from that carbon.
-    sugar = _sugar_key(mol, numbers)
-    plain = sorted(place for _, place in hetero)
     return (
-        sugar,
-        plain if not sugar else [],
+        sorted(place for _, place in hetero),
         [place for _, place in sorted(hetero)],
         sorted(principal),
         sorted(substituted),
@@ -201,42 +202,8 @@ def _ring_key(
     )
 
 
-def _sugar_key(mol: Chem.Mol, numbers: dict[int, str]) -> tuple[int, ...]:
-    """Preference for the sugar numbering: anomeric carbon 1, ring oxygen last."""
-    ring = set(numbers)
-    if not _is_sugar_ring(mol, ring):
-        return ()
-    oxygen = next(i for i in ring if mol.GetAtomWithIdx(i).GetAtomicNum() == 8)
-    first = next(i for i, text in numbers.items() if text == "1")
-    is_anomeric = oxygen in _neighbours(mol, first) and _has_hetero_outside(
-        mol, first, ring
-    )
-    return (0 if is_anomeric else 1, 0 if numbers[oxygen] == str(len(ring)) else 1)
-
-
-def _is_sugar_ring(mol: Chem.Mol, ring: set[int]) -> bool:
-    """Whether a saturated ring has one oxygen and two or more hydroxyl-like oxygens."""
-    atoms = [mol.GetAtomWithIdx(i) for i in ring]
-    numbers = sorted(a.GetAtomicNum() for a in atoms)
-    if len(ring) not in (5, 6) or numbers != [6] * (len(ring) - 1) + [8]:
-        return False
-    if any(a.GetHybridization() != Chem.HybridizationType.SP3 for a in atoms):
-        return False
-    outside = sum(_has_hetero_outside(mol, i, ring) for i in ring)
-    oxygen = next(i for i in ring if mol.GetAtomWithIdx(i).GetAtomicNum() == 8)
-    anomeric = any(_has_hetero_outside(mol, i, ring) for i in _neighbours(mol, oxygen))
-    return outside >= 2 and anomeric
-
-
 def _neighbours(mol: Chem.Mol, index: int) -> list[int]:
     return [n.GetIdx() for n in mol.GetAtomWithIdx(index).GetNeighbors()]
-
-
-def _has_hetero_outside(mol: Chem.Mol, index: int, ring: set[int]) -> bool:
-    return any(
-        n.GetIdx() not in ring and n.GetAtomicNum() in (7, 8, 16)
-        for n in mol.GetAtomWithIdx(index).GetNeighbors()
-    )
 
 
 def _hetero_rank(atom: Chem.Atom) -> int:

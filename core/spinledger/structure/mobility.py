@@ -74,6 +74,7 @@ _ENOL: Final = (
     "[NX3][CX3]=[NX3+]",
     "[SX2H1,SX1-][CX3]=[SX1]",
 )
+_DOUBLE: Final = f"{2.0:.3f}"
 _AZOLE_NITROGEN: Final = "[n;r5]"
 
 
@@ -105,7 +106,7 @@ def slow_bonds(
     }
     found: dict[tuple[int, int], SlowBond] = {}
     for kind, smarts, barrier in _ROTATIONS:
-        for match in mol.GetSubstructMatches(_pattern(smarts)):
+        for match in mol.GetSubstructMatches(_pattern(smarts), uniquify=False):
             atoms = (match[0], match[-1])
             bond = mol.GetBondBetweenAtoms(*atoms)
             if atoms in found or bond.IsInRing() or match[-1] in excluded:
@@ -146,6 +147,12 @@ class Averaging:
     atoms: tuple[str, ...]
     bonds: dict[frozenset[int], str]
     mobile: frozenset[int]
+
+    def is_fixed_double(self, ends: tuple[int, int]) -> bool:
+        """Whether a bond is double all the time, so that it does not turn."""
+        if self.mobile.issuperset(ends):
+            return False
+        return self.bonds[frozenset(ends)] in ("mobile", _DOUBLE)
 
 
 def averaged_colours(mol: Chem.Mol) -> Averaging:
@@ -234,7 +241,15 @@ def _resonance_forms(mol: Chem.Mol) -> list[Chem.Mol]:
     if not any(a.GetFormalCharge() for a in mol.GetAtoms()):
         return [mol]
     supplier = Chem.ResonanceMolSupplier(mol, maxStructs=_MOST_RESONANCE_FORMS)
-    return [form for form in supplier if form is not None] or [mol]
+    return [_perceived(form) for form in supplier if form is not None] or [mol]
+
+
+def _perceived(form: Chem.Mol) -> Chem.Mol:
+    """A resonance form with the aromaticity of its own bonds."""
+    copy = Chem.Mol(form)
+    Chem.Kekulize(copy, clearAromaticFlags=True)
+    Chem.SanitizeMol(copy)
+    return copy
 
 
 def _resonance_averages(
@@ -257,8 +272,7 @@ def _resonance_averages(
         ends = (bond.GetBeginAtomIdx(), bond.GetEndAtomIdx())
         drawn = [form.GetBondBetweenAtoms(*ends) for form in forms]
         mean = sum(b.GetBondTypeAsDouble() for b in drawn) / len(drawn)
-        is_aromatic = any(b.GetIsAromatic() for b in drawn)
-        orders[frozenset(ends)] = "aromatic" if is_aromatic else f"{mean:.3f}"
+        orders[frozenset(ends)] = f"{mean:.3f}"
     return atoms, orders
 
 

@@ -24,6 +24,8 @@ LONE: Final = -3
 # both rings taking part, rotation is slow on the time scale of shifts.
 _LOCKING_SIZE: Final = 2.0
 _LEAST_SIZE: Final = 0.6
+# Substituents on a five-ring point away from the axis.
+_FIVE_RING_FACTOR: Final = 0.7
 _SIZES: Final = {9: 0.3, 8: 0.6, 7: 0.8, 6: 1.0, 16: 1.0, 17: 1.0, 35: 1.2, 53: 1.4}
 _ARYL_AXES: Final = "[$([c,n]),$([NX3](C=O)[#6])]-!@[$([c,n]);r]"
 # Double bonds that turn easily although drawn as double: cationic amidines.
@@ -310,7 +312,8 @@ def _ortho_size(mol: Chem.Mol, end: int, position: int) -> float:
     ]
     if not outside:
         return 0.0
-    return max(_SIZES.get(n.GetAtomicNum(), 1.2) for n in outside)
+    size = max(_SIZES.get(n.GetAtomicNum(), 1.2) for n in outside)
+    return size * (_FIVE_RING_FACTOR if ring.IsAtomInRingOfSize(end, 5) else 1.0)
 
 
 @functools.cache

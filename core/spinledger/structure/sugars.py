@@ -3,6 +3,7 @@
 from __future__ import annotations
 
 import functools
+from collections.abc import Collection
 from dataclasses import dataclass
 from typing import Final
 
@@ -74,6 +75,84 @@ def _anomeric_carbon(mol: Chem.Mol) -> int | None:
         if oxygens >= 2:
             return int(match[0])
     return None
+
+
+def is_sugar_ring(mol: Chem.Mol, ring: Collection[int]) -> bool:
+    """Whether a ring is a furanose or pyranose: one oxygen, and oxygens on it.
+
+    Glycosides and nucleosides count; the anomeric carbon bears O, N or S.
+    """
+    members = set(ring)
+    if len(members) not in (5, 6):
+        return False
+    atoms = [mol.GetAtomWithIdx(i) for i in members]
+    if sorted(a.GetAtomicNum() for a in atoms) != [6] * (len(members) - 1) + [8]:
+        return False
+    if any(a.GetHybridization() != Chem.HybridizationType.SP3 for a in atoms):
+        return False
+    bearing = [i for i in members if _bears_hetero_atom(mol, i, members)]
+    oxygen = next(a for a in atoms if a.GetAtomicNum() == 8)
+    beside = {n.GetIdx() for n in oxygen.GetNeighbors()}
+    return len(bearing) >= 2 and bool(beside & set(bearing))
+
+
+def sugar_numbers(mol: Chem.Mol, ring: Collection[int]) -> dict[int, str]:
+    """Locants of a sugar: from the anomeric end along the carbons, tail included.
+
+    Parameters
+    ----------
+    mol : Chem.Mol
+    ring : collection of int
+        As :func:`is_sugar_ring` accepts.
+    """
+    members = set(ring)
+    oxygen = next(i for i in members if mol.GetAtomWithIdx(i).GetAtomicNum() == 8)
+    ends = [
+        n.GetIdx()
+        for n in mol.GetAtomWithIdx(oxygen).GetNeighbors()
+        if n.GetIdx() in members
+    ]
+    anomeric = min(
+        ends, key=lambda i: (not _bears_hetero_atom(mol, i, members), i)
+    )
+    order = [anomeric]
+    while len(order) < len(members) - 1:
+        order.append(
+            next(
+                n.GetIdx()
+                for n in mol.GetAtomWithIdx(order[-1]).GetNeighbors()
+                if n.GetIdx() in members - {oxygen, *order}
+            )
+        )
+    head = _carbons_outside(mol, order[0], members)[::-1]
+    whole = [*head, *order, *_carbons_outside(mol, order[-1], members)]
+    return {index: str(place + 1) for place, index in enumerate(whole)}
+
+
+def _carbons_outside(mol: Chem.Mol, start: int, ring: set[int]) -> list[int]:
+    """Open chain of carbons on a ring atom, outwards."""
+    chain: list[int] = []
+    here, before = start, -1
+    while True:
+        following = [
+            n.GetIdx()
+            for n in mol.GetAtomWithIdx(here).GetNeighbors()
+            if n.GetAtomicNum() == 6
+            and n.GetIdx() not in ring
+            and n.GetIdx() != before
+            and not n.IsInRing()
+        ]
+        if len(following) != 1:
+            return chain
+        before, here = here, following[0]
+        chain.append(here)
+
+
+def _bears_hetero_atom(mol: Chem.Mol, index: int, ring: set[int]) -> bool:
+    return any(
+        n.GetIdx() not in ring and n.GetAtomicNum() in (7, 8, 9, 16)
+        for n in mol.GetAtomWithIdx(index).GetNeighbors()
+    )
 
 
 def _sugar_ring(mol: Chem.Mol, carbon: int, oxygen: int) -> tuple[int, ...] | None:

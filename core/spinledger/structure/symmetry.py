@@ -59,7 +59,7 @@ class Symmetry:
         self.links = tuple(
             link
             for link in elements.links
-            if link.kind != "alkene" or not averaging.mobile.issuperset(link.ends)
+            if link.kind != "alkene" or averaging.is_fixed_double(link.ends)
         )
         self.centres = {
             index: Centre(
