@@ -460,3 +460,46 @@ def disputed(n_points: int = 65536) -> Ledger:
 def maker_spectrum(n_points: int = 65536) -> MakerSpectrum:
     """The same spectrum as if it had come processed."""
     return MakerSpectrum(metadata=_metadata(), spectrum=evidence(n_points).spectrum)
+
+
+@cache
+def lost(n_points: int = 65536) -> Ledger:
+    """The same with one claim open and one silent."""
+    base = ledger(n_points)
+    entries = []
+    for entry in base.entries:
+        if entry.claim == "2-HA":
+            entries.append(_unfound(entry, "open", "Nothing is left in its range."))
+        elif entry.claim == "OH":
+            why = "Exchanges with D2O."
+            entries.append(_unfound(entry, "silent", why))
+        else:
+            entries.append(entry)
+    return replace(
+        base,
+        entries=tuple(entries),
+        verdict=Verdict(
+            state="not reconciled",
+            probability=0.004,
+            prior=0.5,
+            likelihood_ratio=0.004,
+            unique=False,
+            reasons=("2-HA is not observed.",),
+        ),
+    )
+
+
+def _unfound(entry: Entry, state: str, why: str) -> Entry:
+    return replace(
+        entry,
+        state=state,  # type: ignore[arg-type]
+        shift_ppm=None,
+        shift_sd_ppm=None,
+        range_ppm=None,
+        integral_protons=None,
+        multiplicity=None,
+        shift_residual_sd=None,
+        integral_residual_sd=None,
+        j_residual_sd=None,
+        why=why,
+    )

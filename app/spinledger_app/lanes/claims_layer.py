@@ -5,7 +5,7 @@ from __future__ import annotations
 import math
 from dataclasses import dataclass
 
-from PySide6.QtCore import QPointF, QRectF, Qt
+from PySide6.QtCore import QLineF, QPointF, QRectF, Qt
 from PySide6.QtGui import QColor, QPainterPath, QPen
 
 from spinledger_app.lanes.grove import (
@@ -19,6 +19,7 @@ from spinledger_app.lanes.grove import (
 )
 from spinledger_app.lanes.layout import LaneLayout
 from spinledger_app.lanes.leaves import (
+    add_branch,
     branch_path,
     broad_leaf_path,
     funnel_side,
@@ -132,15 +133,14 @@ class ClaimsPainter:
 
     def _feet(self) -> None:
         width = 1.3 if self._is_wide else 1.0
-        painter = self.ink.painter
-        painter.setPen(QPen(self.ink.colour("trace"), width))
+        top, bottom = self.layout.baseline, self.layout.tip
+        lines = []
         for foot in self.scene.feet:
             x = self.map.x_of(foot.shift_ppm)
-            if x is None or not self.layout.left <= x <= self.layout.right:
-                continue
-            painter.drawLine(
-                QPointF(x, self.layout.baseline), QPointF(x, self.layout.tip)
-            )
+            if x is not None and self.layout.left <= x <= self.layout.right:
+                lines.append(QLineF(x, top, x, bottom))
+        self.ink.painter.setPen(QPen(self.ink.colour("trace"), width))
+        self.ink.painter.drawLines(lines)
 
     def _strays(self) -> None:
         for mark in self.scene.signals:
@@ -203,7 +203,7 @@ class ClaimsPainter:
     def _stem(self, placed: PlacedTree) -> None:
         x = placed.root_x
         self.ink.line((x, placed.soil_y), (x, placed.leaf_y - 1), "bark", 1.8)
-        self._leaf(placed, x, x, 1.0)
+        self._paint_leaf(self._leaf_path(placed, x, x, 1.0), placed.tree.state)
         pattern = placed.tree.pattern
         if self.grove.px_per_hz >= STEM_ONLY_BELOW or not pattern:
             return
@@ -273,32 +273,40 @@ class ClaimsPainter:
         forks: list[tuple[Level, list[float], float, float]] = []
         for depth, level in enumerate(tree.levels):
             upper = y - rise
-            width = max(0.8, 1.6 - 0.2 * depth)
-            if self.lit_level == (tree.claim, depth):
-                width = 2.4
-            places: set[float] = set()
-            for node in nodes:
-                for k in range(level.n_partners + 1):
-                    offset = round(node + (k - level.n_partners / 2) * level.j_hz, 2)
-                    start = (self._hz_x(node, placed), y)
-                    strokes.append(
-                        (branch_path(start, (self._hz_x(offset, placed), upper)), width)
-                    )
-                    places.add(offset)
+            is_lit = self.lit_level == (tree.claim, depth)
+            width = 2.4 if is_lit else max(0.8, 1.6 - 0.2 * depth)
+            path, ends = self._fork(placed, level, nodes, (y, upper))
+            strokes.append((path, width))
             forks.append((level, nodes, y, upper))
             self._handle(placed, depth, level, nodes, (y, upper))
-            nodes, y = sorted(places), upper
-        ends = [self._x(leaf.base_ppm, placed) for leaf in tree.leaves]
+            nodes, y = ends, upper
+        ends_x = [self._x(leaf.base_ppm, placed) for leaf in tree.leaves]
         self._ghosts(placed, forks)
-        self._bark(placed, strokes, ends, y if n_levels else placed.fork_y)
+        self._bark(placed, strokes, ends_x, y)
         self._twigs(placed, y)
-        for leaf, x in zip(tree.leaves, ends, strict=True):
-            heaviest = max(one.weight for one in tree.leaves)
-            self._leaf(placed, x, self._x(leaf.tip_ppm, placed), leaf.weight / heaviest)
+        self._leaves(placed, ends_x)
         self._gaps(placed)
         if placed.has_j_labels:
             for depth, fork in enumerate(forks):
                 self._j_label(placed, depth, fork)
+
+    def _fork(
+        self,
+        placed: PlacedTree,
+        level: Level,
+        nodes: list[float],
+        ys: tuple[float, float],
+    ) -> tuple[QPainterPath, list[float]]:
+        """Branches of one level as one path, and the nodes where they end, Hz."""
+        path = QPainterPath()
+        ends: set[float] = set()
+        for node in nodes:
+            start = (self._hz_x(node, placed), ys[0])
+            for k in range(level.n_partners + 1):
+                offset = round(node + (k - level.n_partners / 2) * level.j_hz, 2)
+                add_branch(path, start, (self._hz_x(offset, placed), ys[1]))
+                ends.add(offset)
+        return path, sorted(ends)
 
     def _bark(
         self,
@@ -310,14 +318,24 @@ class ClaimsPainter:
         ground = self._ground(placed.tree.claim)
         for path, width in strokes:
             self.ink.stroke(path, ground, width + _CASING_PX)
-        stem = QPainterPath(QPointF(placed.root_x, placed.soil_y))
-        stem.lineTo(placed.root_x, placed.fork_y)
-        self.ink.stroke(stem, "bark", 1.8)
+        x = placed.root_x
+        self.ink.line((x, placed.soil_y), (x, placed.fork_y), "bark", 1.8)
         for path, width in strokes:
             self.ink.stroke(path, "bark", width)
-        for x in ends:
-            width = 1.0 if placed.is_low else 1.2
-            self.ink.line((x, crown_y), (x, placed.leaf_y - 1), "bark", width)
+        painter = self.ink.painter
+        painter.setPen(QPen(self.ink.colour("bark"), 1.0 if placed.is_low else 1.2))
+        lines = [QLineF(x, crown_y, x, placed.leaf_y - 1) for x in ends]
+        painter.drawLines(lines)
+
+    def _leaves(self, placed: PlacedTree, bases: list[float]) -> None:
+        """All leaves of a tree as one path."""
+        tree = placed.tree
+        heaviest = max((leaf.weight for leaf in tree.leaves), default=1.0)
+        path = QPainterPath()
+        for leaf, base in zip(tree.leaves, bases, strict=True):
+            tip = self._x(leaf.tip_ppm, placed)
+            path.addPath(self._leaf_path(placed, base, tip, leaf.weight / heaviest))
+        self._paint_leaf(path, tree.state)
 
     def _twigs(self, placed: PlacedTree, crown_y: float) -> None:
         tree = placed.tree
@@ -329,12 +347,13 @@ class ClaimsPainter:
             path = branch_path(start, (self._x(twig_ppm, placed), placed.tip_y))
             self.ink.stroke(path, "bark", 1.0, dashes=[3.0, 2.5])
 
-    def _leaf(
+    def _leaf_path(
         self, placed: PlacedTree, base_x: float, tip_x: float, share: float
-    ) -> None:
-        state = placed.tree.state
+    ) -> QPainterPath:
         width = leaf_width(self.grove.px_per_hz) * (0.45 + 0.55 * math.sqrt(share))
-        path = leaf_path((base_x, placed.leaf_y), (tip_x, placed.tip_y), width)
+        return leaf_path((base_x, placed.leaf_y), (tip_x, placed.tip_y), width)
+
+    def _paint_leaf(self, path: QPainterPath, state: str) -> None:
         if state == "open":
             self.ink.stroke(path, self._tone(state), 1.1, fill="lane")
         else:

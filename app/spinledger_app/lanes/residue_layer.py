@@ -15,7 +15,7 @@ from spinledger_app.lanes.polygons import polygon
 from spinledger_app.lanes.scene import LaneScene
 from spinledger_app.lanes.shift_map import ShiftMap
 from spinledger_app.painting.ink import CAPTION, Ink
-from spinledger_app.presenters.wording import signed
+from spinledger_app.presenters.wording import say, signed
 
 LINEAR_SD = 3.0
 _DECADES = (3.0, 30.0, 300.0, 3000.0)
@@ -120,21 +120,27 @@ def paint_residue_ticks(
     """Ticks and numbers in the gutter; painted after it."""
     scale = residue_scale(scene, shift_map, layout)
     # The lane's name and unit stand in the same gutter.
-    blocked = layout.claims_bottom + ink.look.px(24), layout.axis_top - ink.look.px(21)
-    last_y = float("inf")
-    values = [0.0, 3.0, -3.0, 30.0, -30.0, 300.0, -300.0, 3000.0, -3000.0]
+    look = ink.look
+    px = look.px
+    name_right = 16 + look.width(say("Residue"), 14, 600) + 4
+    unit_right = 16 + look.width(say("noise sd"), 12) + 4
+    name_bottom = layout.claims_bottom + px(21)
+    unit_top = layout.axis_top - px(19)
     shown: list[float] = []
-    for value in values:
+    for value in (0.0, 3.0, -3.0, 30.0, -30.0, 300.0, -300.0, 3000.0, -3000.0):
         unit = float(bent(np.array([value]))[0])
         if abs(unit) > scale.limit:
             continue
         y = scale.middle - unit * scale.px_per_unit
         ink.hline(layout.gutter - 4, layout.gutter, round(y), "edge")
-        last_y = min((abs(y - other) for other in shown), default=float("inf"))
-        wide = ink.look.width(signed(value, 0), 12) > ink.look.px(20)
-        hits_name = y - 5 < blocked[0] - ink.look.px(6) and wide
-        if last_y < ink.look.px(_LEAST_TICK_PX) - 1 or hits_name or y + 5 > blocked[1]:
+        text = signed(value, 0)
+        right = layout.gutter - px(6)
+        left = right - look.width(text, 12)
+        half = px(5)
+        hits_name = y - half < name_bottom and left < name_right
+        hits_unit = y + half > unit_top and left < unit_right
+        closest = min((abs(y - other) for other in shown), default=float("inf"))
+        if hits_name or hits_unit or closest < px(_LEAST_TICK_PX) - 1:
             continue
         shown.append(y)
-        x = layout.gutter - ink.look.px(6)
-        ink.text(x, y + ink.look.px(4.5), signed(value, 0), CAPTION, align="right")
+        ink.text(right, y + px(4.5), text, CAPTION, align="right")

@@ -197,9 +197,13 @@ def _best_place(
         free = _widest_free_angle(drawing, places, atom)
         stacked = sum(one.atom == atom for one in blocked[2])
         for rank, (dx, dy) in enumerate(_offsets(free, wish.width, height, stacked)):
+            least = 0.9 * rank + 0.25 * math.hypot(dx, dy)
+            if best is not None and least >= best[0]:
+                if 0.9 * rank >= best[0]:
+                    break  # whatever comes is worse, however free its place is
+                continue
             box = _Box.about(x + dx, y + dy, wish.width, height)
-            cost = _cost(box, size, blocked) + 0.9 * rank
-            cost += 0.25 * math.hypot(dx, dy)
+            cost = least + _cost(box, size, blocked)
             if best is None or cost < best[0]:
                 is_led = math.hypot(dx, dy) > 46 + wish.width / 3
                 best = cost, PlacedTag(

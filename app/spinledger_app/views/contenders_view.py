@@ -123,12 +123,14 @@ class ContendersView(QWidget):
         self._column.addStretch(1)
         self.area = OverlayScroll(self)
         self.area.setWidget(inner)
-        outer = QVBoxLayout(self)
+        self._outer = outer = QVBoxLayout(self)
         outer.setContentsMargins(0, self.look.px(_HEAD_PX), 0, 0)
         outer.addWidget(self.area)
 
     def show_contenders(self, text: ContendersText) -> None:
         """Show other contenders; thumbnails come by :meth:`show_thumbnails`."""
+        if text == self._text:
+            return
         self._text = text
         for card in self.cards:
             self._column.removeWidget(card)
@@ -148,6 +150,11 @@ class ContendersView(QWidget):
         for card in self.cards:
             card.drawing = drawings.get(card.text.smiles)
             card.update()
+
+    def retune(self) -> None:
+        """Take the look's text size again."""
+        self._outer.setContentsMargins(0, self.look.px(_HEAD_PX), 0, 0)
+        self.setMinimumSize(self.look.px(240), self.look.px(120))
 
     def sizeHint(self) -> QSize:
         """Room for three cards."""

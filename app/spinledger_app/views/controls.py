@@ -103,6 +103,10 @@ class IconButton(QToolButton):
         self.setFocusPolicy(Qt.FocusPolicy.StrongFocus)
         self.setFixedSize(look.px(28), look.px(28))
 
+    def retune(self) -> None:
+        """Take the look's text size again."""
+        self.setFixedSize(self.look.px(28), self.look.px(28))
+
     def paintEvent(self, event: QPaintEvent) -> None:
         """Paint hover or selected fill and the icon."""
         painter = QPainter(self)

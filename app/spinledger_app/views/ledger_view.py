@@ -291,6 +291,8 @@ class LedgerView(QWidget):
         self, text: LedgerText, actions: dict[str, list[tuple[str, str]]]
     ) -> None:
         """Show a ledger; ``actions`` are (id, word) pairs for every claim."""
+        if (text, actions) == (self.text, self._actions):
+            return
         self.text, self._actions = text, actions
         self.empty.hide()
         self._full.show()

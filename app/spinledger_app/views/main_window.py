@@ -195,7 +195,10 @@ class MainWindow(QMainWindow):
         app.setPalette(palette(self.look.tokens))
         app.setFont(self.look.font())
         app.setStyleSheet(style_sheet(self.look))
-        self.menu_row.retune()
+        for strip in (self.menu_row, self.recipe, self.ribbon, self.status):
+            strip.retune()
+        for panel in (self.sketch, self.contenders):
+            panel.retune()
         for child in self.findChildren(QWidget):
             child.updateGeometry()
             child.update()

@@ -59,7 +59,7 @@ class MenuRow(QWidget):
         self.setFixedHeight(self.look.px(HEIGHT_PX))
         self.menus.setFont(self.look.font())
         for button in (self.undo, self.redo):
-            button.setFixedSize(self.look.px(28), self.look.px(28))
+            button.retune()
         self.updateGeometry()
 
     def paintEvent(self, event: QPaintEvent) -> None:

@@ -112,6 +112,13 @@ class RecipeView(QWidget):
         for chip in self.chips:
             chip.update()
 
+    def retune(self) -> None:
+        """Take the look's text size again."""
+        self.setFixedHeight(self.look.px(HEIGHT_PX) + 1)
+        for chip in self.chips:
+            chip.resize(chip.sizeHint())
+        self._lay_out()
+
     def _lay_out(self) -> None:
         px = self.look.px
         self._room.setGeometry(

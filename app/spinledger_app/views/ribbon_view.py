@@ -54,6 +54,11 @@ class RibbonView(QWidget):
         self._map = shift_map
         self.update()
 
+    def retune(self) -> None:
+        """Take the look's text size again."""
+        self.setFixedHeight(self.look.px(HEIGHT_PX) + 1)
+        self.refresh()
+
     def refresh(self) -> None:
         """Paint everything anew."""
         self._curve = None

@@ -62,6 +62,11 @@ class StatusRow(QWidget):
         self._lay_out()
         self.update()
 
+    def retune(self) -> None:
+        """Take the look's text size again."""
+        self.setFixedHeight(self.look.px(HEIGHT_PX))
+        self._lay_out()
+
     def _lay_out(self) -> None:
         hint = self.cancel.sizeHint()
         top = (self.height() - hint.height()) // 2

@@ -73,7 +73,10 @@ class StructureCanvas(QWidget):
         foot: tuple[str, str],
     ) -> None:
         """Show a structure; ``tags`` are (claim, state, atoms)."""
+        is_same = (drawing, tags) == (self._drawing, self._wishes)
         self._drawing, self._wishes, self._tips = drawing, tags, tips
+        if is_same and foot == self._foot:
+            return
         self._foot = foot
         name = say("Structure, {0} claims").replace("{0}", str(len(tags)))
         self.setAccessibleName(name)
@@ -114,6 +117,10 @@ class StructureCanvas(QWidget):
                 label_width=lambda atom: atom_text_width(self.look, atom),
             )
         self.update()
+
+    def relay(self) -> None:
+        """Place drawing and tags anew, for another text size."""
+        self._lay_out()
 
     def resizeEvent(self, event: QResizeEvent) -> None:
         """Place drawing and tags anew."""
@@ -289,7 +296,7 @@ class SketchPanel(QWidget):
         self.copy = IconButton(
             look, "copy", say("Copy structure as SMILES"), parent=self
         )
-        column = QVBoxLayout(self)
+        self._column = column = QVBoxLayout(self)
         column.setContentsMargins(0, look.px(_HEAD_PX) + 1, 0, 0)
         column.setSpacing(0)
         column.addWidget(self.empty, 1)
@@ -317,16 +324,28 @@ class SketchPanel(QWidget):
         self.canvas.show_drawing(drawing, tags, tips or {}, foot)
         self.update()
 
+    def retune(self) -> None:
+        """Take the look's text size again."""
+        for button in (self.paste, self.copy):
+            button.retune()
+        self._column.setContentsMargins(0, self.look.px(_HEAD_PX) + 1, 0, 0)
+        self.setMinimumSize(self.look.px(240), self.look.px(180))
+        self._place_icons()
+        self.canvas.relay()
+
     def sizeHint(self) -> QSize:
         """As tall as there is room."""
         return QSize(256, 400)
 
     def resizeEvent(self, event: QResizeEvent) -> None:
         """Keep the icons at the right of the heading."""
+        self._place_icons()
+        super().resizeEvent(event)
+
+    def _place_icons(self) -> None:
         px = self.look.px
         self.paste.move(self.width() - px(28) - 8, px(4))
         self.copy.move(self.width() - px(56) - 12, px(4))
-        super().resizeEvent(event)
 
     def paintEvent(self, event: QPaintEvent) -> None:
         """Paint the heading."""
