@@ -53,7 +53,7 @@ class ProgressLine:
         is_terminal = self._stream.isatty()
         if is_terminal and now - self._last < _INTERVAL_S and stage == self._stage:
             return
-        if not is_terminal and stage == self._stage:
+        if not is_terminal and (stage == self._stage or now - self._last < _QUIET_S):
             return
         self._stage, self._last, self._is_shown = stage, now, True
         words = f"{100 * min(max(fraction, 0.0), 1.0):3.0f} %  {stage}"[:_WIDTH]

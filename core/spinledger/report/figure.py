@@ -289,11 +289,13 @@ def _draw_trees(scene: _Scene) -> None:
 
 
 def _draw_strays(scene: _Scene) -> None:
+    """Triangles under the strays' lines; among trees over them, without a name."""
     names = {
         "solvent": solvent_glyphs(scene.ledger.evidence.solvent or "solvent"),
         "reference": scene.ledger.evidence.reference.by,
         "unexplained": "?",
     }
+    covered = _tree_spans(scene)
     taken: list[float] = []
     for stray in _by_size(scene.ledger.strays):
         middle = (stray.low_ppm + stray.high_ppm) / 2
@@ -301,16 +303,31 @@ def _draw_strays(scene: _Scene) -> None:
         if stretch is None or stray.kind in ("satellite", "sideband"):
             continue
         x = stretch.x(middle)
-        words = names.get(stray.kind, stray.kind)
+        is_known = stray.kind != "unexplained"
+        if any(left - 8 < x < right + 8 for left, right in covered):
+            scene.canvas.mark((x, 5), "stray", size=8, known=is_known)
+            continue
         is_free = all(abs(x - other) > 34 for other in taken)
         taken.append(x)
         draw_stray(
             scene.canvas,
             x,
             scene.lanes.ground + _FOOT + 6,
-            words if is_free else "",
-            known=stray.kind != "unexplained",
+            names.get(stray.kind, stray.kind) if is_free else "",
+            known=is_known,
         )
+
+
+def _tree_spans(scene: _Scene) -> list[Range]:
+    """Stretches of the drawing that trees take up."""
+    spans = []
+    for entry in scene.ledger.entries:
+        tree = claim_tree(scene.ledger, entry)
+        stretch = None if tree is None else scene.axis.find(tree.root_ppm)
+        if tree is not None and stretch is not None:
+            low, high = tree.span_ppm
+            spans.append((stretch.x(high), stretch.x(low)))
+    return spans
 
 
 def _by_size(strays: Sequence[Stray]) -> list[Stray]:

@@ -2,8 +2,11 @@
 
 from __future__ import annotations
 
+import re
 from collections.abc import Callable, Iterable, Mapping
 from html import escape
+
+from rdkit.Chem.rdMolDescriptors import CalcMolFormula
 
 from spinledger.project.audit import versions
 from spinledger.report.cautions import accuracy_ppm, printed_cautions
@@ -29,8 +32,10 @@ from spinledger.report.tables import (
 )
 from spinledger.report.text import experimental_runs, reference_sentence
 from spinledger.report.words import fixed, outgoing, outgoing_verdict, solvent_glyphs
+from spinledger.structure.read import molecule
 from spinledger.values.ledger import Ledger, VerdictState
 
+_LABEL = re.compile(r"(?:[\w′.,]+\(?)?[\w′]+-(?:CH|OH|NH|SH|H|O|N|C)[\w′]*")
 _TILT_DEG: Mapping[VerdictState, float] = {
     "reconciled": 0.0,
     "undecided": 9.0,
@@ -78,8 +83,11 @@ def report_html(ledger: Ledger, context: ReportContext | None = None) -> str:
 
 
 def report_title(ledger: Ledger) -> str:
-    """Name of the structure, or its SMILES."""
-    return ledger.structure.name or ledger.structure.smiles
+    """Name of the structure, or its formula."""
+    if ledger.structure.name:
+        return ledger.structure.name
+    formula = CalcMolFormula(molecule(ledger.structure))
+    return solvent_glyphs(formula)
 
 
 def report_subtitle(ledger: Ledger, context: ReportContext) -> str:
@@ -102,7 +110,8 @@ def _header(ledger: Ledger, context: ReportContext) -> str:
         '<header><p class="over"><span>Reconciliation report</span>'
         f"<span>{escape(context.date)}</span></p>"
         f"<h1>{escape(report_title(ledger))}</h1>"
-        f'<p class="under">{escape(report_subtitle(ledger, context))}</p></header>\n'
+        f'<p class="under">{escape(report_subtitle(ledger, context))}</p>'
+        f'<p class="under">{escape(ledger.structure.smiles)}</p></header>\n'
     )
 
 
@@ -112,7 +121,7 @@ def _verdict(ledger: Ledger, context: ReportContext) -> str:
     lines = [
         f'<h2 class="verdict">{escape(verdict_title(ledger))}</h2>'
         f'<p class="probability">{escape(probability_words(ledger))}</p>',
-        f"<p>{escape(reasons)}</p>" if reasons else "",
+        f"<p>{_held(reasons)}</p>" if reasons else "",
         _before_edits(ledger, context),
     ]
     if excluded:
@@ -178,7 +187,7 @@ def _assignment_row(row: AssignmentRow) -> str:
         '<svg class="mark" viewBox="0 0 12 12" width="12" height="12" '
         f'aria-hidden="true">{state_mark((6, 6), row.state, size=9)}</svg>'
     )
-    cells = "".join(f"<td>{escape(cell)}</td>" for cell in rest)
+    cells = "".join(f"<td>{_held(cell)}</td>" for cell in rest)
     noted = ' class="noted"' if row.notes else ""
     html = (
         f'<tr{noted}><th scope="row">{escape(first)}</th>{cells}'
@@ -187,14 +196,14 @@ def _assignment_row(row: AssignmentRow) -> str:
     if row.notes:
         html += (
             f'<tr class="note"><td></td><td colspan="{len(row.cells) - 1}">'
-            f"{escape(' '.join(row.notes))}</td></tr>"
+            f"{_held(' '.join(row.notes))}</td></tr>"
         )
     return html
 
 
 def _text(ledger: Ledger, context: ReportContext) -> str:
     runs = "".join(
-        f"<i>{escape(run.text)}</i>" if run.is_italic else escape(run.text)
+        f"<i>{escape(run.text)}</i>" if run.is_italic else _held(run.text)
         for run in experimental_runs(ledger, context.text)
     )
     return (
@@ -314,6 +323,11 @@ def _definitions(rows: Iterable[tuple[str, str]]) -> str:
         f"<dt>{escape(name)}</dt><dd>{escape(value)}</dd>" for name, value in rows
     )
     return f"<dl>{body}</dl>"
+
+
+def _held(text: str) -> str:
+    """Markup of a text whose labels, like 2-HA, do not break at their hyphen."""
+    return _LABEL.sub(r'<span class="held">\g<0></span>', escape(text))
 
 
 def _footers(ledger: Ledger) -> tuple[str, str]:

@@ -77,7 +77,9 @@ def sketch_svg(ledger: Ledger, *, width: float = 300.0, height: float = 190.0) -
     drawn = drawable(ledger.structure)
     scale = 1.0 + 0.012 * max(0, len(ledger.entries) - 12)
     width, height = width * min(scale, 1.4), height * min(scale, 1.6)
-    skeleton, points = _skeleton(drawn, width, height)
+    # Crowded structures get longer bonds, so that tags find room between them.
+    bond_length = min(38.0, 26.0 + 0.6 * len(ledger.entries))
+    skeleton, points = _skeleton(drawn, width, height, bond_length=bond_length)
     name = ledger.structure.name or ledger.structure.smiles
     canvas = Canvas(width, height, title=f"Structure of {name}", scope="sketch")
     canvas.add(f"<g>{skeleton}</g>")
@@ -128,7 +130,12 @@ def _has_layout(drawn: Chem.Mol) -> bool:
 
 
 def _skeleton(
-    drawn: Chem.Mol, width: float, height: float, *, padding: float = 0.17
+    drawn: Chem.Mol,
+    width: float,
+    height: float,
+    *,
+    padding: float = 0.17,
+    bond_length: float = 26.0,
 ) -> tuple[str, list[Point]]:
     """Markup of atoms and bonds, and where each atom stands."""
     drawer = rdMolDraw2D.MolDraw2DSVG(round(width), round(height))
@@ -137,7 +144,7 @@ def _skeleton(
     options.clearBackground = False
     options.padding = padding
     options.bondLineWidth = 1.3
-    options.fixedBondLength = 26.0
+    options.fixedBondLength = bond_length
     options.minFontSize = 11
     options.maxFontSize = 12
     options.addStereoAnnotation = False
@@ -223,7 +230,7 @@ def _cost(box: _Box, taken: Sequence[tuple[_Box, float]], size: Point) -> float:
         + max(0.0, box.right - size[0])
         + max(0.0, box.bottom - size[1])
     )
-    return hits + 40 * outside
+    return hits + 400 * outside
 
 
 def _confusion(box: _Box, atom: int, points: Sequence[Point]) -> float:

@@ -94,7 +94,7 @@ def claim_tree(ledger: Ledger, entry: Entry) -> Tree | None:
     if entry.state == "open" or found is None:
         tips, weights = _first_order(root, levels, field_mhz)
     else:
-        tips, weights = _visible(found)
+        tips, weights = _visible(found, entry.range_ppm, 6.0 / field_mhz)
     width_hz = entry.width_hz or (found.width_hz if found else 1.0)
     pattern = entry.multiplicity or ""
     return Tree(
@@ -210,12 +210,22 @@ def _lines_of(ledger: Ledger, claim: str) -> ClaimLines | None:
 
 
 def _visible(
-    lines: ClaimLines,
+    lines: ClaimLines, region: tuple[float, float] | None, margin_ppm: float
 ) -> tuple[npt.NDArray[np.float64], npt.NDArray[np.float64]]:
+    """Lines that can be told in a drawing.
+
+    In a strongly coupled system some of a claim's intensity stands among its
+    partner's lines; the tree shows what stands in the claim's own range.
+    """
     if lines.protons.size == 0:
         return lines.shifts_ppm, lines.protons
-    strong = lines.protons >= _FAINTEST_SHARE * lines.protons.max()
-    return lines.shifts_ppm[strong], lines.protons[strong]
+    shown = lines.protons >= _FAINTEST_SHARE * lines.protons.max()
+    if region is not None:
+        inside = (lines.shifts_ppm >= region[0] - margin_ppm) & (
+            lines.shifts_ppm <= region[1] + margin_ppm
+        )
+        shown = shown & inside if np.any(shown & inside) else shown
+    return lines.shifts_ppm[shown], lines.protons[shown]
 
 
 def _first_order(

@@ -165,24 +165,14 @@ def with_metadata(**changes: object) -> object:
     return replace(ledger, evidence=replace(ledger.evidence, metadata=facts))
 
 
-def test_integral_caution_depends_on_pulse_and_delay() -> None:
-    short = " ".join(printed_cautions(invented_ledger()))
-    assert "5 to 10 % with this pulse and delay (30° pulse, 1 s delay)" in short
-    good = with_metadata(pulse_angle_deg=90.0, relaxation_delay_s=30.0)
-    assert "5 to 10 %" not in " ".join(printed_cautions(good))  # type: ignore[arg-type]
-    unknown = with_metadata(pulse_angle_deg=None, relaxation_delay_s=None)
-    assert "pulse and delay are not in the file" in " ".join(
-        printed_cautions(unknown)  # type: ignore[arg-type]
-    )
-
-
 def test_cautions_come_once_and_only_where_they_apply() -> None:
     plain = printed_cautions(invented_ledger())
     assert len(plain) == len(set(plain))
     assert not any("interchangeable" in one for one in plain)
     overlapped = " ".join(printed_cautions(overlapped_ledger()))
     assert "interchangeable" in overlapped
-    assert "line-shape fit" in overlapped
+    assert "absolute configuration" in overlapped
+    assert not any("hand edit" in one for one in plain)
 
 
 def test_reported_shifts_carry_the_doubt_of_their_conditions() -> None:
