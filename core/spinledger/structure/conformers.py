@@ -23,9 +23,13 @@ SOFTENED_RT_KCAL = 2 * 0.5925
 WATER_DIELECTRIC = 80.0
 ORGANIC_DIELECTRIC = 10.0
 POLYOL_DIELECTRIC = 4.0
+#: MMFF94s in a high dielectric makes axial carbon groups too stable; so much
+#: each brings ring couplings of published six-rings closest.
+AXIAL_CARBON_KCAL = 1.0
 WINDOW_KCAL = 8.0
 DUPLICATE_KCAL = 0.05
 DUPLICATE_DEG = 12.0
+_AXIAL_LIMIT_DEG = 100.0
 
 
 @dataclass(frozen=True, slots=True, eq=False, kw_only=True)
@@ -114,6 +118,7 @@ def ensemble(
     positions = np.array(
         [tagged.GetConformer(index).GetPositions() for index in identifiers]
     )
+    energies = energies + AXIAL_CARBON_KCAL * n_axial_carbons(tagged, positions)
     kept = _distinct(tagged, positions, energies)
     weights = np.exp(-(energies[kept] - energies[kept[0]]) / SOFTENED_RT_KCAL)
     return Ensemble(
@@ -128,6 +133,44 @@ def n_conformers(mol: Chem.Mol) -> int:
         if heavy <= limit:
             return count
     return 4
+
+
+def n_axial_carbons(mol: Chem.Mol, positions: Floats) -> Floats:
+    """Axial carbon groups on CH of six-membered rings, shape (n_conformers,)."""
+    count = np.zeros(positions.shape[0])
+    rings = mol.GetRingInfo()
+    for ring in rings.AtomRings():
+        if len(ring) != 6:
+            continue
+        for place, index in enumerate(ring):
+            group = _carbon_group_outside(mol, index)
+            if group is None:
+                continue
+            sides = [
+                (group, index, ring[place - 1], ring[place - 2]),
+                (group, index, ring[(place + 1) % 6], ring[(place + 2) % 6]),
+            ]
+            angles = np.abs([dihedrals_deg(positions, side) for side in sides])
+            count += np.all(angles < _AXIAL_LIMIT_DEG, axis=0)
+    return count
+
+
+def _carbon_group_outside(mol: Chem.Mol, index: int) -> int | None:
+    """Carbon outside all rings of a saturated ring CH; None if there is none."""
+    atom = mol.GetAtomWithIdx(index)
+    if atom.GetAtomicNum() != 6 or atom.GetTotalDegree() != 4:
+        return None
+    neighbours = atom.GetNeighbors()
+    outside = [
+        n
+        for n in neighbours
+        if n.GetAtomicNum() > 1
+        and not mol.GetBondBetweenAtoms(index, n.GetIdx()).IsInRing()
+    ]
+    has_hydrogen = any(n.GetAtomicNum() == 1 for n in neighbours)
+    if len(outside) != 1 or not has_hydrogen or outside[0].GetAtomicNum() != 6:
+        return None
+    return int(outside[0].GetIdx())
 
 
 def with_full_tags(mol: Chem.Mol, positions: Floats) -> Chem.Mol:

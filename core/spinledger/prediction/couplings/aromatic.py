@@ -2,6 +2,12 @@
 
 from __future__ import annotations
 
+from dataclasses import dataclass
+
+import numpy as np
+
+from spinledger.prediction.couplings import models
+from spinledger.prediction.couplings.aromatic_features import ring_features
 from spinledger.prediction.couplings.estimate import Estimate, from_table
 from spinledger.prediction.couplings.frame import Frame
 
@@ -17,57 +23,135 @@ def aromatic(frame: Frame, first: int, second: int) -> Estimate | None:
     ring = frame.aromatic_ring_with(a, b)
     if ring is None:
         return _between_rings(frame, a, b)
-    gap = abs(ring.index(a) - ring.index(b))
+    rule = ring_rule(frame, ring, (a, b))
+    if rule is None:
+        return None
+    if rule.is_nh:
+        return from_table(rule.key, "NH aromatic", is_rigid=False)
+    suffix = " five-ring" if len(ring) == 5 else ""
+    table = from_table(rule.key, _STEPS[rule.steps] + suffix, is_rigid=True)
+    return _refined(frame, ring, (a, b), table, rule)
+
+
+@dataclass(frozen=True, slots=True, kw_only=True)
+class RingRule:
+    """Which row of the tables and which trained kind speak for a ring coupling.
+
+    Attributes
+    ----------
+    key : str
+        Row of the rule table.
+    steps : int
+        1 ortho, 2 meta, 3 para.
+    """
+
+    key: str
+    steps: int
+
+    @property
+    def is_nh(self) -> bool:
+        """Whether one proton sits on the ring nitrogen."""
+        return self.key.startswith("H-N")
+
+    @property
+    def kind(self) -> str:
+        """Kind under which models are trained."""
+        family = self.key.split()[0]
+        family = {"fused": "benzene", "indole": "pyrrole"}.get(family, family)
+        name = f"{family} {_STEPS[self.steps]}"
+        is_beside = self.key == "azine ortho next to N"
+        return f"{name} next to N" if is_beside else name
+
+    @property
+    def base(self) -> str:
+        """Name of the typical value: per position in five-rings, else per kind."""
+        six = self.kind.startswith(("benzene", "azine"))
+        return self.kind if six else self.key
+
+
+def ring_rule(
+    frame: Frame, ring: tuple[int, ...], pair: tuple[int, int]
+) -> RingRule | None:
+    """Row of the tables for two atoms of an aromatic ring, None without one.
+
+    Parameters
+    ----------
+    frame : Frame
+    ring : tuple of int
+    pair : (int, int)
+        Ring atoms that carry the protons.
+    """
+    gap = abs(ring.index(pair[0]) - ring.index(pair[1]))
     steps = min(gap, len(ring) - gap)
-    if 7 in (frame.element(a), frame.element(b)):
-        return _ring_nh(steps)
+    if 7 in map(frame.element, pair):
+        key = "H-N aromatic ring" if steps == 1 else "H-N aromatic ring beta"
+        return RingRule(key=key, steps=steps)
     if len(ring) == 5:
-        return _five_ring(frame, ring, a, b, steps)
+        return RingRule(key=_five_ring_key(frame, ring, pair, steps), steps=steps)
     if len(ring) == 6:
-        return _six_ring(frame, ring, a, b, steps)
-    return None
+        return RingRule(key=_six_ring_key(frame, ring, pair, steps), steps=steps)
+    return RingRule(key="seven-ring ortho", steps=1) if steps == 1 else None
 
 
-def _ring_nh(steps: int) -> Estimate:
-    key = "H-N aromatic ring" if steps == 1 else "H-N aromatic ring beta"
-    return from_table(key, "NH aromatic", is_rigid=False)
+def _six_ring_key(
+    frame: Frame, ring: tuple[int, ...], pair: tuple[int, int], steps: int
+) -> str:
+    if any(frame.element(i) != 6 for i in ring):
+        return _azine_key(frame, ring, pair, steps)
+    fused = _fused_key(frame, ring, pair, steps)
+    return fused or f"benzene {_STEPS[steps]}"
 
 
-def _six_ring(
-    frame: Frame, ring: tuple[int, ...], a: int, b: int, steps: int
+def _refined(
+    frame: Frame,
+    ring: tuple[int, ...],
+    pair: tuple[int, int],
+    table: Estimate,
+    rule: RingRule,
 ) -> Estimate:
-    name = _STEPS[steps]
-    nitrogens = [i for i in ring if frame.element(i) != 6]
-    if nitrogens:
-        return from_table(_azine_key(frame, ring, a, b, steps), name, is_rigid=True)
-    fused = _fused_key(frame, ring, a, b, steps)
-    return from_table(fused or f"benzene {name}", name, is_rigid=True)
-
-
-def _azine_key(frame: Frame, ring: tuple[int, ...], a: int, b: int, steps: int) -> str:
-    beside = sum(
-        any(frame.element(n) == 7 and n in ring for n in frame.others(atom))
-        for atom in (a, b)
+    """Table value with the trained substituent corrections, where there are any."""
+    trained = models.trained_ring_kinds()
+    if rule.kind not in trained:
+        return table
+    linear, tree = ring_features(frame, ring, pair)
+    columns = np.concatenate([tree, [float(rule.kind == kind) for kind in trained]])
+    correction = (
+        models.linear_model(rule.kind).predict(linear)
+        + models.tree_value_hz("aromatic", columns)
+    ) / 2
+    return Estimate(
+        j_hz=models.base_hz(rule.base) + correction,
+        j_sd_hz=models.half_widths(rule.kind).sd_hz,
+        kind=table.kind,
+        is_rigid=True,
+        source=f"trained substituent corrections, {rule.kind} [bmrb2017]",
     )
+
+
+def _azine_key(
+    frame: Frame, ring: tuple[int, ...], pair: tuple[int, int], steps: int
+) -> str:
+    heteros = [
+        {n for n in frame.others(atom) if n in ring and frame.element(n) != 6}
+        for atom in pair
+    ]
     if steps == 1:
-        return "azine ortho next to N" if beside else "azine ortho"
+        return "azine ortho next to N" if any(heteros) else "azine ortho"
     if steps == 3:
         return "azine para"
-    if beside == 2 and any(
-        frame.element(n) == 7 and n in frame.others(b) for n in frame.others(a)
-    ):
+    if heteros[0] & heteros[1]:
         return "azine meta across N"
-    return "azine meta" if beside else "azine meta beta"
+    return "azine meta" if any(heteros) else "azine meta beta"
 
 
 def _fused_key(
-    frame: Frame, ring: tuple[int, ...], a: int, b: int, steps: int
+    frame: Frame, ring: tuple[int, ...], pair: tuple[int, int], steps: int
 ) -> str | None:
     """Naphthalene-like rings: bond fixation by a six-ring fused to this one."""
     fused = [i for i in ring if _is_fused_aromatic(frame, i, ring)]
     if len(fused) != 2:
         return None
-    beside = [any(n in fused for n in frame.others(atom)) for atom in (a, b)]
+    beside = [any(n in fused for n in frame.others(atom)) for atom in pair]
     if steps == 1:
         return "fused 1-2" if any(beside) else "fused 2-3"
     return "fused meta" if steps == 2 else "fused para"
@@ -81,40 +165,38 @@ def _is_fused_aromatic(frame: Frame, atom: int, ring: tuple[int, ...]) -> bool:
     )
 
 
-def _five_ring(
-    frame: Frame, ring: tuple[int, ...], a: int, b: int, steps: int
-) -> Estimate:
+def _five_ring_key(
+    frame: Frame, ring: tuple[int, ...], pair: tuple[int, int], steps: int
+) -> str:
     heteros = [i for i in ring if frame.element(i) != 6]
-    kind = "ortho five-ring" if steps == 1 else "meta five-ring"
     if len(heteros) > 1:
-        return from_table(_azole_key(frame, heteros, steps), kind, is_rigid=True)
-    hetero = heteros[0] if heteros else None
-    name = (
-        _FIVE_RING_NAMES.get(frame.element(hetero), "pyrrole")
-        if hetero is not None
-        else "pyrrole"
-    )
-    beside = [hetero in frame.others(atom) for atom in (a, b)]
-    if steps == 1 and name == "pyrrole" and any(beside) and _has_benzo(frame, ring):
-        return from_table("indole 2-3", kind, is_rigid=True)
-    if steps == 1:
-        position = "2-3" if any(beside) else "3-4"
-    else:
-        position = "2-5" if all(beside) else "2-4"
-    return from_table(f"{name} {position}", kind, is_rigid=True)
+        return _azole_key(frame, ring, pair, steps)
+    element = frame.element(heteros[0]) if heteros else 7
+    name = _FIVE_RING_NAMES.get(element, "pyrrole")
+    beside = [bool(set(heteros) & set(frame.others(atom))) for atom in pair]
+    if steps == 2:
+        return f"{name} {'2-5' if all(beside) else '2-4'}"
+    if name == "pyrrole" and any(beside) and _has_benzo(frame, ring):
+        return "indole 2-3"
+    return f"{name} {'2-3' if any(beside) else '3-4'}"
 
 
 def _has_benzo(frame: Frame, ring: tuple[int, ...]) -> bool:
     return any(_is_fused_aromatic(frame, atom, ring) for atom in ring)
 
 
-def _azole_key(frame: Frame, heteros: list[int], steps: int) -> str:
-    elements = {frame.element(i) for i in heteros}
+def _azole_key(
+    frame: Frame, ring: tuple[int, ...], pair: tuple[int, int], steps: int
+) -> str:
+    elements = {frame.element(i) for i in ring}
+    if steps == 2:
+        return "thiazole 2-5" if 16 in elements else "azole meta"
+    beside = [n for atom in pair for n in frame.others(atom) if frame.element(n) != 6]
     if 16 in elements:
-        return "thiazole 4-5" if steps == 1 else "thiazole 2-5"
-    if 8 in elements and steps == 1:
-        return "oxazole 4-5"
-    return "azole ortho" if steps == 1 else "azole meta"
+        return "isothiazole 4-5" if len(beside) == 1 else "thiazole 4-5"
+    if 8 in elements:
+        return "oxazole 4-5" if len(beside) > 1 else "isoxazole 4-5"
+    return "imidazole 4-5" if len(beside) > 1 else "pyrazole 4-5"
 
 
 def _between_rings(frame: Frame, a: int, b: int) -> Estimate | None:
