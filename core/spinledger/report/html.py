@@ -36,6 +36,8 @@ from spinledger.structure.read import molecule
 from spinledger.values.ledger import Ledger, VerdictState
 
 _LABEL = re.compile(r"(?:[\w′.,]+\(?)?[\w′]+-(?:CH|OH|NH|SH|H|O|N|C)[\w′]*")
+_SUBSCRIPTS = re.compile("[₀-₉]+")
+_PLAIN_DIGITS = str.maketrans("₀₁₂₃₄₅₆₇₈₉", "0123456789")
 _TILT_DEG: Mapping[VerdictState, float] = {
     "reconciled": 0.0,
     "undecided": 9.0,
@@ -109,8 +111,8 @@ def _header(ledger: Ledger, context: ReportContext) -> str:
     return (
         '<header><p class="over"><span>Reconciliation report</span>'
         f"<span>{escape(context.date)}</span></p>"
-        f"<h1>{escape(report_title(ledger))}</h1>"
-        f'<p class="under">{escape(report_subtitle(ledger, context))}</p>'
+        f"<h1>{_lowered(report_title(ledger))}</h1>"
+        f'<p class="under">{_lowered(report_subtitle(ledger, context))}</p>'
         f'<p class="under">{escape(ledger.structure.smiles)}</p></header>\n'
     )
 
@@ -327,7 +329,16 @@ def _definitions(rows: Iterable[tuple[str, str]]) -> str:
 
 def _held(text: str) -> str:
     """Markup of a text whose labels, like 2-HA, do not break at their hyphen."""
-    return _LABEL.sub(r'<span class="held">\g<0></span>', escape(text))
+    return _LABEL.sub(r'<span class="held">\g<0></span>', _lowered(text))
+
+
+def _lowered(text: str) -> str:
+    """Markup of a text whose subscript digits are set by the browser."""
+
+    def tag(match: re.Match[str]) -> str:
+        return f"<sub>{match[0].translate(_PLAIN_DIGITS)}</sub>"
+
+    return _SUBSCRIPTS.sub(tag, escape(text))
 
 
 def _footers(ledger: Ledger) -> tuple[str, str]:

@@ -63,6 +63,7 @@ td.state {{ white-space: nowrap; }}
 .assignment {{ border-bottom: 3px double {INK}; }}
 .assignment tfoot td {{ font-weight: 600; border-top: 1px solid {RULE}; }}
 .assignment tfoot td:nth-child(5) {{ font-weight: 400; color: {MUTED}; }}
+sub {{ font-size: 75%; line-height: 0; }}
 .held {{ white-space: nowrap; }}
 .mark {{ vertical-align: -1px; }}
 .journal {{ font-size: 9.5pt; line-height: 1.5; margin-top: 4px; }}

@@ -176,8 +176,12 @@ def _occupied(drawn: Chem.Mol, points: Sequence[Point]) -> list[tuple[_Box, floa
     """Boxes of atom labels and along the bonds, each with how bad a hit is."""
     taken: list[tuple[_Box, float]] = []
     for atom in drawn.GetAtoms():
-        half = 8.0 if atom.GetSymbol() != "C" or atom.GetDegree() == 0 else 3.0
-        taken.append((_around(points[atom.GetIdx()], half), 3.0))
+        point = points[atom.GetIdx()]
+        if atom.GetSymbol() == "C" and atom.GetDegree() > 0:
+            taken.append((_around(point, 3.0), 3.0))
+        else:  # its symbol, and hydrogens on either side
+            half = 9.0 if atom.GetTotalNumHs() == 0 else 18.0
+            taken.append((_around(point, 8.0, across=half), 3.0))
     for bond in drawn.GetBonds():
         start = points[bond.GetBeginAtomIdx()]
         end = points[bond.GetEndAtomIdx()]
@@ -259,10 +263,11 @@ def _tag_box(tag: _Tag, centre: Point) -> _Box:
     )
 
 
-def _around(point: Point, half: float) -> _Box:
+def _around(point: Point, half: float, *, across: float | None = None) -> _Box:
+    wide = half if across is None else across
     return _Box(
-        left=point[0] - half,
-        right=point[0] + half,
+        left=point[0] - wide,
+        right=point[0] + wide,
         top=point[1] - half,
         bottom=point[1] + half,
     )

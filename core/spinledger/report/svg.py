@@ -227,9 +227,17 @@ def number(value: float) -> str:
 
 
 def text_width(words: str, size: float) -> float:
-    """About how wide a line of text is; sans faces run at half their size."""
-    narrow = sum(character in "ilj.,;:'|()[]′-" for character in words)
-    return size * (0.54 * (len(words) - narrow) + 0.30 * narrow)
+    """About how wide a line of text is, on the safe side for sans faces."""
+    return size * sum(_advance(character) for character in words)
+
+
+def _advance(character: str) -> float:
+    """Width of a character as a share of the size (common sans metrics)."""
+    if character in "ilj.,;:'|()[]′-\u00a0 ":
+        return 0.33
+    if character in "mwMW@—":
+        return 0.90
+    return 0.70 if character.isupper() else 0.56
 
 
 def joined(parts: Iterable[str]) -> str:

@@ -105,7 +105,8 @@ def claim_tree(ledger: Ledger, entry: Entry) -> Tree | None:
         tips_ppm=tuple(tips.tolist()),
         weights=tuple(weights.tolist()),
         width_ppm=width_hz / field_mhz,
-        is_first_order=bool(letters_of(pattern)) or pattern.endswith("s"),
+        is_first_order=(bool(letters_of(pattern)) or pattern.endswith("s"))
+        and all(one.determined for one in entry.couplings),
     )
 
 

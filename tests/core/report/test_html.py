@@ -135,7 +135,7 @@ def test_sample_records_and_signatures_are_printed() -> None:
         audit=(AuditLine(when="2026-12-01T10:00+01:00", what="Read.", by_hand=True),),
     )
     words = words_of(report_html(invented_ledger(), context))
-    assert "tube 7, 400.13 MHz ¹H in CDCl₃, 298.0 K" in words
+    assert "tube 7, 400.13 MHz ¹H in CDCl 3 , 298.0 K" in words
     assert "Reviewed by N. N. 2026-12-01" in words
     assert "2026-12-01T10:00+01:00 by hand: Read." in words
 
