@@ -2,7 +2,7 @@
 
 from __future__ import annotations
 
-from collections.abc import Sequence
+from collections.abc import Iterable, Sequence
 from dataclasses import dataclass, replace
 
 import numpy as np
@@ -20,6 +20,7 @@ from spinledger.reconcile.solve import Limits, Solution, solve
 from spinledger.reconcile.strays import (
     Unowned,
     book_strays,
+    own_satellites,
     released,
     table_impurities,
     unowned_stretches,
@@ -28,6 +29,8 @@ from spinledger.values.claim import ClaimSet
 from spinledger.values.evidence import Evidence, Stray
 from spinledger.values.ledger import VerdictState
 from spinledger.values.structure import Structure
+
+MUCH_IMPURITY = 0.2
 
 
 @dataclass(frozen=True, slots=True, eq=False, kw_only=True)
@@ -140,8 +143,10 @@ def evaluate(
     unowned = unowned_stretches(evidence, misfit, booking.area_per_proton)
     explained = _explained(evidence, solution, bench, unowned)
     settled = replace(evidence, strays=(*evidence.strays, *explained.values()))
+    # So much area cannot be set aside when the structure is judged.
+    judged = evidence if _is_much(explained.values(), booking) else settled
     assessment = assess(
-        settled,
+        judged,
         claims,
         solution.best.refinement,
         absent=solution.absent,
@@ -167,6 +172,12 @@ def evaluate(
     )
 
 
+def _is_much(strays: Iterable[Stray], booking: Booking) -> bool:
+    """Whether impurities by table make up a large part of the sample."""
+    protons = sum(stray.protons or 0.0 for stray in strays if stray.kind == "impurity")
+    return protons > MUCH_IMPURITY * max(booking.balance.found, 1e-9)
+
+
 def _explained(
     evidence: Evidence,
     solution: Solution,
@@ -177,6 +188,9 @@ def _explained(
     named = table_impurities(evidence, unowned)
     named |= given_strays(evidence, solution, unowned, bench.options.companions)
     area = solution.best.refinement.area_per_proton
+    named |= own_satellites(
+        evidence, unowned, solution.best.refinement.claim_lines, area
+    )
     return {
         number: Stray(
             low_ppm=unowned[number].low_ppm,

@@ -45,7 +45,9 @@ FINISH = RefineSettings(
         Stage(broadening_hz=2.0, max_steps=8),
         Stage(broadening_hz=0.5, max_steps=12),
         Stage(broadening_hz=0.0, max_steps=20),
-    )
+    ),
+    # Other places were already tried by the match.
+    second_thoughts=0,
 )
 
 

@@ -18,9 +18,10 @@ from spinledger.processing.solvents import (
 )
 from spinledger.reconcile.assess import SpectrumMisfit
 from spinledger.reconcile.options import Constraints
-from spinledger.reconcile.windows import Stretch, points_of_hz, stretches
+from spinledger.reconcile.windows import points_of_hz, stretches
 from spinledger.structure.read import molecule
-from spinledger.values.evidence import Evidence, Signal, Stray, StrayKind
+from spinledger.values.evidence import Evidence, Stray, StrayKind
+from spinledger.values.ledger import ClaimLines
 from spinledger.values.structure import Structure
 
 STANDARDS = {
@@ -32,6 +33,13 @@ STANDARDS = {
 IMPURITY_TOLERANCE_PPM = 0.03
 SMALLEST_STRAY_PROTONS = 0.04
 UNOWNED_SHARE = 0.4
+SINGLET_REACH_HZ = 25.0
+# CH against (CH3)3 in one molecule.
+AREA_RATIO = 9.0
+# Half of 1J(C,H) from CH3 (125 Hz) to heteroarenes (200 Hz), from memory.
+SATELLITE_HZ = (55.0, 110.0)
+SATELLITE_SHARE = 0.02
+EXCHANGEABLE_GROUPS = frozenset({"OH", "NH", "NH2", "COOH"})
 
 
 def released(evidence: Evidence, structure: Structure) -> Evidence:
@@ -72,6 +80,7 @@ def _bare_molecule(mol: Chem.Mol) -> str:
         atom.SetIsotope(0)
         if atom.GetSymbol() == "O" and atom.GetFormalCharge() == -1:
             atom.SetFormalCharge(0)
+            atom.SetNoImplicit(False)
     Chem.SanitizeMol(plain)
     return str(Chem.MolToSmiles(Chem.RemoveHs(plain.GetMol()), isomericSmiles=False))
 
@@ -103,10 +112,11 @@ def _solvent_skeletons(solvent: str | None) -> set[str]:
 
 @dataclass(frozen=True, slots=True, kw_only=True)
 class Unowned:
-    """A stretch whose measured area no claim explains."""
+    """A stretch whose measured area no claim explains, with its centroid."""
 
     low_ppm: float
     high_ppm: float
+    centre_ppm: float
     area: float
     share: float
 
@@ -132,8 +142,16 @@ def unowned_stretches(
         if area < SMALLEST_STRAY_PROTONS * area_per_proton or share < UNOWNED_SHARE:
             continue
         low_ppm, high_ppm = run.range_ppm(spectrum)
+        places = np.arange(run.start, run.stop)
+        middle = float((places * positive[inside]).sum() / positive[inside].sum())
         found.append(
-            Unowned(low_ppm=low_ppm, high_ppm=high_ppm, area=area, share=share)
+            Unowned(
+                low_ppm=low_ppm,
+                high_ppm=high_ppm,
+                centre_ppm=spectrum.first_point_ppm - spectrum.step_ppm * middle,
+                area=area,
+                share=share,
+            )
         )
     return tuple(found)
 
@@ -185,28 +203,63 @@ def _size_sentence(protons: float | None) -> str:
     return f"no claim and no known stray stands here; {protons:.2f} H by area"
 
 
+def own_satellites(
+    evidence: Evidence,
+    unowned: Sequence[Unowned],
+    claim_lines: Sequence[ClaimLines],
+    area_per_proton: float,
+) -> dict[int, tuple[StrayKind, str]]:
+    """Unowned stretches that are 13C satellites of a claim.
+
+    They stand half of 1J(C,H), 55 to 110 Hz, beside the claim's centre and hold
+    no more than 1.1 % of its protons between two of them, with room for
+    an unclean base line.
+    """
+    frequency = evidence.spectrum.spectrometer_frequency_mhz
+    found: dict[int, tuple[StrayKind, str]] = {}
+    for number, one in enumerate(unowned):
+        for claim in claim_lines:
+            protons = float(claim.protons.sum())
+            if protons <= 0.0:
+                continue
+            centre = float((claim.shifts_ppm * claim.protons).sum()) / protons
+            distance_hz = abs(one.centre_ppm - centre) * frequency
+            size = one.area / max(area_per_proton, 1e-300)
+            if (
+                SATELLITE_HZ[0] <= distance_hz <= SATELLITE_HZ[1]
+                and size <= SATELLITE_SHARE * protons
+            ):
+                found[number] = ("satellite", f"13C satellite of {claim.claim}")
+                break
+    return found
+
+
 def table_impurities(
     evidence: Evidence, unowned: Sequence[Unowned]
 ) -> dict[int, tuple[StrayKind, str]]:
     """Unowned stretches that a common impurity explains with all its lines.
 
-    Every signal of the compound must be found, either unowned or where other
-    signals lie on top, and at least one of them unowned; a compound with a
-    single line must be a narrow stretch.
+    Every signal of the compound must be found within 0.03 ppm, either unowned
+    or where other signals lie on top, and at least one of them unowned; a line
+    that the table calls a singlet must be narrow, and the areas must lie within
+    a factor of the numbers of protons that groups have.
     """
     by_compound: dict[str, list[ImpurityLine]] = {}
     for line in impurity_lines(evidence.solvent):
-        by_compound.setdefault(line.compound, []).append(line)
+        if line.group not in EXCHANGEABLE_GROUPS:
+            by_compound.setdefault(line.compound, []).append(line)
     named: dict[int, tuple[StrayKind, str]] = {}
     best_gap: dict[int, float] = {}
     for compound, lines in by_compound.items():
-        hits = _hits(evidence.signals, unowned, lines)
-        if hits is None:
+        hits = _hits(evidence, unowned, lines)
+        areas = [unowned[number].area for number in hits]
+        if not hits or max(areas) > AREA_RATIO * min(areas):
             continue
         shifts = ", ".join(f"{line.shift_ppm:.2f}" for line in lines)
+        # A compound that explains more stretches at once is the likelier one.
         for number, gap in hits.items():
-            if gap < best_gap.get(number, np.inf):
-                best_gap[number] = gap
+            if gap / len(hits) < best_gap.get(number, np.inf):
+                best_gap[number] = gap / len(hits)
                 named[number] = (
                     "impurity",
                     f"{compound}: expected at {shifts} ppm in {evidence.solvent}",
@@ -215,32 +268,26 @@ def table_impurities(
 
 
 def _hits(
-    signals: Sequence[Signal], unowned: Sequence[Unowned], lines: list[ImpurityLine]
-) -> dict[int, float] | None:
-    """Unowned stretches of a compound with their gaps; None if a line lacks."""
+    evidence: Evidence, unowned: Sequence[Unowned], lines: list[ImpurityLine]
+) -> dict[int, float]:
+    """Unowned stretches of a compound with their gaps; none if a line lacks."""
+    frequency = evidence.spectrum.spectrometer_frequency_mhz
     hits: dict[int, float] = {}
     for line in lines:
         near = [
-            (abs((one.low_ppm + one.high_ppm) / 2 - line.shift_ppm), number)
+            (abs(one.centre_ppm - line.shift_ppm), number)
             for number, one in enumerate(unowned)
-            if one.low_ppm - IMPURITY_TOLERANCE_PPM
-            <= line.shift_ppm
-            <= one.high_ppm + IMPURITY_TOLERANCE_PPM
+            if abs(one.centre_ppm - line.shift_ppm) <= IMPURITY_TOLERANCE_PPM
+            and (
+                line.multiplicity != "s"
+                or (one.high_ppm - one.low_ppm) * frequency <= SINGLET_REACH_HZ
+            )
         ]
         if near:
             gap, number = min(near)
             hits[number] = gap
-            continue
-        exchangeable = line.group in {"OH", "NH", "NH2", "COOH"}
-        if exchangeable or any(
-            one.low_ppm <= line.shift_ppm <= one.high_ppm for one in signals
+        elif not any(
+            one.low_ppm <= line.shift_ppm <= one.high_ppm for one in evidence.signals
         ):
-            continue
-        return None
-    return hits or None
-
-
-def stretch_of(evidence: Evidence, low_ppm: float, high_ppm: float) -> Stretch:
-    """Points of a range as a stretch."""
-    window = evidence.spectrum.window(low_ppm, high_ppm)
-    return Stretch(start=int(window.start), stop=int(window.stop))
+            return {}
+    return hits
