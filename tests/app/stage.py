@@ -13,7 +13,6 @@ from PySide6.QtWidgets import QApplication
 from spinledger.project.document import Project
 from spinledger.structure.read import read_structure
 from spinledger.values.ledger import Ledger
-
 from spinledger_app.application import Parts, build
 from spinledger_app.presenters.drawing import drawing_of
 

@@ -7,10 +7,9 @@ from pathlib import Path
 
 import invented
 import pytest
+from PySide6.QtGui import QColor
 from stage import picture, put_on, settle, stage, take_down
 from text_checks import contrast, faults
-
-from PySide6.QtGui import QColor
 
 from spinledger_app.application import Parts
 from spinledger_app.theme import DARK, HIGH_CONTRAST, LIGHT, STATE_FILLS, Tokens
