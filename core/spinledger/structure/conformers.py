@@ -110,14 +110,9 @@ def ensemble(
     tagged = _tagged_from_first(mol_with_hydrogens, seed)
     if tagged is None:
         return _empty(mol_with_hydrogens, "No three-dimensional model could be made.")
-    wanted = n_conformers(mol_with_hydrogens)
-    identifiers = _embed(tagged, wanted, seed)
-    if not identifiers:
-        identifiers = [conformer.GetId() for conformer in tagged.GetConformers()]
-    energies, reason = _minimise(tagged, identifiers, _dielectric(tagged, is_aqueous))
-    positions = np.array(
-        [tagged.GetConformer(index).GetPositions() for index in identifiers]
-    )
+    many = _embedded(tagged, n_conformers(tagged), seed)
+    energies, reason = _minimise(many, _dielectric(many, is_aqueous))
+    positions = np.array([c.GetPositions() for c in many.GetConformers()])
     energies = energies + AXIAL_CARBON_KCAL * n_axial_carbons(tagged, positions)
     kept = _distinct(tagged, positions, energies)
     weights = np.exp(-(energies[kept] - energies[kept[0]]) / SOFTENED_RT_KCAL)
@@ -227,8 +222,11 @@ def _parameters(seed: int) -> Any:
     return parameters
 
 
-def _embed(mol: Chem.Mol, count: int, seed: int) -> list[int]:
-    return list(rdDistGeom.EmbedMultipleConfs(mol, count, _parameters(seed)))
+def _embedded(tagged: Chem.Mol, count: int, seed: int) -> Chem.Mol:
+    """Copy with many conformers; with the one it has where no more can be made."""
+    many = Chem.Mol(tagged)
+    found = rdDistGeom.EmbedMultipleConfs(many, count, _parameters(seed))
+    return many if len(found) else Chem.Mol(tagged)
 
 
 def _tagged_from_first(mol: Chem.Mol, seed: int) -> Chem.Mol | None:
@@ -267,10 +265,9 @@ def _has_polyol_ring(mol: Chem.Mol) -> bool:
     return False
 
 
-def _minimise(
-    mol: Chem.Mol, identifiers: list[int], dielectric: float
-) -> tuple[Floats, str]:
+def _minimise(mol: Chem.Mol, dielectric: float) -> tuple[Floats, str]:
     """Minimise in place; energies in kcal/mol and a sentence if it is not MMFF94s."""
+    identifiers = [conformer.GetId() for conformer in mol.GetConformers()]
     properties = rdForceFieldHelpers.MMFFGetMoleculeProperties(mol, "MMFF94s")
     if properties is not None:
         properties.SetMMFFDielectricConstant(dielectric)

@@ -20,6 +20,8 @@ Floats = npt.NDArray[np.float64]
 #: disubstituted ethylenes (2-butenes, stilbenes, cinnamates, crotonates).
 _CIS_EXCESS_HZ = 2.4
 _TRANS_EXCESS_HZ = 0.4
+#: Two paths in 1,4-cyclohexadienes give more than their sum (8 to 9.6 Hz).
+_TWO_PATHS = 1.6
 _ETHYLENE_CIS_HZ, _ETHYLENE_TRANS_HZ = 11.6, 19.1
 
 
@@ -28,7 +30,8 @@ def across_double_bond(frame: Frame, first: int, second: int) -> Estimate | None
     a, b = frame.carrier(first), frame.carrier(second)
     size = frame.ring_size(a, b)
     if 3 <= size <= 8:
-        return from_table(f"ring{size} alkene", "vinyl cis ring", is_rigid=True)
+        key = _ring_alkene_key(frame, a, b, size)
+        return from_table(key, "vinyl cis ring", is_rigid=True)
     side = _side(frame, first, second)
     if side is None:
         return from_table("alkene unspecified", "vinyl", is_rigid=False)
@@ -42,6 +45,18 @@ def across_double_bond(frame: Frame, first: int, second: int) -> Estimate | None
     if len(groups) == 2:
         value += _CIS_EXCESS_HZ if side == "cis" else _TRANS_EXCESS_HZ
     return from_table(f"alkene {side}", f"vinyl {side}", is_rigid=True, j_hz=value)
+
+
+def _ring_alkene_key(frame: Frame, a: int, b: int, size: int) -> str:
+    """Oxygen or nitrogen at the double bond lowers the coupling."""
+    elements = [
+        frame.element(n) for c, d in ((a, b), (b, a)) for n in frame.others(c, d)
+    ]
+    if size in (5, 6):
+        for element, name in ((8, "O"), (7, "N")):
+            if element in elements:
+                return f"ring{size} alkene {name}"
+    return f"ring{size} alkene"
 
 
 def _side(frame: Frame, first: int, second: int) -> str | None:
@@ -196,7 +211,10 @@ def five_bonds(frame: Frame, first: int, second: int) -> Estimate | None:
             return from_table(key, key, is_rigid=False)
     if not homoallylic:
         return None
-    return homoallylic[0].changed(j_hz=sum(item.j_hz for item in homoallylic))
+    total = sum(item.j_hz for item in homoallylic)
+    if len(homoallylic) > 1:
+        total *= _TWO_PATHS
+    return homoallylic[0].changed(j_hz=total)
 
 
 _FIVE_BOND_KEYS: dict[tuple[float, ...], str] = {

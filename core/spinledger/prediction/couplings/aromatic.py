@@ -135,6 +135,8 @@ def _azine_key(
         {n for n in frame.others(atom) if n in ring and frame.element(n) != 6}
         for atom in pair
     ]
+    if steps == 1 and _is_uracil(frame, ring):
+        return "uracil ortho"
     if steps == 1:
         return "azine ortho next to N" if any(heteros) else "azine ortho"
     if steps == 3:
@@ -142,6 +144,18 @@ def _azine_key(
     if heteros[0] & heteros[1]:
         return "azine meta across N"
     return "azine meta" if any(heteros) else "azine meta beta"
+
+
+def _is_uracil(frame: Frame, ring: tuple[int, ...]) -> bool:
+    """Pyrimidin-2-one with the nitrogen at C6 saturated, as in uracil and cytosine."""
+    nitrogens = [i for i in ring if frame.element(i) == 7]
+    between = [i for i in ring if all(n in frame.others(i) for n in nitrogens)]
+    return (
+        len(nitrogens) == 2
+        and len(between) == 1
+        and frame.is_carbonyl(between[0])
+        and any(frame.atom(n).GetTotalDegree() == 3 for n in nitrogens)
+    )
 
 
 def _fused_key(
@@ -200,19 +214,12 @@ def _azole_key(
 
 
 def _between_rings(frame: Frame, a: int, b: int) -> Estimate | None:
-    """Five bonds along a zigzag between fused rings, as H4-H8 of naphthalene."""
+    """Five bonds along a zigzag over the fusion bond, as H4-H8 of naphthalene."""
     if frame.n_bonds(a, b) != 3:
         return None
     for _, c, d, _ in frame.paths(a, b):
-        ring_left = frame.aromatic_ring_with(a, c, d)
-        ring_right = frame.aromatic_ring_with(c, d, b)
-        if ring_left is not None and ring_right is not None:
-            return None
-    for _, c, d, _ in frame.paths(a, b):
-        if frame.is_aromatic(c) and frame.is_aromatic(d):
-            shared = frame.aromatic_ring_with(a, c), frame.aromatic_ring_with(d, b)
-            if shared[0] and shared[1] and frame.aromatic_ring_with(c, d):
-                return from_table("epi zigzag", "five bonds zigzag", is_rigid=True)
+        if frame.aromatic_ring_with(a, c, d) and frame.aromatic_ring_with(c, d, b):
+            return from_table("epi zigzag", "five bonds zigzag", is_rigid=True)
     return None
 
 

@@ -134,6 +134,14 @@ class Frame:
         ]
         return min(found, key=len) if found else None
 
+    def is_bridged(self, ring: tuple[int, ...]) -> bool:
+        """Whether a five-ring shares three or more atoms with another small ring."""
+        return len(ring) == 5 and any(
+            len(set(ring) & set(other)) >= 3
+            for other in self.rings
+            if set(other) != set(ring) and len(other) <= 6
+        )
+
     def paths(self, start: int, end: int) -> Iterator[tuple[int, ...]]:
         """All shortest paths between two atoms, ends included."""
         if start == end:

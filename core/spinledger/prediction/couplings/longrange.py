@@ -9,6 +9,9 @@ from spinledger.prediction.couplings.frame import Frame
 
 #: A zigzag counts when both dihedrals are within this of 180 degrees.
 _ANTI_DEG = 25.0
+#: Least share of the conformers that must hold the zigzag flat: rings that
+#: flip halve a coupling that is hardly resolved as it is.
+_LEAST_SHARE = 0.7
 
 
 def zigzag(frame: Frame, first: int, second: int) -> Estimate | None:
@@ -18,12 +21,10 @@ def zigzag(frame: Frame, first: int, second: int) -> Estimate | None:
     held = [m for m in middles if _is_held(frame, a, m, b)]
     if not held or frame.conformers.is_empty:
         return None
-    flat = sum(_flat_share(frame, (first, a, middle, b, second)) for middle in held)
-    estimate = _by_ring(frame, a, b, len(middles))
-    return estimate.changed(
-        j_hz=estimate.j_hz * flat / len(held),
-        j_sd_hz=max(estimate.j_sd_hz * flat / len(held), 0.2),
-    )
+    shares = [_flat_share(frame, (first, a, m, b, second)) for m in held]
+    if max(shares) < _LEAST_SHARE:
+        return None
+    return from_table(_key(frame, a, held, b), "W", is_rigid=True)
 
 
 def _is_held(frame: Frame, a: int, middle: int, b: int) -> bool:
@@ -47,20 +48,11 @@ def _flat_share(frame: Frame, path: tuple[int, ...]) -> float:
     return float(frame.conformers.weights @ is_flat)
 
 
-def _by_ring(frame: Frame, a: int, b: int, n_paths: int) -> Estimate:
-    rings = [r for r in frame.rings if a in r and b in r]
-    sizes = sorted(len(ring) for ring in rings)
-    if n_paths == 3:
-        key = "W bicyclo[1.1.1]"
-    elif n_paths == 2:
-        key = "W bicyclo[2.1.1]"
-    elif sizes[:1] == [5] and len(_bridging(frame, a, b)) > 1:
-        key = "W bicyclo[2.2.1]"
-    else:
-        key = "W ring"
-    return from_table(key, "W", is_rigid=True)
-
-
-def _bridging(frame: Frame, a: int, b: int) -> list[tuple[int, ...]]:
-    """Rings through either carbon that share a bridgehead with another ring."""
-    return [r for r in frame.rings if (a in r or b in r) and len(r) in (5, 6)]
+def _key(frame: Frame, a: int, middles: list[int], b: int) -> str:
+    """Row of the rule table by the number of bridges between the two carbons."""
+    if len(middles) >= 3:
+        return "W bicyclo[1.1.1]"
+    if len(middles) == 2:
+        return "W bicyclo[2.1.1]"
+    ring = frame.ring_with(a, middles[0], b) or ()
+    return "W bicyclo[2.2.1]" if frame.is_bridged(ring) else "W ring"

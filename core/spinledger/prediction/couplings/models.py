@@ -211,10 +211,10 @@ def _half_widths() -> Mapping[str, HalfWidths]:
 def _trees(name: str) -> Trees:
     stored = _stored_trees()[name]
     return Trees(
-        features=_padded(stored, "feature"),
+        features=_padded(stored, "feature").astype(np.int64),
         thresholds=_padded(stored, "threshold"),
-        left=_padded(stored, "left"),
-        right=_padded(stored, "right"),
+        left=_padded(stored, "left").astype(np.int64),
+        right=_padded(stored, "right").astype(np.int64),
         leaves=_padded(stored, "leaf"),
     )
 

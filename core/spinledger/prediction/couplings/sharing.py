@@ -168,7 +168,8 @@ def _primed_partners(
     partners: dict[int, int] = {}
     by_ends: dict[tuple[Group, ...], list[int]] = defaultdict(list)
     for index, end in enumerate(ends):
-        by_ends[end].append(index)
+        if claims[index].bonds >= 3:
+            by_ends[end].append(index)
     for end, indices in by_ends.items():
         by_bonds: dict[int, list[int]] = defaultdict(list)
         for index in indices:

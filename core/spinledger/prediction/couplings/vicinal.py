@@ -9,6 +9,7 @@ import numpy as np
 import numpy.typing as npt
 
 from spinledger.prediction.couplings import models
+from spinledger.prediction.couplings.bridged import bridging_effect_hz
 from spinledger.prediction.couplings.chain_features import bond_features
 from spinledger.prediction.couplings.estimate import Estimate, from_table
 from spinledger.prediction.couplings.frame import Frame
@@ -146,6 +147,7 @@ def _in_ring(bond: Bond, first: int, second: int, size: int) -> Estimate:
     if bond.name == "CH2-CH2" and _is_trained_ring(bond, size):
         value *= _trained_mean_hz(bond, f"ring{size}_ch2_ch2", means) / means.mean()
     value += _polyol_lack_hz(bond, first, second)
+    value += bridging_effect_hz(frame, first, second)
     return Estimate(
         j_hz=float(value),
         j_sd_hz=math.hypot(_RING_RULE_SD_HZ, _CONFORMER_DOUBT * float(spreads[place])),
