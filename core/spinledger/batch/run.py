@@ -67,7 +67,12 @@ def run_table(
     folder.mkdir(parents=True, exist_ok=True)
     chosen = options or ReconcileOptions()
     tasks = [
-        RowTask(row=row, base=path.parent, folder=folder, options=chosen)
+        RowTask(
+            row=row,
+            base=path.resolve().parent,  # workers elsewhere stand in other folders
+            folder=folder.resolve(),
+            options=chosen,
+        )
         for row in rows
     ]
     results: dict[int, RowResult] = {}

@@ -6,6 +6,7 @@ import re
 from collections.abc import Callable, Iterable, Mapping
 from html import escape
 
+from rdkit import Chem, rdBase
 from rdkit.Chem.rdMolDescriptors import CalcMolFormula
 
 from spinledger.project.audit import versions
@@ -281,6 +282,10 @@ def _audit(ledger: Ledger, context: ReportContext) -> str:
 def _structure_facts(ledger: Ledger) -> tuple[tuple[str, str], ...]:
     structure = ledger.structure
     facts = [("Structure as given", structure.given), ("SMILES", structure.smiles)]
+    with rdBase.BlockLogs():
+        inchi = str(Chem.MolToInchi(molecule(structure)))
+    if inchi:
+        facts.append(("InChI", inchi))
     species = [one for one in ledger.claims.species_smiles if one != structure.smiles]
     if species:
         facts.append(("In solution", " and ".join(ledger.claims.species_smiles)))
