@@ -5,6 +5,7 @@ from __future__ import annotations
 from dataclasses import dataclass, field
 
 from spinledger.project.document import AuditLine, Project, Sample
+from spinledger.report.compare import ListComparison
 from spinledger.report.text import TextOptions
 from spinledger.values.ledger import Verdict
 
@@ -16,6 +17,7 @@ SECTIONS = (
     "expansions",
     "strays",
     "contenders",
+    "comparison",
     "advice",
     "audit",
     "signatures",
@@ -37,6 +39,8 @@ class ReportContext:
         Shown beside the verdict where hand edits changed it.
     text : TextOptions
         Journal form of the experimental sentence.
+    comparison : ListComparison or None
+        A published list that was held against the ledger.
     sections : tuple of str
         Parts to print, any of ``SECTIONS``; title and verdict always stand.
     """
@@ -46,6 +50,7 @@ class ReportContext:
     audit: tuple[AuditLine, ...] = ()
     verdict_before_edits: Verdict | None = None
     text: TextOptions = field(default_factory=TextOptions)
+    comparison: ListComparison | None = None
     sections: tuple[str, ...] = SECTIONS
 
     def __post_init__(self) -> None:

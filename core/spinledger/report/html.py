@@ -18,6 +18,7 @@ from spinledger.report.sketch import sketch_svg
 from spinledger.report.svg import number, state_mark
 from spinledger.report.tables import (
     ASSIGNMENT_HEAD,
+    COMPARISON_HEAD,
     CONTENDER_HEAD,
     STRAY_HEAD,
     AssignmentRow,
@@ -25,6 +26,7 @@ from spinledger.report.tables import (
     assignment_rows,
     audit_rows,
     balance_cells,
+    comparison_rows,
     contender_rows,
     probability_words,
     recipe_lines,
@@ -32,7 +34,13 @@ from spinledger.report.tables import (
     verdict_title,
 )
 from spinledger.report.text import experimental_runs, reference_sentence
-from spinledger.report.words import fixed, outgoing, outgoing_verdict, solvent_glyphs
+from spinledger.report.words import (
+    fixed,
+    outgoing,
+    outgoing_verdict,
+    signed,
+    solvent_glyphs,
+)
 from spinledger.structure.read import molecule
 from spinledger.values.ledger import Ledger, VerdictState
 
@@ -70,6 +78,7 @@ def report_html(ledger: Ledger, context: ReportContext | None = None) -> str:
         "expansions": _expansions,
         "strays": _strays,
         "contenders": _contenders,
+        "comparison": _comparison,
         "advice": _advice,
         "audit": _audit,
         "signatures": _signatures,
@@ -251,6 +260,19 @@ def _contenders(ledger: Ledger, _context: ReportContext) -> str:
     return f"<section><h3>Contenders</h3>{body}</section>\n"
 
 
+def _comparison(_ledger: Ledger, context: ReportContext) -> str:
+    comparison = context.comparison
+    if comparison is None:
+        return ""
+    remarks = "".join(f"<li>{escape(one)}</li>" for one in comparison.remarks)
+    return (
+        "<section><h3>Published list</h3><p>One common offset of "
+        f"{escape(signed(comparison.offset_ppm, 3))}\u00a0ppm (here minus published) "
+        f"is taken out of every difference.</p>{remarks and f'<ul>{remarks}</ul>'}"
+        f"{_table(COMPARISON_HEAD, comparison_rows(comparison))}</section>\n"
+    )
+
+
 def _advice(ledger: Ledger, _context: ReportContext) -> str:
     rows = advice_rows(ledger)
     if not rows:
@@ -283,7 +305,9 @@ def _structure_facts(ledger: Ledger) -> tuple[tuple[str, str], ...]:
     structure = ledger.structure
     facts = [("Structure as given", structure.given), ("SMILES", structure.smiles)]
     with rdBase.BlockLogs():
-        inchi = str(Chem.MolToInchi(molecule(structure)))
+        inchi = str(
+            Chem.MolToInchi(molecule(structure))  # type: ignore[no-untyped-call]  # RDKit
+        )
     if inchi:
         facts.append(("InChI", inchi))
     species = [one for one in ledger.claims.species_smiles if one != structure.smiles]

@@ -7,6 +7,8 @@ from __future__ import annotations
 
 from dataclasses import dataclass
 
+from spinledger.report.compare import ListComparison
+from spinledger.report.published import ListedSignal
 from spinledger.report.words import (
     fixed,
     label_glyphs,
@@ -44,6 +46,14 @@ ASSIGNMENT_HEAD = (
 )
 STRAY_HEAD = ("Range, ppm", "Kind", "Size", "Why")
 CONTENDER_HEAD = ("Structure", "Origin", "Result", "Why")
+COMPARISON_HEAD = (
+    "Claims",
+    "Here, ppm",
+    "Published, ppm",
+    "Difference",
+    "J, Hz",
+    "Remarks",
+)
 _SHIFT_DIGITS = 4
 _J_DIGITS = 2
 
@@ -94,6 +104,36 @@ def contender_rows(ledger: Ledger) -> tuple[tuple[str, ...], ...]:
     """Rows of the tested structures, those still standing first."""
     order = sorted(ledger.contenders, key=lambda one: one.excluded)
     return tuple(_contender_row(one) for one in order)
+
+
+def comparison_rows(comparison: ListComparison) -> tuple[tuple[str, ...], ...]:
+    """Rows of a published list beside the ledger; one-sided signals last."""
+    rows = [
+        (
+            label_glyphs(pair.mine.label),
+            _listed_shift(pair.mine, 3),
+            _listed_shift(pair.published, 2),
+            signed(pair.difference_ppm, 3),
+            ", ".join(f"{fixed(a, 1)} / {fixed(b, 1)}" for a, b in pair.couplings_hz),
+            "; ".join(pair.remarks),
+        )
+        for pair in comparison.pairs
+    ]
+    rows += [
+        (label_glyphs(one.label), _listed_shift(one, 3), "", "", "", "only here")
+        for one in comparison.only_mine
+    ]
+    rows += [
+        (one.label, "", _listed_shift(one, 2), "", "", "only published")
+        for one in comparison.only_published
+    ]
+    return tuple(rows)
+
+
+def _listed_shift(signal: ListedSignal, digits: int) -> str:
+    if signal.low_ppm == signal.high_ppm:
+        return fixed(signal.high_ppm, digits)
+    return shift_range(signal.low_ppm, signal.high_ppm)
 
 
 def advice_rows(ledger: Ledger) -> tuple[tuple[str, str], ...]:

@@ -9,8 +9,10 @@ import pytest
 from invented_ledger import invented_ledger, overlapped_ledger
 from spinledger.project.document import AuditLine, Sample, SignOff
 from spinledger.report.cautions import accuracy_ppm, printed_cautions
+from spinledger.report.compare import compare_lists, list_of_ledger
 from spinledger.report.context import ReportContext
 from spinledger.report.html import report_html
+from spinledger.report.published import parse_published
 from spinledger.values.acquisition import Metadata
 from spinledger.values.ledger import Verdict
 
@@ -138,6 +140,20 @@ def test_sample_records_and_signatures_are_printed() -> None:
     assert "tube 7, 400.13 MHz ¹H in CDCl 3 , 298.0 K" in words
     assert "Reviewed by N. N. 2026-12-01" in words
     assert "2026-12-01T10:00+01:00 by hand: Read." in words
+
+
+def test_a_published_list_is_printed_beside_the_ledger() -> None:
+    ledger = invented_ledger()
+    published = parse_published(
+        "1H NMR (400 MHz, CDCl3) 4.20 (m, 1H), 4.18 (q, J = 7.2 Hz, 2H), 1.28 (t, 3H), "
+        "8.10 (s, 1H)"
+    )
+    comparison = compare_lists(list_of_ledger(ledger), published)
+    assert "Published list" not in words_of(report_html(ledger))
+    words = words_of(report_html(ledger, ReportContext(comparison=comparison)))
+    assert "One common offset of −0.010 ppm (here minus published)" in words
+    assert "7.1 / 7.2" in words
+    assert "8.10 only published" in words
 
 
 def test_names_with_markup_are_shown_as_text() -> None:
