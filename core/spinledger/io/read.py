@@ -215,13 +215,22 @@ def _read_copies(
     leader = fids[0]
     if not all(_same_fid(leader, other) for other in fids[1:]):
         raise _too_many(folder, usable)
-    if spectra and not _belongs(leader, spectra[0]):
+    beside = _read(spectra[0], prefer_processed=True) if spectra else None
+    if beside is not None and not _belongs(leader, beside):
         raise _too_many(folder, usable)
     if prefer_processed:
-        ranked = sorted(usable, key=trust_rank)
-        chosen = next((item for item in ranked if item.has_spectrum), with_fid[0])
-        return _read(chosen, prefer_processed=True)
-    return _in_makers_sense(leader, spectra)
+        return beside or _read(_with_spectrum(with_fid), prefer_processed=True)
+    if beside is None:
+        return leader
+    return _noted(
+        _in_makers_sense(leader, beside),
+        f"{spectra[0].name} was taken as the processed form of the same data.",
+    )
+
+
+def _with_spectrum(copies: list[Experiment]) -> Experiment:
+    """The most trusted copy that has a processed spectrum, else the most trusted."""
+    return next((item for item in copies if item.has_spectrum), copies[0])
 
 
 def _too_many(folder: Path, usable: list[Experiment]) -> SpectrumFormatError:
@@ -252,21 +261,15 @@ def _same_fid(one: Acquired, other: Acquired) -> bool:
     return bool(overlap > 0.9999 * norms)
 
 
-def _belongs(leader: Acquired, spectrum: Experiment) -> bool:
-    """Whether a spectrum file can be the processed form of the FID."""
-    beside = _read(spectrum, prefer_processed=True)
+def _belongs(leader: Acquired, beside: Acquired) -> bool:
+    """Whether a spectrum can be the processed form of the FID."""
     if not isinstance(leader, Fid) or not isinstance(beside, MakerSpectrum):
         return False
     return agreement(leader, beside.spectrum).best > _LEAST_AGREEMENT
 
 
-def _in_makers_sense(leader: Acquired, spectra: list[Experiment]) -> Acquired:
+def _in_makers_sense(leader: Acquired, beside: Acquired) -> Acquired:
     """FID turned to agree with the spectrum beside it, where that is clear."""
-    if not spectra or not isinstance(leader, Fid):
+    if not isinstance(leader, Fid) or not isinstance(beside, MakerSpectrum):
         return leader
-    beside = _read(spectra[0], prefer_processed=True)
-    if isinstance(beside, MakerSpectrum) and is_mirrored(leader, beside.spectrum):
-        leader = conjugated(leader)
-    return _noted(
-        leader, f"{spectra[0].name} was taken as the processed form of the same data."
-    )
+    return conjugated(leader) if is_mirrored(leader, beside.spectrum) else leader
