@@ -59,7 +59,7 @@ def booster_settings(threads: int) -> dict[str, Any]:
         "lambda_l2": 1.0,
         "seed": 1,
         "deterministic": True,
-        "force_row_wise": True,
+        "force_col_wise": True,
         "num_threads": threads,
         "verbose": -1,
     }
