@@ -4,15 +4,14 @@ from __future__ import annotations
 
 import numpy as np
 
-from spinledger.detection.fitting import FitSettings
 from spinledger.detection.signals import IntegralDoubt, find_signals
 from spinledger.detection.strays import StrayFacts, recognised_strays
 from spinledger.errors import EvidenceError
 from spinledger.lines.kernel import learn_kernel
 from spinledger.lines.noise import noise_sd
-from spinledger.lines.picking import pick_lines
+from spinledger.lines.picking import pick_lines, pick_weak_lines
 from spinledger.processing.automatic import ProcessedSpectrum, process, reprocess
-from spinledger.processing.noise_correlation import noise_correlation
+from spinledger.processing.noise_model import noise_model
 from spinledger.processing.solvents import is_aqueous, water_lines
 from spinledger.values.acquisition import Acquired
 from spinledger.values.evidence import Evidence, LineKernel
@@ -80,10 +79,14 @@ def evidence_from(
     sd = noise_sd(spectrum.intensities)
     if not np.isfinite(sd) or np.ptp(spectrum.intensities) == 0:
         raise EvidenceError(metadata.source_name, "the spectrum is empty")
-    picks = pick_lines(spectrum.intensities, step_hz=spectrum.step_hz)
-    settings = FitSettings(noise_sd=sd, correlation=noise_correlation(processed.run))
+    picks = pick_weak_lines(
+        spectrum.intensities,
+        pick_lines(spectrum.intensities, step_hz=spectrum.step_hz),
+        step_hz=spectrum.step_hz,
+    )
+    noise = noise_model(processed.run, sd)
     doubt = _integral_doubt(processed, sd, temperature)
-    signals = find_signals(spectrum, picks, settings=settings, doubt=doubt)
+    signals = find_signals(spectrum, picks, noise=noise, doubt=doubt)
     if not signals:
         raise EvidenceError(
             metadata.source_name,

@@ -2,33 +2,24 @@
 
 from __future__ import annotations
 
-from dataclasses import dataclass
 from itertools import pairwise
 
 import numpy as np
 import numpy.typing as npt
 
-from spinledger.lines.deconvolution import FittedLines, fit_lines
+from spinledger.lines.deconvolution import FittedLines, NoiseModel, fit_lines
 from spinledger.lines.picking import Picks
 from spinledger.lines.shapes import lorentzian
+from spinledger.lines.splitting import Stretch, fit_with_splits
 from spinledger.values.spectrum import Spectrum
 
 _MOST_LINES_AT_ONCE = 24
 _MARGIN_HZ = 4.0
 _MOST_POINTS = 1500
-_LEAST_AREA_SD = 3.0
-
-
-@dataclass(frozen=True, slots=True, kw_only=True)
-class FitSettings:
-    """Noise of one point, and the factor of its correlation with neighbours."""
-
-    noise_sd: float
-    correlation: float
 
 
 def fit_range(
-    spectrum: Spectrum, picks: Picks, start: int, stop: int, *, settings: FitSettings
+    spectrum: Spectrum, picks: Picks, start: int, stop: int, *, noise: NoiseModel
 ) -> tuple[FittedLines, ...]:
     """Fitted lines between two point indices, in blocks of neighbours.
 
@@ -37,11 +28,11 @@ def fit_range(
     inside = (picks.points >= start) & (picks.points < stop)
     points, heights = picks.points[inside], picks.heights[inside]
     if points.size == 0:
-        return (_hump(spectrum, start, stop, settings),)
+        return (_hump(spectrum, start, stop, noise),)
     width_hz = _typical_width_hz(spectrum, points, heights)
     cuts = _block_cuts(points)
     return tuple(
-        _fit_block(spectrum, points[low:high], (start, stop), width_hz, settings)
+        _fit_block(spectrum, points[low:high], (start, stop), width_hz, noise)
         for low, high in pairwise(cuts)
     )
 
@@ -94,28 +85,24 @@ def _fit_block(
     points: npt.NDArray[np.float64],
     limits: tuple[int, int],
     width_hz: float,
-    settings: FitSettings,
+    noise: NoiseModel,
 ) -> FittedLines:
-    margin = int(max(_MARGIN_HZ, 4 * width_hz) / spectrum.step_hz)
+    step_hz = spectrum.step_hz
+    margin = int(max(_MARGIN_HZ, 4 * width_hz) / step_hz)
     start = max(limits[0], int(points[0]) - margin)
     stop = min(limits[1], int(points[-1]) + margin + 1)
-    stride = max(
-        1, min((stop - start) // _MOST_POINTS, int(width_hz / 6 / spectrum.step_hz))
-    )
+    stride = max(1, min((stop - start) // _MOST_POINTS, int(width_hz / 6 / step_hz)))
     index = np.arange(start, stop, stride)
-    return fit_lines(
-        index.astype(np.float64) * spectrum.step_hz,
-        spectrum.intensities[index],
-        points * spectrum.step_hz,
+    stretch = Stretch(
+        frequencies_hz=index.astype(np.float64) * step_hz,
+        intensities=spectrum.intensities[index],
         width_hz=width_hz,
-        noise_sd=settings.noise_sd,
-        correlation=max(1.0, settings.correlation / stride),
+        noise=noise.every(stride),
     )
+    return fit_with_splits(stretch, points * step_hz)
 
 
-def _hump(
-    spectrum: Spectrum, start: int, stop: int, settings: FitSettings
-) -> FittedLines:
+def _hump(spectrum: Spectrum, start: int, stop: int, noise: NoiseModel) -> FittedLines:
     trace = np.maximum(spectrum.intensities[start:stop], 0.0)
     index = np.arange(start, stop)
     total = float(trace.sum())
@@ -127,6 +114,5 @@ def _hump(
         spectrum.intensities[chosen],
         np.array([centre * spectrum.step_hz]),
         width_hz=max((stop - start) * spectrum.step_hz / 4, 3 * spectrum.step_hz),
-        noise_sd=settings.noise_sd,
-        correlation=max(1.0, settings.correlation / stride),
+        noise=noise.every(stride),
     )

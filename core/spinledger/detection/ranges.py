@@ -5,8 +5,9 @@ from __future__ import annotations
 import numpy as np
 import numpy.typing as npt
 
-from spinledger.lines.derivative import negative_second_derivative
+from spinledger.lines.derivative import negative_second_derivative, points_per_degree
 from spinledger.lines.noise import EDGE_SHARE, quiet_rms
+from spinledger.lines.picking import Picks
 from spinledger.lines.regions import RegionSearch, find_regions, joined_runs
 from spinledger.values.spectrum import Spectrum
 
@@ -19,24 +20,32 @@ _BROAD_FACTOR = 10.0
 _BROAD_HEIGHT_SD = 4.0
 
 
-def signal_ranges(spectrum: Spectrum, *, noise_sd: float) -> list[tuple[int, int]]:
+def signal_ranges(
+    spectrum: Spectrum, picks: Picks, *, noise_sd: float
+) -> list[tuple[int, int]]:
     """Start and stop of every stretch that holds a signal, by rising index.
 
     Parameters
     ----------
     spectrum : Spectrum
         Phased and flat.
+    picks : Picks
+        Its lines; each takes a few Hz about it.
     noise_sd : float
         Of one point.
 
     Notes
     -----
-    Sharp signals by the second derivative at 0.8 Hz; humps by that at 6 and 25 Hz
-    where nothing sharp stands within three of those widths.
+    Strong signals by the second derivative at 0.8 Hz, weak lines by where they
+    were picked, and humps by the derivative at 6 and 25 Hz where nothing sharp
+    stands within three of those widths.
     """
     step_hz = spectrum.step_hz
     sharp = find_regions(spectrum.intensities, step_hz=step_hz, search=_SHARP)
     taken = sharp.mask(spectrum.n_points)
+    pad = int(_SHARP.pad_hz / step_hz)
+    for point in np.rint(picks.points).astype(np.int64).tolist():
+        taken[max(0, point - pad) : point + pad + 1] = True
     for sigma_hz in _BROAD_SIGMAS_HZ:
         taken |= _humps(spectrum, taken, sigma_hz, noise_sd)
     starts, stops = joined_runs(taken, int((_JOIN_HZ - 2 * _SHARP.pad_hz) / step_hz))
@@ -53,7 +62,7 @@ def _humps(
     curvature = negative_second_derivative(
         spectrum.intensities, step_hz=step_hz, sigma_hz=sigma_hz
     )
-    sd = quiet_rms(curvature)
+    sd = quiet_rms(curvature, points_per_degree=points_per_degree(step_hz, sigma_hz))
     reach = int(3 * sigma_hz / step_hz)
     near = _grown(taken, reach)
     raised = (curvature > _BROAD_FACTOR * sd) & ~near

@@ -5,22 +5,25 @@ Shifts in ppm, frequencies and widths in Hz, areas in intensity * Hz.
 
 from __future__ import annotations
 
+import math
 from dataclasses import dataclass
 
 import numpy as np
 import numpy.typing as npt
 
-from spinledger.detection.fitting import FitSettings, fit_range
+from spinledger.detection.fitting import fit_range
 from spinledger.detection.ranges import signal_ranges
-from spinledger.lines.deconvolution import FittedLines
+from spinledger.lines.deconvolution import FittedLines, NoiseModel
 from spinledger.lines.picking import Picks
 from spinledger.lines.shapes import share_within
 from spinledger.values.evidence import Line, Signal
 from spinledger.values.spectrum import Spectrum
 
-_LEAST_AREA_SD = 3.0
 # A fit may move at most this share of an integral into or out of the range.
 _MOST_TAIL_SHARE = 0.2
+_TAIL_DOUBT = 0.3
+_GOOD_MISFIT = 1.25
+_AGREEMENT_SD = 3.0
 
 
 @dataclass(frozen=True, slots=True, kw_only=True)
@@ -67,10 +70,12 @@ class _Part:
     area_sds: npt.NDArray[np.float64]
     widths: npt.NDArray[np.float64]
     width_sds: npt.NDArray[np.float64]
+    total_area_sd: float
+    misfit_sd: float
 
 
 def find_signals(
-    spectrum: Spectrum, picks: Picks, *, settings: FitSettings, doubt: IntegralDoubt
+    spectrum: Spectrum, picks: Picks, *, noise: NoiseModel, doubt: IntegralDoubt
 ) -> tuple[Signal, ...]:
     """All signals by falling shift, weak ones and broad humps included.
 
@@ -80,7 +85,7 @@ def find_signals(
         Phased and flat.
     picks : Picks
         Its lines.
-    settings : FitSettings
+    noise : NoiseModel
     doubt : IntegralDoubt
 
     Notes
@@ -90,29 +95,28 @@ def find_signals(
     beat fitted areas where the line shape is not known; the fit only moves tails.
     """
     parts = []
-    for start, stop in signal_ranges(spectrum, noise_sd=settings.noise_sd):
-        fits = fit_range(spectrum, picks, start, stop, settings=settings)
+    for start, stop in signal_ranges(spectrum, picks, noise_sd=noise.sd):
+        fits = fit_range(spectrum, picks, start, stop, noise=noise)
         part = _part(start, stop, fits)
         if part.centres.size:
             parts.append(part)
-    return tuple(_signal(spectrum, part, parts, settings, doubt) for part in parts)
+    return tuple(_signal(spectrum, part, parts, noise, doubt) for part in parts)
 
 
 def _part(start: int, stop: int, fits: tuple[FittedLines, ...]) -> _Part:
     areas = np.concatenate([fit.areas for fit in fits])
-    area_sds = np.concatenate([fit.area_sds for fit in fits])
-    real = areas > _LEAST_AREA_SD * area_sds
-    if not real.any():
-        real = areas > 0
+    real = areas > 0
     return _Part(
         start=start,
         stop=stop,
         centres=np.concatenate([fit.centres_hz for fit in fits])[real],
         centre_sds=np.concatenate([fit.centre_sds_hz for fit in fits])[real],
         areas=areas[real],
-        area_sds=area_sds[real],
+        area_sds=np.concatenate([fit.area_sds for fit in fits])[real],
         widths=np.concatenate([fit.widths_hz for fit in fits])[real],
         width_sds=np.concatenate([fit.width_sds_hz for fit in fits])[real],
+        total_area_sd=math.sqrt(sum(fit.total_area_sd**2 for fit in fits)),
+        misfit_sd=max(fit.misfit_sd for fit in fits),
     )
 
 
@@ -120,35 +124,17 @@ def _signal(
     spectrum: Spectrum,
     part: _Part,
     parts: list[_Part],
-    settings: FitSettings,
+    noise: NoiseModel,
     doubt: IntegralDoubt,
 ) -> Signal:
     step_hz, frequency = spectrum.step_hz, spectrum.spectrometer_frequency_mhz
     low_hz, high_hz = (part.start - 0.5) * step_hz, (part.stop - 0.5) * step_hz
-    summed = float(spectrum.intensities[part.start : part.stop].sum()) * step_hz
-    outside = part.areas @ (
-        1 - share_within(low_hz, high_hz, part.centres, part.widths)
-    )
-    intruding = sum(
-        float(other.areas @ share_within(low_hz, high_hz, other.centres, other.widths))
-        for other in parts
-        if other is not part
-    )
-    most = _MOST_TAIL_SHARE * abs(summed)
-    correction = float(np.clip(outside - intruding, -most, most))
-    width_hz = high_hz - low_hz
-    noise = (
-        settings.noise_sd
-        * step_hz
-        * np.sqrt((part.stop - part.start) * settings.correlation)
-    )
     middle_ppm = spectrum.first_point_ppm - (low_hz + high_hz) / 2 / frequency
-    area = summed + correction
+    area, random_sd = _integral(spectrum, part, parts, noise)
     area_sd = np.sqrt(
-        noise**2
-        + (doubt.baseline_sd * width_hz) ** 2
+        random_sd**2
+        + (doubt.baseline_sd * (high_hz - low_hz)) ** 2
         + (doubt.at(middle_ppm) * area) ** 2
-        + (0.3 * correction) ** 2
     )
     return Signal(
         low_ppm=spectrum.first_point_ppm - high_hz / frequency,
@@ -157,6 +143,41 @@ def _signal(
         area_sd=float(area_sd),
         lines=_lines(spectrum, part),
     )
+
+
+def _integral(
+    spectrum: Spectrum, part: _Part, parts: list[_Part], noise: NoiseModel
+) -> tuple[float, float]:
+    """Area of a signal and its sd without what is common to all."""
+    summed, summed_sd = _summed(spectrum, part, parts, noise)
+    fitted, fitted_sd = float(part.areas.sum()), part.total_area_sd
+    described = part.misfit_sd < _GOOD_MISFIT * noise.sd
+    if described and abs(fitted - summed) < _AGREEMENT_SD * summed_sd:
+        # Lorentz lines describe it to the noise: their sum is the best estimate.
+        return fitted, fitted_sd
+    return summed, summed_sd
+
+
+def _summed(
+    spectrum: Spectrum, part: _Part, parts: list[_Part], noise: NoiseModel
+) -> tuple[float, float]:
+    """Sum over the range, moved by what lines leave in it and outside it."""
+    step_hz = spectrum.step_hz
+    low_hz, high_hz = (part.start - 0.5) * step_hz, (part.stop - 0.5) * step_hz
+    summed = float(spectrum.intensities[part.start : part.stop].sum()) * step_hz
+    outside = float(
+        part.areas @ (1 - share_within(low_hz, high_hz, part.centres, part.widths))
+    )
+    intruding = sum(
+        float(other.areas @ share_within(low_hz, high_hz, other.centres, other.widths))
+        for other in parts
+        if other is not part
+    )
+    most = _MOST_TAIL_SHARE * abs(summed)
+    correction = float(np.clip(outside - intruding, -most, most))
+    n_points = part.stop - part.start
+    random_sd = noise.sd * step_hz * math.sqrt(n_points * noise.correlation)
+    return summed + correction, math.hypot(random_sd, _TAIL_DOUBT * correction)
 
 
 def _lines(spectrum: Spectrum, part: _Part) -> tuple[Line, ...]:

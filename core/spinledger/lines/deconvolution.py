@@ -2,7 +2,7 @@
 
 from __future__ import annotations
 
-from dataclasses import dataclass
+from dataclasses import dataclass, replace
 
 import numpy as np
 import numpy.typing as npt
@@ -16,6 +16,9 @@ _MOST_WIDTH_HZ = 60.0
 # How far the widths of one stretch may differ: sd of the natural logarithm.
 _WIDTH_SPREAD = 0.35
 _FIRST_DAMPING = 1e-3
+_LEAST_AREA_SD = 3.0
+_MOST_PRUNINGS = 3
+_BASE_NOISE, _BASE_SHARE = 0.2, 5e-4
 
 
 @dataclass(frozen=True, slots=True, eq=False, kw_only=True)
@@ -27,6 +30,8 @@ class FittedLines:
     centres_hz, centre_sds_hz : numpy.ndarray, shape (n_lines,), Hz
     areas, area_sds : numpy.ndarray, shape (n_lines,), intensity * Hz
     widths_hz, width_sds_hz : numpy.ndarray, shape (n_lines,), Hz
+    total_area_sd : float, intensity * Hz
+        sd of the sum of the areas; less than theirs where lines overlap.
     misfit_sd : float
         Root mean square of what is left, in the units of the data.
     """
@@ -37,6 +42,7 @@ class FittedLines:
     area_sds: npt.NDArray[np.float64]
     widths_hz: npt.NDArray[np.float64]
     width_sds_hz: npt.NDArray[np.float64]
+    total_area_sd: float
     misfit_sd: float
 
     def __post_init__(self) -> None:
@@ -51,14 +57,37 @@ class FittedLines:
             object.__setattr__(self, name, locked_floats(getattr(self, name), name))
 
 
+@dataclass(frozen=True, slots=True, kw_only=True)
+class NoiseModel:
+    """Noise of one point of a spectrum, and how it is correlated.
+
+    Attributes
+    ----------
+    sd : float
+    correlation : float
+        Factor by which the variance of a sum over many points is larger than for
+        independent points.
+    line_broadening_hz : float, Hz
+        Exponential window that line and noise share: the noise of what decays as
+        a line does is smaller by (w / (w + LB))^3 for a line of width w.
+    """
+
+    sd: float
+    correlation: float = 1.0
+    line_broadening_hz: float = 0.0
+
+    def every(self, stride: int) -> NoiseModel:
+        """Of the data when only every ``stride``-th point is taken."""
+        return replace(self, correlation=max(1.0, self.correlation / stride))
+
+
 def fit_lines(
     frequencies_hz: npt.NDArray[np.float64],
     intensities: npt.NDArray[np.float64],
     centres_hz: npt.NDArray[np.float64],
     *,
     width_hz: float,
-    noise_sd: float,
-    correlation: float = 1.0,
+    noise: NoiseModel,
 ) -> FittedLines:
     """Fit Lorentz lines and a straight base to one stretch.
 
@@ -69,21 +98,24 @@ def fit_lines(
         Picked positions to start from.
     width_hz : float, Hz
         Width to start from, and about which the widths scatter by 35 %.
-    noise_sd : float
-        Of one point.
-    correlation : float
-        Factor by which neighbouring points' correlation (zero filling) raises a
-        variance; the number of points a spectral resolution element covers.
+    noise : NoiseModel
 
     Notes
     -----
     Levenberg-Marquardt on centre, ln width and area of every line, with a weak
-    prior that ties the widths together. The sd are those of the noise, or of the
-    misfit where that is larger.
+    prior that ties the widths together. Lines whose area is not 3 sd (all else
+    held) are dropped and the rest fitted again. The sd are those of the noise, or
+    of the misfit where that is larger.
     """
-    problem = _Problem(frequencies_hz, intensities, centres_hz, width_hz, noise_sd)
-    state, misfit = problem.solve()
-    return problem.report(state, misfit, correlation)
+    centres = centres_hz
+    for _ in range(_MOST_PRUNINGS):
+        problem = _Problem(frequencies_hz, intensities, centres, width_hz, noise)
+        state, misfit = problem.solve()
+        kept = problem.is_significant(state, misfit)
+        if kept.all() or not kept.any():
+            break
+        centres = centres[kept]
+    return problem.report(state, misfit)
 
 
 class _Problem:
@@ -95,17 +127,23 @@ class _Problem:
         intensities: npt.NDArray[np.float64],
         centres_hz: npt.NDArray[np.float64],
         width_hz: float,
-        noise_sd: float,
+        noise: NoiseModel,
     ) -> None:
         self.scale = float(np.abs(intensities).max()) or 1.0
         self.frequencies = frequencies_hz
         self.target = intensities / self.scale
-        self.noise = max(noise_sd / self.scale, 1e-9)
+        self.noise = max(noise.sd / self.scale, 1e-9)
+        self.noise_model = noise
         self.n_lines = centres_hz.size
         self.start_centres = centres_hz
         self.log_width = float(np.log(width_hz))
         span = max(float(np.ptp(frequencies_hz)), 1e-9)
         middle = float(frequencies_hz.mean())
+        # The spectrum is flat already: what base is left is small against the noise
+        # and against the feet of the lines.
+        self.base_weight = (
+            self.noise / max(_BASE_NOISE * self.noise, _BASE_SHARE)
+        ) ** 2
         self.base = np.column_stack(
             [np.ones(frequencies_hz.size), (frequencies_hz - middle) / span]
         )
@@ -137,26 +175,41 @@ class _Problem:
                     break
         return state, float(np.sqrt(np.mean(residual**2)))
 
-    def report(
-        self, state: npt.NDArray[np.float64], misfit: float, correlation: float
-    ) -> FittedLines:
+    def is_significant(
+        self, state: npt.NDArray[np.float64], misfit: float
+    ) -> npt.NDArray[np.bool_]:
+        """Whether leaving a line out would cost 3 sd or more, shape (n_lines,)."""
+        n = self.n_lines
+        shapes = self._residual(state)[1][:, 2 * n : 3 * n]
+        error = max(self.noise, misfit) * np.sqrt(self.noise_model.correlation)
+        sds = error / np.sqrt(np.sum(shapes**2, axis=0))
+        return np.asarray(state[2 * n : 3 * n] > _LEAST_AREA_SD * sds)
+
+    def report(self, state: npt.NDArray[np.float64], misfit: float) -> FittedLines:
         n = self.n_lines
         _, jacobian = self._residual(state)
         error = max(self.noise, misfit)
-        normal = jacobian.T @ jacobian / (error**2 * correlation)
+        normal = jacobian.T @ jacobian / error**2
+        base = np.arange(3 * n, state.size)
+        normal[base, base] += self.base_weight / error**2
         normal[np.diag_indices(2 * n)] += np.concatenate(
             [np.full(n, 1e-12), np.full(n, 1 / _WIDTH_SPREAD**2)]
         )
         covariance = np.linalg.pinv(normal, hermitian=True)
         sds = np.sqrt(np.maximum(np.diag(covariance), 0.0))
         widths = np.exp(state[n : 2 * n])
+        apart = widths / (widths + max(self.noise_model.line_broadening_hz, 0.0))
+        raised = np.sqrt(self.noise_model.correlation)
+        area_block = covariance[2 * n : 3 * n, 2 * n : 3 * n]
+        total_sd = np.sqrt(max(float(area_block.sum()), 0.0)) * self.scale * raised
         return FittedLines(
             centres_hz=state[:n],
-            centre_sds_hz=sds[:n],
+            centre_sds_hz=sds[:n] * raised * apart**1.5,
             areas=state[2 * n : 3 * n] * self.scale,
-            area_sds=sds[2 * n : 3 * n] * self.scale,
+            area_sds=sds[2 * n : 3 * n] * self.scale * raised * np.sqrt(apart),
             widths_hz=widths,
-            width_sds_hz=sds[n : 2 * n] * widths,
+            width_sds_hz=sds[n : 2 * n] * widths * raised * apart**1.5,
+            total_area_sd=float(total_sd),
             misfit_sd=misfit * self.scale,
         )
 
@@ -172,6 +225,8 @@ class _Problem:
         # A little ridge keeps lines closer than their width apart from blowing up.
         normal = columns.T @ columns
         normal[np.diag_indices_from(normal)] *= 1.0 + 1e-3
+        base = np.arange(n, n + 2)
+        normal[base, base] += self.base_weight
         state[2 * n :] = np.linalg.solve(normal, columns.T @ self.target)
         state[2 * n : 3 * n] = np.maximum(state[2 * n : 3 * n], 0.0)
         return state
@@ -198,7 +253,12 @@ class _Problem:
         n = self.n_lines
         spread = (state[n : 2 * n] - self.log_width) / _WIDTH_SPREAD
         weight = self._prior_weight(residual.size)
-        return float(residual @ residual + weight * (spread @ spread))
+        base = state[3 * n :]
+        return float(
+            residual @ residual
+            + weight * (spread @ spread)
+            + self.base_weight * (base @ base)
+        )
 
     def _prior_weight(self, n_points: int) -> float:
         # As if the misfit were at least 1 % of the tallest point: keeps widths
@@ -219,6 +279,9 @@ class _Problem:
         rows = np.arange(n, 2 * n)
         normal[rows, rows] += weight
         gradient[rows] -= weight * (state[rows] - self.log_width)
+        base = np.arange(3 * n, state.size)
+        normal[base, base] += self.base_weight
+        gradient[base] -= self.base_weight * state[base]
         diagonal = np.diag(normal).copy()
         floor = 1e-9 * float(diagonal.max())
         normal[np.diag_indices_from(normal)] += damping * diagonal + floor

@@ -75,6 +75,18 @@ def curvature_magnitude(
     )
 
 
+def points_per_degree(step_hz: float, sigma_hz: float) -> float:
+    """Points that one degree of freedom of noise covers in the second derivative.
+
+    Notes
+    -----
+    The filter's power is x^4 exp(-x^2) with x = 2 pi sigma t; its effective length
+    (int P)^2 / int P^2 = 1.718 in x, and a real trace has two degrees of freedom
+    for every positive time bin.
+    """
+    return max(1.0, np.pi * sigma_hz / (1.718 * step_hz))
+
+
 def _window(
     times_s: npt.NDArray[np.float64], sigma_hz: float
 ) -> npt.NDArray[np.float64]:

@@ -7,7 +7,7 @@ from dataclasses import dataclass
 import numpy as np
 import numpy.typing as npt
 
-from spinledger.lines.derivative import curvature_magnitude
+from spinledger.lines.derivative import curvature_magnitude, points_per_degree
 from spinledger.lines.noise import EDGE_SHARE, quiet_rms
 from spinledger.values.arrays import locked_floats, locked_integers
 
@@ -113,7 +113,10 @@ def find_regions(
     settings = search or RegionSearch()
     curvature = curvature_magnitude(values, step_hz=step_hz, sigma_hz=settings.sigma_hz)
     channels = 2.0 if np.iscomplexobj(values) else 1.0
-    sd = quiet_rms(curvature, edge_share=settings.edge_share) / np.sqrt(channels)
+    covered = points_per_degree(step_hz, settings.sigma_hz) / channels
+    sd = quiet_rms(
+        curvature, points_per_degree=covered, edge_share=settings.edge_share
+    ) / np.sqrt(channels)
     edge = int(settings.edge_share * values.size)
     inner = slice(edge, values.size - edge)
     threshold = max(

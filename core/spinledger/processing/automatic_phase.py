@@ -8,7 +8,7 @@ from dataclasses import dataclass
 import numpy as np
 import numpy.typing as npt
 
-from spinledger.lines.derivative import curvature_magnitude
+from spinledger.lines.derivative import curvature_magnitude, points_per_degree
 from spinledger.lines.noise import noise_sd, quiet_rms
 from spinledger.lines.regions import Regions, find_regions
 from spinledger.processing.negative_area import (
@@ -105,7 +105,9 @@ def _with_lines(
     values: npt.NDArray[np.complex128], regions: Regions, step_hz: float
 ) -> npt.NDArray[np.bool_]:
     curvature = curvature_magnitude(values, step_hz=step_hz, sigma_hz=_LINE_SIGMA_HZ)
-    threshold = _LINE_SD * quiet_rms(curvature) / math.sqrt(2)
+    covered = points_per_degree(step_hz, _LINE_SIGMA_HZ) / 2
+    noise = quiet_rms(curvature, points_per_degree=covered) / math.sqrt(2)
+    threshold = _LINE_SD * noise
     return np.array(
         [
             curvature[start:stop].max() > threshold
