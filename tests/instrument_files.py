@@ -202,6 +202,7 @@ def jcamp_fid_text(fid: ComplexArray | None = None, **changed: object) -> str:
         ".OBSERVE FREQUENCY": FREQUENCY_MHZ,
         ".OBSERVE NUCLEUS": "^1H",
         ".SOLVENT NAME": "CDCl3",
+        "$AQ_mod": 3,
         "$BF1": FREQUENCY_MHZ,
         "$O1": CARRIER_PPM * FREQUENCY_MHZ,
         "VAR_NAME": "TIME, FID/REAL, FID/IMAG, PAGE NUMBER",

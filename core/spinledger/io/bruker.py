@@ -48,10 +48,16 @@ FORMAT_NAME = "Bruker folder"
 
 def is_dataset(folder: Path) -> bool:
     """Whether the folder is one Bruker experiment, or one of its pdata folders."""
-    if (folder / "acqus").is_file():
+    if _acquisition_header(folder) is not None:
         names = ("fid", "ser", "pdata")
         return any((folder / name).exists() for name in names)
     return is_processed_folder(folder)
+
+
+def _acquisition_header(folder: Path) -> Path | None:
+    """Parameters as they were when the data were written, else as set before."""
+    paths = (folder / "acqus", folder / "acqu")
+    return next((path for path in paths if path.is_file()), None)
 
 
 def is_processed_folder(folder: Path) -> bool:
@@ -134,11 +140,9 @@ class _Place:
 
 def _locate(folder: Path) -> _Place:
     if is_processed_folder(folder):
-        above = folder.parent.parent
-        acqus = above / "acqus" if (above / "acqus").is_file() else folder / "acqus"
         return _Place(
             folder=folder,
-            acqus=acqus if acqus.is_file() else None,
+            acqus=_acquisition_header(folder.parent.parent),
             fid=None,
             ser=None,
             processed=folder,
@@ -146,7 +150,7 @@ def _locate(folder: Path) -> _Place:
     fid, ser = folder / "fid", folder / "ser"
     return _Place(
         folder=folder,
-        acqus=folder / "acqus",
+        acqus=_acquisition_header(folder),
         fid=fid if fid.is_file() else None,
         ser=ser if ser.is_file() else None,
         processed=_first_processed(folder / "pdata"),
@@ -200,7 +204,7 @@ def _read_fid(place: _Place, acqus: Block) -> Fid:
             place.folder,
             "holds no fid file with its acqus file; copy the whole experiment folder",
         )
-    width_hz = check_width(header, acqus.number("$SW_h"))
+    width_hz = check_width(header, _width_hz(acqus))
     frequency_mhz = check_frequency(header, acqus.number("$BF1", "$SFO1"))
     n_declared = _declared_points(header, acqus)
     raw = _read_numbers(fid, acqus, "$BYTORDA", "$DTYPA")
@@ -220,6 +224,15 @@ def _read_fid(place: _Place, acqus: Block) -> Fid:
         ),
         group_delay_points=delay,
     )
+
+
+def _width_hz(acqus: Block) -> float | None:
+    """Width in Hz, else from ppm."""
+    told_hz = acqus.number("$SW_h")
+    width_ppm, transmitter_mhz = acqus.number("$SW"), acqus.number("$SFO1")
+    if told_hz is not None or width_ppm is None or transmitter_mhz is None:
+        return told_hz
+    return width_ppm * transmitter_mhz
 
 
 def _declared_points(header: Path, acqus: Block) -> int | None:

@@ -23,6 +23,8 @@ from spinledger.values.acquisition import Acquired
 
 _MAX_DEPTH = 8
 _MAX_PLACES = 20_000
+# Files that say nothing without the parameter file beside them.
+_DATA_FILES = frozenset({"fid", "ser", "1r", "2rr", "data.1d"})
 
 
 @dataclass(frozen=True, slots=True, kw_only=True)
@@ -97,7 +99,11 @@ def experiments_below(folder: Path) -> tuple[Experiment, ...]:
     """
     found: list[Experiment] = []
     faults: list[SpectrumFormatError] = []
-    for path, reader in _places(folder):
+    orphans: list[str] = []
+    for path, reader in _walk(folder):
+        if reader is None:
+            orphans += [path.name] if path.name in _DATA_FILES else []
+            continue
         try:
             found.append(reader.describe(path))
         except SpectrumFormatError as fault:
@@ -105,6 +111,12 @@ def experiments_below(folder: Path) -> tuple[Experiment, ...]:
     better = [experiment for experiment in found if experiment.kind != columns.KIND]
     if not better and faults:
         raise faults[0]
+    if not found and orphans:
+        raise SpectrumFormatError(
+            folder,
+            f"holds a {orphans[0]} file without the parameter file beside it (acqus, "
+            "procs or procpar); copy the whole experiment folder",
+        )
     return tuple(
         replace(experiment, name=_relative_name(folder, experiment.path))
         for experiment in better or found
@@ -122,8 +134,8 @@ def _relative_name(folder: Path, path: Path) -> str:
     return path.name if path == folder else path.relative_to(folder).as_posix()
 
 
-def _places(folder: Path) -> Iterator[tuple[Path, Reader]]:
-    """Data sets below a folder; a data set's own sub-folders are not searched."""
+def _walk(folder: Path) -> Iterator[tuple[Path, Reader | None]]:
+    """Data set folders, which are not searched further, and all other files."""
     n_places = 0
     stack = [(folder, 0)]
     while stack:
@@ -144,11 +156,17 @@ def _places(folder: Path) -> Iterator[tuple[Path, Reader]]:
             path = here / entry.name
             if entry.is_dir(follow_symlinks=False):
                 below.append((path, depth + 1))
-            elif entry.is_file():
-                file = file_reader(path)
-                if file is not None:
-                    yield path, file
+            elif _is_file(entry):
+                yield path, file_reader(path)
         stack += [place for place in reversed(below) if place[1] <= _MAX_DEPTH]
+
+
+def _is_file(entry: os.DirEntry[str]) -> bool:
+    """Whether an entry is a plain file; a link in a circle is none."""
+    try:
+        return entry.is_file()
+    except OSError:
+        return False
 
 
 def _entries(folder: Path) -> list[os.DirEntry[str]]:

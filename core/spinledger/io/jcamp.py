@@ -39,7 +39,7 @@ from spinledger.io.samples import (
     make_spectrum,
     plausible_carrier,
 )
-from spinledger.io.sense import conjugated, is_mirrored
+from spinledger.io.sense import SENSE_UNKNOWN, in_sense_of
 from spinledger.values.acquisition import Fid, MakerSpectrum, Metadata
 
 KIND = "jcamp"
@@ -108,8 +108,7 @@ def read(path: Path, *, prefer_processed: bool = False) -> Fid | MakerSpectrum:
             if prefer_processed:
                 return spectrum
             # Exporters differ in the sense of the FID: the spectrum beside it tells.
-            fid = _read_fid(path, blocks.fid)
-            return conjugated(fid) if is_mirrored(fid, spectrum.spectrum) else fid
+            return in_sense_of(_read_fid(path, blocks.fid), spectrum.spectrum)
         if blocks.fid is not None:
             return _read_fid(path, blocks.fid)
     except TableError as fault:
@@ -136,6 +135,8 @@ def _data_blocks(path: Path) -> _DataBlocks:
         for kind, block in typed
         if kind.endswith("NMRSPECTRUM") or (not kind and _has_table(block))
     ]
+    # A collection may hold other nuclei too: the proton data are meant.
+    fids, spectra = _proton_only(fids), _proton_only(spectra)
     many = any(kind.startswith("ND") for kind, _ in typed) or any(
         (block.number("NUM DIM") or 1) > 1 for _, block in typed
     )
@@ -149,6 +150,11 @@ def _data_blocks(path: Path) -> _DataBlocks:
             sorted({block.text("DATA TYPE") or "" for _, block in typed} - {""})
         ),
     )
+
+
+def _proton_only(blocks: list[Block]) -> list[Block]:
+    """The proton blocks where there are some, else all."""
+    return [block for block in blocks if _nucleus(block) == "1H"] or blocks
 
 
 def _data_type(block: Block) -> str:
@@ -220,7 +226,7 @@ def _metadata(
         spectrometer_frequency_mhz=frequency_mhz,
         solvent=_solvent(block),
         temperature_k=normalise.kelvin(block.number("$TE"))
-        or normalise.kelvin_from_celsius(block.number("TEMPERATURE", ".TEMPERATURE")),
+        or normalise.kelvin_from_label(block.number("TEMPERATURE", ".TEMPERATURE")),
         n_scans=normalise.count(block.number(".AVERAGES", "$NS")),
         pulse_program=program,
         pulse_length_us=pulse_us,
@@ -251,6 +257,8 @@ def _read_fid(path: Path, block: Block) -> Fid:
         columns.n_declared,
     )
     delay, delay_notes = _fid_delay(block, samples.size)
+    if not _is_from_bruker(block):
+        delay_notes = (*delay_notes, SENSE_UNKNOWN)
     metadata = _metadata(
         path,
         block,
@@ -265,6 +273,11 @@ def _read_fid(path: Path, block: Block) -> Fid:
         carrier_ppm=_fid_carrier(block, frequency_mhz),
         group_delay_points=delay,
     )
+
+
+def _is_from_bruker(block: Block) -> bool:
+    """Whether the labels are Bruker's, whose exports all have one sense."""
+    return block.number("$AQ_mod", "$DECIM", "$BYTORDA") is not None
 
 
 def _fid_width(

@@ -181,6 +181,11 @@ def _valid_date(year: int, month: int, day: int) -> str | None:
         return None
 
 
+_RIGHT_ANGLE_PROGRAMS = frozenset(
+    {"zg", "zgpr", "zgcppr", "zg2d", "zgesgp", "noesypr1d", "noesygppr1d"}
+)
+
+
 def flip_angle_deg(pulse_program: str | None) -> float | None:
     """Flip angle that the usual name of a one-pulse experiment states, degrees.
 
@@ -194,7 +199,7 @@ def flip_angle_deg(pulse_program: str | None) -> float | None:
         return 30.0
     if name.startswith("zg60"):
         return 60.0
-    if name in {"zg", "zgpr", "zgcppr", "zg2d", "zgesgp"}:
+    if name in _RIGHT_ANGLE_PROGRAMS:
         return 90.0
     return None
 
@@ -202,6 +207,17 @@ def flip_angle_deg(pulse_program: str | None) -> float | None:
 def kelvin(value: float | None) -> float | None:
     """Temperature in K if it is one that a liquid sample can have."""
     return value if value is not None and 100 < value < 600 else None
+
+
+def kelvin_from_label(value: float | None) -> float | None:
+    """Temperature in K from a label whose unit files disagree on.
+
+    The standard has degrees Celsius, some exporters write K; no liquid sample is
+    above 200 degrees Celsius or below 200 K.
+    """
+    if value is not None and value > 200:
+        return kelvin(value)
+    return kelvin_from_celsius(value)
 
 
 def kelvin_from_celsius(value: float | None) -> float | None:

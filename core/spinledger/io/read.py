@@ -20,7 +20,7 @@ from spinledger.io.discover import (
 )
 from spinledger.io.experiment import Experiment
 from spinledger.io.limits import MISSING, read_head
-from spinledger.io.sense import agreement, conjugated, is_mirrored
+from spinledger.io.sense import agreement, in_sense_of
 from spinledger.values.acquisition import Acquired, Fid, MakerSpectrum
 
 __all__ = ["Experiment", "list_experiments", "read_acquired"]
@@ -272,4 +272,4 @@ def _in_makers_sense(leader: Acquired, beside: Acquired) -> Acquired:
     """FID turned to agree with the spectrum beside it, where that is clear."""
     if not isinstance(leader, Fid) or not isinstance(beside, MakerSpectrum):
         return leader
-    return conjugated(leader) if is_mirrored(leader, beside.spectrum) else leader
+    return in_sense_of(leader, beside.spectrum)

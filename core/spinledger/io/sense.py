@@ -11,6 +11,11 @@ from scipy.signal import fftconvolve
 from spinledger.values.acquisition import Fid
 from spinledger.values.spectrum import Spectrum
 
+SENSE_UNKNOWN = (
+    "The file does not tell the sense of its frequencies; that of most exporters was "
+    "taken, so if the spectrum looks mirrored, export it as a spectrum."
+)
+
 # Bins over the width; fewer where a FID or spectrum is short, so that none is empty.
 _MOST_BINS = 4096
 # The maker may have referenced the spectrum meanwhile: so far the axes may differ.
@@ -75,6 +80,16 @@ def is_mirrored(fid: Fid, spectrum: Spectrum) -> bool:
     """
     found = agreement(fid, spectrum)
     return found.mirrored - found.as_read > _MARGIN
+
+
+def in_sense_of(fid: Fid, spectrum: Spectrum) -> Fid:
+    """FID turned to agree with the maker's spectrum, where that is clear.
+
+    What the notes said about an unknown sense is settled by the spectrum.
+    """
+    notes = tuple(note for note in fid.metadata.notes if note != SENSE_UNKNOWN)
+    settled = replace(fid, metadata=replace(fid.metadata, notes=notes))
+    return conjugated(settled) if is_mirrored(settled, spectrum) else settled
 
 
 def conjugated(fid: Fid) -> Fid:

@@ -35,7 +35,7 @@ from spinledger.io.samples import (
     make_spectrum,
     plausible_carrier,
 )
-from spinledger.io.sense import conjugated, is_mirrored
+from spinledger.io.sense import in_sense_of
 from spinledger.values.acquisition import Fid, MakerSpectrum, Metadata
 
 KIND = "spinsolve"
@@ -214,8 +214,7 @@ def _read_fid(
     )
     if beside is None:
         return fid
-    spectrum = _read_spectrum(beside, metadata).spectrum
-    return conjugated(fid) if is_mirrored(fid, spectrum) else fid
+    return in_sense_of(fid, _read_spectrum(beside, metadata).spectrum)
 
 
 def _read_spectrum(path: Path, metadata: Metadata) -> MakerSpectrum:

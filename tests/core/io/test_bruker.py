@@ -120,6 +120,11 @@ def test_missing_parameters_are_named(label: str, tmp_path: Path) -> None:
         read_acquired(write_bruker(tmp_path / "10", **left_out))
 
 
+def test_width_from_ppm_where_hz_is_missing(tmp_path: Path) -> None:
+    fid = fid_of(write_bruker(tmp_path / "10", SW_h=None, SW=12.0, SFO1=400.0))
+    assert fid.spectral_width_hz == pytest.approx(4800.0, rel=1e-12)
+
+
 def test_unknown_facts_stay_none(tmp_path: Path) -> None:
     fid = fid_of(
         write_bruker(

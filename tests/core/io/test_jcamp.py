@@ -270,3 +270,30 @@ def test_missing_or_absurd_labels_say_what_is_wrong(
 ) -> None:
     with pytest.raises(ValueError, match=reason):
         read_text(tmp_path, jcamp_spectrum_text(TABLE, **labels))
+
+
+def test_unknown_exporter_is_told_of(tmp_path: Path) -> None:
+    fid = fid_of(tmp_path, jcamp_fid_text(**{"$AQ_mod": None}))
+    assert any("sense of its frequencies" in note for note in fid.metadata.notes)
+
+
+def test_spectrum_settles_the_sense_of_an_unknown_exporter(tmp_path: Path) -> None:
+    text = jcamp_fid_text(**{"$AQ_mod": None})
+    fid = fid_of(tmp_path, linked(text, spectrum_beside(known_fid())))
+    assert fid.metadata.notes == ()
+
+
+def test_proton_block_is_taken_from_a_file_with_other_nuclei(tmp_path: Path) -> None:
+    carbon = jcamp_spectrum_text(TABLE, **{".OBSERVE NUCLEUS": "^13C"})
+    text = linked(carbon, jcamp_spectrum_text(TABLE, TITLE="proton"))
+    assert spectrum_of(tmp_path, text).metadata.title == "proton"
+    with pytest.raises(ValueError, match="holds several spectra"):
+        read_text(tmp_path, linked(*[jcamp_spectrum_text(TABLE)] * 2))
+
+
+@pytest.mark.parametrize(("written", "kelvin"), [("25", 298.15), ("298", 298.0)])
+def test_temperature_in_either_unit(
+    written: str, kelvin: float, tmp_path: Path
+) -> None:
+    found = spectrum_of(tmp_path, jcamp_spectrum_text(TABLE, TEMPERATURE=written))
+    assert found.metadata.temperature_k == pytest.approx(kelvin)

@@ -194,6 +194,26 @@ def test_links_in_circles_are_not_followed(tmp_path: Path) -> None:
     assert names(tmp_path) == ["a/10"]
 
 
+def test_link_to_itself_is_passed_over(tmp_path: Path) -> None:
+    write_bruker(tmp_path / "10")
+    (tmp_path / "loop").symlink_to(tmp_path / "loop")
+    assert names(tmp_path) == ["10"]
+
+
+@pytest.mark.parametrize("name", ["fid", "ser", "1r"])
+def test_data_without_parameters_say_what_is_missing(name: str, tmp_path: Path) -> None:
+    (tmp_path / "10").mkdir()
+    (tmp_path / "10" / name).write_bytes(bytes(range(256)) * 64)
+    with pytest.raises(ValueError, match=rf"holds a {name} file without the parameter"):
+        read_acquired(tmp_path)
+
+
+def test_older_parameter_file_serves_where_the_newer_is_missing(tmp_path: Path) -> None:
+    folder = write_bruker(tmp_path / "10")
+    (folder / "acqus").rename(folder / "acqu")
+    assert isinstance(read_acquired(folder), Fid)
+
+
 def test_pipes_and_other_special_files_do_not_stall(tmp_path: Path) -> None:
     write_bruker(tmp_path / "10")
     os.mkfifo(tmp_path / "pipe")
