@@ -36,6 +36,8 @@ from spinledger.values.spectrum import Spectrum
 _WIDTH_HZ = 1.0
 _TOP, _GROUND, _SOIL, _AXIS, _HEIGHT = 14.0, 170.0, 296.0, 332.0, 352.0
 _STEP_HZ = 0.1
+_MARGIN_HZ = 100.0
+_REACH_HZ = 8.0
 
 
 @dataclass(frozen=True, slots=True, kw_only=True)
@@ -98,11 +100,12 @@ def simulated_svg(
     ValueError
         If no claim is visible.
     """
-    trees = [
-        _drawn_tree(one, field_mhz)
+    visible = [
+        (one.claim, one.tree)
         for one in predicted_claims(claims, field_mhz=field_mhz)
         if one.tree is not None
     ]
+    trees = [_drawn_tree(claim, exact, field_mhz) for claim, exact in visible]
     if not trees:
         raise ValueError("claims: nothing in this structure is visible here")
     canvas = Canvas(
@@ -113,7 +116,7 @@ def simulated_svg(
     )
     regions: list[Range] = [tree.span_ppm for tree in trees]
     axis = fold_axis(regions, left=30, right=width, gap=12)
-    curves = _curves(trees, field_mhz)
+    curves = _curves([exact for _, exact in visible], field_mhz)
     per_unit = tallest(curves, regions) / (_GROUND - _TOP)
     _draw_ground(canvas, axis, curves, per_unit)
     counts = {one.label: one.n_protons for one in claims.claims}
@@ -192,14 +195,16 @@ def _couplings_of(
     return tuple(sorted(found.values(), key=lambda one: -abs(one[1])))
 
 
-def _drawn_tree(one: PredictedClaim, field_mhz: float) -> Tree:
-    exact = one.tree
-    assert exact is not None
-    strong = exact.line_protons >= 0.02 * exact.line_protons.max()
+def _drawn_tree(claim: Claim, exact: ExactTree, field_mhz: float) -> Tree:
+    """Tree to draw: lines that can be seen, near where first order has them."""
+    near = (exact.lines_hz >= exact.leaves_hz.min() - _REACH_HZ) & (
+        exact.lines_hz <= exact.leaves_hz.max() + _REACH_HZ
+    )
+    strong = near & (exact.line_protons >= 0.02 * exact.line_protons.max())
     return Tree(
-        claim=one.claim.label,
-        state="settled" if one.claim.visibility == "seen" else "silent",
-        root_ppm=one.claim.shift_ppm,
+        claim=claim.label,
+        state="settled" if claim.visibility == "seen" else "silent",
+        root_ppm=claim.shift_ppm,
         levels=tuple(
             Level(j_hz=level.coupling_hz, n_protons=level.n_spins)
             for level in exact.levels
@@ -208,25 +213,23 @@ def _drawn_tree(one: PredictedClaim, field_mhz: float) -> Tree:
         tips_ppm=tuple((exact.lines_hz[strong] / field_mhz).tolist()),
         weights=tuple(exact.line_protons[strong].tolist()),
         width_ppm=_WIDTH_HZ / field_mhz,
-        is_first_order=exact.is_first_order,
     )
 
 
-def _curves(trees: Sequence[Tree], field_mhz: float) -> Curves:
+def _curves(trees: Sequence[ExactTree], field_mhz: float) -> Curves:
     """Lorentz lines of one width on an axis that holds them all."""
-    low = min(tree.span_ppm[0] for tree in trees) - 0.3
-    high = max(tree.span_ppm[1] for tree in trees) + 0.3
-    n_points = int((high - low) * field_mhz / _STEP_HZ)
-    axis_hz = high * field_mhz - _STEP_HZ * np.arange(n_points)
+    low_hz = min(float(tree.lines_hz.min()) for tree in trees) - _MARGIN_HZ
+    high_hz = max(float(tree.lines_hz.max()) for tree in trees) + _MARGIN_HZ
+    n_points = int((high_hz - low_hz) / _STEP_HZ)
+    axis_hz = high_hz - _STEP_HZ * np.arange(n_points)
     intensities: npt.NDArray[np.float64] = np.zeros(n_points)
     half = _WIDTH_HZ / 2
     for tree in trees:
-        for shift, protons in zip(tree.tips_ppm, tree.weights, strict=True):
-            distance = axis_hz - shift * field_mhz
-            intensities += protons * half / np.pi / (distance**2 + half**2)
+        for line_hz, protons in zip(tree.lines_hz, tree.line_protons, strict=True):
+            intensities += protons * half / np.pi / ((axis_hz - line_hz) ** 2 + half**2)
     spectrum = Spectrum(
         intensities=intensities,
-        first_point_ppm=high,
+        first_point_ppm=high_hz / field_mhz,
         spectral_width_hz=n_points * _STEP_HZ,
         spectrometer_frequency_mhz=field_mhz,
     )

@@ -267,7 +267,7 @@ def _coupling_text(coupling: EntryCoupling) -> str:
 def _stray_row(stray: Stray) -> tuple[str, ...]:
     size = "" if stray.protons is None else protons(stray.protons)
     return (
-        shift_range(stray.low_ppm, stray.high_ppm, digits=3),
+        f"{fixed(stray.high_ppm, 3)} to {fixed(stray.low_ppm, 3)}",
         stray.kind,
         size,
         outgoing(stray.why),
@@ -279,11 +279,17 @@ def _contender_row(contender: Contender) -> tuple[str, ...]:
     if contender.probability is not None:
         result += f", probability {_probability(contender.probability)}"
     return (
-        contender.name or contender.smiles,
+        _contender_name(contender),
         contender.origin,
         result,
         outgoing(contender.why),
     )
+
+
+def _contender_name(contender: Contender) -> str:
+    if not contender.name or contender.name == contender.smiles:
+        return contender.smiles
+    return f"{contender.name}: {contender.smiles}"
 
 
 def _probability(value: float) -> str:

@@ -13,7 +13,6 @@ import numpy as np
 import numpy.typing as npt
 
 from spinledger.report.palette import BARK, PAPER, STATE_FILL, STATE_TONE
-from spinledger.report.patterns import letters_of
 from spinledger.report.svg import Canvas, number
 from spinledger.values.ledger import ClaimLines, Entry, Ledger
 
@@ -51,8 +50,6 @@ class Tree:
         Relative intensity of each tip.
     width_ppm : float, ppm
         Line width.
-    is_first_order : bool
-        The pattern can be read as this tree.
     """
 
     claim: str
@@ -62,7 +59,6 @@ class Tree:
     tips_ppm: tuple[float, ...]
     weights: tuple[float, ...]
     width_ppm: float
-    is_first_order: bool
 
     @property
     def span_ppm(self) -> tuple[float, float]:
@@ -96,7 +92,6 @@ def claim_tree(ledger: Ledger, entry: Entry) -> Tree | None:
     else:
         tips, weights = _visible(found, entry.range_ppm, 6.0 / field_mhz)
     width_hz = entry.width_hz or (found.width_hz if found else 1.0)
-    pattern = entry.multiplicity or ""
     return Tree(
         claim=entry.claim,
         state=entry.state,
@@ -105,8 +100,6 @@ def claim_tree(ledger: Ledger, entry: Entry) -> Tree | None:
         tips_ppm=tuple(tips.tolist()),
         weights=tuple(weights.tolist()),
         width_ppm=width_hz / field_mhz,
-        is_first_order=(bool(letters_of(pattern)) or pattern.endswith("s"))
-        and all(one.determined for one in entry.couplings),
     )
 
 
@@ -135,7 +128,8 @@ def draw_tree(
     tip_y = storey.tip + gap
     leaves, leaf_weights = _first_order(tree.root_ppm, tree.levels, field_mhz)
     leaf_x = np.array([x_of(shift) for shift in leaves])
-    if _is_hedge(tree, leaf_x, tips):
+    per_hz = abs(x_of(0.0) - x_of(1.0 / field_mhz))
+    if _is_hedge(tree, leaf_x, tips, per_hz=per_hz):
         _draw_hedge(canvas, tree, storey, root_x, np.sort(tips))
         return
     top = storey.crown + _LEAF
@@ -246,14 +240,33 @@ def _first_order(
 
 
 def _is_hedge(
-    tree: Tree, leaf_x: npt.NDArray[np.float64], tips: npt.NDArray[np.float64]
+    tree: Tree,
+    leaf_x: npt.NDArray[np.float64],
+    tips: npt.NDArray[np.float64],
+    *,
+    per_hz: float,
 ) -> bool:
-    if not tree.is_first_order and tips.size > 2:
+    """Whether branches could not be read, or would not lead to the exact lines."""
+    if tips.size > 2 and not _leads_to_lines(tree, leaf_x, tips, per_hz=per_hz):
         return True
     distinct = np.unique(np.round(leaf_x, 1))
     if distinct.size <= 5:
         return False
     return bool(np.diff(distinct).min() < _CLOSEST_LEAVES)
+
+
+def _leads_to_lines(
+    tree: Tree,
+    leaf_x: npt.NDArray[np.float64],
+    tips: npt.NDArray[np.float64],
+    *,
+    per_hz: float,
+) -> bool:
+    """Every leaf has a line and every line a leaf within half the smallest J."""
+    smallest_hz = min((level.j_hz for level in tree.levels), default=1.0)
+    reach = max(0.5 * smallest_hz, 1.0) * per_hz
+    gaps = np.abs(np.subtract.outer(leaf_x, tips))
+    return bool(gaps.min(axis=1).max() <= reach and gaps.min(axis=0).max() <= reach)
 
 
 def _draw_hedge(
