@@ -21,12 +21,12 @@ from spinledger.reconcile.options import Constraints
 from spinledger.reconcile.refine import refine
 from spinledger.reconcile.refine_data import PreparedEvidence, prepare
 from spinledger.reconcile.refine_values import (
-    QUICK,
     Refinement,
     RefineSettings,
     Stage,
     Start,
 )
+from spinledger.spins.clusters import QUICK_EFFORT
 from spinledger.spins.network import ClaimNetwork
 from spinledger.values.claim import ClaimSet
 from spinledger.values.evidence import Evidence
@@ -38,7 +38,20 @@ COST_WINDOW = 6.0
 GOOD_RESIDUAL = 0.05
 NEAR_TIE_COST = 3.0
 MAX_FINISHED = 2
-FINISH_WINDOW = 4.0
+FINISH_WINDOW = 2.5
+# Where the best quick fit leaves this share, a finer one changes nothing.
+HOPELESS_RESIDUAL = 0.6
+# Misfit is judged after a boxcar of 3 Hz, so that broad stages tell fits apart.
+SKETCH = RefineSettings(
+    stages=(
+        Stage(broadening_hz=6.0, max_steps=6),
+        Stage(broadening_hz=2.0, max_steps=6),
+    ),
+    effort=QUICK_EFFORT,
+    fit_shape=False,
+    exact_slopes=False,
+    second_thoughts=0,
+)
 # From a quick fit on, only the sharper stages are needed.
 FINISH = RefineSettings(
     stages=(
@@ -156,8 +169,10 @@ def solve(
     starts = [
         one
         for one in found.hypotheses[: limits.max_refined]
-        if one.cost <= best_cost + COST_WINDOW
+        if one.cost <= best_cost + COST_WINDOW and _shows_something(claims, one)
     ]
+    if not starts:
+        return None
     sketchpad = _Sketchpad(
         prepared=prepare(evidence, constraints),
         network=ClaimNetwork(claims),
@@ -172,8 +187,32 @@ def solve(
             break
         if _is_good(sketches) and one.cost > best_cost + NEAR_TIE_COST:
             break
-        sketches.append(sketchpad.fitted(one, one.shifts_ppm, None, QUICK))
+        sketches.append(sketchpad.fitted(one, one.shifts_ppm, None, SKETCH))
     sketches.sort(key=_score)
+    fits, rest = _finished(sketchpad, sketches, limits)
+    best, odds = _ordered(evidence, claims, fits[0], constraints)
+    return Solution(
+        claims=claims,
+        best=best,
+        others=(*fits[1:], *rest),
+        odds=odds,
+        match_cost=best_cost,
+        is_complete=is_complete,
+    )
+
+
+def _shows_something(claims: ClaimSet, hypothesis: Hypothesis) -> bool:
+    """Whether any claim is left to fit."""
+    gone = hypothesis.absent | hypothesis.hidden
+    return len(gone) < len(claims.claims)
+
+
+def _finished(
+    sketchpad: _Sketchpad, sketches: list[Fitted], limits: Limits
+) -> tuple[list[Fitted], list[Fitted]]:
+    """The best sketches after fine refinement, best first, and the rest as is."""
+    if sketches[0].assessment.residual_share > HOPELESS_RESIDUAL:
+        return sketches[:1], sketches[1:]
     fits: list[Fitted] = []
     for sketch in sketches[:MAX_FINISHED]:
         limits.checked()
@@ -185,16 +224,7 @@ def solve(
                 sketch.hypothesis, refined.shifts_ppm, refined.couplings_hz, FINISH
             )
         )
-    fits.sort(key=_score)
-    best, odds = _ordered(evidence, claims, fits[0], constraints)
-    return Solution(
-        claims=claims,
-        best=best,
-        others=(*fits[1:], *sketches[len(fits) :]),
-        odds=odds,
-        match_cost=best_cost,
-        is_complete=is_complete,
-    )
+    return sorted(fits, key=_score), sketches[len(fits) :]
 
 
 def _score(fit: Fitted) -> float:
