@@ -62,6 +62,8 @@ class RefineSettings:
         Fit the Gauss share, and try the common kernel, at the end.
     exact_slopes : bool
         Use the derivatives of intensities too in the last stage.
+    second_thoughts : int
+        Rounds in which claims with misfit are put elsewhere and fitted again.
     time_budget_s : float or None, s
         Stop at the next step after this; None keeps results reproducible on
         machines of any speed.
@@ -76,6 +78,7 @@ class RefineSettings:
     effort: Effort = FULL_EFFORT
     fit_shape: bool = True
     exact_slopes: bool = True
+    second_thoughts: int = 2
     time_budget_s: float | None = None
 
 
@@ -97,6 +100,7 @@ QUICK = RefineSettings(
     effort=QUICK_EFFORT,
     fit_shape=False,
     exact_slopes=False,
+    second_thoughts=0,
 )
 
 

@@ -236,6 +236,12 @@ class ClaimNetwork:
         ]
         return self._assemble(groups, plan, shifts, wanted=wanted)
 
+    def claims_of(self, coupling: int) -> frozenset[int]:
+        """Claims that a coupling joins."""
+        particles = self.claims.particles
+        owners = (particles[k].claim for k in self.claims.couplings[coupling].pairs[0])
+        return frozenset(owner for owner in owners if owner is not None)
+
     def parameters_of(self, plan: Plan) -> npt.NDArray[np.bool_]:
         """Which parameters each claim's lines depend on.
 
