@@ -61,30 +61,38 @@ class RowTask:
         return self.folder / self.row.name
 
 
+def settled_row(task: RowTask) -> RowResult | None:
+    """Result of a row that needs no work: faulty, or finished before."""
+    if task.row.fault:
+        return failed_row(task.row, task.row.fault)
+    if _mark_of(task.place) != _fingerprint(task):
+        return None
+    try:
+        return _succeeded(task.row, _stored(task.place), "kept")
+    except (OSError, ValueError, KeyError):  # lost or damaged since: do it again
+        return None
+
+
 def run_row(task: RowTask) -> RowResult:
     """Result of one row; whatever is wrong with it becomes its own error text."""
     row = task.row
-    if row.fault:
-        return failed_row(row, row.fault)
-    fingerprint = _fingerprint(task)
-    if _is_finished(task.place, fingerprint):
-        return _succeeded(row, _stored(task.place), "kept")
     try:
-        solvent = _solvent(row.solvent)
         job = Job(
             data=_located(task.base, row.data),
             structure=_structure_text(task.base, row.structure),
             folder=task.place,
-            solvent=solvent,
+            solvent=_solvent(row.solvent),
             options=task.options,
         )
         run_job(job)
+        # The mark comes last: a row that was killed half-way has none.
+        mark = json.dumps(_fingerprint(task), indent=1)
+        write_file(task.place / _JOB_FILE, mark.encode())
+        return _succeeded(row, _stored(task.place), "done")
     except SpinLedgerError as error:
         return failed_row(row, str(error))
     except Exception as error:  # noqa: BLE001 - one row must never stop the rest
         return failed_row(row, f"internal fault, {type(error).__name__}: {error}")
-    write_file(task.place / _JOB_FILE, json.dumps(fingerprint, indent=1).encode())
-    return _succeeded(row, _stored(task.place), "done")
 
 
 def _solvent(name: str) -> str | None:
@@ -133,14 +141,12 @@ def _stamp(path: Path) -> list[int]:
     return [len(facts), sum(fact.st_size for fact in facts), newest]
 
 
-def _is_finished(place: Path, fingerprint: dict[str, Any]) -> bool:
-    path = place / _JOB_FILE
-    if not path.is_file() or not (place / "ledger.json").is_file():
-        return False
+def _mark_of(place: Path) -> dict[str, Any] | None:
     try:
-        return bool(json.loads(path.read_text(encoding="utf-8")) == fingerprint)
-    except ValueError:
-        return False
+        tree = json.loads((place / _JOB_FILE).read_text(encoding="utf-8"))
+    except (OSError, ValueError):  # never finished, or damaged
+        return None
+    return tree if isinstance(tree, dict) else None
 
 
 def _stored(place: Path) -> dict[str, Any]:

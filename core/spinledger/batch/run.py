@@ -9,7 +9,14 @@ from multiprocessing import get_context
 from pathlib import Path
 
 from spinledger.batch.job import Progress
-from spinledger.batch.row import RowResult, RowTask, failed_row, run_row, summary_csv
+from spinledger.batch.row import (
+    RowResult,
+    RowTask,
+    failed_row,
+    run_row,
+    settled_row,
+    summary_csv,
+)
 from spinledger.batch.table import read_table
 from spinledger.errors import SpinLedgerError
 from spinledger.reconcile.options import ReconcileOptions
@@ -76,8 +83,7 @@ def run_table(
         for row in rows
     ]
     results: dict[int, RowResult] = {}
-    finished = _run_all(tasks, workers) if cluster is None else _run_on(tasks, cluster)
-    for result in finished:
+    for result in _results(tasks, workers, cluster):
         results[result.row.number] = result
         if progress is not None:
             words = f"{len(results)} of {len(rows)} rows, last {result.row.name}"
@@ -87,6 +93,25 @@ def run_table(
     page = overview_html([result.cells for result in ordered], title=path.name)
     write_file(folder / "overview.html", page.encode("utf-8"))
     return ordered
+
+
+def _results(
+    tasks: Sequence[RowTask], workers: int, cluster: str | None
+) -> Iterator[RowResult]:
+    """Results as they come: first the rows that need no work."""
+    waiting: list[RowTask] = []
+    for task in tasks:
+        settled = settled_row(task)
+        if settled is None:
+            waiting.append(task)
+        else:
+            yield settled
+    if not waiting:
+        return
+    if cluster is None:
+        yield from _run_all(waiting, workers)
+    else:
+        yield from _run_on(waiting, cluster)
 
 
 def _run_all(tasks: Sequence[RowTask], workers: int) -> Iterator[RowResult]:

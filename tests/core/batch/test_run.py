@@ -153,6 +153,17 @@ def test_a_damaged_mark_means_not_finished(
     assert len(calls) == 2
 
 
+def test_a_result_lost_since_is_made_again(
+    tmp_path: Path, calls: Calls, table: Callable[..., Path]
+) -> None:
+    out = tmp_path / "out"
+    path = table("one,a.dx,CCO,")
+    run_table(path, out)
+    (out / "one" / "ledger.json").write_text('{"half')
+    run_table(path, out)
+    assert len(calls) == 2
+
+
 def test_progress_counts_rows(
     tmp_path: Path, calls: Calls, table: Callable[..., Path]
 ) -> None:
