@@ -25,7 +25,7 @@ html {{ background: {PAPER}; color: {INK}; font: 9pt/1.4 {FONT_STACK};
   print-color-adjust: exact; }}
 body {{ margin: 0 auto; padding: 24px 16px; max-width: 705px; }}
 h1, h2, h3, h4, p, figure, dl, ol, ul {{ margin: 0; }}
-h1 {{ font-size: 19pt; line-height: 1.25; font-weight: 600; overflow-wrap: anywhere; }}
+h1 {{ font-size: 19pt; line-height: 1.3; padding-bottom: 3px; font-weight: 600; overflow-wrap: anywhere; }}
 h2.verdict {{ font-size: 16pt; line-height: 1.25; font-weight: 600; }}
 h3 {{ font-size: 10.5pt; font-weight: 600; break-after: avoid; }}
 h4 {{ font-size: 9pt; font-weight: 600; margin-top: 8px; break-after: avoid; }}

@@ -68,8 +68,12 @@ class AssignmentRow:
 
 
 def assignment_rows(ledger: Ledger) -> tuple[AssignmentRow, ...]:
-    """Rows of the assignment table, in the ledger's order."""
-    return tuple(_assignment_row(ledger, entry) for entry in ledger.entries)
+    """Rows of the assignment table: observed ones by falling shift, then the rest."""
+    order = {"settled": 0, "disputed": 0, "open": 1, "silent": 2}
+    entries = sorted(
+        ledger.entries, key=lambda one: (order[one.state], -(one.shift_ppm or 0.0))
+    )
+    return tuple(_assignment_row(ledger, entry) for entry in entries)
 
 
 def balance_cells(ledger: Ledger) -> tuple[str, ...]:
@@ -230,7 +234,7 @@ def _assignment_row(ledger: Ledger, entry: Entry) -> AssignmentRow:
             shift,
             found,
             entry.multiplicity or "",
-            couplings_text(entry),
+            outgoing(entry.why) if entry.state == "silent" else couplings_text(entry),
             predicted,
             largest_residual(entry),
             outgoing_state(ledger, entry),
@@ -242,7 +246,7 @@ def _assignment_row(ledger: Ledger, entry: Entry) -> AssignmentRow:
 
 def _notes(entry: Entry) -> tuple[str, ...]:
     notes = [*entry.reasons] if entry.state in ("disputed", "open") else []
-    if entry.why:
+    if entry.why and entry.state != "silent":
         notes.append(entry.why)
     group = entry.group
     if group is not None:

@@ -187,7 +187,7 @@ def _item(
     ledger: Ledger, group: tuple[Entry, ...], options: TextOptions
 ) -> tuple[Run, ...]:
     pattern = _pattern(group)
-    count = f"{sum(entry.protons for entry in group)}H"
+    count = _count(ledger, group)
     names = " and ".join(label_glyphs(entry.claim) for entry in group)
     if len(group) > 2:
         names = ", ".join(label_glyphs(entry.claim) for entry in group)
@@ -208,6 +208,15 @@ def _item(
         runs.extend([Run(text=", ")] if index else [])
         runs.extend(piece)
     return (*runs, Run(text=")"))
+
+
+def _count(ledger: Ledger, group: tuple[Entry, ...]) -> str:
+    """Number of protons; of a mixture what was found, since shares are not whole."""
+    found = [one.integral_protons for one in group if one.integral_protons is not None]
+    is_mixture = any(entry.species for entry in ledger.entries)
+    if is_mixture and len(found) == len(group):
+        return f"{fixed(sum(found), 2)}H"
+    return f"{sum(entry.protons for entry in group)}H"
 
 
 def _pattern(group: tuple[Entry, ...]) -> str:

@@ -36,6 +36,13 @@ def test_sentence_reads_as_printed_in_a_journal() -> None:
     )
 
 
+def test_a_mixture_prints_the_protons_found() -> None:
+    ledger = with_entry(
+        invented_ledger(), "4-H", species=1, integral_protons=1.086, protons=3
+    )
+    assert "(d, J = 6.3 Hz, 1.09H, 4-H)" in plain(ledger)
+
+
 def test_conventions_of_the_table_hold() -> None:
     with shared("reference", "text_conventions_1h.csv").open(encoding="utf-8") as file:
         rules = {row["item"]: row for row in csv.DictReader(file)}

@@ -161,7 +161,7 @@ def test_docx_holds_table_text_and_italic_j(tmp_path: Path) -> None:
         "2′-H",
         "4-H",
         "Balance",
-    ]
+    ]  # by falling shift, as the ledger has them
     runs = [run for one in document.paragraphs for run in one.runs if run.italic]
     assert {run.text for run in runs} == {"J"}
     # The head row stands again on every page.
