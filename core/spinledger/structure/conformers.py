@@ -9,7 +9,7 @@ from typing import Any
 import numpy as np
 import numpy.typing as npt
 from rdkit import Chem
-from rdkit.Chem import rdDistGeom, rdForceFieldHelpers
+from rdkit.Chem import rdDistGeom, rdForceFieldHelpers, rdMolDescriptors
 
 from spinledger.structure.dihedrals import dihedrals_deg
 from spinledger.values.arrays import locked_floats
@@ -122,12 +122,25 @@ def ensemble(
 
 
 def n_conformers(mol: Chem.Mol) -> int:
-    """Number of conformers to try, fewer for larger molecules."""
+    """Number of conformers to try: more for flexible molecules, fewer for large ones."""
     heavy = mol.GetNumHeavyAtoms()
-    for limit, count in ((20, 50), (26, 25), (35, 16), (60, 8)):
-        if heavy <= limit:
-            return count
-    return 4
+    limits = ((20, 50), (26, 20), (35, 12), (60, 8))
+    most = next((count for limit, count in limits if heavy <= limit), 4)
+    return min(most, 6 + 8 * _n_freedoms(mol))
+
+
+def _n_freedoms(mol: Chem.Mol) -> int:
+    """Rotatable bonds, and rings that can pucker."""
+    rotatable = int(rdMolDescriptors.CalcNumRotatableBonds(mol))
+    puckering = sum(
+        len(ring) >= 5
+        and sum(mol.GetAtomWithIdx(i).GetTotalDegree() == 4 for i in ring) >= 2
+        for ring in mol.GetRingInfo().AtomRings()
+    )
+    macrocyclic = sum(
+        len(ring) - 7 for ring in mol.GetRingInfo().AtomRings() if len(ring) > 7
+    )
+    return rotatable + puckering + macrocyclic
 
 
 def n_axial_carbons(mol: Chem.Mol, positions: Floats) -> Floats:
@@ -268,6 +281,7 @@ def _has_polyol_ring(mol: Chem.Mol) -> bool:
 def _minimise(mol: Chem.Mol, dielectric: float) -> tuple[Floats, str]:
     """Minimise in place; energies in kcal/mol and a sentence if it is not MMFF94s."""
     identifiers = [conformer.GetId() for conformer in mol.GetConformers()]
+    most_steps = 300 if mol.GetNumHeavyAtoms() <= 20 else 200
     properties = rdForceFieldHelpers.MMFFGetMoleculeProperties(mol, "MMFF94s")
     if properties is not None:
         properties.SetMMFFDielectricConstant(dielectric)
@@ -275,14 +289,14 @@ def _minimise(mol: Chem.Mol, dielectric: float) -> tuple[Floats, str]:
             rdForceFieldHelpers.MMFFGetMoleculeForceField(mol, properties, confId=i)
             for i in identifiers
         )
-        return _minimised_energies(fields), ""
+        return _minimised_energies(fields, most_steps), ""
     if rdForceFieldHelpers.UFFHasAllMoleculeParams(mol):
         fields = (
             rdForceFieldHelpers.UFFGetMoleculeForceField(mol, confId=i)
             for i in identifiers
         )
         return (
-            _minimised_energies(fields),
+            _minimised_energies(fields, most_steps),
             "MMFF94s has no parameters for this structure; UFF was used.",
         )
     return (
@@ -291,10 +305,10 @@ def _minimise(mol: Chem.Mol, dielectric: float) -> tuple[Floats, str]:
     )
 
 
-def _minimised_energies(fields: Iterable[Any]) -> Floats:
+def _minimised_energies(fields: Iterable[Any], most_steps: int) -> Floats:
     energies = []
     for field in fields:
-        field.Minimize(maxIts=300)
+        field.Minimize(maxIts=most_steps)
         energies.append(field.CalcEnergy())
     return np.array(energies)
 
