@@ -434,6 +434,9 @@ class _Run:
         return AmplitudePrior(
             relative_sds=np.array(loose),
             species=np.array([claims[k].species for k in layout.drawn], dtype=np.int64),
+            is_steady=np.array(
+                [not claims[k].is_exchangeable for k in layout.drawn], dtype=np.bool_
+            ),
         )
 
     def finish(self, fit: _Fit) -> _Fit:

@@ -171,7 +171,7 @@ class StageData:
     values : numpy.ndarray, shape (n,)
     sds : numpy.ndarray, shape (n,)
         Noise and expected model error together.
-    baselines : numpy.ndarray, shape (n_baselines, n)
+    baselines : numpy.ndarray, shape (2, n)
         One constant and one slope for each window, over ``sds`` scale 1.
     baseline_sds : numpy.ndarray, shape (n_baselines,)
     windows : tuple of slice
@@ -295,14 +295,10 @@ def _near(axis: FrequencyAxis, lines_hz: Floats, reach_hz: float) -> Flags:
 def _baselines(
     windows: list[slice], levels: list[float], n_points: int
 ) -> tuple[Floats, Floats]:
-    rows, sds = [], []
+    """Constant and slope of every window, side by side, and their prior sds."""
+    rows, sds = np.ones((2, n_points)), []
     for window, level in zip(windows, levels, strict=True):
-        size = window.stop - window.start
-        constant = np.zeros(n_points)
-        constant[window] = 1.0
-        slope = np.zeros(n_points)
-        slope[window] = np.linspace(-1.0, 1.0, size)
-        rows += [constant, slope]
+        rows[1, window] = np.linspace(-1.0, 1.0, window.stop - window.start)
         # A baseline of a tenth of the window's height is already a bad one.
         sds += [0.1 * level, 0.1 * level]
-    return np.array(rows).reshape(-1, n_points), np.array(sds)
+    return rows, np.array(sds)

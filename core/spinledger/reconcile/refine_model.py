@@ -91,10 +91,13 @@ class AmplitudePrior:
         Of a claim's area about the common proton.
     species : numpy.ndarray of int, shape (n_drawn,)
         Each species has its own common proton.
+    is_steady : numpy.ndarray of bool, shape (n_drawn,)
+        Claims whose area tells what a proton is (not exchangeable ones).
     """
 
     relative_sds: Floats
     species: Integers
+    is_steady: Flags
 
 
 @dataclass(frozen=True, slots=True, eq=False, kw_only=True)
@@ -308,7 +311,15 @@ def _jacobian(problem: Problem, drawn: _Drawn, amplitudes: Floats) -> Floats:
 
 @dataclass(frozen=True, slots=True, eq=False)
 class _Linear:
-    rows: Floats  # weighted, (n_linear, n_points)
+    """Areas and baselines at one parameter vector.
+
+    Baselines reach over one window each, so that their products are taken
+    window by window.
+    """
+
+    unit: Floats  # weighted, (n_drawn, n_points)
+    base: Floats  # weighted, (2, n_points)
+    windows: tuple[slice, ...]
     normal: Floats
     amplitudes: Floats
     common: Floats
@@ -320,36 +331,119 @@ class _Linear:
 _LEAST_AMPLITUDE = 1e-3
 
 
+def _against_base(rows: Floats, base: Floats, windows: tuple[slice, ...]) -> Floats:
+    """Products of rows with both baselines of every window, (n_rows, n_base)."""
+    products = np.empty((rows.shape[0], 2 * len(windows)))
+    for number, window in enumerate(windows):
+        place = slice(2 * number, 2 * number + 2)
+        products[:, place] = rows[:, window] @ base[:, window].T
+    return products
+
+
+def _of_base(factors: Floats, base: Floats, windows: tuple[slice, ...]) -> Floats:
+    """Sum of baselines with given factors (n_rows, n_base), (n_rows, n_points)."""
+    total = np.empty((factors.shape[0], base.shape[1]))
+    for number, window in enumerate(windows):
+        place = slice(2 * number, 2 * number + 2)
+        total[:, window] = factors[:, place] @ base[:, window]
+    return total
+
+
 def _solve_linear(problem: Problem, unit: Floats, weights: Floats) -> _Linear:
     """Areas with their prior about the common proton, and baselines."""
     data, prior = problem.data, problem.amplitude_prior
     base = data.baselines * weights
     values = data.values * weights
+    windows = data.windows
     base_precision = data.baseline_sds**-2.0
-    common = _common_areas(
-        unit, base, values, prior=prior, base_precision=base_precision
-    )
     n_drawn = unit.shape[0]
-    rows = np.vstack([unit, base])
+    normal = np.zeros((n_drawn + base_precision.size,) * 2)
+    normal[:n_drawn, :n_drawn] = unit @ unit.T
+    normal[:n_drawn, n_drawn:] = _against_base(unit, base, windows)
+    normal[n_drawn:, :n_drawn] = normal[:n_drawn, n_drawn:].T
+    for number, window in enumerate(windows):
+        place = slice(n_drawn + 2 * number, n_drawn + 2 * number + 2)
+        normal[place, place] = base[:, window] @ base[:, window].T
+    right = np.concatenate(
+        [unit @ values, _against_base(values[None, :], base, windows)[0]]
+    )
+    common = np.full(
+        n_drawn, _least_squares_area(normal, right, n_drawn, base_precision)
+    )
+    wide = np.maximum(prior.relative_sds, _FIRST_AREA_SD)
+    for _ in range(2):
+        precision = np.concatenate([(common * wide) ** -2.0, base_precision])
+        found = _areas(normal, right, precision, common)
+        informed = np.diag(normal)[:n_drawn] > precision[:n_drawn]
+        common = _common_areas(found[:n_drawn], common, prior, informed)
     precision = np.concatenate([(common * prior.relative_sds) ** -2.0, base_precision])
-    normal = rows @ rows.T + np.diag(precision)
-    right = rows @ values
-    right[:n_drawn] += precision[:n_drawn] * common
-    solution = np.linalg.solve(normal, right)
+    solution = _areas(normal, right, precision, common)
     amplitudes = solution[:n_drawn]
-    floor = _LEAST_AMPLITUDE * common
-    if np.any(amplitudes < floor):
-        solution = _with_floor(normal, right, amplitudes < floor, floor)
-        amplitudes = solution[:n_drawn]
+    normal[np.diag_indices(normal.shape[0])] += precision
     off = np.concatenate([amplitudes - common, solution[n_drawn:]])
     return _Linear(
-        rows,
+        unit,
+        base,
+        windows,
         normal,
         amplitudes,
         common,
-        solution[n_drawn:] @ data.baselines,
+        _of_base(solution[None, n_drawn:], data.baselines, windows)[0],
         float(off**2 @ precision),
     )
+
+
+# Prior sd of areas while the common proton is looked for.
+_FIRST_AREA_SD = 2.0
+
+# Data are scaled to a tallest point of 1; no proton has a smaller area than this.
+_LEAST_AREA = 1e-5
+
+
+def _areas(normal: Floats, right: Floats, precision: Floats, common: Floats) -> Floats:
+    """Areas and baselines with their priors; areas stay above their floor."""
+    n_drawn = common.size
+    held = normal + np.diag(precision)
+    pulled = right.copy()
+    pulled[:n_drawn] += precision[:n_drawn] * common
+    solution = np.linalg.solve(held, pulled)
+    floor = _LEAST_AMPLITUDE * common
+    if np.any(solution[:n_drawn] < floor):
+        return _with_floor(held, pulled, solution[:n_drawn] < floor, floor)
+    return np.asarray(solution)
+
+
+def _least_squares_area(
+    normal: Floats, right: Floats, n_drawn: int, base_precision: Floats
+) -> float:
+    """Area of one proton if all claims had the same."""
+    n_base = base_precision.size
+    summing = np.zeros((1 + n_base, n_drawn + n_base))
+    summing[0, :n_drawn] = 1.0
+    summing[1:, n_drawn:] = np.eye(n_base)
+    together = summing @ normal @ summing.T
+    together[np.diag_indices(1 + n_base)] += np.concatenate(
+        [[1e-12 * max(float(np.trace(together)), 1e-30)], base_precision]
+    )
+    return max(float(np.linalg.solve(together, summing @ right)[0]), _LEAST_AREA)
+
+
+def _common_areas(
+    areas: Floats, common: Floats, prior: AmplitudePrior, informed: Flags
+) -> Floats:
+    """Median area of the steady, informed claims of each species.
+
+    A mean would let one claim without a signal pull all others down.
+    """
+    result = common.copy()
+    for kind in np.unique(prior.species):
+        mine = prior.species == kind
+        chosen = mine & informed & prior.is_steady
+        if not chosen.any():
+            chosen = mine & informed
+        if chosen.any():
+            result[mine] = max(float(np.median(areas[chosen])), _LEAST_AREA)
+    return result
 
 
 def _with_floor(normal: Floats, right: Floats, too_low: Flags, floor: Floats) -> Floats:
@@ -365,33 +459,16 @@ def _with_floor(normal: Floats, right: Floats, too_low: Flags, floor: Floats) ->
     return solution
 
 
-def _common_areas(
-    unit: Floats,
-    base: Floats,
-    values: Floats,
-    *,
-    prior: AmplitudePrior,
-    base_precision: Floats,
-) -> Floats:
-    """Area of one proton of each species by least squares, one value a claim."""
-    kinds = np.unique(prior.species)
-    together = np.array([unit[prior.species == kind].sum(axis=0) for kind in kinds])
-    rows = np.vstack([together, base])
-    normal = rows @ rows.T
-    normal[np.diag_indices(normal.shape[0])] += np.concatenate(
-        [
-            np.full(kinds.size, 1e-12 * max(float(np.trace(normal)), 1e-30)),
-            base_precision,
-        ]
-    )
-    areas = np.linalg.solve(normal, rows @ values)[: kinds.size]
-    top = max(float(areas.max()), 1e-9)
-    areas = np.maximum(areas, 1e-3 * top)
-    return np.asarray(areas[np.searchsorted(kinds, prior.species)])
-
-
 def _taken_up(jacobian: Floats, linear: _Linear) -> Floats:
     """Part of the Jacobian that areas and baselines absorb."""
-    return np.asarray(
-        np.linalg.solve(linear.normal, linear.rows @ jacobian.T).T @ linear.rows
+    n_drawn = linear.unit.shape[0]
+    products = np.hstack(
+        [
+            jacobian @ linear.unit.T,
+            _against_base(jacobian, linear.base, linear.windows),
+        ]
     )
+    factors = np.linalg.solve(linear.normal, products.T).T
+    absorbed = _of_base(factors[:, n_drawn:], linear.base, linear.windows)
+    absorbed += factors[:, :n_drawn] @ linear.unit
+    return absorbed
