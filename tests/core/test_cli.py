@@ -2,6 +2,7 @@
 
 import csv
 import json
+import os
 import shutil
 import subprocess
 import sys
@@ -234,6 +235,16 @@ def test_help_needs_no_heavy_library() -> None:
     # 0.4 s is the aim on a quiet machine; ten times that only fails if a heavy
     # import crept in while the check above was blind.
     assert seconds < 4
+
+
+def test_an_old_console_does_not_stop_the_program() -> None:
+    done = subprocess.run(
+        [sys.executable, "-m", "spinledger", "--help"],
+        capture_output=True,
+        check=False,
+        env={**os.environ, "PYTHONIOENCODING": "ascii:strict"},
+    )
+    assert done.returncode == 0
 
 
 def test_inspect_prints_the_facts(capsys: pytest.CaptureFixture[str]) -> None:

@@ -6,6 +6,7 @@ import sys
 import warnings
 from collections.abc import Sequence
 from importlib import import_module
+from io import TextIOWrapper
 
 from spinledger.cli.parser import build_parser
 from spinledger.errors import SpinLedgerError, UsageError
@@ -27,6 +28,10 @@ def main(argv: Sequence[str] | None = None) -> int:
         0: it ran; 1: something about the input is wrong, said in one line on
         standard error; 2: wrong usage.
     """
+    for stream in (sys.stdout, sys.stderr):
+        if isinstance(stream, TextIOWrapper):
+            # An old console without Greek letters shows "?" instead of failing.
+            stream.reconfigure(errors="replace")
     parser = build_parser()
     try:
         arguments = parser.parse_args(argv)

@@ -14,6 +14,7 @@ from spinledger.report.cautions import accuracy_ppm, printed_cautions
 from spinledger.report.context import ReportContext
 from spinledger.report.figure import expansion_svgs, overview_svg
 from spinledger.report.html_style import style_sheet
+from spinledger.report.json_ledger import given_name
 from spinledger.report.sketch import sketch_svg
 from spinledger.report.svg import number, state_mark
 from spinledger.report.tables import (
@@ -303,7 +304,10 @@ def _audit(ledger: Ledger, context: ReportContext) -> str:
 
 def _structure_facts(ledger: Ledger) -> tuple[tuple[str, str], ...]:
     structure = ledger.structure
-    facts = [("Structure as given", structure.given), ("SMILES", structure.smiles)]
+    facts = [
+        ("Structure as given", given_name(structure)),
+        ("SMILES", structure.smiles),
+    ]
     with rdBase.BlockLogs():
         inchi = str(
             Chem.MolToInchi(molecule(structure))  # type: ignore[no-untyped-call]  # RDKit

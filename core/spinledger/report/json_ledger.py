@@ -7,6 +7,7 @@ from __future__ import annotations
 
 import json
 import math
+import re
 from pathlib import Path
 from typing import Any
 
@@ -152,24 +153,36 @@ def evidence_to_json(evidence: Evidence) -> dict[str, Any]:
 
 def _structure(ledger: Ledger) -> dict[str, Any]:
     structure = ledger.structure
-    return {
-        "smiles": _smiles_as_given(structure),
+    smiles = _smiles_as_given(structure)
+    tree: dict[str, Any] = {
+        "smiles": smiles or structure.smiles,
         "visible_protons": visible_protons(ledger),
-        "given": structure.given,
+        "given": given_name(structure),
         "canonical_smiles": structure.smiles,
         "name": structure.name,
         "species": list(ledger.claims.species_smiles),
     }
+    if smiles is None:  # atoms are counted in the file's order, which this keeps
+        tree["molblock"] = structure.molblock
+    return tree
 
 
-def _smiles_as_given(structure: Structure) -> str:
-    """SMILES text of the user; of a file the canonical one."""
+def given_name(structure: Structure) -> str:
+    """What the user gave: the SMILES, or the file's name without its folders."""
+    given = structure.given
+    if _smiles_as_given(structure) is not None or given.startswith("InChI="):
+        return given
+    return re.split(r"[/\\]", given.strip())[-1]
+
+
+def _smiles_as_given(structure: Structure) -> str | None:
+    """SMILES text of the user; None where a file or an InChI was given."""
     words = structure.given.split()
     if not words:
-        return structure.smiles
+        return None
     with rdBase.BlockLogs():
         is_smiles = Chem.MolFromSmiles(words[0]) is not None
-    return words[0] if is_smiles else structure.smiles
+    return words[0] if is_smiles else None
 
 
 def visible_protons(ledger: Ledger) -> int | float:

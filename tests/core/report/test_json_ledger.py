@@ -185,7 +185,10 @@ def test_structure_from_a_file_gives_the_canonical_smiles() -> None:
     )
     tree = ledger_to_json(from_file)
     assert tree["structure"]["smiles"] == ledger.structure.smiles
-    assert tree["structure"]["given"] == "batch 117/ester.mol"
+    assert tree["structure"]["given"] == "ester.mol"  # a name, never a path
+    # Atoms are counted in the file's order, so its order goes along.
+    assert tree["structure"]["molblock"] == ledger.structure.molblock
+    assert "molblock" not in ledger_to_json(ledger)["structure"]
 
 
 def test_visible_protons_of_a_mixture_are_weighted_by_share() -> None:
