@@ -126,7 +126,10 @@ def n_conformers(mol: Chem.Mol) -> int:
     heavy = mol.GetNumHeavyAtoms()
     limits = ((20, 50), (26, 20), (35, 12), (60, 8))
     most = next((count for limit, count in limits if heavy <= limit), 4)
-    return min(most, 6 + 8 * _n_freedoms(mol))
+    freedoms = _n_freedoms(mol)
+    if heavy <= 15:
+        return most if freedoms else 6
+    return min(most, 6 + 8 * freedoms)
 
 
 def _n_freedoms(mol: Chem.Mol) -> int:
@@ -202,7 +205,9 @@ def with_full_tags(mol: Chem.Mol, positions: Floats) -> Chem.Mol:
         if not _takes_tag(tagged, atom, neighbours):
             continue
         arms = positions[neighbours] - positions[atom.GetIdx()]
-        is_left = float(np.dot(arms[1], np.cross(arms[2], arms[3]))) > 0
+        # Seen from the first neighbour the others run anticlockwise when the
+        # volume they span is negative.
+        is_left = float(np.dot(arms[1], np.cross(arms[2], arms[3]))) < 0
         atom.SetChiralTag(
             Chem.ChiralType.CHI_TETRAHEDRAL_CCW
             if is_left
