@@ -18,6 +18,8 @@ from spinledger.cli import main
 from spinledger.cli.inputs import read_candidates
 from spinledger.cli.progress import ProgressLine
 from spinledger.errors import StructureError
+from spinledger.project.document import Project
+from spinledger.project.storage import save_project
 from spinledger.report.json_ledger import ledger_text
 
 SAMPLES = Path(__file__).resolve().parents[2] / "sample_data"
@@ -356,6 +358,18 @@ def test_compare_refuses_other_files_in_one_line(
     ledger.write_text('{"schema": 1, "entries": [{}]}')
     error = refused(capsys, tmp_path / "x", "compare", ledger, text)
     assert "not as schema 1 has it" in error
+
+
+def test_report_needs_a_finished_project(
+    tmp_path: Path, capsys: pytest.CaptureFixture[str]
+) -> None:
+    path = tmp_path / "p.sledger"
+    save_project(Project(), path)
+    out = tmp_path / "out"
+    error = refused(capsys, out, "report", path, "--out", out)
+    assert "no spectrum or no structure" in error
+    path.write_text("other")
+    assert "not a project file" in refused(capsys, out, "report", path, "--out", out)
 
 
 def test_an_internal_fault_is_one_line_and_a_traceback_on_request(

@@ -145,8 +145,8 @@ def test_sample_puts_several_spectra_together(tmp_path: Path, ethanol: Path) -> 
     assert len(rows[0]) == 6
 
 
-def test_a_project_is_solved_edited_saved_and_solved_again(
-    tmp_path: Path, ethanol: Path
+def test_a_project_is_solved_edited_saved_and_reported(
+    tmp_path: Path, ethanol: Path, capsys: pytest.CaptureFixture[str]
 ) -> None:
     project = open_spectrum(
         Project(), read_acquired(ethanol), source_path=str(ethanol), when=WHEN
@@ -163,6 +163,12 @@ def test_a_project_is_solved_edited_saved_and_solved_again(
     edited = apply_edit(renamed, UnlinkClaim(claim="Me"), when=WHEN)
     path = tmp_path / "p.sledger"
     save_project(edited, path)
+    words = ["report", path, "--out", tmp_path / "out", "--formats", "json,html"]
+    assert run(*words) == 0
+    assert "may differ: The ledger has to be solved again" in capsys.readouterr().out
+    page = (tmp_path / "out" / "report.html").read_text("utf-8")
+    assert "Me taken off its signal" in page
+    assert "Before hand edits: consistent with the drawn structure" in page
     again = solve(load_project(path), when=WHEN)
     assert again.ledger is not None
     states = {one.claim: one.state for one in again.ledger.entries}

@@ -35,6 +35,7 @@ def build_parser() -> argparse.ArgumentParser:
         _open,
         _compare,
         _sample,
+        _report,
     ):
         add(commands)
     return parser
@@ -98,6 +99,15 @@ def _output(parser: argparse.ArgumentParser) -> None:
     )
 
 
+def _formats(parser: argparse.ArgumentParser) -> None:
+    parser.add_argument(
+        "--formats",
+        metavar="LIST",
+        help="comma list of json, csv, html, text, svg, docx, xlsx, nmredata, jcamp, "
+        "or all (default: json,csv,html,text,svg)",
+    )
+
+
 def _reconcile(commands: _Subparsers[argparse.ArgumentParser]) -> None:
     parser = _command(commands, "reconcile", "Reconcile a spectrum with a structure")
     _data(parser)
@@ -106,12 +116,7 @@ def _reconcile(commands: _Subparsers[argparse.ArgumentParser]) -> None:
     )
     _output(parser)
     _matching_options(parser)
-    parser.add_argument(
-        "--formats",
-        metavar="LIST",
-        help="comma list of json, csv, html, text, svg, docx, xlsx, nmredata, jcamp, "
-        "or all (default: json,csv,html,text,svg)",
-    )
+    _formats(parser)
     parser.add_argument(
         "--journal",
         choices=("acs", "rsc"),
@@ -239,6 +244,15 @@ def _sample(commands: _Subparsers[argparse.ArgumentParser]) -> None:
     )
     _output(parser)
     _matching_options(parser)
+
+
+def _report(commands: _Subparsers[argparse.ArgumentParser]) -> None:
+    parser = _command(commands, "report", "Make the reports of a project again")
+    parser.add_argument(
+        "project", metavar="PROJECT.sledger", type=Path, help="saved project"
+    )
+    _output(parser)
+    _formats(parser)
 
 
 def _number(low: float, high: float) -> Callable[[str], float]:

@@ -17,7 +17,7 @@ from spinledger.report.write import DEFAULT_FORMATS, FILE_NAMES, check_extras
 
 def run(arguments: argparse.Namespace) -> int:
     """Run the command; the verdict is in the files, so 0 is returned."""
-    formats = _formats(arguments.formats)
+    formats = formats_of(arguments.formats)
     check_extras(formats)
     job = Job(
         data=arguments.data,
@@ -49,7 +49,14 @@ def today() -> str:
     return f"{date.day} {date:%B %Y}"
 
 
-def _formats(words: str | None) -> tuple[str, ...]:
+def formats_of(words: str | None) -> tuple[str, ...]:
+    """Report formats from a comma list.
+
+    Raises
+    ------
+    UsageError
+        If one is not known.
+    """
     if words is None:
         return DEFAULT_FORMATS
     if words.strip() == "all":

@@ -138,13 +138,14 @@ def _verdict(ledger: Ledger, context: ReportContext) -> str:
         _before_edits(ledger, context),
     ]
     if excluded:
-        names = ", ".join(one.name or one.smiles for one in excluded[:4])
-        more = f" and {len(excluded) - 4} more" if len(excluded) > 4 else ""
-        lines.append(f'<p class="muted">Excluded: {escape(names + more)}.</p>')
+        names = list(dict.fromkeys(one.name or one.smiles for one in excluded))
+        more = f" and {len(names) - 4} more" if len(names) > 4 else ""
+        said = ", ".join(names[:4]) + more
+        lines.append(f'<p class="muted">Excluded: {escape(said)}.</p>')
     if ledger.contenders and not ledger.verdict.unique:
-        standing = [
+        standing = dict.fromkeys(
             one.name or one.smiles for one in ledger.contenders if not one.excluded
-        ]
+        )
         lines.append(
             '<p class="muted">Not excluded: '
             f"{escape(', '.join(standing) or 'other structures')}.</p>"
