@@ -71,7 +71,7 @@ def run(*, places: Sequence[str], structure: str | None, solvent: str | None) ->
     parts.window.show()
     parts.window.show_spectrum(False)
     # Manager and processes start after the window is up.
-    QTimer.singleShot(0, lambda: parts.pool.start(tasks.warm_up))
+    QTimer.singleShot(0, lambda: parts.pool.start(tasks.WARM_UPS))
     parts.desk.open_later(list(places), structure)
     code = app.exec()
     parts.pool.close()

@@ -42,11 +42,21 @@ class ReadClaim:
     drawing: Drawing
 
 
-def warm_up(_progress: Progress, _cancelled: Cancelled) -> None:
-    """Load what the first real task would have to wait for."""
+def warm_up_reading(_progress: Progress, _cancelled: Cancelled) -> None:
+    """Load what reading a spectrum needs."""
     import spinledger.detection.evidence
-    import spinledger.io.read
-    import spinledger.reconcile.run  # noqa: F401 - loaded for its side of the cache
+    import spinledger.io.read  # noqa: F401 - loaded so that it is at hand
+
+
+def warm_up_solving(_progress: Progress, _cancelled: Cancelled) -> None:
+    """Load what structures and reconciling need."""
+    import spinledger.reconcile.run
+    import spinledger.structure.read
+
+    import spinledger_app.presenters.drawing  # noqa: F401 - loaded to be at hand
+
+
+WARM_UPS = (warm_up_reading, warm_up_solving)
 
 
 def read_spectrum(

@@ -10,7 +10,7 @@ import os
 import signal
 import threading
 import time
-from collections.abc import Callable
+from collections.abc import Callable, Sequence
 from concurrent.futures import Future, ProcessPoolExecutor
 from concurrent.futures.process import BrokenProcessPool
 from dataclasses import dataclass, field
@@ -26,6 +26,7 @@ _POLL_MS = 30
 _TELL_EVERY_S = 0.03
 _N_PROCESSES = 2
 _LOWER_PRIORITY = 5
+_LONGEST_START_S = 10.0
 _ONE_THREAD = ("OMP_NUM_THREADS", "OPENBLAS_NUM_THREADS", "MKL_NUM_THREADS")
 
 logger = logging.getLogger(__name__)
@@ -76,20 +77,25 @@ class WorkerPool(QObject):
         self._queue: Any = None
         self._executor: ProcessPoolExecutor | None = None
         self._is_closed = False
+        self._starter: threading.Thread | None = None
         self._timer = QTimer(self)
         self._timer.setInterval(_POLL_MS)
         self._timer.timeout.connect(self._drain)
         self._arrived.connect(self._take)
         self._ready.connect(self._submit_waiting)
 
-    def start(self, warm_up: Callable[..., Any] | None = None) -> None:
-        """Start manager and processes in the background; call after the window shows."""
-        thread = threading.Thread(
-            target=self._start, args=(warm_up,), name="worker start", daemon=True
-        )
-        thread.start()
+    def start(self, warm_ups: Sequence[Callable[..., Any]] = ()) -> None:
+        """Start manager and processes in the background, after the window shows.
 
-    def _start(self, warm_up: Callable[..., Any] | None) -> None:
+        Each of the ``warm_ups`` runs in a process of its own, so that what the
+        first tasks need is loaded while the user looks about.
+        """
+        self._starter = threading.Thread(
+            target=self._start, args=(warm_ups,), name="worker start", daemon=True
+        )
+        self._starter.start()
+
+    def _start(self, warm_ups: Sequence[Callable[..., Any]]) -> None:
         context = multiprocessing.get_context("spawn")
         manager = SyncManager(ctx=context)
         manager.start(_ignore_interrupts)
@@ -99,7 +105,7 @@ class WorkerPool(QObject):
         self._queue = manager.Queue()
         self._executor = executor
         self._manager = manager
-        if warm_up is not None:
+        for warm_up in () if self._is_closed else warm_ups:
             executor.submit(_run, warm_up, (), 0, self._queue, manager.Event())
         self._ready.emit()
 
@@ -168,13 +174,21 @@ class WorkerPool(QObject):
 
     def close(self) -> None:
         """Stop everything; for the end of the program."""
+        if self._is_closed:
+            return
         self._is_closed = True
         self.cancel()
         self._timer.stop()
+        if self._starter is not None:
+            self._starter.join(_LONGEST_START_S)
+        before = set(multiprocessing.active_children())
         if self._executor is not None:
             self._executor.shutdown(wait=False, cancel_futures=True)
         if self._manager is not None:
             self._manager.shutdown()
+        # What still computes cannot be of use to anybody now.
+        for process in before & set(multiprocessing.active_children()):
+            process.terminate()
 
     def _submit_waiting(self) -> None:
         waiting, self._waiting = self._waiting, []

@@ -503,3 +503,85 @@ def _unfound(entry: Entry, state: str, why: str) -> Entry:
         j_residual_sd=None,
         why=why,
     )
+
+
+@cache
+def crowded(n_points: int, n_claims: int) -> Ledger:
+    """A long spectrum with many double doublets side by side."""
+    base = evidence(n_points)
+    entries, lines, signals = [], [], []
+    rng = np.random.default_rng(5)
+    axis_hz = base.spectrum.shifts_ppm * FIELD_MHZ
+    total = np.zeros(n_points)
+    for k in range(n_claims):
+        shift = 0.8 + 6.5 * k / n_claims + float(rng.uniform(0, 0.05))
+        j_hz = (float(rng.uniform(9, 14)), float(rng.uniform(2, 7)))
+        places = [
+            shift + (a * j_hz[0] + b * j_hz[1]) / 2 / FIELD_MHZ
+            for a in (1, -1)
+            for b in (1, -1)
+        ]
+        for place in places:
+            _add(total, axis_hz, (place * FIELD_MHZ, 0.25, 1.0))
+        claim = f"{k + 1}-H"
+        neighbours = (f"{(k + 1) % n_claims + 1}-H", f"{(k + 2) % n_claims + 1}-H")
+        lines.append(
+            ClaimLines(
+                claim=claim,
+                shifts_ppm=np.array(places),
+                protons=np.full(4, 0.25),
+                width_hz=1.0,
+            )
+        )
+        low, high = min(places) - 0.01, max(places) + 0.01
+        signals.append(
+            _signal(low, high, 1.0, tuple(_line(p, 0.25, 1.0) for p in places))
+        )
+        entries.append(
+            Entry(
+                claim=claim,
+                atoms=(k % 9,),
+                species=0,
+                protons=1,
+                state="settled",
+                predicted_shift_ppm=shift + 0.05,
+                predicted_shift_sd_ppm=0.2,
+                shift_ppm=shift,
+                shift_sd_ppm=0.0002,
+                range_ppm=(low, high),
+                integral_protons=1.0,
+                multiplicity="dd",
+                predicted_multiplicity="dd",
+                couplings=tuple(
+                    EntryCoupling(
+                        partner=partner,
+                        j_hz=j,
+                        j_sd_hz=0.02,
+                        determined=True,
+                        predicted_j_hz=j,
+                        predicted_j_sd_hz=1.0,
+                        kind="vicinal chain",
+                    )
+                    for partner, j in zip(neighbours, j_hz, strict=True)
+                ),
+                shift_residual_sd=0.2,
+                j_residual_sd=0.1,
+                integral_residual_sd=0.0,
+            )
+        )
+    noise_sd = total.max() / 1600
+    noise = np.random.default_rng(7).normal(0, noise_sd, n_points)
+    seen = replace(
+        base,
+        spectrum=replace(base.spectrum, intensities=total + noise),
+        noise_sd=float(noise_sd),
+        signals=tuple(sorted(signals, key=lambda signal: -signal.high_ppm)),
+        strays=(),
+    )
+    return replace(
+        ledger(),
+        evidence=seen,
+        entries=tuple(entries),
+        strays=(),
+        model=Model(intensities=total, claim_lines=tuple(lines), area_per_proton=1.0),
+    )

@@ -21,6 +21,8 @@ from spinledger_app.painting.marks import paint_mark
 _POINTS_PER_COLUMN = 2.0
 _TEXT_GAP_PX = 3.0
 _EDGE_PX = 1.3
+# Curves lower than this share of the tallest would be a flat dash.
+_LEAST_INTEGRAL = 0.02
 
 
 ToY = Callable[[npt.NDArray[np.float64]], npt.NDArray[np.float64]]
@@ -196,6 +198,8 @@ def _paint_integrals(
         x1 = shift_map.x_of(one.low_ppm, index)
         if x0 is None or x1 is None or x1 < layout.left or x0 > layout.right:
             continue
+        if one.amount < _LEAST_INTEGRAL * largest:
+            continue
         rise = room * one.amount / largest
         xs = np.linspace(x0, x1, one.shares.size)
         ys = layout.baseline - 14 - rise * one.shares
@@ -249,6 +253,8 @@ def _paint_bracket_text(
     taken: list[tuple[float, float]],
 ) -> None:
     is_stray = mark.stray is not None
+    if not is_stray and not mark.text:
+        return
     width = 12.0 if is_stray else ink.look.width(mark.text, 13)
     middle = min(max(middle, layout.left + width / 2), layout.right - width / 2)
     left, right = middle - width / 2, middle + width / 2

@@ -2,7 +2,9 @@
 
 from __future__ import annotations
 
-from collections.abc import Sequence
+import re
+from collections.abc import Mapping, Sequence
+from types import MappingProxyType
 
 import numpy as np
 import numpy.typing as npt
@@ -26,6 +28,16 @@ _AXIS_LEAST = Stretch(high_ppm=9.0, low_ppm=-0.5)
 _AXIS_MARGIN_PPM = 0.6
 _INTEGRAL_POINTS = 160
 # Solvent, water and reference lines may rise out of the lane; claims must not.
+_SUBSTANCES: Mapping[str, re.Pattern[str]] = MappingProxyType(
+    {
+        "solvent": re.compile(r"[Rr]esidual (\S+) of"),
+        "water": re.compile(r"^(\S+) in "),
+        "reference": re.compile(r"\b(TMS|DSS|TSP)\b"),
+    }
+)
+_LONGEST_NAME = 18
+# Amounts below this are told by the mouse only; numbers would crowd the lane.
+_LEAST_SHOWN_PROTONS = 0.04
 _MAY_BE_CUT = ("solvent", "water", "reference", "satellite", "sideband")
 
 
@@ -118,7 +130,7 @@ def signal_marks(
                 key=f"signal {index}",
                 low_ppm=signal.low_ppm,
                 high_ppm=signal.high_ppm,
-                text=number(amount, 2),
+                text=number(amount, 2) if amount >= _LEAST_SHOWN_PROTONS else "",
                 claims=owners,
                 tip=_signal_tip(signal, amount, owners),
             )
@@ -141,13 +153,17 @@ def _stray_mark(index: int, stray: Stray) -> SignalMark:
 
 
 def stray_name(stray: Stray) -> str:
-    """Short name of a stray: the substance where the reason opens with one."""
+    """Short name of a stray: the substance where its reason names one."""
     if stray.kind == "unexplained":
         return say("unexplained")
+    if stray.kind == "satellite":
+        return "¹³C"
+    pattern = _SUBSTANCES.get(stray.kind)
+    found = pattern.search(stray.why) if pattern is not None else None
+    if found is not None:
+        return chemical(found.group(1))
     head = stray.why.split(":")[0].split(",")[0].strip().rstrip(".")
-    if 0 < len(head) <= 18 and " is " not in head:
-        return chemical(head)
-    return say(stray.kind)
+    return chemical(head) if 0 < len(head) <= _LONGEST_NAME else say(stray.kind)
 
 
 def proton_area(evidence: Evidence, ledger: Ledger | None) -> float:

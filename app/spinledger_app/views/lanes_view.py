@@ -30,7 +30,7 @@ from spinledger_app.lanes.residue_layer import paint_residue, paint_residue_tick
 from spinledger_app.lanes.scene import LaneScene, TreeShape
 from spinledger_app.lanes.shift_map import ShiftMap
 from spinledger_app.lanes.targets import NOTHING, Target, target_at
-from spinledger_app.painting.ink import Face, Ink, label_width
+from spinledger_app.painting.ink import SECOND, Face, Ink, label_width
 from spinledger_app.presenters.wording import number, say
 from spinledger_app.selection import Marks
 from spinledger_app.theme import Look
@@ -354,7 +354,8 @@ class LanesView(QWidget):
     ) -> None:
         paint_grid(ink, shift_map, layout)
         self._paint_selected_band(ink, scene, shift_map)
-        paint_residue(ink, scene, shift_map, layout)
+        if scene.residue is not None:
+            paint_residue(ink, scene, shift_map, layout)
         paint_evidence(
             ink,
             scene,
@@ -382,6 +383,19 @@ class LanesView(QWidget):
         claims.paint()
         self.handles = claims.handles
         self._paint_excluded(ink, scene, shift_map)
+        self._paint_waiting(ink, scene, layout)
+
+    def _paint_waiting(self, ink: Ink, scene: LaneScene, layout: LaneLayout) -> None:
+        """Say what will stand in the lanes that are still empty."""
+        middle = (layout.left + layout.right) / 2
+        if not scene.trees:
+            words = say("Claims will stand here and reach up to the lines they own.")
+            y = layout.soil + self.look.px(26)
+            ink.text(middle, y, words, SECOND, align="centre")
+        if scene.residue is None:
+            words = say("What the model leaves over is shown here, in noise sd.")
+            y = (layout.claims_bottom + layout.axis_top) / 2 + 5
+            ink.text(middle, y, words, SECOND, align="centre")
 
     def _label_width(self, tree: TreeShape) -> float:
         count = self.look.width(f"{tree.n_protons} H", 12)

@@ -1,0 +1,191 @@
+"""How fast the bench is: prints one JSON object.
+
+    python tests/benchmarks/bench.py [DATA STRUCTURE]
+
+Runs offscreen. Without arguments the sample spectrum and its structure are used.
+Keys: window_ms and ready_ms from the start of the process (interpreter and
+imports included), fps_1m for panning and zooming 1 048 576 points with all lanes
+and 40 trees, longest_stall_ms of the event loop over opening, reconciling and
+edits, memory_mib of the window's process with the long spectrum.
+"""
+
+from __future__ import annotations
+
+import json
+import os
+import subprocess
+import sys
+import tempfile
+import time
+from dataclasses import replace
+from pathlib import Path
+
+os.environ.setdefault("QT_QPA_PLATFORM", "offscreen")
+HERE = Path(__file__).resolve()
+sys.path.insert(0, str(HERE.parents[1] / "app"))
+
+N_POINTS = 1_048_576
+N_TREES = 40
+FRAME_SECONDS = 4.0
+QUIET_MS = 100
+STALL_MS = 50
+
+
+def main() -> None:
+    """Measure everything, each in a process of its own."""
+    if len(sys.argv) > 1 and sys.argv[1] in PARTS:
+        print(json.dumps(PARTS[sys.argv[1]](sys.argv[2:])))
+        return
+    result: dict[str, float] = {}
+    for part in PARTS:
+        result |= measured(part, sys.argv[1:])
+    print(json.dumps(result, indent=1))
+
+
+def measured(part: str, arguments: list[str]) -> dict[str, float]:
+    """Run one part and read what it prints."""
+    start = time.time()
+    command = [sys.executable, str(HERE), part, *(arguments or [str(start)])]
+    if part == "start":
+        command = [sys.executable, str(HERE), part, str(start)]
+    run = subprocess.run(command, capture_output=True, text=True, check=False)
+    if run.returncode != 0:
+        raise SystemExit(run.stderr)
+    found: dict[str, float] = json.loads(run.stdout.strip().splitlines()[-1])
+    return found
+
+
+def start(arguments: list[str]) -> dict[str, float]:
+    """From the start of the process to a painted window, and to a quiet loop."""
+    begun = float(arguments[0])
+    from PySide6.QtCore import QSettings, QTimer
+    from PySide6.QtWidgets import QApplication
+
+    from spinledger_app import tasks
+    from spinledger_app.application import build
+
+    app = QApplication([])
+    with tempfile.TemporaryDirectory() as folder:
+        parts = build(QSettings(f"{folder}/s.ini", QSettings.Format.IniFormat))
+        parts.window.show()
+        app.processEvents()
+        painted = time.time()
+        QTimer.singleShot(0, lambda: parts.pool.start(tasks.WARM_UPS))
+        last_stall = painted
+        last = time.time()
+        while time.time() - last_stall < QUIET_MS / 1000:
+            app.processEvents()
+            now = time.time()
+            if (now - last) * 1000 > STALL_MS:
+                last_stall = now
+            last = now
+            time.sleep(0.001)
+        parts.pool.close()
+    return {
+        "window_ms": round((painted - begun) * 1000),
+        "ready_ms": round((last_stall - begun) * 1000),
+    }
+
+
+def frames(_arguments: list[str]) -> dict[str, float]:
+    """Frames a second of pan and zoom on the long spectrum."""
+    import invented
+    from PySide6.QtWidgets import QApplication
+    from stage import put_on, settle, stage
+
+    app = QApplication([])
+    assert app is not None
+    with tempfile.TemporaryDirectory() as folder:
+        parts = stage(Path(folder))
+        put_on(parts, invented.crowded(N_POINTS, N_TREES))
+        lanes = parts.window.lanes
+        lanes.set_folded(False)
+        settle()
+        memory = memory_mib()
+        n_frames, begun = 0, time.perf_counter()
+        while time.perf_counter() - begun < FRAME_SECONDS:
+            assert lanes.camera is not None
+            step = n_frames % 120
+            factor = 1.03 if step < 60 else 1 / 1.03
+            camera = lanes.camera.zoomed(factor, 300.0).panned(3.0 if step < 60 else -3)
+            lanes.go_to(camera, is_eased=False)
+            lanes.repaint()
+            n_frames += 1
+        seconds = time.perf_counter() - begun
+    return {"fps_1m": round(n_frames / seconds, 1), "memory_mib": round(memory)}
+
+
+def memory_mib() -> float:
+    """Memory that this process holds now."""
+    pages = int(Path("/proc/self/statm").read_text().split()[1])
+    return pages * os.sysconf("SC_PAGE_SIZE") / 2**20
+
+
+def stalls(arguments: list[str]) -> dict[str, float]:
+    """Longest time the event loop stood still over open, reconcile and edits."""
+    from PySide6.QtCore import QTimer
+    from PySide6.QtWidgets import QApplication
+    from stage import stage
+
+    from spinledger_app import tasks
+    from spinledger_app.places import example_place
+
+    app = QApplication([])
+    example = example_place()
+    assert example is not None
+    data, structure = (
+        arguments[:2]
+        if len(arguments) >= 2
+        else (str(example.data), str(example.structure))
+    )
+    gaps: list[float] = []
+    with tempfile.TemporaryDirectory() as folder:
+        parts = stage(Path(folder))
+        last = time.perf_counter()
+
+        def tick() -> None:
+            nonlocal last
+            now = time.perf_counter()
+            gaps.append(now - last)
+            last = now
+
+        timer = QTimer()
+        timer.setInterval(1)
+        timer.timeout.connect(tick)
+        bench = parts.bench
+
+        def until_quiet(limit_s: float) -> None:
+            begun = quiet = time.perf_counter()
+            while time.perf_counter() - quiet < 0.3:
+                app.processEvents()
+                time.sleep(0.0005)
+                if bench.pool.is_busy or bench.project.needs_ledger:
+                    quiet = time.perf_counter()
+                if time.perf_counter() - begun > limit_s:
+                    raise SystemExit("the bench did not come to rest")
+
+        parts.pool.start(tasks.WARM_UPS)
+        timer.start()
+        parts.desk.files.open_places([data])
+        bench.take_structure(structure)
+        until_quiet(240)
+        ledger = bench.project.ledger
+        if ledger is None:
+            raise SystemExit("there is no ledger")
+        for claim in [entry.claim for entry in ledger.entries][:2]:
+            bench.selection.select(claim)
+            parts.desk.do("unlink")
+            until_quiet(120)
+            parts.desk.do("undo")
+            until_quiet(120)
+        parts.pool.close()
+    return {
+        "longest_stall_ms": round(max(gaps) * 1000),
+        "second_longest_stall_ms": round(sorted(gaps)[-2] * 1000),
+    }
+
+
+PARTS = {"start": start, "frames": frames, "stalls": stalls}
+
+if __name__ == "__main__":
+    main()
