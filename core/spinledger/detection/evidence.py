@@ -4,17 +4,19 @@ from __future__ import annotations
 
 import numpy as np
 
+from spinledger.detection.satellites import satellites, sidebands
 from spinledger.detection.signals import IntegralDoubt, find_signals
-from spinledger.detection.strays import StrayFacts, recognised_strays
+from spinledger.detection.strays import StrayFacts, recognised_lines
 from spinledger.errors import EvidenceError
+from spinledger.lines.deconvolution import NoiseModel
 from spinledger.lines.kernel import learn_kernel
 from spinledger.lines.noise import noise_sd
 from spinledger.lines.picking import pick_lines, pick_weak_lines
 from spinledger.processing.automatic import ProcessedSpectrum, process, reprocess
 from spinledger.processing.noise_model import noise_model
 from spinledger.processing.solvents import is_aqueous, water_lines
-from spinledger.values.acquisition import Acquired
-from spinledger.values.evidence import Evidence, LineKernel
+from spinledger.values.acquisition import Acquired, Fid
+from spinledger.values.evidence import Evidence, LineKernel, Signal, Stray
 from spinledger.values.recipe import Recipe, Reference
 from spinledger.values.spectrum import Spectrum
 
@@ -93,12 +95,7 @@ def evidence_from(
             "the spectrum shows no signal above the noise, so there is nothing to "
             "compare",
         )
-    facts = StrayFacts(
-        solvent=solvent,
-        temperature_k=temperature,
-        reference=reference,
-        spectrometer_frequency_mhz=spectrum.spectrometer_frequency_mhz,
-    )
+    strays = _strays(signals, processed, noise, temperature)
     return Evidence(
         metadata=metadata,
         recipe=processed.run.recipe,
@@ -109,11 +106,51 @@ def evidence_from(
         solvent_seen=processed.referencing.solvent_seen,
         solvent_header=processed.solvent_header,
         signals=signals,
-        strays=recognised_strays(signals, facts=facts),
+        strays=strays,
         quality=processed.quality,
         kernel=_kernel(spectrum, reference, sd),
         presaturated=processed.presaturated,
     )
+
+
+def _strays(
+    signals: tuple[Signal, ...],
+    processed: ProcessedSpectrum,
+    noise: NoiseModel,
+    temperature_k: float | None,
+) -> tuple[Stray, ...]:
+    """Everything that is told without a structure, each stretch once."""
+    spectrum = processed.spectrum
+    known = recognised_lines(
+        signals,
+        StrayFacts(
+            spectrum=spectrum,
+            noise=noise,
+            referencing=processed.referencing,
+            temperature_k=temperature_k,
+            carrier_ppm=_irradiated_ppm(processed),
+        ),
+    )
+    frequency_mhz = spectrum.spectrometer_frequency_mhz
+    weak = (*satellites(signals, frequency_mhz), *sidebands(signals, frequency_mhz))
+    free = tuple(
+        stray
+        for stray in weak
+        if not any(
+            one.low_ppm <= (stray.low_ppm + stray.high_ppm) / 2 <= one.high_ppm
+            for one in known
+        )
+    )
+    return (*known, *free)
+
+
+def _irradiated_ppm(processed: ProcessedSpectrum) -> float | None:
+    """Carrier on the referenced axis, where water is suppressed there."""
+    acquired = processed.run.acquired
+    if not processed.presaturated or not isinstance(acquired, Fid):
+        return None
+    carrier_ppm = acquired.carrier_ppm if acquired.carrier_ppm is not None else 0.0
+    return carrier_ppm + processed.referencing.reference.offset_ppm
 
 
 def _integral_doubt(

@@ -1,12 +1,17 @@
-"""Signals that are recognised without a structure; shifts in ppm."""
+"""Solvent, water and reference lines, told without a structure; shifts in ppm."""
 
 from __future__ import annotations
 
 from dataclasses import dataclass
 
 import numpy as np
+import numpy.typing as npt
+from scipy import ndimage
 
+from spinledger.lines.deconvolution import NoiseModel
+from spinledger.processing.reference import Referencing
 from spinledger.processing.solvents import (
+    ResidualLine,
     WaterLine,
     is_aqueous,
     residual_lines,
@@ -14,204 +19,249 @@ from spinledger.processing.solvents import (
 )
 from spinledger.processing.standard import DSS_CHAIN_PPM
 from spinledger.values.evidence import Line, Signal, Stray
-from spinledger.values.recipe import Reference
+from spinledger.values.spectrum import Spectrum
 
-# How far a residual line may stand from the table after referencing.
+Floats = npt.NDArray[np.float64]
+
 _SOLVENT_TOLERANCE_PPM = 0.03
-_STANDARD_TOLERANCE_PPM = 0.02
 _STANDARD_HALF_HZ = 12.0
-_WATER_REACH_SD = 3.0
-_SATELLITE_RANGE_HZ = (57.0, 110.0)
-_SATELLITE_SHARE = (0.002, 0.012)
-_SATELLITE_MATCH_HZ = 1.0
-_CARBON_13_SHARE = 0.0107
+_NEAR_HZ = 12.0
+_NEAR_SHARE = 0.2
+_LONE_SHARE = 0.8
+_WATER_TOLERANCE_PPM = 0.12
+_AQUEOUS_REACH_PPM = 0.3
+_CARRIER_REACH_PPM = 0.08
+# Water is masked out to where it has fallen to this share of its top, or to the
+# first minimum beyond the nearest Hz, where a signal beside it begins.
+_WATER_FOOT_SHARE = 0.003
+_RISE = 1.3
+_ENVELOPE_HZ = 5.0
+_REMNANT_SD = 6.0
+_WATER_NEAREST_HZ = 15.0
+_WATER_SMOOTHING_HZ = 2.0
+_FOOT_SD = 10.0
+_CHAIN_SHARE = 2 / 9
+_CHAIN_RANGE = (0.4, 2.2)
 
 
-@dataclass(frozen=True, slots=True, kw_only=True)
+@dataclass(frozen=True, slots=True, eq=False, kw_only=True)
 class StrayFacts:
-    """What the labels are told from."""
+    """What the labels are told from.
 
-    solvent: str | None
+    Attributes
+    ----------
+    spectrum : Spectrum
+        On the referenced axis.
+    noise : NoiseModel
+    referencing : Referencing
+    temperature_k : float or None, K
+    carrier_ppm : float or None, ppm
+        Where water is irradiated, if it is; on the referenced axis.
+    """
+
+    spectrum: Spectrum
+    noise: NoiseModel
+    referencing: Referencing
     temperature_k: float | None
-    reference: Reference
-    spectrometer_frequency_mhz: float
+    carrier_ppm: float | None
+
+    @property
+    def frequency_mhz(self) -> float:
+        """Spectrometer frequency, MHz."""
+        return self.spectrum.spectrometer_frequency_mhz
 
 
-def recognised_strays(
-    signals: tuple[Signal, ...], *, facts: StrayFacts
+def recognised_lines(
+    signals: tuple[Signal, ...], facts: StrayFacts
 ) -> tuple[Stray, ...]:
-    """Solvent, water, reference, and 13C satellites of strong lines."""
-    strays = [
-        *_solvent(signals, facts),
-        *_water(signals, facts),
-        *_standard(signals, facts),
-    ]
-    taken = tuple(strays)
-    return (*taken, *_satellites(signals, taken, facts))
+    """Strays of kind solvent, water and reference."""
+    return (*_solvent(signals, facts), *_water(signals, facts), *_standard(facts))
 
 
 def _solvent(signals: tuple[Signal, ...], facts: StrayFacts) -> list[Stray]:
     strays = []
-    tolerance = _SOLVENT_TOLERANCE_PPM + 2 * min(facts.reference.sd_ppm, 0.05)
-    for residual in residual_lines(facts.solvent):
-        half_hz = 2.0 + 2.5 * (residual.j_hd_hz or 0.0)
-        stretch = _stretch_at(signals, residual.shift_ppm, tolerance, half_hz, facts)
-        if stretch is not None:
-            low, high = stretch
+    for residual in residual_lines(facts.referencing.solvent):
+        place = _residual_place(signals, residual, facts)
+        if place is None:
+            continue
+        half_hz = 3.0 + 2.5 * (residual.j_hd_hz or 0.0)
+        half_ppm = half_hz / facts.frequency_mhz
+        strays.append(
+            Stray(
+                low_ppm=place - half_ppm,
+                high_ppm=place + half_ppm,
+                kind="solvent",
+                why=f"Residual {residual.species} of {residual.solvent}, "
+                f"expected at {residual.shift_ppm:.2f} ppm.",
+            )
+        )
+    return strays
+
+
+def _residual_place(
+    signals: tuple[Signal, ...], residual: ResidualLine, facts: StrayFacts
+) -> float | None:
+    """Where a residual line stands; None where it cannot be told from others."""
+    if residual.species in ("CHCl3", "CD2H"):
+        seen = facts.referencing.residual_ppm
+        near = seen is not None and abs(seen - residual.shift_ppm) < 0.2
+        return seen if near else None
+    tolerance = _SOLVENT_TOLERANCE_PPM + min(facts.referencing.reference.sd_ppm, 0.05)
+    lines = [line for signal in signals for line in signal.lines]
+    near_lines = [
+        line for line in lines if abs(line.shift_ppm - residual.shift_ppm) < tolerance
+    ]
+    if not near_lines:
+        return None
+    tallest = max(near_lines, key=lambda line: line.area)
+    return tallest.shift_ppm if _stands_alone(tallest, lines, facts) else None
+
+
+def _stands_alone(line: Line, lines: list[Line], facts: StrayFacts) -> bool:
+    near_ppm = _NEAR_HZ / facts.frequency_mhz
+    return not any(
+        other.area > _NEAR_SHARE * line.area
+        for other in lines
+        if 0 < abs(other.shift_ppm - line.shift_ppm) < near_ppm
+    )
+
+
+def _water(signals: tuple[Signal, ...], facts: StrayFacts) -> list[Stray]:
+    solvent = facts.referencing.solvent
+    strays = []
+    for water in water_lines(solvent, facts.temperature_k):
+        top = (
+            _aqueous_top(signals, water, facts)
+            if is_aqueous(solvent)
+            else _lone_top(signals, water)
+        )
+        if top is None:
+            continue
+        low, high = _foot(top, facts)
+        strays.append(
+            Stray(
+                low_ppm=low,
+                high_ppm=high,
+                kind="water",
+                why=f"{water.species} in {solvent}, expected near "
+                f"{water.shift_ppm:.2f} ppm.",
+            )
+        )
+    return strays
+
+
+def _aqueous_top(
+    signals: tuple[Signal, ...], water: WaterLine, facts: StrayFacts
+) -> float | None:
+    """Top of the water signal: at the carrier if irradiated, else the largest."""
+    if facts.carrier_ppm is not None:
+        return _tallest_at_carrier(facts, facts.carrier_ppm)
+    near = [
+        line
+        for signal in signals
+        for line in signal.lines
+        if abs(line.shift_ppm - water.shift_ppm) < _AQUEOUS_REACH_PPM
+    ]
+    return max(near, key=lambda line: line.area).shift_ppm if near else None
+
+
+def _tallest_at_carrier(facts: StrayFacts, carrier_ppm: float) -> float | None:
+    """Place of the remnant, which may be dispersive or negative."""
+    spectrum = facts.spectrum
+    window = spectrum.window(
+        carrier_ppm - _CARRIER_REACH_PPM, carrier_ppm + _CARRIER_REACH_PPM
+    )
+    piece = np.abs(spectrum.intensities[window])
+    top = int(np.argmax(piece))
+    if piece[top] < _REMNANT_SD * facts.noise.sd:
+        return None
+    return float(spectrum.first_point_ppm - spectrum.step_ppm * (window.start + top))
+
+
+def _lone_top(signals: tuple[Signal, ...], water: WaterLine) -> float | None:
+    """The largest one-line signal near the place of water in an organic solvent."""
+    near = []
+    for signal in signals:
+        largest = max(signal.lines, key=lambda line: line.area)
+        lone = largest.area > _LONE_SHARE * sum(line.area for line in signal.lines)
+        close = abs(largest.shift_ppm - water.shift_ppm) < _WATER_TOLERANCE_PPM
+        if lone and close:
+            near.append(largest)
+    return max(near, key=lambda line: line.area).shift_ppm if near else None
+
+
+def _foot(top_ppm: float, facts: StrayFacts) -> tuple[float, float]:
+    """Range of a water signal, out to its feet or to the next signal."""
+    spectrum = facts.spectrum
+    sigma = _WATER_SMOOTHING_HZ / spectrum.step_hz
+    smooth = np.abs(ndimage.gaussian_filter1d(spectrum.intensities, sigma))
+    # The envelope, as a dispersive remnant passes through zero.
+    width = 2 * int(_ENVELOPE_HZ / spectrum.step_hz) + 1
+    smooth = ndimage.maximum_filter1d(smooth, width)
+    top = spectrum.index_of_ppm(top_ppm)
+    level = max(_WATER_FOOT_SHARE * smooth[top], _FOOT_SD * facts.noise.sd)
+    nearest = int(_WATER_NEAREST_HZ / spectrum.step_hz)
+    up = _outwards(smooth[top:], nearest, level)
+    down = _outwards(smooth[top::-1], nearest, level)
+    low_ppm = spectrum.first_point_ppm - spectrum.step_ppm * (top + up)
+    high_ppm = spectrum.first_point_ppm - spectrum.step_ppm * (top - down)
+    return low_ppm, high_ppm
+
+
+def _outwards(trace: Floats, nearest: int, level: float) -> int:
+    """Points from the top to the end of the foot, or to where a signal rises."""
+    rest = trace[nearest:]
+    if rest.size < 2:
+        return int(trace.size - 1)
+    lowest = np.minimum.accumulate(rest)
+    ends = (rest < level) | (rest > _RISE * lowest)
+    if not ends.any():
+        return int(trace.size - 1)
+    first = int(np.argmax(ends))
+    return nearest + int(np.argmin(rest[: first + 1]))
+
+
+def _standard(facts: StrayFacts) -> list[Stray]:
+    by = facts.referencing.reference.by
+    if by not in ("DSS", "TMS", "TSP"):
+        return []
+    half_ppm = _STANDARD_HALF_HZ / facts.frequency_mhz
+    methyl = Stray(
+        low_ppm=-half_ppm,
+        high_ppm=half_ppm,
+        kind="reference",
+        why=f"Methyl line of {by}, the zero of the axis.",
+    )
+    return [methyl, *_chain(facts, half_ppm)] if by == "DSS" else [methyl]
+
+
+def _chain(facts: StrayFacts, methyl_half_ppm: float) -> list[Stray]:
+    """CH2 signals of DSS, where the area is what two protons of nine give."""
+    methyl = _area(facts.spectrum, -methyl_half_ppm, methyl_half_ppm)
+    half_ppm = 0.012 + 9 / facts.frequency_mhz
+    noise = 3 * facts.noise.sd * np.sqrt(facts.noise.correlation)
+    strays = []
+    for chain_ppm in DSS_CHAIN_PPM:
+        low, high = chain_ppm - half_ppm, chain_ppm + half_ppm
+        area = _area(facts.spectrum, low, high)
+        window = facts.spectrum.window(low, high)
+        least = noise * np.sqrt(window.stop - window.start) * facts.spectrum.step_hz
+        share = area / methyl / _CHAIN_SHARE if methyl > 0 else 0.0
+        if area > least and _CHAIN_RANGE[0] < share < _CHAIN_RANGE[1]:
             strays.append(
                 Stray(
                     low_ppm=low,
                     high_ppm=high,
-                    kind="solvent",
-                    why=f"Residual {residual.species} of {facts.solvent}, "
-                    f"expected at {residual.shift_ppm:.2f} ppm.",
-                )
-            )
-    return strays
-
-
-def _stretch_at(
-    signals: tuple[Signal, ...],
-    shift_ppm: float,
-    tolerance_ppm: float,
-    half_hz: float,
-    facts: StrayFacts,
-) -> tuple[float, float] | None:
-    """Range about the tallest line near a shift, or None where there is none."""
-    lines = _lines_near(signals, shift_ppm, tolerance_ppm)
-    if not lines:
-        return None
-    tallest = max(lines, key=lambda line: line.area / line.width_hz)
-    half_ppm = (half_hz + tallest.width_hz) / facts.spectrometer_frequency_mhz
-    return tallest.shift_ppm - half_ppm, tallest.shift_ppm + half_ppm
-
-
-def _lines_near(
-    signals: tuple[Signal, ...], shift_ppm: float, tolerance_ppm: float
-) -> list[Line]:
-    return [
-        line
-        for signal in signals
-        for line in signal.lines
-        if abs(line.shift_ppm - shift_ppm) < tolerance_ppm
-    ]
-
-
-def _water(signals: tuple[Signal, ...], facts: StrayFacts) -> list[Stray]:
-    strays = []
-    for water in water_lines(facts.solvent, facts.temperature_k):
-        signal = _water_signal(signals, water, facts)
-        if signal is not None:
-            strays.append(
-                Stray(
-                    low_ppm=signal.low_ppm,
-                    high_ppm=signal.high_ppm,
-                    kind="water",
-                    why=f"{water.species} in {facts.solvent}, expected near "
-                    f"{water.shift_ppm:.2f} ppm.",
-                )
-            )
-    return strays
-
-
-def _water_signal(
-    signals: tuple[Signal, ...], water: WaterLine, facts: StrayFacts
-) -> Signal | None:
-    """Largest signal that may be water: a lone line, but any shape in D2O."""
-    aqueous = is_aqueous(facts.solvent)
-    reach = (_WATER_REACH_SD if aqueous else 1.0) * water.sd_ppm
-    near = [
-        signal
-        for signal in signals
-        if any(abs(line.shift_ppm - water.shift_ppm) < reach for line in signal.lines)
-        and (aqueous or _is_lone(signal))
-    ]
-    return max(near, key=lambda one: one.area, default=None)
-
-
-def _is_lone(signal: Signal) -> bool:
-    """One line holds four fifths of the area."""
-    largest = max(line.area for line in signal.lines)
-    return largest > 0.8 * sum(line.area for line in signal.lines)
-
-
-def _standard(signals: tuple[Signal, ...], facts: StrayFacts) -> list[Stray]:
-    by = facts.reference.by
-    if by not in ("DSS", "TMS", "TSP"):
-        return []
-    half_ppm = _STANDARD_HALF_HZ / facts.spectrometer_frequency_mhz
-    strays = [
-        Stray(
-            low_ppm=-half_ppm,
-            high_ppm=half_ppm,
-            kind="reference",
-            why=f"Methyl line of {by}, the zero of the axis.",
-        )
-    ]
-    if by == "DSS" and "CH2 signals" in facts.reference.why:
-        strays += _chain(signals, facts)
-    return strays
-
-
-def _chain(signals: tuple[Signal, ...], facts: StrayFacts) -> list[Stray]:
-    strays = []
-    half_ppm = 0.01 + 10 / facts.spectrometer_frequency_mhz
-    for chain_ppm in DSS_CHAIN_PPM:
-        if _lines_near(signals, chain_ppm, half_ppm):
-            strays.append(
-                Stray(
-                    low_ppm=chain_ppm - half_ppm,
-                    high_ppm=chain_ppm + half_ppm,
                     kind="reference",
-                    why="A CH2 signal of DSS.",
+                    why="A CH2 signal of DSS, with the area of two protons of nine.",
                 )
             )
     return strays
 
 
-def _satellites(
-    signals: tuple[Signal, ...], taken: tuple[Stray, ...], facts: StrayFacts
-) -> list[Stray]:
-    frequency = facts.spectrometer_frequency_mhz
-    lines = [line for signal in signals for line in signal.lines]
-    if not lines:
-        return []
-    hz = np.array([line.shift_ppm * frequency for line in lines])
-    areas = np.array([line.area for line in lines])
-    strays = []
-    for parent in np.argsort(-areas)[:30]:
-        for low, high in _pairs(hz, areas, int(parent)):
-            strays += [
-                Stray(
-                    low_ppm=(hz[one] - 3.0) / frequency,
-                    high_ppm=(hz[one] + 3.0) / frequency,
-                    kind="satellite",
-                    why=f"13C satellite of the line at {hz[parent] / frequency:.3f} "
-                    f"ppm, 1J {hz[high] - hz[low]:.0f} Hz.",
-                )
-                for one in (low, high)
-                if not _covered(hz[one] / frequency, taken)
-            ]
-    return strays
-
-
-def _pairs(hz: np.ndarray, areas: np.ndarray, parent: int) -> list[tuple[int, int]]:
-    """Pairs of weak lines at equal distances on both sides of a strong one."""
-    apart = hz - hz[parent]
-    share = areas / areas[parent]
-    weak = (share > _SATELLITE_SHARE[0]) & (share < _SATELLITE_SHARE[1])
-    reach = (np.abs(apart) > _SATELLITE_RANGE_HZ[0]) & (
-        np.abs(apart) < _SATELLITE_RANGE_HZ[1]
-    )
-    lower = np.flatnonzero(weak & reach & (apart < 0))
-    upper = np.flatnonzero(weak & reach & (apart > 0))
-    return [
-        (int(low), int(high))
-        for low in lower
-        for high in upper
-        if abs(apart[low] + apart[high]) < _SATELLITE_MATCH_HZ
-    ]
-
-
-def _covered(shift_ppm: float, strays: tuple[Stray, ...]) -> bool:
-    return any(stray.low_ppm <= shift_ppm <= stray.high_ppm for stray in strays)
+def _area(spectrum: Spectrum, low_ppm: float, high_ppm: float) -> float:
+    """Sum over a straight base through the ends, intensity * Hz."""
+    piece = spectrum.intensities[spectrum.window(low_ppm, high_ppm)]
+    ends = max(3, piece.size // 8)
+    base = np.linspace(np.median(piece[:ends]), np.median(piece[-ends:]), piece.size)
+    return float(np.sum(piece - base)) * spectrum.step_hz

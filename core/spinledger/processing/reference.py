@@ -95,12 +95,15 @@ class Referencing:
     ----------
     reference : Reference
     solvent, solvent_seen : str or None
+    residual_ppm : float or None, ppm
+        Where the solvent's CHCl3 or CD2H line was recognised, on the new axis.
     doubts : tuple of str
     """
 
     reference: Reference
     solvent: str | None
     solvent_seen: str | None
+    residual_ppm: float | None = None
     doubts: tuple[str, ...] = ()
 
 
@@ -137,8 +140,29 @@ def choose_reference(
         reference=reference,
         solvent=solvent,
         solvent_seen=solvent_seen,
+        residual_ppm=_residual_ppm(seen, solvent, reference.offset_ppm),
         doubts=doubts,
     )
+
+
+def _residual_ppm(
+    seen: _Sightings, solvent: str | None, offset_ppm: float
+) -> float | None:
+    """Place of the solvent's own line, where it is one beyond doubt."""
+    line = seen.quintet_line
+    if seen.quintet is not None and line is not None and line.solvent == solvent:
+        return seen.quintet.shift_ppm + offset_ppm
+    if solvent != "CDCl3":
+        return None
+    proven = [one for one in seen.chloroforms if one.is_proven]
+    likely = [
+        one
+        for one in seen.chloroforms
+        if one.is_likely
+        and abs(one.shift_ppm + offset_ppm - CHLOROFORM_PPM) < _LIKELY_CHLOROFORM_PPM
+    ]
+    chosen = proven or (likely if len(likely) == 1 else [])
+    return chosen[0].shift_ppm + offset_ppm if chosen else None
 
 
 def _sightings(spectrum: Spectrum, picks: Picks, facts: SolventFacts) -> _Sightings:
