@@ -34,7 +34,11 @@ from spinledger.report.tables import (
     stray_rows,
     verdict_title,
 )
-from spinledger.report.text import experimental_runs, reference_sentence
+from spinledger.report.text import (
+    experimental_runs,
+    reference_sentence,
+    standing_sentence,
+)
 from spinledger.report.words import fixed, outgoing
 from spinledger.values.ledger import Ledger
 
@@ -135,6 +139,8 @@ def _text(document: Any, ledger: Ledger, context: ReportContext) -> None:
     paragraph = document.add_paragraph()
     for run in experimental_runs(ledger, context.text):
         paragraph.add_run(run.text).italic = run.is_italic
+    if standing_sentence(ledger):
+        document.add_paragraph().add_run(standing_sentence(ledger)).bold = True
     _muted(document.add_paragraph(), reference_sentence(ledger))
 
 

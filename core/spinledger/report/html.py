@@ -34,7 +34,11 @@ from spinledger.report.tables import (
     stray_rows,
     verdict_title,
 )
-from spinledger.report.text import experimental_runs, reference_sentence
+from spinledger.report.text import (
+    experimental_runs,
+    reference_sentence,
+    standing_sentence,
+)
 from spinledger.report.words import (
     fixed,
     outgoing,
@@ -223,8 +227,14 @@ def _text(ledger: Ledger, context: ReportContext) -> str:
     return (
         "<section><h3>For the experimental section</h3>"
         f'<p class="journal">{runs}</p>'
+        f"{_standing(ledger)}"
         f'<p class="muted">{escape(reference_sentence(ledger))}</p></section>\n'
     )
+
+
+def _standing(ledger: Ledger) -> str:
+    sentence = standing_sentence(ledger)
+    return f"<p><b>{escape(sentence)}</b></p>" if sentence else ""
 
 
 def _cautions(ledger: Ledger, _context: ReportContext) -> str:

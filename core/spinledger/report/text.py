@@ -123,6 +123,18 @@ def reference_sentence(ledger: Ledger) -> str:
     return words.get(reference.by, f"Shifts are referenced to {reference.by}{at}.")
 
 
+def standing_sentence(ledger: Ledger) -> str:
+    """What must stand beside the text where the structure is not supported, else ""."""
+    words = {
+        "undecided": "The spectrum does not decide on this structure; the assignment "
+        "is provisional.",
+        "not reconciled": "This assignment is inconsistent with the drawn structure; "
+        "the text is for comparison only.",
+        "not judged": "Nothing could be compared; this is not an assignment.",
+    }
+    return words.get(ledger.verdict.state, "")
+
+
 def signal_groups(
     ledger: Ledger, options: TextOptions | None = None
 ) -> tuple[tuple[Entry, ...], ...]:

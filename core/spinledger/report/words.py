@@ -22,11 +22,16 @@ _VERDICTS: Mapping[VerdictState, str] = {
     "not reconciled": "Inconsistent with the drawn structure",
     "not judged": "Not judged",
 }
+# A state is told by the words around it: "the fit has settled" is none.
+_SAID_OF = r"(?P<said>\b(?:is|are|was|were|be|stays?|remains?|counts? as) )"
+_NAMED = r"(?P<named> (?:entry|entries|claims?|couplings?)\b)"
 _BENCH_WORDS = (
     (re.compile(r"\bnot reconciled\b"), "inconsistent with the drawn structure"),
     (re.compile(r"\breconciled\b"), "consistent with the drawn structure"),
-    (re.compile(r"\bsettled\b"), "assigned"),
-    (re.compile(r"\bdisputed\b"), "inconsistent"),
+    (re.compile(rf"{_SAID_OF}settled\b"), r"\g<said>assigned"),
+    (re.compile(rf"{_SAID_OF}disputed\b"), r"\g<said>inconsistent"),
+    (re.compile(rf"\bsettled{_NAMED}"), r"assigned\g<named>"),
+    (re.compile(rf"\bdisputed{_NAMED}"), r"inconsistent\g<named>"),
 )
 _SUBSCRIPTS = str.maketrans("0123456789", "₀₁₂₃₄₅₆₇₈₉")
 _SOLVENT_DIGITS = re.compile(r"(?<=[A-Za-z)])(\d+)")

@@ -16,7 +16,11 @@ from spinledger.report.files import write_files
 from spinledger.report.html import report_html
 from spinledger.report.json_ledger import ledger_text
 from spinledger.report.nmredata import nmredata_record
-from spinledger.report.text import experimental_text, reference_sentence
+from spinledger.report.text import (
+    experimental_text,
+    reference_sentence,
+    standing_sentence,
+)
 from spinledger.values.ledger import Ledger
 
 Progress = Callable[[str, float], None]
@@ -129,8 +133,12 @@ def _render(name: str, ledger: Ledger, context: ReportContext) -> bytes:
 
 
 def _experimental(ledger: Ledger, context: ReportContext) -> str:
-    sentence = experimental_text(ledger, context.text)
-    return f"{sentence}\n{reference_sentence(ledger)}\n"
+    sentences = (
+        experimental_text(ledger, context.text),
+        standing_sentence(ledger),
+        reference_sentence(ledger),
+    )
+    return "".join(f"{sentence}\n" for sentence in sentences if sentence)
 
 
 def _docx(ledger: Ledger, context: ReportContext) -> bytes:

@@ -16,6 +16,7 @@ from spinledger.report.text import (
     experimental_runs,
     experimental_text,
     reference_sentence,
+    standing_sentence,
 )
 from spinledger.values.ledger import EntryCoupling, Ledger
 
@@ -181,6 +182,14 @@ def test_reference_is_stated() -> None:
     assert reference_sentence(invented_ledger()).replace(NO_BREAK, " ") == (
         "Shifts are given relative to internal TMS (0.00 ppm)."
     )
+
+
+def test_text_of_an_unsupported_structure_says_so() -> None:
+    ledger = invented_ledger()
+    assert standing_sentence(ledger) == ""
+    for state, word in (("undecided", "provisional"), ("not reconciled", "comparison")):
+        verdict = replace(ledger.verdict, state=state)  # type: ignore[arg-type]
+        assert word in standing_sentence(replace(ledger, verdict=verdict))
 
 
 def test_low_field_last_is_an_option() -> None:

@@ -78,6 +78,14 @@ def test_only_outgoing_words_leave_the_laboratory() -> None:
     )
 
 
+def test_words_that_only_look_like_states_stay() -> None:
+    assert outgoing("the fit had not settled in time") == (
+        "The fit had not settled in time."
+    )
+    assert outgoing("an open chain") == "An open chain."
+    assert outgoing("two disputed claims") == "Two inconsistent claims."
+
+
 def test_fragments_become_sentences_and_labels_stay() -> None:
     assert outgoing("all 5 H agree") == "All 5 H agree."
     assert outgoing("β-H stands alone") == "β-H stands alone."
