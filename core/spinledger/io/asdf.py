@@ -91,10 +91,22 @@ def _decode_plain(rows: list[str], max_points: int) -> Ordinates:
     for row in rows:
         if "?" in row:
             raise TableError("the data table has points marked as unreadable")
-        values.extend(map(float, _NUMBER.findall(row)[1:]))
+        values.extend(_plain_ordinates(row))
         if len(values) > max_points:
             raise TableError(_too_many(max_points))
     return Ordinates(values=np.array(values), n_failed_checks=0)
+
+
+def _plain_ordinates(row: str) -> list[float]:
+    """Numbers of a row after the first; the pattern is only for signs in between."""
+    words = row.replace(",", " ").split()
+    try:
+        numbers = [float(word) for word in words]
+    except ValueError:
+        numbers = []
+    if len(numbers) < 2:
+        numbers = [float(word) for word in _NUMBER.findall(row)]
+    return numbers[1:]
 
 
 def _too_many(max_points: int) -> str:

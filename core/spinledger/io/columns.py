@@ -7,8 +7,8 @@ spectrometer frequency, for example "# 400.13 MHz".
 
 from __future__ import annotations
 
-import array
 import re
+import warnings
 from dataclasses import dataclass
 from pathlib import Path
 
@@ -153,36 +153,53 @@ def _has_decimal_commas(rows: list[str]) -> bool:
 
 def _read_table(path: Path) -> _Table:
     lines = read_text(path, MAX_TEXT_BYTES).split("\n")
-    rows = [line for line in lines if _is_row(line)]
-    remarks = "\n".join(line[:500] for line in lines[:200] if not _is_row(line))
+    start = next((index for index, line in enumerate(lines) if _is_row(line)), 0)
+    rows = [line for line in lines[start:] if line.strip()]
     if not MIN_POINTS <= len(rows) <= MAX_POINTS:
         raise SpectrumFormatError(
             path,
             f"holds {len(rows)} rows of numbers, outside {MIN_POINTS} to {MAX_POINTS}; "
             "give the spectrum with all its points",
         )
-    if _has_decimal_commas(rows):
-        rows = [_with_points(row) for row in rows]
-    width = len(re.findall(_NUMBER, rows[0]))
-    flat = array.array("d")
-    for row in rows:
-        words = re.findall(_NUMBER, row)
-        if len(words) != width:
-            raise SpectrumFormatError(
-                path,
-                "has rows of different length; export two columns, shift and intensity",
-            )
-        flat.extend(map(float, words))
+    remarks = "\n".join(line[:500] for line in lines[max(0, start - 200) : start])
     nucleus = _NUCLEUS.search(remarks)
     solvent = _SOLVENT.search(remarks)
     return _Table(
-        numbers=np.array(flat, dtype=np.float64).reshape(-1, width),
+        numbers=_numbers(path, rows),
         frequency_mhz=_frequency_mhz(remarks),
         solvent=solvent[1] if solvent else None,
         nucleus=normalise.nucleus_name(nucleus[1] if nucleus else None),
         is_hz=re.search(r"\bhz\b", remarks, re.IGNORECASE) is not None
         and re.search(r"\bppm\b", remarks, re.IGNORECASE) is None,
     )
+
+
+def _numbers(path: Path, rows: list[str]) -> npt.NDArray[np.float64]:
+    """Numbers of all rows, shape (n_rows, 2 or 3)."""
+    comma = "." if _has_decimal_commas(rows) else " "
+    separators = str.maketrans({",": comma, ";": " ", "\t": " "})
+    width = len(rows[0].translate(separators).split())
+    if width not in (2, 3):
+        raise SpectrumFormatError(path, _RAGGED)
+    plain = "\n".join(rows).translate(separators)
+    try:
+        with warnings.catch_warnings():
+            # numpy only warns where the text stops being numbers.
+            warnings.simplefilter("error", DeprecationWarning)
+            flat = np.fromstring(plain, dtype=np.float64, sep=" ")
+    except (DeprecationWarning, ValueError) as fault:
+        bad = next((row for row in rows if not _is_row(row)), rows[-1])
+        raise SpectrumFormatError(
+            path,
+            f"has a row that is not of numbers, {normalise.shown(bad)!r}; export two "
+            "columns, shift and intensity",
+        ) from fault
+    if flat.size != width * len(rows):
+        raise SpectrumFormatError(path, _RAGGED)
+    return flat.reshape(-1, width)
+
+
+_RAGGED = "has rows of different length; export two columns, shift and intensity"
 
 
 def _frequency_mhz(remarks: str) -> float | None:

@@ -100,9 +100,11 @@ def experiments_below(folder: Path) -> tuple[Experiment, ...]:
     found: list[Experiment] = []
     faults: list[SpectrumFormatError] = []
     orphans: list[str] = []
+    zips: list[str] = []
     for path, reader in _walk(folder):
         if reader is None:
             orphans += [path.name] if path.name in _DATA_FILES else []
+            zips += [path.name] if path.suffix.lower() == ".zip" else []
             continue
         try:
             found.append(reader.describe(path))
@@ -116,6 +118,10 @@ def experiments_below(folder: Path) -> tuple[Experiment, ...]:
             folder,
             f"holds a {orphans[0]} file without the parameter file beside it (acqus, "
             "procs or procpar); copy the whole experiment folder",
+        )
+    if not found and zips:
+        raise SpectrumFormatError(
+            folder, f"holds the zip file {zips[0]}; give that file, or unpack it"
         )
     return tuple(
         replace(experiment, name=_relative_name(folder, experiment.path))

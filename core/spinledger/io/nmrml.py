@@ -45,6 +45,8 @@ FID_NAME = "nmrML FID"
 SPECTRUM_NAME = "nmrML spectrum"
 
 _MAX_DATA_BYTES = 16 * MAX_POINTS
+# Two tags an element; assignments of a large molecule take a few thousand.
+_MAX_TAGS = 400_000
 
 
 def is_file_head(head: bytes) -> bool:
@@ -161,6 +163,10 @@ def _parse(path: Path) -> _Document:
     if b"<!DOCTYPE" in content[:4096] or b"<!ENTITY" in content[:4096]:
         raise SpectrumFormatError(
             path, "declares XML entities, which nmrML never does; export it again"
+        )
+    if content.count(b"<") > _MAX_TAGS:
+        raise SpectrumFormatError(
+            path, f"holds more than {_MAX_TAGS} XML tags; give the 1D spectrum alone"
         )
     try:
         return _Document(ElementTree.fromstring(content))

@@ -13,6 +13,8 @@ import re
 from collections.abc import Iterator
 from dataclasses import dataclass, field
 
+# No file of spectra comes near; a damaged one must not fill the memory.
+_MAX_BLOCKS = 10_000
 _LABEL_NOISE = str.maketrans("", "", " -_/\t")
 _PLAIN_NUMBER = re.compile(r"[+-]?(?:\d+\.?\d*|\.\d+)(?:[eEdD][+-]?\d+)?")
 _COMMA_NUMBER = re.compile(r"[+-]?\d+,\d+(?:[eE][+-]?\d+)?")
@@ -126,8 +128,12 @@ def parse_blocks(text: str) -> list[Block]:
     """
     done: list[Block] = []
     stack: list[Block] = []
+    n_blocks = 0
     for label, value in _records(text):
         if label == "TITLE":
+            n_blocks += 1
+            if n_blocks > _MAX_BLOCKS:
+                break
             stack.append(Block())
         if label == "END" and stack:
             done.append(stack.pop())

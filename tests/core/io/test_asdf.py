@@ -36,6 +36,8 @@ def test_every_form_gives_the_same_series(form: str) -> None:
 def test_negative_digits_carry_their_sign() -> None:
     assert decode("0a5B5j1%") == [-15.0, 25.0, 14.0, 14.0]
     assert decode("0-15+25-3") == [-15.0, 25.0, -3.0]
+    assert decode("0-15 +25-3") == [-15.0, 25.0, -3.0]
+    assert decode("0 -15+25 -3") == [-15.0, 25.0, -3.0]
 
 
 def test_check_value_after_differences_is_dropped() -> None:
