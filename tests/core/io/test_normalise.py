@@ -103,9 +103,9 @@ def test_header_text_is_shown_as_one_short_line() -> None:
     ],
 )
 def test_faults_of_nmrglue_become_one_sentence(fault: Exception) -> None:
-    with pytest.raises(SpectrumFormatError, match="is damaged") as caught:
-        with vendor_border(Path("x")):
-            raise fault
+    raises = pytest.raises(SpectrumFormatError, match="is damaged")
+    with raises as caught, vendor_border(Path("x")):
+        raise fault
     assert caught.value.__cause__ is fault
 
 
