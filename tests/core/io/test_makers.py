@@ -20,7 +20,7 @@ from instrument_files import (
     write_spinsolve,
     write_varian,
 )
-from spinledger.io.jeol import digital_filter_delay
+from spinledger.io.jeol_layout import digital_filter_delay
 from spinledger.io.read import list_experiments, read_acquired
 from spinledger.values.acquisition import Fid, MakerSpectrum
 
