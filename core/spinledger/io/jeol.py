@@ -152,14 +152,16 @@ def _read_fid(
     nucleus: str,
     notes: tuple[str, ...],
 ) -> Fid:
-    real, imaginary, n_declared = read_sections(path, file)
-    if imaginary is None:
+    sections = read_sections(path, file)
+    if sections.imaginary is None:
         raise SpectrumFormatError(
             path, "holds only the real part of its FID; export it with both parts"
         )
     # JEOL's frequencies run the other way round: the conjugate has our sense.
     samples, sample_notes = check_fid_samples(
-        path, complex_from_parts(real, -imaginary), n_declared
+        path,
+        complex_from_parts(sections.real, -sections.imaginary),
+        sections.n_declared,
     )
     delay, delay_notes = _delay(file.parameters, samples.size)
     return Fid(
@@ -167,7 +169,7 @@ def _read_fid(
             path, file, frequency_mhz, nucleus, (*notes, *sample_notes, *delay_notes)
         ),
         samples=samples,
-        spectral_width_hz=check_width(path, _width_hz(file, n_declared)),
+        spectral_width_hz=check_width(path, _width_hz(file, sections.n_declared)),
         carrier_ppm=plausible_carrier(file.parameters.number("x_offset")),
         group_delay_points=delay,
     )
@@ -203,22 +205,22 @@ def _read_spectrum(
     nucleus: str,
     notes: tuple[str, ...],
 ) -> MakerSpectrum:
-    real, imaginary, n_declared = read_sections(path, file)
+    sections = read_sections(path, file)
     first, last = (
         float(file.header[name][0]) for name in ("axis_starts", "axis_stops")
     )
     if int(file.header["unit_bases"][1]) == HERTZ:
         first, last = first / frequency_mhz, last / frequency_mhz
-    if real.size < n_declared / 2 or not math.isfinite(first - last):
+    if sections.real.size < sections.n_declared / 2 or not math.isfinite(first - last):
         raise SpectrumFormatError(
             path, "is cut short or has no shift axis; copy it from the spectrometer"
         )
     spectrum = make_spectrum(
         path,
-        real,
-        imaginary=imaginary,
+        sections.real,
+        imaginary=sections.imaginary,
         first_point_ppm=first,
-        step_hz=(last - first) / (n_declared - 1) * frequency_mhz,
+        step_hz=(last - first) / (sections.n_declared - 1) * frequency_mhz,
         spectrometer_frequency_mhz=frequency_mhz,
     )
     return MakerSpectrum(

@@ -220,10 +220,23 @@ def plain_text(raw: bytes) -> str:
     return raw.decode("latin-1").strip()
 
 
-def read_sections(
-    path: Path, file: JeolFile
-) -> tuple[npt.NDArray[np.float64], npt.NDArray[np.float64] | None, int]:
-    """Real part, imaginary part if there is one, and the declared length."""
+@dataclass(frozen=True, slots=True, eq=False, kw_only=True)
+class Sections:
+    """Data of a file, as many points as are there, and how many there should be."""
+
+    real: npt.NDArray[np.float64]
+    imaginary: npt.NDArray[np.float64] | None
+    n_declared: int
+
+
+def read_sections(path: Path, file: JeolFile) -> Sections:
+    """Real part, and imaginary part if there is one.
+
+    Raises
+    ------
+    SpectrumFormatError
+        If the axis is of an unknown kind or of absurd length.
+    """
     header = file.header
     axis_type = int(header["axis_types"][0])
     if axis_type not in (_AXIS_REAL, _AXIS_COMPLEX):
@@ -247,9 +260,11 @@ def read_sections(
     # The sections follow one another: a cut file loses the imaginary part first.
     first, last = int(header["starts"][0]), int(header["stops"][0])
     kept = slice(first, last + 1) if first <= last < n_stored else slice(0, n_stored)
-    real = numbers[:n_stored][kept]
-    imaginary = numbers[n_stored:][kept] if n_sections == 2 else None
-    return real, imaginary, kept.stop - kept.start
+    return Sections(
+        real=numbers[:n_stored][kept],
+        imaginary=numbers[n_stored:][kept] if n_sections == 2 else None,
+        n_declared=kept.stop - kept.start,
+    )
 
 
 def digital_filter_delay(orders: str | None, factors: str | None) -> float | None:
