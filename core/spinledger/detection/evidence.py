@@ -11,13 +11,20 @@ from spinledger.errors import EvidenceError
 from spinledger.lines.deconvolution import NoiseModel
 from spinledger.lines.kernel import learn_kernel
 from spinledger.lines.noise import noise_sd
-from spinledger.lines.picking import pick_lines, pick_weak_lines
+from spinledger.lines.picking import (
+    FINE_SIGMA_HZ,
+    Picks,
+    pick_lines,
+    pick_weak_lines,
+)
 from spinledger.processing.automatic import ProcessedSpectrum, process, reprocess
+from spinledger.processing.automatic_window import resolution_hz
 from spinledger.processing.noise_model import noise_model
+from spinledger.processing.recipe import find_step
 from spinledger.processing.solvents import is_aqueous, water_lines
 from spinledger.values.acquisition import Acquired, Fid
 from spinledger.values.evidence import Evidence, LineKernel, Signal, Stray
-from spinledger.values.recipe import Recipe, Reference
+from spinledger.values.recipe import Apodize, Recipe, Reference
 from spinledger.values.spectrum import Spectrum
 
 _PLAIN_WATER_SD = 0.03
@@ -26,6 +33,9 @@ _SUPPRESSED_SD = 0.20
 _SUPPRESSED_NEAR_SD = 0.40
 _SUPPRESSED_REACH_PPM = 1.2
 _KERNEL_WINDOW_HZ = 15.0
+_SIGMA_PER_RESOLUTION = 0.2
+# No receiver spans more; keeps noise-free simulations from drowning in rounding.
+_LEAST_NOISE_SHARE = 1e-6
 
 
 def gather_evidence(
@@ -50,8 +60,8 @@ def gather_evidence(
     Raises
     ------
     EvidenceError
-        If the spectrum holds no signal at all.
-    ValueError
+        If the spectrum holds no signal at all, or too few points.
+    UsageError
         If the solvent is not in the table of solvents.
     """
     if recipe is None:
@@ -78,14 +88,9 @@ def evidence_from(
     spectrum = processed.spectrum
     solvent = processed.referencing.solvent
     reference = processed.referencing.reference
-    sd = noise_sd(spectrum.intensities)
-    if not np.isfinite(sd) or np.ptp(spectrum.intensities) == 0:
-        raise EvidenceError(metadata.source_name, "the spectrum is empty")
-    picks = pick_weak_lines(
-        spectrum.intensities,
-        pick_lines(spectrum.intensities, step_hz=spectrum.step_hz),
-        step_hz=spectrum.step_hz,
-    )
+    tallest = float(np.abs(spectrum.intensities).max())
+    sd = max(noise_sd(spectrum.intensities), _LEAST_NOISE_SHARE * tallest)
+    picks = _picks(processed)
     noise = noise_model(processed.run, sd)
     doubt = _integral_doubt(processed, sd, temperature)
     signals = find_signals(spectrum, picks, noise=noise, doubt=doubt)
@@ -110,6 +115,20 @@ def evidence_from(
         quality=processed.quality,
         kernel=_kernel(spectrum, reference, sd),
         presaturated=processed.presaturated,
+    )
+
+
+def _picks(processed: ProcessedSpectrum) -> Picks:
+    """Lines at the finest smoothing that the FID's length allows, and coarser."""
+    spectrum, acquired = processed.spectrum, processed.run.acquired
+    sigma_hz = FINE_SIGMA_HZ
+    window = find_step(processed.run.recipe, Apodize)
+    if isinstance(acquired, Fid) and window is not None:
+        width_hz = resolution_hz(acquired, window.line_broadening_hz)
+        sigma_hz = max(sigma_hz, _SIGMA_PER_RESOLUTION * width_hz)
+    fine = pick_lines(spectrum.intensities, step_hz=spectrum.step_hz, sigma_hz=sigma_hz)
+    return pick_weak_lines(
+        spectrum.intensities, fine, step_hz=spectrum.step_hz, sigma_hz=sigma_hz
     )
 
 

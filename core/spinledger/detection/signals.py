@@ -22,6 +22,7 @@ from spinledger.values.spectrum import Spectrum
 # A fit may move at most this share of an integral into or out of the range.
 _MOST_TAIL_SHARE = 0.2
 _TAIL_DOUBT = 0.3
+_FOOT_DOUBT = 0.5
 _GOOD_MISFIT = 1.25
 _AGREEMENT_SD = 3.0
 
@@ -155,6 +156,9 @@ def _integral(
     if described and abs(fitted - summed) < _AGREEMENT_SD * summed_sd:
         # Lorentz lines describe it to the noise: their sum is the best estimate.
         return fitted, fitted_sd
+    if summed <= 0:
+        # Signals on the dispersive foot of water: only the lines can be weighed.
+        return fitted, math.hypot(fitted_sd, _FOOT_DOUBT * fitted)
     return summed, summed_sd
 
 

@@ -12,7 +12,8 @@ from spinledger.lines.noise import EDGE_SHARE, quiet_rms
 from spinledger.values.arrays import locked_floats
 
 # Smoothings that find what the fine one misses, and the height they demand.
-_COARSE_SIGMAS_HZ = (0.8, 2.0, 4.0)
+FINE_SIGMA_HZ = 0.45
+_COARSER = (1.8, 4.5, 9.0)
 _COARSE_FACTOR = 5.0
 
 
@@ -51,7 +52,7 @@ def pick_lines(
     intensities: npt.NDArray[np.float64],
     *,
     step_hz: float,
-    sigma_hz: float = 0.45,
+    sigma_hz: float = FINE_SIGMA_HZ,
     noise_factor: float = 6.0,
     least_distance_hz: float = 0.6,
     edge_share: float = EDGE_SHARE,
@@ -103,6 +104,7 @@ def pick_weak_lines(
     fine: Picks,
     *,
     step_hz: float,
+    sigma_hz: float = FINE_SIGMA_HZ,
     edge_share: float = EDGE_SHARE,
 ) -> Picks:
     """The fine picks, and lines that only show with more smoothing.
@@ -113,6 +115,8 @@ def pick_weak_lines(
     fine : Picks
         From :func:`pick_lines`.
     step_hz : float, Hz
+    sigma_hz : float, Hz
+        Smoothing that the fine picks were made with.
     edge_share : float
 
     Notes
@@ -123,16 +127,17 @@ def pick_weak_lines(
     line is picked within twice their width.
     """
     points, heights = fine.points, fine.heights
-    for sigma_hz in _COARSE_SIGMAS_HZ:
+    for times in _COARSER:
+        coarser_hz = times * sigma_hz
         coarse = pick_lines(
             intensities,
             step_hz=step_hz,
-            sigma_hz=sigma_hz,
+            sigma_hz=coarser_hz,
             noise_factor=_COARSE_FACTOR,
-            least_distance_hz=2 * sigma_hz,
+            least_distance_hz=2 * coarser_hz,
             edge_share=edge_share,
         )
-        reach = 2 * sigma_hz / step_hz
+        reach = 2 * coarser_hz / step_hz
         free = _distance_to(coarse.points, points) > reach
         # On the scale of the fine heights, in units of noise.
         scale = fine.noise_sd / coarse.noise_sd if coarse.noise_sd > 0 else 1.0

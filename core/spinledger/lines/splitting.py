@@ -12,12 +12,12 @@ from spinledger.lines.shapes import lorentzian
 
 # A fit within this factor of the noise is good; only then is a split believed.
 _GOOD_MISFIT = 1.25
-_MOST_SPLITS = 6
-_MOST_LINES = 16
+_MOST_SPLITS = 4
+_MOST_LINES = 12
 _SPLIT_HALF_WIDTHS = 0.8
 # What one more line must gain in chi square: three parameters at about 5 sd.
 _LEAST_GAIN = 30.0
-_LEAST_PROGRESS = 0.9
+_LEAST_PROGRESS = 0.75
 
 
 @dataclass(frozen=True, slots=True, eq=False, kw_only=True)

@@ -8,9 +8,9 @@ from dataclasses import dataclass
 import numpy as np
 import numpy.typing as npt
 
-from spinledger.lines.derivative import curvature_magnitude, points_per_degree
-from spinledger.lines.noise import noise_sd, quiet_rms
-from spinledger.lines.regions import Regions, find_regions
+from spinledger.lines.noise import noise_sd
+from spinledger.lines.regions import Regions
+from spinledger.processing.found_regions import FoundRegions
 from spinledger.processing.negative_area import (
     NegativeAreaCost,
     PhaseFit,
@@ -21,9 +21,6 @@ from spinledger.processing.recipe import Transformed
 from spinledger.processing.tail_phase import TailCorrection, tail_correction
 from spinledger.values.recipe import Phase
 
-_WATER_PPM = (4.55, 5.0)
-_LINE_SIGMA_HZ = 0.4
-_LINE_SD = 8.0
 _MOST_CONSTANT_RAD = math.radians(12.0)
 _MOST_SLOPE_RAD = math.radians(40.0)
 _DOUBTFUL_DEG = 3.0
@@ -50,16 +47,8 @@ class AutomaticPhase:
     doubts: tuple[str, ...]
 
 
-@dataclass(frozen=True, slots=True, eq=False, kw_only=True)
-class PhaseRegions:
-    """Signal regions that may be used for phasing, and those kept clear of."""
-
-    kept: Regions
-    dropped: Regions
-
-
 def automatic_phase(
-    transformed: Transformed, *, water_at_carrier: bool
+    transformed: Transformed, regions: FoundRegions
 ) -> AutomaticPhase | None:
     """Phase of least negative area, put right by the tails of the lines.
 
@@ -67,9 +56,7 @@ def automatic_phase(
     ----------
     transformed : Transformed
         Complex spectrum, delay taken out.
-    water_at_carrier : bool
-        Leave out the region at the carrier and at 4.55 to 5.0 ppm of the header's
-        axis: huge, dispersive, or bleached water.
+    regions : FoundRegions
 
     Returns
     -------
@@ -77,7 +64,6 @@ def automatic_phase(
         None where no signal region is found.
     """
     values, step_hz = transformed.values, transformed.step_hz
-    regions = phase_regions(transformed, water_at_carrier=water_at_carrier)
     if regions.kept.count == 0:
         return None
     sd = noise_sd(values)
@@ -88,47 +74,6 @@ def automatic_phase(
         turned, regions.kept, dropped=regions.dropped, step_hz=step_hz
     )
     return _decided(values, regions.kept, fit, tails, sd)
-
-
-def phase_regions(transformed: Transformed, *, water_at_carrier: bool) -> PhaseRegions:
-    """Signal regions of an unphased spectrum, with and without water."""
-    values, step_hz = transformed.values, transformed.step_hz
-    regions = find_regions(values, step_hz=step_hz)
-    usable = _with_lines(values, regions, step_hz)
-    if water_at_carrier:
-        dry = usable & ~_at_water(transformed, regions)
-        usable = dry if dry.any() else usable
-    return PhaseRegions(kept=regions.select(usable), dropped=regions.select(~usable))
-
-
-def _with_lines(
-    values: npt.NDArray[np.complex128], regions: Regions, step_hz: float
-) -> npt.NDArray[np.bool_]:
-    curvature = curvature_magnitude(values, step_hz=step_hz, sigma_hz=_LINE_SIGMA_HZ)
-    covered = points_per_degree(step_hz, _LINE_SIGMA_HZ) / 2
-    noise = quiet_rms(curvature, points_per_degree=covered) / math.sqrt(2)
-    threshold = _LINE_SD * noise
-    return np.array(
-        [
-            curvature[start:stop].max() > threshold
-            for start, stop in zip(regions.starts, regions.stops, strict=True)
-        ],
-        dtype=np.bool_,
-    )
-
-
-def _at_water(transformed: Transformed, regions: Regions) -> npt.NDArray[np.bool_]:
-    n_points = transformed.values.size
-    step_ppm = transformed.step_hz / transformed.spectrometer_frequency_mhz
-    first = transformed.first_point_ppm
-    carrier = (n_points + 1) // 2 - 1
-    margin = 0.1 / step_ppm
-    over_carrier = (regions.starts - margin < carrier) & (
-        regions.stops + margin > carrier
-    )
-    peaks_ppm = first - step_ppm * regions.peaks
-    in_window = (peaks_ppm > _WATER_PPM[0]) & (peaks_ppm < _WATER_PPM[1])
-    return np.asarray(over_carrier | in_window)
 
 
 def _decided(

@@ -154,10 +154,12 @@ def finish(transformed: Transformed, recipe: Recipe) -> Spectrum:
         flat = spectrum.intensities - baseline_of(spectrum, baseline)
         spectrum = replace(spectrum, intensities=flat)
     reference = find_step(recipe, Reference)
-    if reference is not None:
-        first_point_ppm = spectrum.first_point_ppm + reference.offset_ppm
-        spectrum = replace(spectrum, first_point_ppm=first_point_ppm)
-    return spectrum
+    return spectrum if reference is None else referenced(spectrum, reference)
+
+
+def referenced(spectrum: Spectrum, step: Reference) -> Spectrum:
+    """Spectrum with its axis moved by a reference step."""
+    return replace(spectrum, first_point_ppm=spectrum.first_point_ppm + step.offset_ppm)
 
 
 def find_step(recipe: Recipe, kind: type[KindOfStep]) -> KindOfStep | None:
