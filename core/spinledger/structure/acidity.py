@@ -40,6 +40,7 @@ _SECOND_PHOSPHATE_PKA: Final = 6.5
 # pKa of the conjugate acid; the first atom takes the proton.
 _BASES: Final = (
     ("biguanide", "[NX2]=C(N)[NX3]C(=N)N", 11.5),
+    ("cyclic acylguanidine", "[NX2;R](C=O)=C(N)N", 4.8),
     ("acylguanidine", "[NX2](C=O)=C(N)N", 7.9),
     ("acylguanidine", "[NX2]=C([NX3]C=O)N", 7.9),
     ("nitroguanidine", "[NX2](N(=O))=C(N)N", -1.0),
@@ -49,9 +50,9 @@ _BASES: Final = (
     ("amidine", "[NX2;!$(N-[N,O,S,c])]=[CX3;!$(C[O])][NX3;!$(N-[C,S]=[O,S])]", 11.5),
     ("4-aminopyridine", "[nX2]1ccc([NX3;!$(N-[C,S]=O)])cc1", 9.3),
     ("2-aminopyridine", "[nX2]1c([NX3;!$(N-[C,S]=O)])cccc1", 6.9),
-    ("imidazole", "[nX2]1[c;r5;!r6][c;r5;!r6][n;H1,X3]c1", 7.0),
+    ("imidazole", "[nX2]1[c;R1][c;R1][n;H1,X3]c1", 7.0),
     ("pyridine", "[nX2]1[c;!$(c[F,Cl,Br])]cccc1", 5.3),
-    ("aryl amine", "[NX3;!$(N-[C,S,P]=[O,S]);!$(N-N)]c", 4.5),
+    ("aryl amine", "[NX3;!$(N-[C,S,P]=[O,S]);!$(N-N);!$(Nc:n)]c", 4.5),
     ("hydrazine", "[NX3;!$(N-[C,S]=[O,S]);!$(N-c)][NX3;!$(N-[C,S,P]=O)]", 7.9),
     ("hydroxylamine", "[NX3;!$(N-[C,S]=[O,S])][OX2]", 5.5),
     ("tertiary amine", "[NX3H0]([CX4])([CX4])[CX4]", 9.9),
@@ -75,6 +76,7 @@ _AMINE_EFFECTS: Final = (
     ("[NX3][CX4][CX4][OX2]", -0.8),
     ("[NX3][CX4][OX2]", -2.0),
     ("[NX3][CX4]P=O", -0.5),
+    ("[NX3]1CC[NX3,NX4]CC1", -1.5),
 )
 # Effect of a charge already on another nitrogen, by bonds between the two.
 _CHARGE_EFFECTS: Final = {1: -8.0, 2: -6.0, 3: -3.0, 4: -1.3, 5: -0.7, 6: -0.4}
@@ -88,6 +90,13 @@ _STRONG_ACIDS: Final = (
     "[OX2H1]P(=O)",
     "[OX2H1]C(=O)C(=O)[OX2H1,OX1-]",
 )
+_STRONG_ANIONS: Final = (
+    "[F-,Cl-,Br-,I-]",
+    "[OX1-]S(=O)(=O)",
+    "[OX1-]C(=O)C(F)(F)F",
+    "[OX1-]Cl(=O)(=O)=O",
+)
+_ACIDIC_PH: Final = 2.0
 _WEAK_ACID: Final = "[OX2H1][CX3]=O"
 
 
@@ -127,22 +136,38 @@ def at_ph(mol: Chem.Mol, ph: float | None = None) -> Protonation:
     charged, the strongest first; each charge weakens its neighbours.
     """
     notes: list[str] = []
-    if ph is None and _acid_atoms(mol, _STRONG_ACIDS):
-        level = 2.0
+    level = DEFAULT_PH if ph is None else ph
+    if ph is None and _is_salt_of_strong_acid(mol):
+        level = _ACIDIC_PH
         notes.append("A strong acid is drawn with it; the solution is taken as acidic.")
-    else:
-        level = DEFAULT_PH if ph is None else ph
     copy = Chem.RWMol(mol)
     borderline = _deprotonate(copy, level) | _protonate(copy, level)
     result = _sanitised(copy)
     if Chem.MolToSmiles(result) != Chem.MolToSmiles(mol):
-        taken = "taken" if ph is None else "given"
+        taken = "given" if ph is not None else "taken"
         notes.append(f"In water at pH {level:g} ({taken}) the ion is claimed.")
     if borderline:
         notes.append(
             "A group is partly protonated at this pH; its shifts move with pH."
         )
     return Protonation(mol=result, notes=tuple(notes), borderline=frozenset(borderline))
+
+
+def _is_salt_of_strong_acid(mol: Chem.Mol) -> bool:
+    """Whether a fragment without nitrogen bases is a strong acid, or its anion."""
+    bases = set(_base_strengths(mol))
+    bases |= {a.GetIdx() for a in mol.GetAtoms() if _is_onium(a)}
+    acids = set(_acid_atoms(mol, (*_STRONG_ACIDS, *_STRONG_ANIONS)))
+    fragments = [set(f) for f in Chem.GetMolFrags(mol)]
+    return any(f & acids and not f & bases for f in fragments) and any(
+        f & bases and not f & acids for f in fragments
+    )
+
+
+def _is_onium(atom: Chem.Atom) -> bool:
+    return bool(
+        atom.GetAtomicNum() == 7 and atom.GetFormalCharge() > 0 and atom.GetTotalNumHs()
+    )
 
 
 def as_salt(mol: Chem.Mol, *, with_carboxylic_acids: bool) -> Protonation:
@@ -233,28 +258,14 @@ def _base_strengths(mol: Chem.Mol) -> dict[int, float]:
             if index in taken or mol.GetAtomWithIdx(index).GetFormalCharge():
                 continue
             found[index], kinds[index] = pka, kind
-            taken.add(index)
-            if kind not in _AMINES:
-                taken.update(_conjugated_nitrogens(mol, index))
+            # Nitrogens that share their charge take one proton together.
+            taken.update(i for i in match if mol.GetAtomWithIdx(i).GetAtomicNum() == 7)
     for smarts, effect in _AMINE_EFFECTS:
-        for match in mol.GetSubstructMatches(_pattern(smarts)):
+        near = {m[:3] for m in mol.GetSubstructMatches(_pattern(smarts))}
+        for match in near:
             if kinds.get(match[0]) in _AMINES:
                 found[match[0]] += effect
     return found
-
-
-def _conjugated_nitrogens(mol: Chem.Mol, index: int) -> set[int]:
-    """Nitrogens on the same amidine-like carbon: only one takes a proton."""
-    atom = mol.GetAtomWithIdx(index)
-    if atom.GetIsAromatic():
-        return set()
-    return {
-        n.GetIdx()
-        for bond in atom.GetBonds()
-        if bond.GetBondType() == Chem.BondType.DOUBLE
-        for n in bond.GetOtherAtom(atom).GetNeighbors()
-        if n.GetAtomicNum() == 7
-    }
 
 
 def _charge_effect(mol: Chem.RWMol, index: int) -> float:
