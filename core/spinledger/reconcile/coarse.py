@@ -42,6 +42,7 @@ class CoarseSpectrum:
     noise_sd : float
         Of one coarse point.
     frequency_mhz : float
+    masked_ppm : tuple of (low_ppm, high_ppm)
     """
 
     grid_ppm: FloatArray
@@ -50,6 +51,18 @@ class CoarseSpectrum:
     trust: FloatArray
     noise_sd: float
     frequency_mhz: float
+    masked_ppm: tuple[tuple[float, float], ...] = ()
+
+    def hidden_share(
+        self, sticks: tuple[FloatArray, FloatArray], shift_ppm: float
+    ) -> float:
+        """Share of a multiplet (offsets in Hz, areas) that lies under masks."""
+        offsets, areas = sticks
+        places = shift_ppm + offsets / self.frequency_mhz
+        under = np.zeros(places.size, dtype=np.bool_)
+        for low, high in self.masked_ppm:
+            under |= (places >= low) & (places <= high)
+        return float(areas[under].sum() / max(float(areas.sum()), 1e-12))
 
     @property
     def n_points(self) -> int:
@@ -84,17 +97,24 @@ def broadened(
     return np.asarray(fft.irfft(spectrum_of_time * decay, length)[:n_points])
 
 
+def masked_ranges(
+    evidence: Evidence, more_masked_ppm: Iterable[tuple[float, float]] = ()
+) -> tuple[tuple[float, float], ...]:
+    """Ranges of solvent, water and reference, and further ones, ppm."""
+    recognised = tuple(
+        (stray.low_ppm, stray.high_ppm)
+        for stray in evidence.strays
+        if stray.kind in MASKED_KINDS
+    )
+    return (*recognised, *more_masked_ppm)
+
+
 def usable_points(
     evidence: Evidence, more_masked_ppm: Iterable[tuple[float, float]] = ()
 ) -> BoolArray:
     """Points of the evidence that no mask covers, shape (n_points,)."""
     usable = np.ones(evidence.spectrum.n_points, dtype=np.bool_)
-    ranges = [
-        (stray.low_ppm, stray.high_ppm)
-        for stray in evidence.strays
-        if stray.kind in MASKED_KINDS
-    ]
-    for low_ppm, high_ppm in [*ranges, *more_masked_ppm]:
+    for low_ppm, high_ppm in masked_ranges(evidence, more_masked_ppm):
         usable[evidence.spectrum.window(low_ppm, high_ppm)] = False
     return usable
 
@@ -116,6 +136,7 @@ def coarse_spectrum(
     hwhm_hz, step_hz : float, Hz
         Half width at half maximum of the broadening, and grid step.
     """
+    more_masked_ppm = tuple(more_masked_ppm)
     spectrum = evidence.spectrum
     usable = usable_points(evidence, more_masked_ppm)
     kept = np.where(usable, spectrum.intensities, 0.0)
@@ -137,6 +158,7 @@ def coarse_spectrum(
         trust=_tapered(seen > 0.5, step_hz),
         noise_sd=evidence.noise_sd * float(min(through, 1.0)),
         frequency_mhz=frequency_mhz,
+        masked_ppm=masked_ranges(evidence, more_masked_ppm),
     )
 
 

@@ -17,7 +17,12 @@ from spinledger.reconcile.beam import (
     prepare_search,
     run_beam,
 )
-from spinledger.reconcile.coarse import CoarseSpectrum, FloatArray, coarse_spectrum
+from spinledger.reconcile.coarse import (
+    CoarseSpectrum,
+    FloatArray,
+    coarse_spectrum,
+    first_order_sticks,
+)
 from spinledger.reconcile.options import Constraints
 from spinledger.values.arrays import locked_floats
 from spinledger.values.claim import ClaimSet
@@ -25,6 +30,7 @@ from spinledger.values.evidence import Evidence
 
 SMALL_REFERENCE_SD_PPM = 0.02
 NOTICEABLE_SCALE = 0.12
+HIDDEN_SHARE = 0.7
 
 
 @dataclass(frozen=True, slots=True, eq=False, kw_only=True)
@@ -102,6 +108,7 @@ def match(
     couplings_hz = starting_couplings(claims, constraints)
     if all(claim.visibility == "silent" for claim in claims.claims):
         return Match(hypotheses=(), coarse=view)
+    sticks = first_order_sticks(claims, couplings_hz)
     chosen = settings or default_settings(len(claims.claims))
     found: list[Hypothesis] = []
     for offset_ppm in _offsets(evidence.reference.sd_ppm):
@@ -117,7 +124,8 @@ def match(
             )
             placements = run_beam(search, chosen, cancelled)
             found += [
-                _hypothesis(search, one, claims, offset_ppm) for one in placements
+                _hypothesis(search, one, claims, offset_ppm, sticks)
+                for one in placements
             ]
             scale *= placements[0].area_per_proton / search.area_per_proton
             if abs(np.log(scale)) < NOTICEABLE_SCALE:
@@ -177,7 +185,11 @@ def _offsets(sd_ppm: float) -> tuple[float, ...]:
 
 
 def _hypothesis(
-    search: Search, placement: Placement, claims: ClaimSet, offset_ppm: float
+    search: Search,
+    placement: Placement,
+    claims: ClaimSet,
+    offset_ppm: float,
+    sticks: tuple[tuple[FloatArray, FloatArray], ...],
 ) -> Hypothesis:
     shifts = np.array([claim.shift_ppm for claim in claims.claims])
     amplitudes = np.zeros(len(claims.claims))
@@ -192,7 +204,8 @@ def _hypothesis(
             continue
         shifts[index] = search.coarse.grid_ppm[place]
         amplitudes[index] = placement.amplitudes[member] / placement.area_per_proton
-        if _is_hidden(search, member, int(place)):
+        under = search.coarse.hidden_share(sticks[index], float(shifts[index]))
+        if under > HIDDEN_SHARE:
             hidden.add(index)
     return Hypothesis(
         shifts_ppm=shifts,
@@ -203,16 +216,6 @@ def _hypothesis(
         area_per_proton=placement.area_per_proton,
         amplitudes=amplitudes,
     )
-
-
-def _is_hidden(search: Search, member: int, place: int) -> bool:
-    """Whether more than half of a member's shape lies under a mask."""
-    half = search.half_points
-    low = max(0, place - half)
-    high = min(search.coarse.n_points, place + half + 1)
-    shape = search.shapes[member][low - place + half : high - place + half]
-    trust = search.coarse.trust[low:high]
-    return bool((shape * (trust < 0.5)).sum() > 0.5 * shape.sum())
 
 
 def _with_offset(
