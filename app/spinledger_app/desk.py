@@ -77,6 +77,12 @@ class Desk(QObject):
             **self.process.actions(),
             **self.claims.actions(),
         }
+        # The panels follow the lanes in a turn of their own, so that no turn of
+        # the event loop lasts long.
+        self._later = QTimer(self)
+        self._later.setSingleShot(True)
+        self._later.setInterval(0)
+        self._later.timeout.connect(self._show_panels)
         self._wire_bench()
         self._wire_window()
         self._wire_panels()
@@ -167,12 +173,16 @@ class Desk(QObject):
             window.lanes.show_scene(scene)
             window.ribbon.show_scene(scene)
         window.recipe.show_chips(chips(project.acquired, project.evidence))
-        self._show_structure()
-        self._show_ledger()
-        self._show_marks(Marks(), bench.selection.marks)
         self._show_view()
         self._show_title()
         self._show_abilities()
+        self._later.start()
+
+    def _show_panels(self) -> None:
+        """Show the panels at both sides; the lanes were painted before."""
+        self._show_structure()
+        self._show_ledger()
+        self._show_marks(Marks(), self.bench.selection.marks)
 
     def _show_structure(self) -> None:
         project, window = self.bench.project, self.window

@@ -50,9 +50,6 @@ def warm_up_reading(_progress: Progress, _cancelled: Cancelled) -> None:
 
 def warm_up_solving(_progress: Progress, _cancelled: Cancelled) -> None:
     """Load what structures and reconciling need."""
-    import spinledger.reconcile.run
-    import spinledger.structure.read
-
     import spinledger_app.presenters.drawing  # noqa: F401 - loaded to be at hand
 
 

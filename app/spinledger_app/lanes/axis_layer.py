@@ -94,15 +94,17 @@ def _paint_numbers(
     inside = [s for s in shifts if left + 8 < _x(shift_map, s, index) < right - 8]
     decimals = places(step)
     if not inside and shift_map.is_folded:
-        middle = round((high + low) / 2, 2)
-        inside, decimals = [middle], 2
+        inside, decimals = [round((high + low) / 2, 2)], 2
     for shift in sorted(inside or shifts, reverse=True):
         x = _x(shift_map, shift, index)
-        ink.vline(round(x), layout.axis_top + 1, layout.axis_top + 6, "edge")
         text = number(shift, decimals)
         half = ink.look.width(text, 13) / 2
+        ink.vline(round(x), layout.axis_top + 1, layout.axis_top + 6, "edge")
         held = min(max(x, layout.left + half), layout.width - half - 3)
-        if held - half < taken + 4:
+        # A number may reach over half a fold, never into the next stretch.
+        over = FOLD_WIDTH_PX / 2 if shift_map.is_folded else half
+        is_out = held - half < left - over or held + half > right + over
+        if is_out or held - half < taken + 4:
             continue
         taken = held + half
         baseline = layout.axis_top + ink.look.px(20)
@@ -144,5 +146,3 @@ def paint_folds(
         middle = round(strip.center().x())
         for x in (round(strip.left()), middle, round(strip.right()) - 1):
             ink.vline(x, layout.evidence_top, layout.axis_top, colour)
-        ink.fill(QRectF(strip.left(), layout.axis_top + 1, strip.width(), 27), "panel")
-        ink.hline(strip.left(), strip.right(), layout.axis_top, "rule")

@@ -106,18 +106,24 @@ class ClaimsPainter:
         self.selected = selected
         self.lit_level = lit_level
         self.handles: list[BranchHandle] = []
+        self._patterns: list[tuple[PlacedTree, str]] = []
         self._texts = _Texts()
         self._is_wide = grove.px_per_hz >= LARGE_LEAVES_FROM
 
     def paint(self) -> None:
         """Paint feet, soil line, trees, strays, labels."""
         layout = self.layout
-        self.ink.hline(layout.left, layout.right, layout.soil, "bark")
+        for index in self.map.visible():
+            start, end = self.map.span(index)
+            left, right = max(start, layout.left), min(end, layout.right)
+            self.ink.hline(left, right, layout.soil, "bark")
         self._feet()
         self._strays()
         # Low storeys first: upper crowns and their casings lie over the stalks.
         for placed in sorted(self.grove.trees, key=lambda one: not one.is_low):
             self._clipped(placed)
+        for placed, pattern in self._patterns:
+            self._pattern(placed, pattern)
         for placed in self.grove.trees:
             if self.layout.left - 8 <= placed.root_x <= self.layout.right + 8:
                 size = 12 if self._is_wide else 10
@@ -207,14 +213,24 @@ class ClaimsPainter:
         pattern = placed.tree.pattern
         if self.grove.px_per_hz >= STEM_ONLY_BELOW or not pattern:
             return
+        self._patterns.append((placed, pattern))
+
+    def _pattern(self, placed: PlacedTree, pattern: str) -> None:
+        """Pattern letters beside a stem, on the side that is free."""
+        x = placed.root_x
         width = self.ink.look.width(pattern, 13, 600)
         baseline = placed.soil_y - self.ink.look.px(24)
-        rect = QRectF(x + 6, baseline - 14, width + 8, 18)
+        start, end = self.map.span(placed.stretch)
+        start, end = max(start, self.layout.left), min(end, self.layout.right)
         neighbours = [o.root_x for o in self.grove.trees if o is not placed]
-        is_clear = not any(x < other < x + width + 14 for other in neighbours)
-        if is_clear and self._texts.is_free(rect):
-            self._texts.take(rect)
-            self.ink.text(x + 8, baseline, pattern, SECOND_STRONG)
+        for left in (x + 8, x - 8 - width):
+            rect = QRectF(left - 2, baseline - 14, width + 4, 18)
+            is_inside = start <= left and left + width <= end
+            is_clear = not any(left - 4 < o < left + width + 4 for o in neighbours)
+            if is_inside and is_clear and self._texts.is_free(rect):
+                self._texts.take(rect)
+                self.ink.text(left, baseline, pattern, SECOND_STRONG)
+                return
 
     def _broad(self, placed: PlacedTree) -> None:
         x = placed.root_x
@@ -489,7 +505,7 @@ class ClaimsPainter:
     def _label(self, label: RootLabel) -> None:
         look = self.ink.look
         soil = self.layout.soil
-        is_tag = len(label.claims) > 1
+        is_tag = label.is_tag
         if abs(label.x - label.root_x) > 1 and not is_tag:
             elbow = QPainterPath(QPointF(label.root_x, soil))
             elbow.cubicTo(

@@ -132,6 +132,9 @@ def paint_evidence(  # noqa: PLR0913 - scene, place and three choices
             below = layout.baseline + 400
             return np.clip(layout.baseline - values * unit, above, below)
 
+        start, end = shift_map.span(index)
+        left, right = max(start, layout.left), min(end, layout.right)
+        ink.hline(left, right, layout.baseline)
         ink.painter.save()
         _clip(ink, shift_map, index, layout.evidence_top, layout.seam, layout)
         if scene.model is not None:
@@ -146,11 +149,8 @@ def paint_evidence(  # noqa: PLR0913 - scene, place and three choices
             _paint_integrals(ink, scene, shift_map, index, layout)
         ink.painter.restore()
         if own_gains and shift_map.is_folded:
-            start = max(shift_map.span(index)[0], layout.left)
             text = f"×{gains[index]:g}"
-            ink.text(start + 4, layout.bracket + ink.look.px(20), text, CAPTION)
-    left, right = layout.left, layout.right
-    ink.hline(left, right, layout.baseline)
+            ink.text(left + 4, layout.bracket + ink.look.px(20), text, CAPTION)
 
 
 def _clip(

@@ -18,8 +18,12 @@ from spinledger_app.lanes.shift_map import Stretch
 SMOOTHING_HZ = (2.0, 8.0, 32.0, 80.0)
 MARGIN_HZ = 14.0
 _THRESHOLD_SD = 5.0
-_MOST_STRETCHES = 12
+_MOST_STRETCHES = 9
 _CELL_HZ = 2.0
+# A fold has to hide more than its own strip takes, in margins.
+_LEAST_FOLD = 1.5
+# Real lines have wider feet than a Lorentzian; so much of its tail is allowed for.
+_FEET = 3.0
 # 1.4826 turns a median absolute deviation into a normal sd (closed form).
 _MAD_TO_SD = 1.4826
 
@@ -49,7 +53,7 @@ def filled_stretches(
     Returns
     -------
     tuple of Stretch
-        By descending shift, at most twelve; the whole axis if nothing is there.
+        By descending shift, at most nine; the whole axis if nothing is there.
     """
     margin_ppm = MARGIN_HZ / spectrum.spectrometer_frequency_mhz
     spans = [(low, high) for low, high in ranges_ppm]
@@ -59,7 +63,9 @@ def filled_stretches(
         (max(low - margin_ppm, whole.low_ppm), min(high + margin_ppm, whole.high_ppm))
         for low, high in spans
     ]
-    merged = _merged([span for span in widened if span[0] < span[1]], 2.5 * margin_ppm)
+    merged = _merged(
+        [span for span in widened if span[0] < span[1]], _LEAST_FOLD * margin_ppm
+    )
     while len(merged) > _MOST_STRETCHES:
         merged = _closest_joined(merged)
     if not merged:
@@ -115,8 +121,7 @@ def _outstanding(
     expected = np.convolve(np.abs(tails), kernel, mode="same")
     middle = np.median(rest)
     sd = _MAD_TO_SD * float(np.median(np.abs(rest - middle)))
-    # Real lines have wider feet than a Lorentzian; all of them is allowed for.
-    limit = _THRESHOLD_SD * max(sd, 1e-300) + expected
+    limit = _THRESHOLD_SD * max(sd, 1e-300) + _FEET * expected
     above = np.abs(rest - middle) > limit
     if n_cells == 1:
         return above

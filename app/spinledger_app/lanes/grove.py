@@ -9,7 +9,7 @@ from typing import Literal
 
 from spinledger_app.lanes.layout import LaneLayout
 from spinledger_app.lanes.scene import LaneScene, TreeShape
-from spinledger_app.lanes.shift_map import ShiftMap
+from spinledger_app.lanes.shift_map import FOLD_WIDTH_PX, ShiftMap
 
 Style = Literal["stem", "branches", "hedge", "broad", "stump"]
 
@@ -66,7 +66,7 @@ class PlacedTree:
 
 @dataclass(frozen=True, slots=True, kw_only=True)
 class RootLabel:
-    """Words under one or several roots; more than one claim is a "+n" tag."""
+    """Words under one root, or a "+n" tag for those that found no room."""
 
     claims: tuple[str, ...]
     text: str
@@ -74,6 +74,11 @@ class RootLabel:
     x: float
     root_x: float
     width: float
+
+    @property
+    def is_tag(self) -> bool:
+        """Whether it stands for claims without a label of their own."""
+        return not self.caption
 
 
 @dataclass(frozen=True, slots=True, kw_only=True)
@@ -270,7 +275,8 @@ def _labels(
             if one.stretch == index and left - 1 <= one.root_x <= right + 1
         ]
         here.sort(key=lambda label: label.root_x)
-        labels += _in_room(here, left - 6, right + 6, first)
+        over = FOLD_WIDTH_PX / 2 if shift_map.is_folded else 0.0
+        labels += _in_room(here, left - over, right + over, first)
     return tuple(labels)
 
 

@@ -25,7 +25,8 @@ class Target:
     """One thing under the mouse: a claim's root, a branch, a signal, a fold.
 
     ``claim`` and ``level`` for trees, ``signal`` for signals and strays,
-    ``index`` for folds and lane borders.
+    ``index`` for folds and lane borders, ``fold_ppm`` (low, high) for what a
+    fold hides.
     """
 
     kind: Kind
@@ -33,6 +34,7 @@ class Target:
     level: int = -1
     signal: str | None = None
     index: int = -1
+    fold_ppm: tuple[float, float] | None = None
 
 
 NOTHING = Target(kind="empty")
@@ -64,7 +66,11 @@ def target_at(  # noqa: PLR0913 - a place and the whole view
         return NOTHING
     fold = shift_map.fold_at(x)
     if fold is not None:
-        return Target(kind="fold", index=fold)
+        hidden = (
+            shift_map.stretches[fold + 1].high_ppm,
+            shift_map.stretches[fold].low_ppm,
+        )
+        return Target(kind="fold", index=fold, fold_ppm=hidden)
     if layout.seam - 2 < y < layout.claims_bottom:
         return _in_claims(x, y, layout, grove, handles)
     if y <= layout.seam - 2:
@@ -90,7 +96,7 @@ def _in_claims(
 ) -> Target:
     for label in grove.labels:
         is_beside = abs(x - label.x) <= max(label.width / 2 + 4, _HANDLE_PX)
-        if len(label.claims) == 1 and is_beside and y > layout.soil + 8:
+        if not label.is_tag and is_beside and y > layout.soil + 8:
             return Target(kind="tree", claim=label.claims[0])
     if abs(y - layout.soil) <= _HANDLE_PX:
         near = [one for one in grove.trees if abs(one.root_x - x) <= _HANDLE_PX]

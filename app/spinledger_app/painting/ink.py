@@ -16,6 +16,8 @@ from spinledger_app.theme import Look, TextRect
 Align = Literal["left", "right", "centre"]
 _SUBSCRIPT_LABEL = re.compile(r"^(.*H)([A-D])(′*)$")
 _SUBSCRIPT_SIZE = 0.8
+_COUNT = re.compile(r"H(\d+)(?![-,\d′])")
+_SUBSCRIPTS = str.maketrans("0123456789", "₀₁₂₃₄₅₆₇₈₉")
 _ELLIPSIS = "…"
 
 
@@ -110,6 +112,7 @@ class Ink:
         max_width: float | None = None,
     ) -> float:
         """Paint a claim's label, its A or B lowered; gives its width."""
+        label = shown_label(label)
         width = label_width(self.look, label, face)
         match = _SUBSCRIPT_LABEL.match(label)
         if match is None or (max_width is not None and width > max_width):
@@ -273,8 +276,16 @@ def elided(measure: Callable[[str], float], text: str, max_width: float) -> str:
     return _ELLIPSIS
 
 
+def shown_label(label: str) -> str:
+    """Label with real glyphs: primes, subscript counts, raised charge."""
+    text = label.replace("'", "′")
+    text = _COUNT.sub(lambda m: "H" + m.group(1).translate(_SUBSCRIPTS), text)
+    return text[:-1] + "⁺" if text.endswith("+") else text
+
+
 def label_width(look: Look, label: str, face: Face = STRONG) -> float:
     """Width of a claim's label as :meth:`Ink.label` paints it, px."""
+    label = shown_label(label)
     match = _SUBSCRIPT_LABEL.match(label)
     if match is None:
         return look.width(label, face.size, face.weight)

@@ -69,6 +69,7 @@ def paint_figure(
         own_gains=False,
         show_integrals=False,
     )
+    paint_folds(ink, shift_map, layout)
     paint_brackets(ink, scene, shift_map, layout)
 
     def width_of(tree: TreeShape) -> float:
@@ -77,7 +78,6 @@ def paint_figure(
     grove = plant(scene, shift_map, layout, width_of)
     ClaimsPainter(ink, scene, shift_map, layout, grove).paint()
     paint_axis(ink, shift_map, replace(layout, width=right), scene.frequency_mhz)
-    paint_folds(ink, shift_map, layout)
     painter.restore()
     ink.text(right, layout.bottom + 8, "δ, ppm", CAPTION, align="right")
 

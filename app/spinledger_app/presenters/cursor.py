@@ -2,6 +2,8 @@
 
 from __future__ import annotations
 
+from pathlib import Path
+
 from spinledger.project.document import Project
 from spinledger_app.lanes.camera import Camera
 from spinledger_app.lanes.scene import LaneScene
@@ -9,13 +11,16 @@ from spinledger_app.lanes.shift_map import ShiftMap
 from spinledger_app.lanes.targets import Target
 from spinledger_app.presenters.wording import chemical, number, say
 
+# The tallest of ten thousand points of bare noise stands at 4 to 5 sd.
+_QUIET_SD = 5.0
+
 
 def cursor_text(scene: LaneScene | None, target: Target, ppm: float | None) -> str:
     """Shift, frequency and nearest owner under the cursor."""
     if scene is None:
         return ""
     if target.kind == "fold":
-        return say("folded away, no line over 5 sd; click opens it")
+        return fold_text(scene, target.fold_ppm)
     if ppm is None:
         return ""
     parts = [
@@ -26,6 +31,24 @@ def cursor_text(scene: LaneScene | None, target: Target, ppm: float | None) -> s
     if owner:
         parts.append(owner)
     return "    ".join(parts)
+
+
+def fold_text(scene: LaneScene, fold_ppm: tuple[float, float] | None) -> str:
+    """What a fold hides: its range, and its tallest point in noise sd."""
+    if fold_ppm is None:
+        return ""
+    low, high = fold_ppm
+    height_sd = scene.measured.highest(high, low) / max(scene.noise_sd, 1e-300)
+    words = (
+        say("folded, {0} to {1} ppm, no line over 5 sd; click opens it")
+        if height_sd <= _QUIET_SD
+        else say("folded, {0} to {1} ppm, lines up to {2} sd; click opens it")
+    )
+    return (
+        words.replace("{0}", number(high, 2))
+        .replace("{1}", number(low, 2))
+        .replace("{2}", number(height_sd, 0))
+    )
 
 
 def _owner(scene: LaneScene, target: Target, ppm: float) -> str:
@@ -80,11 +103,21 @@ def view_text(
     )
 
 
+def source_name(project: Project) -> str | None:
+    """Name of the spectrum; a bare number gets its folder's name before it."""
+    name = project.source_name
+    if name is not None and name.isdigit() and project.source_path is not None:
+        path = Path(project.source_path)
+        folder = path if path.name != name else path.parent
+        return f"{folder.name}/{name}" if folder.name else name
+    return name
+
+
 def title(project: Project, file_name: str | None) -> str:
     """Title of the window: file, field, nucleus, solvent."""
     if project.evidence is None and project.structure is None:
         return say("No project open")
-    name = file_name or project.source_name or project.name
+    name = file_name or source_name(project) or project.name
     if project.evidence is None:
         return name
     evidence = project.evidence

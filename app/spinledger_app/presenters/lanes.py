@@ -35,6 +35,11 @@ _SUBSTANCES: Mapping[str, re.Pattern[str]] = MappingProxyType(
         "reference": re.compile(r"\b(TMS|DSS|TSP)\b"),
     }
 )
+# These do not deserve a stretch of the folded axis of their own.
+_NO_STRETCH = ("satellite", "sideband")
+_MUCH_WIDER = 5.0
+# Lines lower than this share of the lane are under a pixel high.
+_WEAK_SHARE = 0.01
 _LONGEST_NAME = 18
 # Amounts below this are told by the mouse only; numbers would crowd the lane.
 _LEAST_SHOWN_PROTONS = 0.04
@@ -71,8 +76,7 @@ def lane_scene(
     marks = signal_marks(evidence, ledger, strays)
     grown = trees(ledger) if ledger is not None else ()
     whole = whole_axis(evidence)
-    homeless = [tree.root_ppm for tree in grown if tree.state in ("open", "silent")]
-    ranges = [(mark.low_ppm, mark.high_ppm) for mark in marks]
+    height = full_height(trace, marks, strays)
     model = None if ledger is None or ledger.model is None else ledger.model.intensities
     residue = None
     if model is not None and model.size == spectrum.n_points:
@@ -82,14 +86,18 @@ def lane_scene(
         whole=whole,
         folds=filled_stretches(
             spectrum,
-            [r for r in ranges if r[1] > whole.low_ppm and r[0] < whole.high_ppm],
+            _kept_ranges(trace, marks, strays, (whole, height)),
             whole=whole,
             lines=[line for signal in evidence.signals for line in signal.lines],
-            places_ppm=[p for p in homeless if whole.holds(p)],
+            places_ppm=[
+                tree.root_ppm
+                for tree in grown
+                if tree.state == "open" and whole.holds(tree.root_ppm)
+            ],
         ),
         measured=trace,
         noise_sd=evidence.noise_sd,
-        full_height=full_height(trace, marks, strays),
+        full_height=height,
         model=None if model is None else _trace(model, trace),
         residue=residue,
         signals=marks,
@@ -99,6 +107,31 @@ def lane_scene(
         excluded_ppm=excluded_ppm,
         partners={} if ledger is None else _partners(ledger),
     )
+
+
+def _kept_ranges(
+    trace: Trace,
+    marks: Sequence[SignalMark],
+    strays: Sequence[Stray],
+    whole_and_height: tuple[Stretch, float],
+) -> list[tuple[float, float]]:
+    """Ranges that the folded axis must show.
+
+    Satellites, sidebands and lines too weak to be seen beside the tallest claim
+    are left to the continuous axis, unless a claim owns them or the ledger names
+    them unexplained.
+    """
+    whole, height = whole_and_height
+    aside = {(s.low_ppm, s.high_ppm) for s in strays if s.kind in _NO_STRETCH}
+    kept = []
+    for mark in marks:
+        span = (mark.low_ppm, mark.high_ppm)
+        is_weak = trace.highest(mark.high_ppm, mark.low_ppm) < _WEAK_SHARE * height
+        is_wanted = mark.claims or mark.stray == "unexplained" or not is_weak
+        is_inside = span[1] > whole.low_ppm and span[0] < whole.high_ppm
+        if is_inside and span not in aside and is_wanted:
+            kept.append(span)
+    return kept
 
 
 def whole_axis(evidence: Evidence) -> Stretch:
@@ -224,12 +257,14 @@ def _owners(signal: Signal, ledger: Ledger | None) -> tuple[str, ...]:
 
 
 def _stray_over(signal: Signal, strays: Sequence[Stray]) -> Stray | None:
+    """The stray that a signal is, if it is one and not much wider than it."""
     width = signal.high_ppm - signal.low_ppm
     for stray in strays:
+        own = stray.high_ppm - stray.low_ppm
         shared = min(stray.high_ppm, signal.high_ppm) - max(
             stray.low_ppm, signal.low_ppm
         )
-        if shared > 0.5 * width:
+        if shared > 0.5 * min(width, own) and width < _MUCH_WIDER * own:
             return stray
     return None
 

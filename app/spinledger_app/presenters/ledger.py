@@ -13,6 +13,7 @@ from spinledger_app.presenters.wording import (
     number,
     protons,
     say,
+    sentences,
     shift_sd,
     whole_protons,
 )
@@ -35,6 +36,8 @@ _STRAY_ORDER = (
     "sideband",
 )
 _LEAST_SHOWN_J_HZ = 0.3
+_TOGETHER = ("satellite", "sideband")
+_MOST_ALONE = 2
 
 
 @dataclass(frozen=True, slots=True, kw_only=True)
@@ -197,7 +200,7 @@ def verdict_text(
     probability = (
         "–" if verdict.probability is None else _probability(verdict.probability)
     )
-    detail = "\n".join(verdict.reasons)
+    detail = "\n".join(sentences((one,)) for one in verdict.reasons)
     ratio = ""
     if verdict.likelihood_ratio is not None:
         ratio = (
@@ -210,7 +213,7 @@ def verdict_text(
         word=say(verdict.state.capitalize()),
         probability=probability,
         tilt_deg=_TILTS[verdict.state],
-        reasons=" ".join(verdict.reasons),
+        reasons=sentences(verdict.reasons),
         detail=detail,
         ratio=ratio,
         before=(
@@ -271,7 +274,7 @@ def row_text(entry: Entry, *, is_pinned: bool = False) -> RowText:
         is_booked_elsewhere=entry.state == "settled"
         and abs(entry.j_residual_sd or 0.0) > 2,
     )
-    sentences = entry.reasons if entry.reasons else ((entry.why,) if entry.why else ())
+    reasons = entry.reasons if entry.reasons else ((entry.why,) if entry.why else ())
     found = entry.shift_ppm is not None
     row = RowText(
         claim=entry.claim,
@@ -285,7 +288,7 @@ def row_text(entry: Entry, *, is_pinned: bool = False) -> RowText:
         else "",
         found_couplings=_found_couplings(entry.couplings, entry) if found else "",
         gauge=gauge,
-        sentences=sentences,
+        sentences=tuple(sentences((one,)) for one in reasons),
         flag=_flag(entry),
         spoken="",
         is_pinned=is_pinned,
@@ -327,7 +330,7 @@ def _found_couplings(found: Sequence[EntryCoupling], entry: Entry) -> str:
         if any(not c.determined for c in found):
             shown = say("J not determined")
         else:
-            shown = say("no splitting")
+            return pattern or say("no splitting")
     differs = pattern and pattern != entry.predicted_multiplicity
     return f"{pattern}  {shown}" if differs else shown
 
@@ -348,8 +351,30 @@ def _flag(entry: Entry) -> str:
 def stray_texts(strays: Sequence[Stray]) -> tuple[StrayText, ...]:
     """Strays, unexplained first, each kind by descending shift."""
     keyed = [(f"stray {index}", stray) for index, stray in enumerate(strays)]
+    pairs = [one for one in keyed if one[1].kind in _TOGETHER]
+    if len(pairs) > _MOST_ALONE:
+        keyed = [one for one in keyed if one not in pairs]
     keyed.sort(key=lambda pair: (_STRAY_ORDER.index(pair[1].kind), -pair[1].high_ppm))
-    return tuple(_stray_text(key, stray) for key, stray in keyed)
+    texts = [_stray_text(key, stray) for key, stray in keyed]
+    if len(pairs) > _MOST_ALONE:
+        texts.append(_satellites(pairs))
+    return tuple(texts)
+
+
+def _satellites(pairs: Sequence[tuple[str, Stray]]) -> StrayText:
+    """Satellites and sidebands in one row; the tool tip names each."""
+    ordered = sorted(pairs, key=lambda pair: -pair[1].high_ppm)
+    centres = [number((stray.low_ppm + stray.high_ppm) / 2, 3) for _, stray in ordered]
+    return StrayText(
+        key=ordered[0][0],
+        is_known=True,
+        shift=say("{0} lines").replace("{0}", str(len(ordered))),
+        name=", ".join(centres),
+        kind=say("satellites"),
+        tip="\n".join(
+            f"{c} ppm: {s.why}" for c, (_, s) in zip(centres, ordered, strict=True)
+        ),
+    )
 
 
 def _stray_text(key: str, stray: Stray) -> StrayText:

@@ -13,6 +13,7 @@ _ANGLES = 24
 _RADII_PX = (24.0, 34.0, 46.0, 60.0, 78.0, 98.0)
 _TAG_HEIGHT_PX = 20.0
 _STACK_PX = 24.0
+_EDGE_PX = 4.0
 
 
 @dataclass(frozen=True, slots=True, kw_only=True)
@@ -202,8 +203,8 @@ def _best_place(
                 if 0.9 * rank >= best[0]:
                     break  # whatever comes is worse, however free its place is
                 continue
-            box = _Box.about(x + dx, y + dy, wish.width, height)
-            cost = least + _cost(box, size, blocked)
+            box, moved = _inside(_Box.about(x + dx, y + dy, wish.width, height), size)
+            cost = least + 0.5 * moved + _cost(box, size, blocked)
             if best is None or cost < best[0]:
                 is_led = math.hypot(dx, dy) > 46 + wish.width / 3
                 best = cost, PlacedTag(
@@ -214,6 +215,23 @@ def _best_place(
     if best is None:
         raise ValueError(f"atoms: {wish.claim} names no atom of the drawing")
     return best[1]
+
+
+def _inside(box: _Box, size: tuple[float, float]) -> tuple[_Box, float]:
+    """Box pushed into the panel, and how far it was pushed."""
+    right, down = 0.0, 0.0
+    if box.left < _EDGE_PX:
+        right = _EDGE_PX - box.left
+    elif box.right > size[0] - _EDGE_PX:
+        right = size[0] - _EDGE_PX - box.right
+    if box.top < _EDGE_PX:
+        down = _EDGE_PX - box.top
+    elif box.bottom > size[1] - _EDGE_PX:
+        down = size[1] - _EDGE_PX - box.bottom
+    pushed = _Box(
+        box.left + right, box.top + down, box.right + right, box.bottom + down
+    )
+    return pushed, abs(right) + abs(down)
 
 
 def _offsets(

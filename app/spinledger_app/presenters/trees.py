@@ -19,6 +19,7 @@ BROAD_HZ = 5.0
 _MOST_LEAVES = 96
 _SAME_LINE_HZ = 0.25
 _WEAK_SHARE = 0.02
+_FAR_HZ = 8.0
 _OFF_SD = 3.0
 _FOOT_REACH_HZ = 6.0
 # A line's place is not claimed better than this, whatever the fit says.
@@ -145,6 +146,12 @@ def tips_of(
     lines than places, neighbours share one.
     """
     lines_ppm, weights = _merged_lines(exact, frequency_mhz)
+    reach_ppm = _FAR_HZ / frequency_mhz
+    is_near = (lines_ppm < bases_ppm.max() + reach_ppm) & (
+        lines_ppm > bases_ppm.min() - reach_ppm
+    )
+    # Combination lines far outside the multiplet belong to no branch.
+    lines_ppm, weights = lines_ppm[is_near], weights[is_near]
     if lines_ppm.size == 0:
         return bases_ppm, ()
     if lines_ppm.size < bases_ppm.size:

@@ -3,6 +3,7 @@
 from __future__ import annotations
 
 import re
+from collections.abc import Iterable
 
 from PySide6.QtCore import QCoreApplication
 
@@ -75,6 +76,17 @@ def chemical(text: str) -> str:
     if re.fullmatch(r"(?:[A-Z][a-z]?\d*|\((?:[A-Z][a-z]?\d*)+\)\d*)+", text):
         return _FORMULA_DIGITS.sub(lambda m: m.group().translate(_SUBSCRIPTS), text)
     return text
+
+
+def sentences(texts: Iterable[str]) -> str:
+    """Reasons as running text: each with a capital and a full stop."""
+    made = []
+    for text in texts:
+        plain = text.strip()
+        if plain:
+            stop = "" if plain[-1] in ".!?" else "."
+            made.append(plain[:1].upper() + plain[1:] + stop)
+    return " ".join(made)
 
 
 def formula(text: str) -> str:

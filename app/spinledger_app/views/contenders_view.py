@@ -13,6 +13,7 @@ from spinledger_app.painting.ink import (
     STRONG,
     Face,
     Ink,
+    wrap,
 )
 from spinledger_app.painting.molecule import paint_molecule
 from spinledger_app.presenters.contenders import CardText, ContendersText
@@ -73,11 +74,14 @@ class Card(QWidget):
             ink.line(start, end, "muted", 1.5)
         left = _MARGIN + thumb + 8
         room_px = self.width() - left - 10
-        ink.text(left, px(20), text.name, SECOND_STRONG, max_width=room_px)
+        n_lines = min(2, len(wrap(self.look, text.name, room_px, SECOND_STRONG)))
+        y = ink.wrapped(
+            left, px(20), room_px, text.name, SECOND_STRONG, max_lines=n_lines
+        )
         colour = "accent" if text.stands else "muted"
         face = Face(size=13, weight=600, colour=colour)
-        ink.text(left, px(37), text.word, face, max_width=room_px)
-        ink.wrapped(left, px(54), room_px, text.why, CAPTION, max_lines=2)
+        ink.text(left, y, text.word, face, max_width=room_px)
+        ink.wrapped(left, y + px(16), room_px, text.why, CAPTION, max_lines=3 - n_lines)
         painter.end()
 
     def mouseReleaseEvent(self, event: QMouseEvent) -> None:

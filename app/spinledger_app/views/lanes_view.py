@@ -341,7 +341,6 @@ class LanesView(QWidget):
             if self.scene.residue is not None:
                 paint_residue_ticks(ink, self.scene, self.map, layout)
             paint_axis(ink, self.map, layout, self.scene.frequency_mhz)
-            paint_folds(ink, self.map, layout)
         painter.end()
         return base
 
@@ -367,6 +366,7 @@ class LanesView(QWidget):
             and not shift_map.is_folded
             and shift_map.px_per_hz(scene.frequency_mhz) < LARGE_LEAVES_FROM,
         )
+        paint_folds(ink, shift_map, layout)
         paint_brackets(ink, scene, shift_map, layout)
         first = [m for m in (self.marks.selected,) if m is not None]
         first += [t.claim for t in scene.trees if t.state in ("disputed", "open")]

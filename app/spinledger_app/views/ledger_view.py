@@ -32,6 +32,7 @@ from spinledger_app.views.ledger_rows import (
 from spinledger_app.views.verdict_view import BalanceView, VerdictView
 
 _FULL_PX, _WIDE_PX, _DENSE_PX = 44, 56, 28
+_ADVICE_ROOM_PX = 100
 _SORTS = ("given", "shift", "state")
 
 
@@ -357,7 +358,6 @@ class LedgerView(QWidget):
             self._list_layout.insertWidget(at, advice_row)
             self._advice_rows.append(advice_row)
             at += 1
-        self.advice_heading.setVisible(bool(self.text.advice))
 
     def _ordered(self) -> list[RowText]:
         assert self.text is not None
@@ -408,7 +408,20 @@ class LedgerView(QWidget):
                 widget.fold()
         self.head.update()
         self.total.update()
+        self._make_room()
         self._mark_rows()
+
+    def _make_room(self) -> None:
+        """Show the next measurement only where 150 px are free under the strays."""
+        has_advice = self.text is not None and bool(self.text.advice)
+        used = sum(row.sizeHint().height() for row in self.rows)
+        used += self.total.sizeHint().height()
+        used += self.stray_heading.sizeHint().height()
+        used += sum(row.sizeHint().height() for row in self._stray_rows)
+        is_free = self.area.height() - used >= self.look.px(_ADVICE_ROOM_PX)
+        self.advice_heading.setVisible(has_advice and is_free)
+        for row in self._advice_rows:
+            row.setVisible(is_free)
 
     def _take_sort(self, sort: str) -> None:
         self._sort = self.head.sort = sort

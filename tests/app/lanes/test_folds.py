@@ -73,10 +73,10 @@ def test_signals_stay_and_order_is_descending() -> None:
         assert any(stretch.holds(shift) for stretch in kept)
 
 
-def test_many_signals_share_a_dozen_stretches() -> None:
+def test_many_signals_share_nine_stretches() -> None:
     shifts = np.linspace(0.5, 11.0, 30)
     spectrum = spectrum_of(*[(float(s), 500.0, 1.0) for s in shifts])
     ranges = [(float(s) - 0.01, float(s) + 0.01) for s in shifts]
     kept = filled_stretches(spectrum, ranges, whole=WHOLE)
-    assert len(kept) <= 12
+    assert len(kept) <= 9
     assert all(any(stretch.holds(float(s)) for stretch in kept) for s in shifts)
