@@ -1,0 +1,1 @@
+"""Structure editor: pure drawings and gestures, and the widget that shows them."""
