@@ -68,20 +68,27 @@ def advise(
     return tuple(sorted(rows, key=lambda row: -row.expected_discrimination))
 
 
-def carbon_types(mol: Chem.Mol) -> Counter[int]:
-    """Distinct carbon atoms by their number of protons (as DEPT shows them)."""
+def carbon_types(evaluation: Evaluation) -> Counter[int]:
+    """Distinct carbon atoms by their number of protons (as DEPT shows them).
+
+    Carbons with protons count by their claims, so that diastereotopic groups
+    are told apart; the others by the symmetry of the drawing.
+    """
+    mol = molecule(evaluation.structure)
     ranks = list(Chem.CanonicalRankAtoms(mol, breakTies=False))
-    seen = {
-        rank: atom.GetTotalNumHs()
-        for rank, atom in zip(ranks, mol.GetAtoms(), strict=True)
-        if atom.GetSymbol() == "C"
-    }
+    seen: dict[tuple[int, ...], int] = {}
+    for claim in evaluation.claims.claims:
+        atoms = [mol.GetAtomWithIdx(i) for i in claim.atoms if i < mol.GetNumAtoms()]
+        if claim.species == 0 and atoms and atoms[0].GetSymbol() == "C":
+            seen[claim.atoms] = int(atoms[0].GetTotalNumHs())
+    for rank, atom in zip(ranks, mol.GetAtoms(), strict=True):
+        if atom.GetSymbol() == "C" and atom.GetTotalNumHs() == 0:
+            seen[-1 - rank,] = 0
     return Counter(seen.values())
 
 
 def _carbon_difference(own: Evaluation, other: Evaluation) -> str:
-    mine = carbon_types(molecule(own.structure))
-    theirs = carbon_types(molecule(other.structure))
+    mine, theirs = carbon_types(own), carbon_types(other)
     if mine == theirs:
         return ""
     return (

@@ -43,13 +43,14 @@ from spinledger.values.ledger import (
 
 DISPUTED_Z = 3.0
 DISPUTED_MISFIT = 0.5
-DISPUTED_AMPLITUDE_LOG = 0.5
+DISPUTED_AMPLITUDE_LOG = 0.55
 OPEN_AMPLITUDE = 0.2
 BROAD_RATIO = 3.0
 BROAD_HZ = 4.0
 # Pulse angle, delay and baseline leave integrals this unsure [common practice].
 INTEGRAL_SD_SHARE = 0.08
-WATER_REACH_PPM = 0.6
+# Saturation reaches protons that exchange or relax with water, alpha-H most.
+WATER_REACH_PPM = 1.5
 
 
 @dataclass(frozen=True, slots=True, eq=False, kw_only=True)

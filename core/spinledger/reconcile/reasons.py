@@ -2,6 +2,8 @@
 
 from __future__ import annotations
 
+from spinledger.processing.solvents import is_aqueous
+from spinledger.reconcile.envelopes import is_balanced
 from spinledger.reconcile.evaluate import Evaluation
 from spinledger.values.evidence import Stray
 from spinledger.values.ledger import Entry
@@ -29,7 +31,7 @@ def verdict_reasons(evaluation: Evaluation) -> tuple[str, ...]:
             f"the best fit leaves {100 * share:.0f} % of the signal area unexplained "
             "or without support"
         )
-    for_it = [_settled_sentence(entries), *_order_sentences(entries)]
+    for_it = [_settled_sentence(evaluation), *_order_sentences(entries)]
     said = [*against, *for_it] if against else for_it
     said += _circumstances(evaluation)
     return tuple(sentence for sentence in said if sentence)
@@ -71,14 +73,17 @@ def _stray_sentences(strays: tuple[Stray, ...]) -> list[str]:
     ]
 
 
-def _settled_sentence(entries: tuple[Entry, ...]) -> str:
-    settled = [entry for entry in entries if entry.state == "settled"]
-    visible = [entry for entry in entries if entry.state != "silent"]
-    if not settled:
+def _settled_sentence(evaluation: Evaluation) -> str:
+    """How many protons agree; exchangeable ones are not counted."""
+    if evaluation.booking is None:
         return ""
-    protons = sum(entry.protons for entry in settled)
-    of = sum(entry.protons for entry in visible)
-    if len(settled) == len(visible):
+    steady = {one.label for one in evaluation.claims.claims if is_balanced(one)}
+    rows = [e for e in evaluation.booking.entries if e.claim in steady]
+    of = sum(entry.protons for entry in rows if entry.state != "silent")
+    protons = sum(entry.protons for entry in rows if entry.state == "settled")
+    if not protons:
+        return ""
+    if protons == of:
         return f"all {of} H that must be seen stand where the structure puts them"
     return f"{protons} of {of} H that must be seen agree"
 
@@ -101,20 +106,12 @@ def _circumstances(evaluation: Evaluation) -> list[str]:
     """Conflicts and limits that the reader should know."""
     evidence = evaluation.evidence
     said = []
-    if (
-        evidence.solvent_seen is not None
-        and evidence.solvent is not None
-        and evidence.solvent_seen != evidence.solvent
-    ):
+    if _conflict(evidence.solvent, evidence.solvent_seen):
         said.append(
             f"{evidence.solvent} was taken as the solvent, but the spectrum shows "
             f"{evidence.solvent_seen}"
         )
-    elif (
-        evidence.solvent_header is not None
-        and evidence.solvent is not None
-        and evidence.solvent_header != evidence.solvent
-    ):
+    elif _conflict(evidence.solvent, evidence.solvent_header):
         said.append(
             f"the header names {evidence.solvent_header}, but {evidence.solvent} "
             "was taken as the solvent"
@@ -122,3 +119,10 @@ def _circumstances(evaluation: Evaluation) -> list[str]:
     if evaluation.solution is not None and not evaluation.solution.is_complete:
         said.append("the time allowed ran out: this is the best of what was tried")
     return said
+
+
+def _conflict(used: str | None, other: str | None) -> bool:
+    """Whether two solvents differ by more than the share of heavy water."""
+    if used is None or other is None or used == other:
+        return False
+    return not (is_aqueous(used) and is_aqueous(other))

@@ -51,6 +51,8 @@ DEFAULT_CONTENDERS = 4
 CONTENDER_REFINED = 2
 # Odds of 20 to 1 against exclude a contender.
 EXCLUDED_LOGIT = 3.0
+# What fine refinement may still gain over a broad fit.
+ROUGH_MARGIN = 1.0
 
 
 def reconcile(
@@ -124,7 +126,8 @@ def _contenders(
         if limits.is_over():
             break
         try:
-            other = evaluate(given or read_structure(smiles), bench, narrow)
+            structure = given or read_structure(smiles)
+            other = _weighed(structure, own, bench, narrow)
         except StructureError as error:
             rows.append(_unread(name, smiles, origin, error.reason))
             continue
@@ -133,6 +136,16 @@ def _contenders(
         if not row.excluded:
             standing_rows.append((smiles, other))
     return tuple(rows), tuple(standing_rows)
+
+
+def _weighed(
+    structure: Structure, own: Evaluation, bench: Bench, limits: Limits
+) -> Evaluation:
+    """Rough evaluation of a contender; a fine one where that does not exclude it."""
+    rough = evaluate(structure, bench, replace(limits, is_rough=True))
+    if standing(own) - standing(rough) > EXCLUDED_LOGIT + ROUGH_MARGIN:
+        return rough
+    return evaluate(structure, bench, limits)
 
 
 def _enumerated(own: Evaluation, bench: Bench, limits: Limits) -> tuple[Isomer, ...]:

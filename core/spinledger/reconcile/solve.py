@@ -72,6 +72,8 @@ class Limits:
     ----------
     max_refined : int
         Hypotheses refined at most.
+    is_rough : bool
+        Only broad fits: enough to see that a structure does not fit.
     check : callable or None
         Raises when the user stopped.
     deadline_s : float or None
@@ -79,6 +81,7 @@ class Limits:
     """
 
     max_refined: int = MAX_REFINED
+    is_rough: bool = False
     check: Callable[[], None] | None = None
     deadline_s: float | None = None
 
@@ -211,7 +214,8 @@ def _finished(
     sketchpad: _Sketchpad, sketches: list[Fitted], limits: Limits
 ) -> tuple[list[Fitted], list[Fitted]]:
     """The best sketches after fine refinement, best first, and the rest as is."""
-    if sketches[0].assessment.residual_share > HOPELESS_RESIDUAL:
+    is_hopeless = sketches[0].assessment.residual_share > HOPELESS_RESIDUAL
+    if limits.is_rough or is_hopeless:
         return sketches[:1], sketches[1:]
     fits: list[Fitted] = []
     for sketch in sketches[:MAX_FINISHED]:
