@@ -36,7 +36,7 @@ CHAIN_TREES: dict[str, Any] = TREES | {
     "lambda_l2": 1.0,
 }
 N_CHAIN_TREES = 150
-CHAIN_RIDGE = 5.0
+CHAIN_RIDGE = 3.0
 TRAINED_MEANS = {
     "chain CH2-CH3": "chain_ch2_ch3",
     "chain CH2-CH2": "chain_ch2_ch2",
@@ -255,6 +255,17 @@ def block_errors(data: BlockData, predicted: Sequence[Floats]) -> tuple[Floats, 
         for block, values in zip(data.blocks, predicted, strict=True)
     ]
     return np.concatenate(single) if single else np.zeros(0), np.array(means)
+
+
+def groups_of_values(data: BlockData) -> Texts:
+    """Scaffold group of every single value of ``block_errors``."""
+    counts = [
+        block.couplings_hz.size
+        if block.has_split or block.couplings_hz.size == 1
+        else 0
+        for block in data.blocks
+    ]
+    return np.repeat(data.groups, counts)
 
 
 def final_blends(blocks: Mapping[str, BlockData]) -> dict[str, Blend]:

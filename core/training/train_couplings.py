@@ -28,9 +28,10 @@ from couplings_chains import (
     block_errors,
     block_predictions,
     final_blends,
+    groups_of_values,
 )
 from couplings_data import Frames, read_rows
-from couplings_fit import Floats, stored_trees
+from couplings_fit import N_FOLDS, Floats, Texts, folds, stored_trees
 from couplings_rings import RingData, fit_rings, ring_data, ring_errors, trained_kinds
 
 DATA_FOLDER = Path(__file__).parents[1] / "spinledger/prediction/couplings/data/trained"
@@ -40,7 +41,7 @@ SPLIT_SEEDS = (1, 2, 3)
 FEWEST_FOR_INTERVAL = 10
 
 
-def summary(errors: Sequence[Floats]) -> dict[str, float]:
+def summary(errors: Sequence[Floats]) -> dict[str, Any]:
     """Mean absolute error and quantiles over repeated splits."""
     sizes = np.abs(np.concatenate(list(errors)))
     return {
@@ -67,21 +68,26 @@ class Validation:
         Of single values.
     means : mapping
         Of block means; empty for aromatic kinds.
+    groups : mapping
+        Scaffold group of every single value.
     """
 
     single: Mapping[str, list[Floats]]
     means: Mapping[str, list[Floats]]
+    groups: Mapping[str, Texts]
 
 
 def cross_validate(rings: RingData, blocks: Mapping[str, BlockData]) -> Validation:
     """Errors of every kind, split by scaffold."""
     single: dict[str, list[Floats]] = {}
     means: dict[str, list[Floats]] = {}
+    groups: dict[str, Texts] = {}
     for seed in SPLIT_SEEDS:
         errors = ring_errors(rings, seed)
         for kind in np.unique(rings.kinds):
             rows = (rings.kinds == kind) & rings.is_physical
             single.setdefault(str(kind), []).append(errors[rows])
+            groups[str(kind)] = rings.groups[rows]
         for kind, data in blocks.items():
             if len(data.blocks) < 5:
                 continue
@@ -89,7 +95,30 @@ def cross_validate(rings: RingData, blocks: Mapping[str, BlockData]) -> Validati
             found, of_means = block_errors(data, predicted)
             single.setdefault(kind, []).append(found)
             means.setdefault(kind, []).append(of_means)
-    return Validation(single=single, means=means)
+            groups[kind] = groups_of_values(data)
+    return Validation(single=single, means=means, groups=groups)
+
+
+def coverage(errors: Sequence[Floats], groups: Texts) -> dict[str, float]:
+    """Shares within the 68 and 95 % intervals, and within one and two sd.
+
+    The half widths are taken from the other scaffolds.
+    """
+    inside: dict[str, list[float]] = {name: [] for name in ("68", "95", "sd", "2 sd")}
+    for seed, sizes in zip(SPLIT_SEEDS, map(np.abs, errors), strict=True):
+        fold = folds(groups, seed)
+        for number in range(N_FOLDS):
+            mine = sizes[fold == number]
+            low, high = np.quantile(sizes[fold != number], [0.68, 0.95])
+            sd = np.sqrt(low * high / 1.96)
+            for name, limit in (
+                ("68", low),
+                ("95", high),
+                ("sd", sd),
+                ("2 sd", 2 * sd),
+            ):
+                inside[name].extend((mine <= limit).astype(float))
+    return {name: round(float(np.mean(hits)), 3) for name, hits in inside.items()}
 
 
 def parameters(
@@ -129,6 +158,8 @@ def figures(validation: Validation) -> dict[str, dict[str, Any]]:
     found: dict[str, dict[str, Any]] = {}
     for kind, errors in validation.single.items():
         found[kind] = summary(errors) if errors[0].size else {"n": 0}
+        if errors[0].size >= FEWEST_FOR_INTERVAL:
+            found[kind]["inside"] = coverage(errors, validation.groups[kind])
         if kind in validation.means:
             found[kind]["of means"] = summary(validation.means[kind])
     return found
