@@ -3,19 +3,24 @@
 usage: python tests/benchmarks/processing.py [--only NAME ...] [--part PART ...]
 
 Parts: maker (against the maker's own processed spectrum), reference (against
-published shifts on the DSS scale), synthetic (lines that are known), time.
+published shifts on the DSS scale, and CHCl3), stress (added noise and first-order
+phase), synthetic (lines that are known), time (with nmrglue's autops as yardstick).
 """
 
 from __future__ import annotations
 
 import argparse
+import contextlib
+import io
 import json
 import re
 import sys
 import time
 from dataclasses import dataclass, replace
 from pathlib import Path
+from typing import Any
 
+import nmrglue
 import numpy as np
 import numpy.typing as npt
 import scipy.fft
@@ -23,18 +28,40 @@ import scipy.fft
 from spinledger.detection.evidence import evidence_from, gather_evidence
 from spinledger.io.read import read_acquired
 from spinledger.lines.derivative import complex_second_derivative
+from spinledger.lines.noise import noise_sd
 from spinledger.processing.automatic import process
-from spinledger.processing.phase import phased
-from spinledger.processing.recipe import find_step, finish, transform, with_step
-from spinledger.values.acquisition import Acquired, Fid
+from spinledger.processing.automatic_phase import automatic_phase
+from spinledger.processing.found_regions import found_regions
+from spinledger.processing.phase import phased, sweep_positions
+from spinledger.processing.recipe import (
+    Transformed,
+    find_step,
+    finish,
+    transform,
+    with_step,
+)
+from spinledger.spins.engine import simulate
+from spinledger.values.acquisition import Fid
 from spinledger.values.evidence import Evidence
-from spinledger.values.recipe import Apodize, Phase, Recipe, Reference, ZeroFill
+from spinledger.values.recipe import Apodize, Phase, Recipe, ZeroFill
 from spinledger.values.spectrum import Spectrum
+from spinledger.values.spin_system import SpinSystem, Transitions
 
-sys.path.insert(0, str(Path(__file__).resolve().parents[1]))
-from shared_data import SHARED
+sys.path[:0] = [str(Path(__file__).resolve().parents[1]), str(Path(__file__).parent)]
+from synthetic_lines import synthetic_report  # noqa: E402 - the same
+
+from shared_data import SHARED  # noqa: E402 - a sibling, found by the line above
 
 WATER_HALF_PPM = 0.25
+N_YARDSTICK = 8
+STRESSES = (
+    ("slope", 200.0),
+    ("slope", -350.0),
+    ("slope", 350.0),
+    ("noise", 5.0),
+    ("noise", 15.0),
+    ("noise", 50.0),
+)
 
 
 @dataclass(frozen=True, kw_only=True)
@@ -42,8 +69,27 @@ class Dataset:
     """One acquired set: the raw data, and the maker's spectrum where there is one."""
 
     name: str
+    folder: Path
     raw: Path
     maker: Path | None
+
+
+@dataclass(frozen=True, eq=False, kw_only=True)
+class Published:
+    """Simulated lines of published shifts and J, one row a group of protons."""
+
+    lines: Transitions
+    n_groups: int
+
+
+@dataclass(frozen=True, kw_only=True)
+class Stressed:
+    """One stress run: its worst phase error and the error that was foretold."""
+
+    kind: str
+    signal_to_noise: float
+    error_deg: float
+    sd_deg: float
 
 
 def datasets(only: list[str]) -> list[Dataset]:
@@ -66,7 +112,10 @@ def _dataset(folder: Path) -> Dataset:
             place = hits[0].parent
             has_maker = (place / "pdata" / "1" / "1r").exists()
             return Dataset(
-                name=folder.name, raw=place, maker=place if has_maker else None
+                name=folder.name,
+                folder=folder,
+                raw=place,
+                maker=place if has_maker else None,
             )
     for pattern in ("**/*.jdf", "**/*fid.dx", "**/*.dx", "**/*.jdx"):
         hits = sorted(raw.glob(pattern))
@@ -74,6 +123,7 @@ def _dataset(folder: Path) -> Dataset:
             maker = hits[0].parent / "1h.dx"
             return Dataset(
                 name=folder.name,
+                folder=folder,
                 raw=hits[0],
                 maker=maker if maker.exists() and maker != hits[0] else None,
             )
@@ -135,11 +185,11 @@ def against_maker(dataset: Dataset) -> dict[str, object]:
         "worst_region": worst_region,
         "phase_error_deg": None,
         "phase_sd_deg": processed.quality.phase_sd_deg,
-        "seconds": None,
     }
     if maker.imaginary is not None:
         theirs.imag = maker.imaginary
-        result["phase_error_deg"] = worst_phase_error(shifted, theirs, spans, maker)
+        angles = phase_differences(shifted, theirs, spans, maker.step_hz)
+        result["phase_error_deg"] = float(np.abs(angles).max())
     return result
 
 
@@ -148,19 +198,22 @@ def pearson(a: npt.NDArray[np.float64], b: npt.NDArray[np.float64]) -> float:
     return float(np.corrcoef(a, b)[0, 1])
 
 
-def worst_phase_error(
+def phase_differences(
     ours: npt.NDArray[np.complex128],
     theirs: npt.NDArray[np.complex128],
     spans: list[tuple[int, int]],
-    maker: Spectrum,
-) -> float:
-    """Largest |phase difference| over the regions, deg, on second derivatives."""
-    a = complex_second_derivative(ours, step_hz=maker.step_hz, sigma_hz=0.5)
-    b = complex_second_derivative(theirs, step_hz=maker.step_hz, sigma_hz=0.5)
-    angles = [
-        float(np.degrees(np.angle(np.sum(a[i:j] * np.conj(b[i:j]))))) for i, j in spans
-    ]
-    return max(abs(angle) for angle in angles)
+    step_hz: float,
+) -> npt.NDArray[np.float64]:
+    """Phase difference in every region, deg, on second derivatives.
+
+    These do not feel what the maker's program did to the baseline of the real
+    part alone.
+    """
+    a = complex_second_derivative(ours, step_hz=step_hz, sigma_hz=0.5)
+    b = complex_second_derivative(theirs, step_hz=step_hz, sigma_hz=0.5)
+    return np.array(
+        [np.degrees(np.angle(np.sum(a[i:j] * np.conj(b[i:j])))) for i, j in spans]
+    )
 
 
 def analyte_spans(evidence: Evidence, grid: Spectrum) -> list[tuple[int, int]]:
@@ -212,13 +265,274 @@ def part_maker(only: list[str]) -> dict[str, object]:
     }
 
 
+def published_lines(truth: dict[str, Any], field_mhz: float) -> Published | None:
+    """Simulated lines of every published shift; None where there are no J."""
+    if not truth.get("protons") or not truth.get("j_hz"):
+        return None
+    labels = list(dict.fromkeys(p["label"] for p in truth["protons"]))
+    shift = {p["label"]: p["shift_ppm"] for p in truth["protons"]}
+    couplings = {}
+    for a, b, j_hz in truth["j_hz"]:
+        couplings[a, b] = couplings[b, a] = j_hz
+    groups: list[list[str]] = []
+    for label in labels:
+        home = next(
+            (
+                group
+                for group in groups
+                if abs(shift[group[0]] - shift[label]) < 1e-7
+                and all(
+                    abs(
+                        couplings.get((group[0], x), 0.0)
+                        - couplings.get((label, x), 0.0)
+                    )
+                    < 1e-6
+                    for x in labels
+                    if x not in (group[0], label)
+                )
+            ),
+            None,
+        )
+        if home is None:
+            groups.append([label])
+        else:
+            home.append(label)
+    table = np.array(
+        [
+            [0.0 if a is b else couplings.get((a[0], b[0]), 0.0) for b in groups]
+            for a in groups
+        ]
+    )
+    if sum(len(group) for group in groups) > 13:
+        return None
+    system = SpinSystem(
+        n_spins=np.array([len(group) for group in groups]),
+        frequencies_hz=np.array([shift[group[0]] * field_mhz for group in groups]),
+        couplings_hz=table,
+        nuclei=("1H",) * len(groups),
+    )
+    return Published(lines=simulate(system), n_groups=len(groups))
+
+
+def axis_offset_ppm(evidence: Evidence, published: Published) -> float | None:
+    """Median over the published multiplets of where they correlate best, ppm."""
+    spectrum = evidence.spectrum
+    frequency = spectrum.spectrometer_frequency_mhz
+    offsets = []
+    for row in published.lines.intensities:
+        strong = row > 0.02 * row.max()
+        lines, sizes = published.lines.frequencies_hz[strong], row[strong]
+        if abs(lines.mean() / frequency - 4.75) < WATER_HALF_PPM:
+            continue
+        window = spectrum.window(
+            (lines.min() - 12) / frequency, (lines.max() + 12) / frequency
+        )
+        x = spectrum.shifts_ppm[window] * frequency
+        y = spectrum.intensities[window] - np.median(spectrum.intensities[window])
+        if x.size < 30:
+            continue
+        moves = np.arange(-10.0, 10.05, 0.1)
+        models = np.array(
+            [
+                (sizes / (1 + ((x[:, None] - lines - move) / 0.7) ** 2)).sum(axis=1)
+                for move in moves
+            ]
+        )
+        models -= models.mean(axis=1, keepdims=True)
+        scores = models @ y / np.sqrt((models**2).sum(axis=1) * (y @ y))
+        top = int(np.argmax(scores))
+        if scores[top] < 0.5 or top in (0, moves.size - 1):
+            continue
+        left, mid, right = scores[top - 1 : top + 2]
+        fine = 0.5 * (left - right) / (left - 2 * mid + right)
+        offsets.append((moves[top] + 0.1 * fine) / frequency)
+    return float(np.median(offsets)) if offsets else None
+
+
+def part_reference(only: list[str]) -> dict[str, object]:
+    """Where our zero stands against published shifts; CHCl3 on our axis."""
+    offsets, chloroform = {}, {}
+    for dataset in datasets(only):
+        evidence = gather_evidence(read_acquired(dataset.raw))
+        truth = json.loads((dataset.folder / "truth.json").read_text())
+        if evidence.reference.by == "DSS" and dataset.name.startswith("br_"):
+            published = published_lines(
+                truth, evidence.spectrum.spectrometer_frequency_mhz
+            )
+            offset = axis_offset_ppm(evidence, published) if published else None
+            if offset is not None:
+                offsets[dataset.name] = offset
+        if truth["solvent"] == "CDCl3":
+            solvent = [one for one in evidence.strays if one.kind == "solvent"]
+            chloroform[dataset.name] = {
+                "by": evidence.reference.by,
+                "chloroform_ppm": (solvent[0].low_ppm + solvent[0].high_ppm) / 2
+                if solvent
+                else None,
+            }
+    errors = np.abs(list(offsets.values())) if offsets else np.zeros(0)
+    return {
+        "dss_sets": len(offsets),
+        "offset_median_ppm": float(np.median(errors)) if errors.size else None,
+        "offset_worst_ppm": float(errors.max()) if errors.size else None,
+        "offsets_ppm": offsets,
+        "chloroform": chloroform,
+    }
+
+
+def part_stress(only: list[str]) -> dict[str, object]:
+    """Phase under added noise and extra first-order phase, random zero order."""
+    rows = []
+    for dataset in datasets(only):
+        if dataset.maker is None:
+            continue
+        fid = read_acquired(dataset.raw)
+        made = read_acquired(dataset.maker, prefer_processed=True)
+        if not isinstance(fid, Fid) or isinstance(made, Fid):
+            continue
+        if made.spectrum.imaginary is not None:
+            rows += stressed(dataset, fid, made.spectrum)
+    return {"by_kind": by_kind(rows), "flagged": flagged(rows), "n": len(rows)}
+
+
+def stressed(dataset: Dataset, fid: Fid, maker: Spectrum) -> list[Stressed]:
+    """All stress runs of one set, against the maker's phase."""
+    processed = process(fid)
+    recipe = processed.run.recipe
+    comparable = with_step(
+        with_step(
+            recipe,
+            Apodize(
+                kind="exponential", line_broadening_hz=maker_line_broadening(dataset)
+            ),
+        ),
+        ZeroFill(n_points=maker.n_points),
+    )
+    ours = finish(transform(fid, comparable), comparable)
+    shifted = aligned(ours, maker)
+    spans = analyte_spans(evidence_from(processed), ours)
+    assert maker.imaginary is not None
+    theirs = maker.intensities + 1j * maker.imaginary
+    angles = phase_differences(shifted, theirs, spans, maker.step_hz)
+    middles = [(a + b) // 2 for a, b in spans]
+    x = sweep_positions(maker.n_points)[middles]
+    phase = find_step(recipe, Phase)
+    assert phase is not None
+    true_deg = phase.phase0_deg + phase.phase1_deg * x - angles
+    heights = np.array([ours.intensities[a:b].max() for a, b in spans])
+    sd = noise_sd(ours.intensities)
+    rng = np.random.default_rng(len(dataset.name))
+    rows = []
+    for kind, size in STRESSES:
+        values, extra = stress(fid, recipe, kind, size, rng)
+        regions = found_regions(values, water_at_carrier=processed.presaturated)
+        found = automatic_phase(values, regions)
+        ratio = heights / sd / (size if kind == "noise" else 1.0)
+        visible = ratio > 20
+        if found is None or not visible.any():
+            continue
+        miss = found.step.phase0_deg + found.step.phase1_deg * x
+        miss = miss + extra.phase0_deg + extra.phase1_deg * x - true_deg
+        miss = (miss + 180) % 360 - 180
+        rows.append(
+            Stressed(
+                kind=f"{kind} {size:g}",
+                signal_to_noise=float(np.median(ratio)),
+                error_deg=float(np.abs(miss[visible]).max()),
+                sd_deg=found.sd_deg,
+            )
+        )
+    return rows
+
+
+def stress(
+    fid: Fid, recipe: Recipe, kind: str, size: float, rng: np.random.Generator
+) -> tuple[Transformed, Phase]:
+    """A transformed FID with noise or phase put on, and the phase put on."""
+    extra = Phase(
+        phase0_deg=float(rng.uniform(-180, 180)),
+        phase1_deg=size if kind == "slope" else 0.0,
+    )
+    plain = transform(fid, recipe)
+    if kind == "noise":
+        level = noise_sd(plain.values) * np.sqrt(size**2 - 1)
+        window = find_step(recipe, Apodize)
+        assert window is not None
+        times = np.arange(fid.samples.size) / fid.spectral_width_hz
+        power = np.sum(np.exp(-2 * np.pi * window.line_broadening_hz * times))
+        noise = rng.normal(size=(2, fid.samples.size)) * level / np.sqrt(power)
+        noisy = replace(fid, samples=fid.samples + noise[0] + 1j * noise[1])
+        plain = transform(noisy, recipe)
+    return replace(plain, values=phased(plain.values, extra)), extra
+
+
+def by_kind(rows: list[Stressed]) -> dict[str, dict[str, float]]:
+    """Median, 90 % and worst error of every kind of stress."""
+    return {
+        kind: {
+            "n": len(errors),
+            "median_deg": float(np.median(errors)),
+            "p90_deg": float(np.quantile(errors, 0.9)),
+            "worst_deg": max(errors),
+        }
+        for kind in dict.fromkeys(row.kind for row in rows)
+        if (errors := [row.error_deg for row in rows if row.kind == kind])
+    }
+
+
+def flagged(rows: list[Stressed]) -> dict[str, int]:
+    """How many results over 10 degrees the quality figure warns of."""
+    bad = [row for row in rows if row.error_deg > 10]
+    return {
+        "over_10_deg": len(bad),
+        "of_these_flagged": sum(row.sd_deg > 3 for row in bad),
+        "flagged_of_all": sum(row.sd_deg > 3 for row in rows),
+    }
+
+
+def part_synthetic(only: list[str]) -> dict[str, object]:
+    """Recall, false lines, position against the bound, integrals."""
+    del only
+    return synthetic_report()
+
+
+def part_time(only: list[str]) -> dict[str, object]:
+    """CPU seconds from FID to evidence, one core, imports and reading apart."""
+    rows, yardstick = {}, {}
+    for dataset in datasets(only):
+        fid = read_acquired(dataset.raw)
+        gather_evidence(fid)
+        begin = time.process_time()
+        gather_evidence(fid)
+        rows[dataset.name] = time.process_time() - begin
+        if isinstance(fid, Fid) and len(yardstick) < N_YARDSTICK:
+            values = transform(fid, process(fid).run.recipe).values[::-1]
+            begin = time.process_time()
+            with contextlib.redirect_stdout(io.StringIO()):
+                nmrglue.process.proc_autophase.autops(values, "acme")
+            yardstick[dataset.name] = time.process_time() - begin
+    ratios = [yardstick[name] / rows[name] for name in yardstick]
+    return {
+        "median_s": float(np.median(list(rows.values()))),
+        "worst_s": max(rows.values()),
+        "nmrglue_autops_over_whole_chain": float(np.median(ratios)) if ratios else None,
+        "rows": rows,
+    }
+
+
 def main() -> None:
     """Run the chosen parts and print one JSON object."""
+    parts = {
+        "maker": part_maker,
+        "reference": part_reference,
+        "stress": part_stress,
+        "synthetic": part_synthetic,
+        "time": part_time,
+    }
     parser = argparse.ArgumentParser()
     parser.add_argument("--only", nargs="*", default=[])
-    parser.add_argument("--part", nargs="*", default=["maker"])
+    parser.add_argument("--part", nargs="*", default=list(parts), choices=list(parts))
     options = parser.parse_args()
-    parts = {"maker": part_maker}
     print(
         json.dumps({name: parts[name](options.only) for name in options.part}, indent=1)
     )
