@@ -119,33 +119,25 @@ def _contenders(
     ]
     rows: list[Contender] = []
     standing_rows: list[tuple[str, Evaluation]] = []
-    narrow = replace(limits, max_refined=CONTENDER_REFINED)
+    narrow = replace(limits, max_refined=CONTENDER_REFINED, is_rough=True)
     for number, (name, smiles, given, origin) in enumerate(wanted):
         limits.checked()
         report(f"testing {smiles}", 0.5 + 0.45 * number / len(wanted))
         if limits.is_over():
             break
         try:
-            structure = given or read_structure(smiles)
-            other = _weighed(structure, own, bench, narrow)
+            if given is not None:
+                other = evaluate(given, bench, limits)
+            else:
+                other = evaluate(read_structure(smiles), bench, narrow)
         except StructureError as error:
             rows.append(_unread(name, smiles, origin, error.reason))
             continue
-        row = _outcome(name, smiles, origin, own, other)
+        row = _outcome((name, smiles, origin), own, other)
         rows.append(row)
         if not row.excluded:
             standing_rows.append((smiles, other))
     return tuple(rows), tuple(standing_rows)
-
-
-def _weighed(
-    structure: Structure, own: Evaluation, bench: Bench, limits: Limits
-) -> Evaluation:
-    """Rough evaluation of a contender; a fine one where that does not exclude it."""
-    rough = evaluate(structure, bench, replace(limits, is_rough=True))
-    if standing(own) - standing(rough) > EXCLUDED_LOGIT + ROUGH_MARGIN:
-        return rough
-    return evaluate(structure, bench, limits)
 
 
 def _enumerated(own: Evaluation, bench: Bench, limits: Limits) -> tuple[Isomer, ...]:
@@ -169,10 +161,12 @@ def _unread(name: str, smiles: str, origin: Origin, reason: str) -> Contender:
 
 
 def _outcome(
-    name: str, smiles: str, origin: Origin, own: Evaluation, other: Evaluation
+    named: tuple[str, str, Origin], own: Evaluation, other: Evaluation
 ) -> Contender:
+    name, smiles, origin = named
     behind = standing(own) - standing(other)
-    excluded = other.state == "not reconciled" or behind > EXCLUDED_LOGIT
+    margin = ROUGH_MARGIN if origin == "enumerated" else 0.0
+    excluded = behind > EXCLUDED_LOGIT + margin
     reasons = verdict_reasons(other)
     if excluded:
         why = f"excluded: {reasons[0]}" if reasons else "excluded by its fit"
