@@ -37,6 +37,7 @@ FEATURES = (
     "width",
     "open",
     "unexplained",
+    "coincidence",
 )
 RIDGE = 0.02
 # Of the weight of all wrong structures; the rest are wrong isomers.

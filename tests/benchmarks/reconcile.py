@@ -82,6 +82,17 @@ def weigh(smiles: str, bench: Bench) -> tuple[dict[str, Any], Evaluation | None]
         "faults": found.faults,
     }
     if found.solution is not None:
+        assessment = found.assessment or found.solution.best.assessment
+        row["residuals"] = {
+            "shift_z": [round(c.shift_z, 2) for c in assessment.claims if c.is_counted],
+            "coupling_z": [(round(c.z, 2), c.is_rigid) for c in assessment.couplings],
+            "misfit": [
+                round(c.residual_share, 3) for c in assessment.claims if c.is_counted
+            ],
+            "amplitude_log": [
+                round(c.amplitude_log, 2) for c in assessment.claims if c.is_counted
+            ],
+        }
         row["score"] = found.solution.best.assessment.selection_score
         row["match_cost"] = found.solution.match_cost
         row["refined"] = 1 + len(found.solution.others)

@@ -34,6 +34,8 @@ SHIFT_EXTRA_SD_PPM = 0.02
 COUPLING_EXTRA_SD_HZ = 0.3
 AMPLITUDE_SD = 0.25
 WIDTH_SD = 0.4
+LEAST_WINDOW_HZ = 1.0
+COINCIDENCE_CAP = 6.0
 # Strays with a known cause say nothing for or against a structure.
 EXPLAINED_KINDS = frozenset({"satellite", "sideband", "impurity", "given"})
 
@@ -83,6 +85,9 @@ class Assessment:
         Area beyond every claim and known stray over all area.
     open_share : float
         Protons of open claims over protons that must be seen.
+    coincidence : float
+        Negative log probability that coupled claims which the structure keeps
+        apart fall together so that their splitting does not show.
     offset_ppm : float
         Common error of the reference.
     claims : tuple of ClaimResidual
@@ -94,6 +99,7 @@ class Assessment:
     residual_share: float
     unexplained_share: float
     open_share: float
+    coincidence: float
     offset_ppm: float
     claims: tuple[ClaimResidual, ...]
     couplings: tuple[CouplingResidual, ...]
@@ -120,6 +126,7 @@ class Assessment:
             "amplitude": _mean(amplitudes),
             "width": _mean(widths),
             "open": self.open_share,
+            "coincidence": self.coincidence,
             "unexplained": self.unexplained_share,
         }
 
@@ -165,6 +172,12 @@ def assess(
         residual_share=misfit.share,
         unexplained_share=misfit.unexplained_share,
         open_share=open_share,
+        coincidence=coincidence_cost(
+            claims,
+            refinement,
+            absent | hidden,
+            evidence.spectrum.spectrometer_frequency_mhz,
+        ),
         offset_ppm=offset_ppm,
         claims=rows,
         couplings=couplings,
@@ -396,6 +409,59 @@ def _coupling_residuals(
             CouplingResidual(coupling=index, z=gap / sd, is_rigid=coupling.is_rigid)
         )
     return tuple(rows)
+
+
+def coincidence_cost(
+    claims: ClaimSet,
+    refinement: Refinement,
+    left_out: frozenset[int],
+    frequency_mhz: float,
+) -> float:
+    """Cost of inequivalent claims that fall together, at most 12.
+
+    Two coupled claims closer than half their J show next to no splitting. That
+    they lie so close has the probability of the window under the predicted
+    difference; each claim that joins others is counted once. The two protons of
+    one CH2 are often equal by accident and are left out.
+    """
+    costs: list[tuple[float, int, int]] = []
+    for coupling in claims.couplings:
+        first, second = (claims.particles[p].claim for p in coupling.pairs[0])
+        if first is None or second is None or first == second:
+            continue
+        one, other = claims.claims[first], claims.claims[second]
+        if {first, second} & left_out or one.pair == other.label:
+            continue
+        if one.is_exchangeable or other.is_exchangeable:
+            continue
+        window = abs(coupling.j_hz) / 2.0
+        gap = abs(float(refinement.shifts_ppm[first] - refinement.shifts_ppm[second]))
+        if window < LEAST_WINDOW_HZ or gap * frequency_mhz > window:
+            continue
+        sd = float(np.hypot(one.shift_sd_ppm, other.shift_sd_ppm))
+        z = (one.shift_ppm - other.shift_ppm) / sd
+        share = 2.0 * window / frequency_mhz / (np.sqrt(2.0 * np.pi) * sd)
+        cost = -float(np.log(min(share, 1.0))) + 0.5 * z * z
+        costs.append((min(cost, COINCIDENCE_CAP), first, second))
+    return min(_spanning_cost(costs), SQUARE_CAP)
+
+
+def _spanning_cost(costs: list[tuple[float, int, int]]) -> float:
+    """Sum over the cheapest pairs that join all claims which fall together."""
+    group: dict[int, int] = {}
+
+    def root(claim: int) -> int:
+        while group.get(claim, claim) != claim:
+            claim = group[claim]
+        return claim
+
+    total = 0.0
+    for cost, first, second in sorted(costs):
+        low, high = sorted((root(first), root(second)))
+        if low != high:
+            group[high] = low
+            total += cost
+    return total
 
 
 def _open_share(claims: ClaimSet, absent: frozenset[int]) -> float:
