@@ -232,7 +232,9 @@ def spectrum_misfit(
         ],
     )
     noise = evidence.noise_sd / np.sqrt(2 * half + 1)
-    measured = boxcar(spectrum.intensities, half)
+    # A tall masked line must not leak out of its mask through the boxcar.
+    kept = np.where(usable, spectrum.intensities, refinement.intensities)
+    measured = boxcar(kept, half)
     model = boxcar(refinement.intensities, half)
     windows = _windows(evidence, measured, model, usable)
     edge = points_of_hz(spectrum, WINDOW_PAD_HZ / 3)

@@ -8,6 +8,7 @@ from dataclasses import dataclass, replace
 import numpy as np
 
 from spinledger.prediction.claims import make_claims
+from spinledger.processing.solvents import is_aqueous
 from spinledger.reconcile.assess import Assessment, assess, spectrum_misfit
 from spinledger.reconcile.coarse import CoarseSpectrum, coarse_spectrum
 from spinledger.reconcile.companions import given_strays
@@ -25,12 +26,15 @@ from spinledger.reconcile.strays import (
     table_impurities,
     unowned_stretches,
 )
-from spinledger.values.claim import ClaimSet
+from spinledger.reconcile.tails import with_tails
+from spinledger.values.claim import Claim, ClaimSet
 from spinledger.values.evidence import Evidence, Stray
 from spinledger.values.ledger import VerdictState
 from spinledger.values.structure import Structure
 
 MUCH_IMPURITY = 0.2
+POOR_RESIDUAL = 0.25
+MUCH_BETTER = 0.6
 
 
 @dataclass(frozen=True, slots=True, eq=False, kw_only=True)
@@ -90,6 +94,7 @@ def lay_out(
     evidence: Evidence, options: ReconcileOptions, model: VerdictModel | None = None
 ) -> Bench:
     """Prepare what all structures of one spectrum share."""
+    evidence = with_tails(evidence)
     return Bench(
         evidence=evidence,
         options=options,
@@ -136,6 +141,7 @@ def evaluate(
         solution = solve(
             evidence, claims, constraints=constraints, coarse=shared, limits=limits
         )
+        evidence, solution = _second_look(evidence, claims, solution, bench, limits)
     if solution is None:
         return _not_judged(structure, claims, evidence)
     booking = book_entries(evidence, solution, constraints, in_full=in_full)
@@ -169,6 +175,48 @@ def evaluate(
         faults=faults,
         logit=logit,
         state=state_of(1.0 / (1.0 + float(np.exp(-logit))), bench.model),
+    )
+
+
+def _second_look(
+    evidence: Evidence,
+    claims: ClaimSet,
+    solution: Solution | None,
+    bench: Bench,
+    limits: Limits,
+) -> tuple[Evidence, Solution | None]:
+    """Give a line taken for water or solvent to a claim that is predicted there.
+
+    Only where the first fit is poor, and only where the line may not be water at
+    all: in heavy water it always is.
+    """
+    share = solution.best.assessment.residual_share if solution else 1.0
+    if share < POOR_RESIDUAL or is_aqueous(evidence.solvent) or limits.is_over():
+        return evidence, solution
+    doubtful = [
+        stray
+        for stray in evidence.strays
+        if stray.kind in {"water", "solvent"}
+        and any(_may_own(claim, stray) for claim in claims.claims)
+    ]
+    if not doubtful:
+        return evidence, solution
+    kept = tuple(stray for stray in evidence.strays if stray not in doubtful)
+    freed = replace(evidence, strays=kept)
+    again = solve(freed, claims, constraints=bench.options.constraints, limits=limits)
+    if again is None:
+        return evidence, solution
+    if again.best.assessment.residual_share < MUCH_BETTER * share:
+        return freed, again
+    return evidence, solution
+
+
+def _may_own(claim: Claim, stray: Stray) -> bool:
+    """Whether a claim is predicted within three sd of a stray."""
+    reach = 3.0 * claim.shift_sd_ppm
+    return (
+        claim.visibility == "seen"
+        and stray.low_ppm - reach <= claim.shift_ppm <= stray.high_ppm + reach
     )
 
 
