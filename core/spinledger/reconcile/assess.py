@@ -5,7 +5,7 @@ Shifts in ppm, couplings and widths in Hz; z are residuals in sd.
 
 from __future__ import annotations
 
-from dataclasses import dataclass
+from dataclasses import dataclass, replace
 
 import numpy as np
 
@@ -35,6 +35,8 @@ COUPLING_EXTRA_SD_HZ = 0.3
 AMPLITUDE_SD = 0.25
 WIDTH_SD = 0.4
 LEAST_WINDOW_HZ = 1.0
+EXCESS_ALLOWED = 1.5
+HIDDEN_PART = 0.25
 COINCIDENCE_CAP = 6.0
 # Strays with a known cause say nothing for or against a structure.
 EXPLAINED_KINDS = frozenset({"satellite", "sideband", "impurity", "given"})
@@ -162,12 +164,18 @@ def assess(
         Stretches left out by hand take no part.
     """
     misfit = spectrum_misfit(evidence, refinement, constraints)
+    excess = exchangeable_excess(claims, refinement, absent | hidden)
+    misfit = replace(
+        misfit,
+        share=misfit.share + excess,
+        unexplained_share=misfit.unexplained_share + excess,
+    )
     offset_ppm = reference_offset(evidence, claims, refinement, absent | hidden)
     rows = _claim_rows(
         claims, refinement, misfit, offset_ppm, absent=absent, hidden=hidden
     )
     couplings = _coupling_residuals(claims, refinement, absent | hidden)
-    open_share = _open_share(claims, absent)
+    open_share = _open_share(claims, absent, hidden)
     return Assessment(
         residual_share=misfit.share,
         unexplained_share=misfit.unexplained_share,
@@ -466,11 +474,36 @@ def _spanning_cost(costs: list[tuple[float, int, int]]) -> float:
     return total
 
 
-def _open_share(claims: ClaimSet, absent: frozenset[int]) -> float:
+def exchangeable_excess(
+    claims: ClaimSet, refinement: Refinement, left_out: frozenset[int]
+) -> float:
+    """Area that exchangeable claims took beyond one and a half times their own.
+
+    Their areas are nearly free in the fit, so that one could swallow a signal
+    which no other claim owns; that part counts as unexplained. As a share of
+    all modelled area.
+    """
+    excess, total = 0.0, 0.0
+    for index, claim in enumerate(claims.claims):
+        if index in left_out:
+            continue
+        protons = float(np.nan_to_num(refinement.protons[index]))
+        total += protons
+        if claim.is_exchangeable:
+            allowed = EXCESS_ALLOWED * expected_protons(claims, claim)
+            excess += max(protons - allowed, 0.0)
+    return excess / total if total > 0.0 else 0.0
+
+
+def _open_share(
+    claims: ClaimSet, absent: frozenset[int], hidden: frozenset[int]
+) -> float:
+    """Protons of open claims, and a quarter of hidden ones, over all to be seen."""
     must = [i for i, claim in enumerate(claims.claims) if claim.visibility == "seen"]
     protons = sum(claims.claims[i].n_protons for i in must)
     missing = sum(claims.claims[i].n_protons for i in must if i in absent)
-    return missing / protons if protons else 0.0
+    unseen = sum(claims.claims[i].n_protons for i in must if i in hidden)
+    return (missing + HIDDEN_PART * unseen) / protons if protons else 0.0
 
 
 def _n_skipped(claims: ClaimSet, absent: frozenset[int]) -> int:

@@ -38,6 +38,7 @@ FLOOR_SHARE = 0.15
 SAME_PLACE_HZ = 8.0
 SHAPE_MARGIN_HZ = 60.0
 FORBIDDEN_COST = 1e6
+HIDDEN_REACH_SD = 2.5
 
 
 @dataclass(frozen=True, slots=True, kw_only=True)
@@ -227,7 +228,10 @@ def _priors(
     rows = []
     for claim in listed:
         gap_ppm = coarse.grid_ppm - claim.shift_ppm - offset_ppm
-        cost = shift_cost(gap_ppm / max(claim.shift_sd_ppm, 0.02))
+        z = gap_ppm / max(claim.shift_sd_ppm, 0.02)
+        # Nothing can hide under a mask where it is not expected.
+        far_under_mask = (coarse.trust < 0.5) & (np.abs(z) > HIDDEN_REACH_SD)
+        cost = np.where(far_under_mask, FORBIDDEN_COST, shift_cost(z))
         for pin in constraints.pins if constraints else ():
             if pin.claim == claim.label:
                 outside = (coarse.grid_ppm < pin.low_ppm) | (
