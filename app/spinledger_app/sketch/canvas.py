@@ -4,7 +4,6 @@ from __future__ import annotations
 
 import math
 from collections.abc import Callable, Mapping
-from dataclasses import dataclass
 from types import MappingProxyType
 
 from PySide6.QtCore import QEvent, QPointF, QRectF, Qt, Signal
@@ -20,7 +19,7 @@ from PySide6.QtGui import (
 )
 from PySide6.QtWidgets import QWidget
 
-from spinledger_app.painting.ink import SECOND, Face, Ink
+from spinledger_app.painting.ink import Ink
 from spinledger_app.presenters.wording import say
 from spinledger_app.sketch import gestures
 from spinledger_app.sketch.chemistry import Meaning, cleaned_up, meaning
@@ -29,17 +28,28 @@ from spinledger_app.sketch.gestures import NOWHERE, Edit, Kit, Spot, Tool
 from spinledger_app.sketch.history import History, recorded, redone, undone
 from spinledger_app.sketch.painting import (
     Shown,
-    handle_px,
     paint_band,
     paint_cursor,
     paint_drawing,
+    paint_empty,
     paint_halo,
     paint_handle,
+)
+from spinledger_app.sketch.pointer import (
+    Held,
+    Press,
+    PressKind,
+    atoms_between,
+    atoms_of,
+    edit_of_drag,
+    kind_of_press,
+    moving_atoms,
 )
 from spinledger_app.sketch.typing_keys import chosen_kit, is_typed_key
 from spinledger_app.sketch.view import (
     View,
     fitted,
+    handle_px,
     is_inside,
     next_spot,
     panned,
@@ -73,19 +83,6 @@ _ARROWS: Mapping[int, Point] = MappingProxyType(
 )
 
 
-@dataclass(frozen=True, slots=True, kw_only=True)
-class _Press:
-    """Where the mouse went down, on what, and what the drag is for.
-
-    ``kind`` is "tool", "move", "turn", "band" or "pan".
-    """
-
-    kind: str
-    spot: Spot
-    at_px: Point
-    view: View
-
-
 class SketchCanvas(QWidget):
     """Draws with mouse or keys; every change is one step of its history."""
 
@@ -101,7 +98,7 @@ class SketchCanvas(QWidget):
         self.selected: frozenset[int] = frozenset()
         self.spot: Spot = NOWHERE
         self.view = View()
-        self._press: _Press | None = None
+        self._press: Press | None = None
         self._mouse_px: Point = (0.0, 0.0)
         self._preview: tuple[Drawing, Meaning] | None = None
         self.setMouseTracking(True)
@@ -203,24 +200,16 @@ class SketchCanvas(QWidget):
         self.setFocus(Qt.FocusReason.MouseFocusReason)
         self._mouse_px = _point(event.position())
         self.spot = self._spot_at(self._mouse_px)
-        buttons = {
-            Qt.MouseButton.LeftButton: self._kind_of_press(),
-            Qt.MouseButton.MiddleButton: "pan",
-        }
-        kind = buttons.get(event.button())
-        if kind is None:
+        kind: PressKind
+        if event.button() == Qt.MouseButton.MiddleButton:
+            kind = "pan"
+        elif event.button() == Qt.MouseButton.LeftButton:
+            kind = kind_of_press(self._held(), self.kit.tool, self.spot, self._mouse_px)
+        else:
             return
-        self._press = _Press(
+        self._press = Press(
             kind=kind, spot=self.spot, at_px=self._mouse_px, view=self.view
         )
-
-    def _kind_of_press(self) -> str:
-        if self.kit.tool is not Tool.PICK:
-            return "tool"
-        knob = handle_px(self.drawing, self.view, self.selected)
-        if knob is not None and math.dist(knob, self._mouse_px) <= _REACH_PX:
-            return "turn"
-        return "band" if self.spot == NOWHERE else "move"
 
     def mouseMoveEvent(self, event: QMouseEvent) -> None:
         """Point at something, or go on with a drag and show what it would give."""
@@ -236,11 +225,12 @@ class SketchCanvas(QWidget):
             )
             self._tell_place()
         elif press.kind == "pan":
-            by = self._dragged_px(press)
+            x, y = press.at_px
+            by = self._mouse_px[0] - x, self._mouse_px[1] - y
             self.view = panned(press.view, by)
         else:
             is_free = bool(event.modifiers() & Qt.KeyboardModifier.AltModifier)
-            edit = self._edit_of_drag(press, is_free)
+            edit = self._edit_of_drag(press, is_free=is_free)
             self._preview = None
             if edit is not None:
                 self._preview = edit.drawing, self._meaning_of(edit.drawing)
@@ -258,10 +248,11 @@ class SketchCanvas(QWidget):
         if math.dist(press.at_px, self._mouse_px) < _CLICK_PX:
             self._click(press, is_more)
         elif press.kind == "band":
-            self.select(self._banded(press) | (self.selected if is_more else set()))
+            banded = atoms_between(self._held(), press.at_px, self._mouse_px)
+            self.select(banded | (self.selected if is_more else frozenset()))
         else:
-            moving = self._moving(press)
-            edit = self._edit_of_drag(press, is_free)
+            moving = moving_atoms(self._held(), press)
+            edit = self._edit_of_drag(press, is_free=is_free)
             keeps = edit is not None and len(edit.drawing.atoms) >= len(
                 self.drawing.atoms
             )
@@ -275,7 +266,7 @@ class SketchCanvas(QWidget):
             return
         self.mousePressEvent(event)
 
-    def _click(self, press: _Press, is_more: bool) -> None:
+    def _click(self, press: Press, is_more: bool) -> None:
         if self.kit.tool is Tool.PICK:
             self._pick(press.spot, is_more=is_more)
             return
@@ -285,52 +276,17 @@ class SketchCanvas(QWidget):
         self.update()
 
     def _pick(self, spot: Spot, *, is_more: bool) -> None:
-        atoms = self._atoms_of(spot)
+        atoms = atoms_of(self.drawing, spot)
         if is_more:
             atoms = self.selected ^ atoms
         self.select(atoms)
 
-    def _atoms_of(self, spot: Spot) -> frozenset[int]:
-        if spot.atom is not None:
-            return frozenset((spot.atom,))
-        return frozenset() if spot.bond is None else self.drawing.bonds[spot.bond].ends
+    def _held(self) -> Held:
+        return Held(drawing=self.drawing, selected=self.selected, view=self.view)
 
-    def _moving(self, press: _Press) -> frozenset[int]:
-        """Atoms that a drag moves: the selection, if it was taken hold of."""
-        atoms = self._atoms_of(press.spot)
-        if press.kind == "turn" or atoms & self.selected:
-            return self.selected
-        return atoms if press.kind == "move" else frozenset()
-
-    def _dragged_px(self, press: _Press) -> Point:
-        return (
-            self._mouse_px[0] - press.at_px[0],
-            self._mouse_px[1] - press.at_px[1],
-        )
-
-    def _edit_of_drag(self, press: _Press, is_free: bool) -> Edit | None:
-        start = self.view.to_drawing(press.at_px)
-        end = self.view.to_drawing(self._mouse_px)
-        if press.kind == "tool":
-            return gestures.drag(self.drawing, self.kit, press.spot, start, end)
-        if press.kind == "move":
-            by = end[0] - start[0], end[1] - start[1]
-            return gestures.drop(self.drawing, self._moving(press), by)
-        if press.kind == "turn":
-            about = centre(self.drawing, self.selected)
-            angle = _angle_rad(about, end) - _angle_rad(about, start)
-            if not is_free:
-                angle = round(angle / _TURN_RAD) * _TURN_RAD
-            turned = rotated(self.drawing, self.selected, angle, about)
-            return Edit(label="Turn", drawing=turned)
-        return None
-
-    def _banded(self, press: _Press) -> frozenset[int]:
-        band = QRectF(QPointF(*press.at_px), QPointF(*self._mouse_px)).normalized()
-        return frozenset(
-            i
-            for i, atom in enumerate(self.drawing.atoms)
-            if band.contains(QPointF(*self.view.to_screen(atom.place)))
+    def _edit_of_drag(self, press: Press, *, is_free: bool) -> Edit | None:
+        return edit_of_drag(
+            self._held(), self.kit, press, self._mouse_px, is_free=is_free
         )
 
     def wheelEvent(self, event: QWheelEvent) -> None:
@@ -391,7 +347,7 @@ class SketchCanvas(QWidget):
         return True
 
     def _arrow(self, towards: Point, modifiers: Qt.KeyboardModifier) -> None:
-        atoms = self.selected or self._atoms_of(self.spot)
+        atoms = self.selected or atoms_of(self.drawing, self.spot)
         if modifiers & Qt.KeyboardModifier.ShiftModifier and atoms:
             by = towards[0] * _NUDGE, towards[1] * _NUDGE
             drawn = moved(self.drawing, atoms, by)
@@ -465,7 +421,7 @@ class SketchCanvas(QWidget):
         ink.fill(QRectF(self.rect()), "lane")
         drawing, known = self._preview or (self.drawing, self.meaning)
         if not drawing.atoms:
-            self._paint_empty(ink)
+            paint_empty(ink, (self.width(), self.height()))
         is_same = len(drawing.atoms) == len(self.drawing.atoms)
         if is_same:
             paint_halo(ink, drawing, self.view, self.selected)
@@ -484,16 +440,6 @@ class SketchCanvas(QWidget):
         if self._press is not None and self._press.kind == "band":
             paint_band(ink, self._press.at_px, self._mouse_px)
         painter.end()
-
-    def _paint_empty(self, ink: Ink) -> None:
-        x, y = self.width() / 2, self.height() / 2
-        title = Face(size=16, weight=600)
-        px = self.look.px
-        ink.text(x, y - px(28), say("No structure yet"), title, align="centre")
-        first = say("Draw here, or paste SMILES")
-        ink.text(x, y - px(4), first, SECOND, align="centre")
-        second = say("or a molfile with Ctrl+V.")
-        ink.text(x, y + px(14), second, SECOND, align="centre")
 
     def _meaning_of(self, drawing: Drawing) -> Meaning:
         """Meaning of a preview; that of the present while only places change."""
@@ -518,7 +464,3 @@ _ACTS: Mapping[int, Callable[[SketchCanvas], None]] = MappingProxyType(
 
 def _point(point: QPointF) -> Point:
     return point.x(), point.y()
-
-
-def _angle_rad(about: Point, place: Point) -> float:
-    return math.atan2(place[1] - about[1], place[0] - about[0])

@@ -62,7 +62,7 @@ class StructureEditor(QWidget):
         self.canvas = SketchCanvas(look, self)
         self._column = column = QVBoxLayout(self)
         column.setContentsMargins(0, 0, 0, look.px(_FOOT_PX))
-        column.setSpacing(0)
+        column.setSpacing(1)
         column.addWidget(self.toolbar)
         column.addWidget(self.canvas, 1)
         self.toolbar.kit_wanted.connect(self.choose)
@@ -272,6 +272,7 @@ class StructureEditor(QWidget):
         ink.fill(QRectF(self.rect()), "panel")
         top = self.height() - px(_FOOT_PX)
         ink.hline(0, self.width(), top)
+        ink.hline(0, self.width(), self.canvas.y() - 1)
         is_told = bool(self._rejection or self.canvas.meaning.faults)
         width = self.width() - 2 * _MARGIN_PX
         if not is_told and self.canvas.meaning.formula:

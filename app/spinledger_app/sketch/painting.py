@@ -9,9 +9,10 @@ from dataclasses import dataclass
 from PySide6.QtCore import QPointF, QRectF
 from PySide6.QtGui import QColor, QPainterPath
 
-from spinledger_app.painting.ink import CAPTION, Ink
+from spinledger_app.painting.ink import CAPTION, SECOND, Face, Ink
 from spinledger_app.painting.molecule import paint_molecule
 from spinledger_app.presenters import structure
+from spinledger_app.presenters.wording import say
 from spinledger_app.sketch.drawing import Bond, Drawing, Point
 from spinledger_app.sketch.gestures import Spot
 from spinledger_app.sketch.growth import free_angle_rad
@@ -22,7 +23,6 @@ _CURSOR_PX = 11.0
 _FAULT_PX = 14.0
 _HALO_PX = 13.0
 _BOND_PX = 1.7
-_MINUS = "\u2212"
 _SUPERSCRIPTS = str.maketrans("0123456789", "⁰¹²³⁴⁵⁶⁷⁸⁹")
 _HYDROGEN_MARKS = {2: "D", 3: "T"}
 
@@ -70,14 +70,16 @@ def paint_halo(
     ink: Ink, drawing: Drawing, view: View, selected: Collection[int]
 ) -> None:
     """Paint the ground under selected atoms and the bonds between them."""
-    for bond in drawing.bonds:
-        if bond.ends <= frozenset(selected):
+    inner = [bond for bond in drawing.bonds if bond.ends <= frozenset(selected)]
+    # First all edges, then all fills, so that only the outline of the whole shows.
+    for grow, colour in ((1.0, "accent"), (0.0, "selected")):
+        for bond in inner:
             path = QPainterPath(_point(drawing, view, bond.start))
             path.lineTo(_point(drawing, view, bond.end))
-            ink.stroke(path, "selected", _HALO_PX)
-    for atom in selected:
-        centre = view.to_screen(drawing.atoms[atom].place)
-        ink.stroke(_circle(centre, _CURSOR_PX), "accent", 1.0, fill="selected")
+            ink.stroke(path, colour, _HALO_PX + 2 * grow)
+        for atom in selected:
+            centre = view.to_screen(drawing.atoms[atom].place)
+            ink.area(_circle(centre, _CURSOR_PX + grow), colour)
 
 
 def paint_cursor(ink: Ink, drawing: Drawing, view: View, spot: Spot) -> None:
@@ -119,13 +121,16 @@ def paint_handle(ink: Ink, handle_px: Point) -> None:
     ink.stroke(arc, "accent", 1.2)
 
 
-def handle_px(drawing: Drawing, view: View, selected: Collection[int]) -> Point | None:
-    """Where the knob stands: over the selection, if two atoms or more are in it."""
-    if len(selected) < 2:
-        return None
-    points = [view.to_screen(drawing.atoms[i].place) for i in selected]
-    xs = [x for x, _ in points]
-    return (min(xs) + max(xs)) / 2, max(min(y for _, y in points) - 28, 10.0)
+def paint_empty(ink: Ink, size_px: Point) -> None:
+    """Paint what to do while nothing is drawn."""
+    x, y = size_px[0] / 2, size_px[1] / 2
+    px = ink.look.px
+    title = Face(size=16, weight=600)
+    ink.text(x, y - px(28), say("No structure yet"), title, align="centre")
+    first = say("Draw here, or paste SMILES")
+    ink.text(x, y - px(4), first, SECOND, align="centre")
+    second = say("or a molfile with Ctrl+V.")
+    ink.text(x, y + px(14), second, SECOND, align="centre")
 
 
 def presented(shown: Shown) -> structure.Drawing:
@@ -168,14 +173,16 @@ def _drawn_atom(drawing: Drawing, index: int, n_hydrogens: int) -> structure.Dra
         text = f"{atom.isotope}".translate(_SUPERSCRIPTS) + atom.element
         if atom.element == "H":
             text = _HYDROGEN_MARKS.get(atom.isotope, text)
-    sign = "" if not atom.charge else ("+" if atom.charge > 0 else _MINUS)
+    sign = "" if not atom.charge else ("⁺" if atom.charge > 0 else "⁻")
     count = "" if n_hydrogens == 1 else str(n_hydrogens)
     return structure.DrawnAtom(
         x=atom.x,
         y=atom.y,
         symbol="" if is_bare else text,
         hydrogens="" if is_bare or not n_hydrogens else f"H{count}",
-        charge=sign if abs(atom.charge) < 2 else f"{abs(atom.charge)}{sign}",
+        charge=sign
+        if abs(atom.charge) < 2
+        else f"{abs(atom.charge)}".translate(_SUPERSCRIPTS) + sign,
     )
 
 

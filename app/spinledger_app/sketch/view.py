@@ -3,7 +3,7 @@
 from __future__ import annotations
 
 import math
-from collections.abc import Iterator
+from collections.abc import Collection, Iterator
 from dataclasses import dataclass, replace
 
 from spinledger_app.sketch.drawing import Drawing, Point
@@ -97,6 +97,15 @@ def place_of(drawing: Drawing, spot: Spot) -> Point | None:
     if spot.bond is not None:
         return drawing.middle(spot.bond)
     return None
+
+
+def handle_px(drawing: Drawing, view: View, selected: Collection[int]) -> Point | None:
+    """Where the knob stands: over the selection, if two atoms or more are in it."""
+    if len(selected) < 2:
+        return None
+    points = [view.to_screen(drawing.atoms[i].place) for i in selected]
+    xs = [x for x, _ in points]
+    return (min(xs) + max(xs)) / 2, max(min(y for _, y in points) - 28, 10.0)
 
 
 def next_spot(drawing: Drawing, spot: Spot, towards: Point) -> Spot:
