@@ -468,7 +468,7 @@ def _taken_up(jacobian: Floats, linear: _Linear) -> Floats:
             _against_base(jacobian, linear.base, linear.windows),
         ]
     )
-    factors = np.linalg.solve(linear.normal, products.T).T
+    factors = np.asarray(np.linalg.solve(linear.normal, products.T).T, dtype=np.float64)
     absorbed = _of_base(factors[:, n_drawn:], linear.base, linear.windows)
     absorbed += factors[:, :n_drawn] @ linear.unit
     return absorbed

@@ -46,47 +46,59 @@ class Reach:
     """
 
     distance_hz: float
-    most_places: int = 4
-    width: int = 8
+    most_places: int = 5
+    width: int = 16
 
 
-# A claim with more than this share of misfit may stand wrongly.
-_BAD_SHARE = 0.03
-_MOST_BAD = 5
+_MOST_TOGETHER = 5
 _NEAR_HZ = 45.0
-_LEAST_MOVE_HZ = 2.5
-_LEAST_GAIN = -10.0
-_GAIN_SPREAD = 2.0
+_LEAST_MOVE_HZ = 4.0
+_LEAST_GAIN = -20.0
+_GAIN_SPREAD = 4.0
 
 
-def bad_claims(problem: Problem, evaluation: Evaluation) -> tuple[int, ...]:
-    """Claims with misfit where they stand, worst first, and their neighbours.
+def crowds(
+    problem: Problem, evaluation: Evaluation, bad: tuple[int, ...]
+) -> tuple[tuple[int, ...], ...]:
+    """Bad claims with their neighbours, one group for each crowded stretch.
 
     A claim can stand well in another's place, so those near a bad one are
-    moved with it. Pinned claims never are.
+    moved with it. Pinned claims, and those that are hardly compared, never are.
+
+    Parameters
+    ----------
+    problem : Problem
+    evaluation : Evaluation
+    bad : tuple of int
+        Worst first.
     """
     board = _Board(problem, evaluation)
     layout = problem.layout
-    free = {
+    images = _images(problem, evaluation)
+    free = [
         int(claim)
         for row, claim in enumerate(layout.shift_claims)
         if layout.high[row] - layout.low[row] > _LEAST_MOVE_HZ
-    }
-    images = _images(problem, evaluation)
-    ranked = sorted((-board.share(images[claim]), claim) for claim in images)
-    ranked = [
-        (-share, claim)
-        for share, claim in ranked
-        if claim in free and board.sees(images[claim])
+        and int(claim) in images
+        and board.sees(images[int(claim)])
     ]
-    bad = [claim for share, claim in ranked if share > _BAD_SHARE][:_MOST_BAD]
-    for _, claim in ranked:
-        if claim not in bad and any(
-            _gap(images[claim], images[other]) < _NEAR_HZ / board.step_hz
-            for other in bad
-        ):
-            bad.append(claim)
-    return tuple(bad[:_MOST_BAD])
+    left = [claim for claim in bad if claim in free]
+    found = []
+    while left:
+        group, frontier = [left[0]], [left[0]]
+        while frontier:
+            here = frontier.pop()
+            near = [
+                claim
+                for claim in free
+                if claim not in group
+                and _gap(images[claim], images[here]) < _NEAR_HZ / board.step_hz
+            ]
+            group += near
+            frontier += near
+        found.append(tuple(group[:_MOST_TOGETHER]))
+        left = [claim for claim in left if claim not in group]
+    return tuple(found)
 
 
 def _gap(first: Images, second: Images) -> float:
@@ -201,26 +213,13 @@ class _Board:
         self.step_hz = data.axis.step_hz
         self.residual = np.zeros(data.axis.n_points)
         self.weight = np.zeros(data.axis.n_points)
-        self.level = np.zeros(data.axis.n_points)
         for run, window in zip(data.runs, data.windows, strict=True):
             self.residual[run] = -evaluation.residual[window]
             self.weight[run] = data.sds[window] ** -2.0 / data.correlation
-            self.level[run] = np.abs(data.values[window])
 
     def cost(self, residual: Floats) -> float:
         """Weighted sum of squares."""
         return float(self.weight @ residual**2)
-
-    def share(self, image: Images) -> float:
-        """Misfit where a claim stands, weighted by the claim's own shape."""
-        begin = max(image.start, 0)
-        end = min(image.start + image.value.size, self.residual.size)
-        if begin >= end:
-            return 0.0
-        shape = image.value[begin - image.start : end - image.start]
-        misfit = np.abs(self.residual[begin:end]) * shape
-        measured = self.level[begin:end] * shape
-        return float(misfit.sum() / max(float(measured.sum()), 1e-30))
 
     def sees(self, image: Images) -> bool:
         """True if more than half of a claim's shape is compared."""

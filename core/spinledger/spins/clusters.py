@@ -16,6 +16,15 @@ from spinledger.spins.merging import SpinPart
 Floats = npt.NDArray[np.float64]
 
 
+# Steepest slope of a Lorentz line of 1 Hz full width, as a share of its height
+# per Hz: 3 sqrt(3) / 4. Turns a displacement into an error of the spectrum.
+_STEEPEST_SLOPE = 1.299
+
+# The estimates are of first order and several sites add up; on 74 random chains
+# and rings of 7 to 9 spins the true error was at most 3.1 times their sum.
+_SAFETY = 3.5
+
+
 @dataclass(frozen=True, slots=True, kw_only=True)
 class Effort:
     """How much a simulation may cost.
@@ -65,14 +74,15 @@ class Cluster:
         the rest changes no detected line by more than the tolerance).
     detected : tuple of int
         Members whose lines are taken from here.
-    error_hz : float, Hz
-        Estimated largest displacement of a detected line by what was left out.
+    error_share : float
+        Estimated error by what was left out, as a share of the tallest line at
+        1 Hz width.
     """
 
     members: tuple[int, ...]
     weak: frozenset[int]
     detected: tuple[int, ...]
-    error_hz: float
+    error_share: float
 
 
 def diagonalisation_cost(n_spins: tuple[int, ...], species: tuple[int, ...]) -> float:
@@ -228,26 +238,34 @@ def _grow(network: _Mixing, origin: int, effort: Effort) -> Cluster:
     part = network.part
     members = [origin]
     weak: set[int] = set()
-    error = 0.0
+    left_out, unflipped = 0.0, 0.0
     for k in order[1:]:
         if reach.effect[k] < effort.tolerance_hz:
-            error = max(error, float(reach.effect[k]))
+            left_out += float(reach.effect[k])
             continue
         for is_weak in (flips[k] < effort.tolerance_hz, True):
             trial = frozenset(weak | {k}) if is_weak else frozenset(weak)
             if _cost(part, (*members, k), trial) <= effort.cluster_cost:
                 members.append(k)
                 weak = set(trial)
-                error = max(error, float(flips[k]) if is_weak else 0.0)
+                unflipped += _unflipped_error(network, reach, k, flips) * is_weak
                 break
         else:
-            error = max(error, float(reach.effect[k]))
+            left_out += float(reach.effect[k])
     return Cluster(
         members=tuple(sorted(members)),
         weak=frozenset(weak),
         detected=(origin,),
-        error_hz=error,
+        error_share=_SAFETY * (_STEEPEST_SLOPE * left_out + unflipped),
     )
+
+
+def _unflipped_error(
+    network: _Mixing, reach: _Reach, site: int, flips: Floats
+) -> float:
+    """Share of error by a site without flip-flop terms: places and intensities."""
+    intensities = float((reach.mixing * network.theta[:, site]).max())
+    return _STEEPEST_SLOPE * float(flips[site]) + intensities
 
 
 def _cost(part: SpinPart, members: tuple[int, ...], weak: frozenset[int]) -> float:
@@ -274,5 +292,5 @@ def _union(
         members=members,
         weak=weak,
         detected=tuple(sorted(set(first.detected) | set(second.detected))),
-        error_hz=max(first.error_hz, second.error_hz),
+        error_share=max(first.error_share, second.error_share),
     )

@@ -8,7 +8,14 @@ import numpy as np
 import numpy.typing as npt
 
 from spinledger.spins.basis import Topology
-from spinledger.spins.clusters import FULL_EFFORT, Cluster, Effort, cut_part, part_cost
+from spinledger.spins.clusters import (
+    FULL_EFFORT,
+    Cluster,
+    Effort,
+    cut_part,
+    diagonalisation_cost,
+    part_cost,
+)
 from spinledger.spins.condense import condense_row, join
 from spinledger.spins.engine import EngineLines, SpinEngine
 from spinledger.spins.merging import Bond, SpinPart, separate_parts
@@ -16,10 +23,6 @@ from spinledger.values.claim import ClaimSet
 
 Floats = npt.NDArray[np.float64]
 Integers = npt.NDArray[np.int64]
-
-# Steepest slope of a Lorentz line of 1 Hz full width, as a share of its height
-# per Hz: 3 sqrt(3) / 4. Turns a displacement into an error of the spectrum.
-_STEEPEST_SLOPE = 1.299
 
 
 @dataclass(frozen=True, slots=True, eq=False, kw_only=True)
@@ -75,20 +78,21 @@ class Plan:
     pieces : tuple
     singlets : tuple of (int, float)
         Claims with one line, and its protons.
-    error_hz : float, Hz
-        Estimated displacement by the cuts; 0 if nothing was cut.
+    error_share : float
+        Estimated error of the cuts as a share of the tallest line at 1 Hz
+        width; 0 if nothing was cut.
     effort : Effort
     """
 
     pieces: tuple[_Piece, ...]
     singlets: tuple[tuple[int, float], ...]
-    error_hz: float
+    error_share: float
     effort: Effort
 
     @property
     def is_cut(self) -> bool:
         """True if some part was too large to solve whole."""
-        return self.error_hz > 0.0
+        return self.error_share > 0.0
 
     @property
     def drawn_claims(self) -> tuple[int, ...]:
@@ -113,6 +117,18 @@ class Plan:
         for piece in self.pieces:
             found.update(piece.bond_couplings.tolist())
         return tuple(sorted(found))
+
+    @property
+    def cost(self) -> float:
+        """Cost of diagonalising, about microseconds."""
+        return float(
+            sum(
+                diagonalisation_cost(
+                    piece.engine.topology.n_spins, piece.engine.topology.species
+                )
+                for piece in self.pieces
+            )
+        )
 
     @property
     def exact_slope_cost(self) -> float:
@@ -307,7 +323,7 @@ class ClaimNetwork:
             claim=np.repeat([group.claim for group in groups], sizes).astype(np.int64),
             d_frequency=d_frequency,
             d_protons=d_protons,
-            error_bound=min(1.0, _STEEPEST_SLOPE * plan.error_hz),
+            error_bound=min(1.0, plan.error_share),
         )
 
 
@@ -345,7 +361,7 @@ def _make_plan(
                     members=everything,
                     weak=frozenset(),
                     detected=everything,
-                    error_hz=0.0,
+                    error_share=0.0,
                 ),
             )
         else:
@@ -354,11 +370,11 @@ def _make_plan(
             )
             values = couplings[[bond.coupling for bond in part.bonds]]
             clusters = cut_part(part, frequencies, values, effort=effort)
-        error = max([error, *(cluster.error_hz for cluster in clusters)])
+        error = max([error, *(cluster.error_share for cluster in clusters)])
         made = [_make_piece(part, cluster, without) for cluster in clusters]
         pieces.extend(piece for piece in made if piece is not None)
     return Plan(
-        pieces=tuple(pieces), singlets=tuple(singlets), error_hz=error, effort=effort
+        pieces=tuple(pieces), singlets=tuple(singlets), error_share=error, effort=effort
     )
 
 
