@@ -62,19 +62,21 @@ def _ring_alkene_key(frame: Frame, a: int, b: int, size: int) -> str:
 def _side(frame: Frame, first: int, second: int) -> str | None:
     """Which side of the double bond, from the drawing; None if it does not say."""
     a, b = frame.carrier(first), frame.carrier(second)
+    if 2 in (frame.n_hydrogens(a), frame.n_hydrogens(b)):
+        return _side_from_geometry(frame, first, a, b, second)
     bond = frame.mol.GetBondBetweenAtoms(a, b)
     stereo = bond.GetStereo()
-    if 2 in (frame.n_hydrogens(a), frame.n_hydrogens(b)) or stereo in _NAMED:
-        return _side_from_geometry(frame, first, a, b, second)
+    if stereo in _SIDES:
+        return _SIDES[stereo]
+    if stereo in _RELATIVE and all(frame.element(i) > 1 for i in bond.GetStereoAtoms()):
+        return _RELATIVE[stereo]
     return None
 
 
-_NAMED = (
-    Chem.BondStereo.STEREOE,
-    Chem.BondStereo.STEREOZ,
-    Chem.BondStereo.STEREOCIS,
-    Chem.BondStereo.STEREOTRANS,
-)
+#: Each carbon bears one proton and one group, and every group outranks a
+#: proton, so that the protons lie as the groups do.
+_SIDES = {Chem.BondStereo.STEREOZ: "cis", Chem.BondStereo.STEREOE: "trans"}
+_RELATIVE = {Chem.BondStereo.STEREOCIS: "cis", Chem.BondStereo.STEREOTRANS: "trans"}
 
 
 def _side_from_geometry(
