@@ -178,14 +178,22 @@ def cleaned_up(drawing: Drawing) -> Drawing:
     rdDepictor.Compute2DCoords(fresh)
     tidy = from_mol(fresh)
     kept = {bond.ends: bond for bond in drawing.bonds}
-    bonds = tuple(
-        replace(bond, order=kept[bond.ends].order)
-        if kept[bond.ends].order == bond.order or not bond.wedge
-        else bond
-        for bond in tidy.bonds
-    )
+    bonds = tuple(_same_kind(bond, kept[bond.ends]) for bond in tidy.bonds)
     return _about(
         replace(tidy, bonds=bonds, atoms=_named(tidy, drawing)), _middle(drawing)
+    )
+
+
+def _same_kind(tidy: Bond, drawn: Bond) -> Bond:
+    """A bond of the new layout, its order and its wavy line as they were drawn.
+
+    Wedges are the layout's own: they depend on the places.
+    """
+    if tidy.wedge in ("wedge", "hash"):
+        return tidy
+    wedge: Wedge = "either" if drawn.wedge == "either" else ""
+    return replace(
+        drawn if wedge else tidy, order=drawn.order, wedge=wedge or tidy.wedge
     )
 
 

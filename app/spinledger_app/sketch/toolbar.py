@@ -9,7 +9,6 @@ from functools import partial
 
 from PySide6.QtCore import QPointF, QRectF, QSize, Qt, Signal
 from PySide6.QtGui import (
-    QKeyEvent,
     QPainter,
     QPainterPath,
     QPaintEvent,
@@ -55,7 +54,7 @@ class ToolButton(IconButton):
         self.setCheckable(True)
 
     def paintEvent(self, event: QPaintEvent) -> None:
-        """Paint ground, focus ring and icon."""
+        """Paint ground and icon."""
         painter = QPainter(self)
         ink = Ink(painter, self.look, self)
         if self.isChecked():
@@ -138,6 +137,11 @@ class Toolbar(QWidget):
         self._kit = kit
         for button in self.buttons.values():
             button.kit = kit
+            # The row is one stop of Tab; Qt's arrows go on inside the group.
+            is_chosen = button.tool is kit.tool
+            button.setFocusPolicy(
+                Qt.FocusPolicy.StrongFocus if is_chosen else Qt.FocusPolicy.ClickFocus
+            )
             button.update()
         self.buttons[kit.tool].setChecked(True)
 
@@ -162,17 +166,6 @@ class Toolbar(QWidget):
             menu = self.ring_menu() if tool is Tool.RING else self.element_menu()
             menu.setAttribute(Qt.WidgetAttribute.WA_DeleteOnClose)
             menu.popup(button.mapToGlobal(button.rect().bottomLeft()))
-
-    def keyPressEvent(self, event: QKeyEvent) -> None:
-        """Go on to the next button with the arrows."""
-        steps = {Qt.Key.Key_Left: -1, Qt.Key.Key_Right: 1}
-        focus = self.focusWidget()
-        if event.key() in steps and isinstance(focus, ToolButton):
-            tools = list(Tool)
-            at = tools.index(focus.tool) + steps[Qt.Key(event.key())]
-            self.buttons[tools[at % len(tools)]].setFocus()
-            return
-        super().keyPressEvent(event)
 
     def ring_menu(self) -> QMenu:
         """Sizes of the ring tool."""

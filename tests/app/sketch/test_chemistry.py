@@ -11,7 +11,7 @@ from rdkit import Chem
 from spinledger.errors import StructureError
 from spinledger.structure.read import read_structure
 from spinledger_app.sketch.chemistry import cleaned_up, from_text, meaning, smiles
-from spinledger_app.sketch.drawing import EMPTY, with_charge, with_order
+from spinledger_app.sketch.drawing import EMPTY, with_charge, with_order, with_wedge
 from spinledger_app.sketch.growth import ring_at, sprouted
 from spinledger_app.sketch.molfile import molblock
 
@@ -35,7 +35,7 @@ STRUCTURES = [
 
 @pytest.mark.parametrize("text", STRUCTURES)
 def test_structure_survives_drawing_molfile_and_clean_up(text: str) -> None:
-    expected = Chem.CanonSmiles(text)
+    expected = Chem.MolToSmiles(Chem.MolFromSmiles(text))
     drawing = from_text(text)
     assert smiles(drawing) == expected
     assert read_structure(molblock(drawing)).smiles == expected
@@ -147,3 +147,13 @@ def test_molfile_of_more_than_999_atoms_is_refused() -> None:
     drawing = replace(EMPTY, atoms=from_text("C").atoms * 1000)
     with pytest.raises(ValueError, match="at most 999"):
         molblock(drawing)
+
+
+def test_clean_up_keeps_a_wavy_line() -> None:
+    drawing = with_wedge(from_text("CC(O)CC"), 1, "either", narrow_end=1)
+    tidy = cleaned_up(drawing)
+    index = tidy.bond_between(1, 2)
+    assert index is not None
+    assert tidy.bonds[index].wedge == "either"
+    assert tidy.bonds[index].start == 1
+    assert smiles(tidy) == "CCC(C)O"
