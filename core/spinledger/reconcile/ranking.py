@@ -4,7 +4,7 @@ from __future__ import annotations
 
 import time
 from collections.abc import Callable, Sequence
-from dataclasses import dataclass
+from dataclasses import dataclass, replace
 
 import numpy as np
 
@@ -12,7 +12,13 @@ from spinledger.errors import CancelledError, StructureError
 from spinledger.reconcile.evaluate import Bench, Evaluation, evaluate, lay_out
 from spinledger.reconcile.options import Candidate, ReconcileOptions
 from spinledger.reconcile.reasons import verdict_reasons
-from spinledger.reconcile.solve import MAX_REFINED, MAX_REFINED_QUICK, Limits
+from spinledger.reconcile.solve import (
+    FINISH,
+    FINISH_QUICK,
+    MAX_REFINED,
+    MAX_REFINED_QUICK,
+    Limits,
+)
 from spinledger.values.evidence import Evidence
 from spinledger.values.ledger import VerdictState
 
@@ -100,6 +106,7 @@ def limits_of(options: ReconcileOptions, cancelled: Cancelled | None) -> Limits:
 
     return Limits(
         max_refined=MAX_REFINED_QUICK if options.quick else MAX_REFINED,
+        finish=FINISH_QUICK if options.quick else FINISH,
         check=check,
         deadline_s=time.monotonic() + options.time_budget_s,
     )
@@ -110,11 +117,8 @@ def _weighed(candidate: Candidate, bench: Bench, limits: Limits) -> Evaluation |
     if candidate.structure is None:
         return candidate.reason or "the structure could not be read"
     try:
-        fresh = Limits(
-            max_refined=limits.max_refined,
-            check=limits.check,
-            deadline_s=time.monotonic() + bench.options.time_budget_s,
-        )
+        deadline_s = time.monotonic() + bench.options.time_budget_s
+        fresh = replace(limits, deadline_s=deadline_s)
         return evaluate(candidate.structure, bench, fresh)
     except StructureError as error:
         return error.reason
