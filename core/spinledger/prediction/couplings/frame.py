@@ -52,6 +52,25 @@ class Frame:
             Chem.CanonicalRankAtoms(self.mol, breakTies=False, includeChirality=False)
         )
 
+    @cached_property
+    def open_rings(self) -> frozenset[tuple[int, ...]]:
+        """Rings whose relative configuration the structure leaves open.
+
+        A ring with an unspecified stereocentre and another one, specified or
+        not: the conformers show one choice among several.
+        """
+        centres: dict[int, bool] = {}
+        for info in Chem.FindPotentialStereo(self.mol):
+            if info.type == Chem.StereoType.Atom_Tetrahedral:
+                is_open = info.specified == Chem.StereoSpecified.Unspecified
+                centres[int(info.centeredOn)] = is_open
+        return frozenset(
+            ring
+            for ring in self.rings
+            if sum(i in centres for i in ring) > 1
+            and any(centres.get(i, False) for i in ring)
+        )
+
     def atom(self, index: int) -> Chem.Atom:
         """RDKit atom of an index."""
         return self.mol.GetAtomWithIdx(index)

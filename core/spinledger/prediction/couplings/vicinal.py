@@ -33,6 +33,8 @@ _CONFORMER_DOUBT = 0.25
 #: Force fields flatten rings of polyols; what the coupling of two axial protons
 #: between oxygens lacks by that in rigid sugars (glucose, inositol).
 _POLYOL_LACK_HZ = 0.7
+#: Mean and sd of ring couplings over all configurations.
+_OPEN_RING_HZ, _OPEN_RING_SD_HZ = 5.5, 3.0
 _NAMES = {1: "CH", 2: "CH2", 3: "CH3"}
 
 
@@ -140,6 +142,8 @@ def _in_ring(bond: Bond, first: int, second: int, size: int) -> Estimate:
         return from_table(key, "vicinal ring", is_rigid=True)
     if frame.conformers.is_empty:
         return _without_geometry("vicinal ring", 5.5, 3.3)
+    if frame.ring_with(bond.a, bond.b) in frame.open_rings:
+        return _open_ring(bond, first, second)
     means, spreads = bond.hla()
     place = bond.place(first, second)
     kind = f"ring{size} {bond.name}"
@@ -154,6 +158,18 @@ def _in_ring(bond: Bond, first: int, second: int, size: int) -> Estimate:
         kind="vicinal ring",
         is_rigid=True,
         source=_HLA,
+    )
+
+
+def _open_ring(bond: Bond, first: int, second: int) -> Estimate:
+    """Relative configuration not drawn: the value belongs to one choice."""
+    means, _ = bond.hla()
+    return Estimate(
+        j_hz=float((means[bond.place(first, second)] + _OPEN_RING_HZ) / 2),
+        j_sd_hz=_OPEN_RING_SD_HZ,
+        kind="vicinal ring",
+        is_rigid=False,
+        source=_HLA + ", relative configuration not drawn",
     )
 
 
