@@ -11,6 +11,7 @@ from rdkit import Chem
 
 from spinledger.prediction.couplings import predict_couplings
 from spinledger.prediction.shifts import predict_shifts
+from spinledger.prediction.shifts_pairs import pair_offsets
 from spinledger.processing.solvents import canonical_solvent, is_aqueous
 from spinledger.structure.exchange import (
     Exchange,
@@ -21,7 +22,7 @@ from spinledger.structure.labels import group_labels
 from spinledger.structure.locants import locants
 from spinledger.structure.mobility import slow_bonds
 from spinledger.structure.read import molecule
-from spinledger.structure.settled import open_centres, settled
+from spinledger.structure.settled import open_centres, settled, with_hydrogens
 from spinledger.structure.species import Solution, Species, in_solution
 from spinledger.structure.topicity import (
     ProtonGroup,
@@ -39,9 +40,6 @@ from spinledger.values.structure import Structure
 
 # A species with a smaller share may be lost in the noise.
 _MINOR_SHARE: Final = 0.15
-# Half the typical distance of two diastereotopic protons, and its sd.
-_HALF_GAP_PPM: Final = 0.08
-_HALF_GAP_SD_PPM: Final = 0.10
 _BORDERLINE_SD_PPM: Final = 0.25
 _BORDERLINE_BONDS: Final = 3
 _PARAMAGNETIC: Final = frozenset({24, 25, 26, 27, 28, 29, *range(58, 71)})
@@ -83,7 +81,7 @@ def species_models(
     """Molecule with hydrogens of each species, as the claims' particles index it."""
     known = canonical_solvent(solvent) if solvent else None
     solution = in_solution(molecule(structure), known or solvent, ph)
-    return tuple(Chem.AddHs(settled(species.mol)) for species in solution.species)
+    return tuple(with_hydrogens(settled(species.mol)) for species in solution.species)
 
 
 @functools.lru_cache(maxsize=128)
@@ -226,6 +224,7 @@ class _Maker:
                 carbons, predict_shifts(mol, carbons, solvent=self.solvent), strict=True
             )
         )
+        offsets = pair_offsets(mol, groups)
         claims = []
         for index, group in enumerate(groups):
             swap = swapping.get(group.carriers[0])
@@ -236,7 +235,7 @@ class _Maker:
             else:
                 found = predicted[group.carriers[0]]
                 shift, sd, source = found.shift_ppm, found.sd_ppm, found.source
-            offset, spread = _gap(groups, index)
+            offset, spread = offsets[index]
             sd = (sd**2 + spread**2 + _borderline(mol, species, group) ** 2) ** 0.5
             claims.append(
                 Claim(
@@ -268,7 +267,7 @@ class _Maker:
             or self._couples(swapping.get(groups[particle.claim].carriers[0]))
         ]
         found = predict_couplings(
-            Chem.AddHs(mol),
+            with_hydrogens(mol),
             tuple(particles[place] for place in coupled),
             is_aqueous=is_aqueous(self.solvent),
         )
@@ -303,15 +302,6 @@ def _pair(
 ) -> str | None:
     partners = groups[index].partners
     return labels[partners[0]] if len(partners) == 1 else None
-
-
-def _gap(groups: Sequence[ProtonGroup], index: int) -> tuple[float, float]:
-    """Offset from the mean of a pair, and the sd that the open gap adds."""
-    partners = groups[index].partners
-    if len(partners) != 1:
-        return 0.0, 0.0
-    sign = 1.0 if index < partners[0] else -1.0
-    return sign * _HALF_GAP_PPM, _HALF_GAP_SD_PPM
 
 
 def _borderline(mol: Chem.Mol, species: Species, group: ProtonGroup) -> float:

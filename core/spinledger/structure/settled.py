@@ -8,7 +8,11 @@ from typing import Any, Final
 from rdkit import Chem
 from rdkit.Chem import rdDistGeom
 
-from spinledger.structure.stereo_elements import LONE, stereo_elements
+from spinledger.structure.stereo_elements import (
+    LONE,
+    stereo_elements,
+    terminal_alkenes,
+)
 from spinledger.structure.symmetry import Symmetry
 from spinledger.structure.topicity import site_classes
 
@@ -70,6 +74,42 @@ def _least_symmetric(mol: Chem.Mol) -> Chem.Mol:
             if found > most:
                 best, most = candidate, found
     return best
+
+
+def with_hydrogens(mol: Chem.Mol) -> Chem.Mol:
+    """Settled molecule with hydrogens appended, each with a definite place.
+
+    Parameters
+    ----------
+    mol : Chem.Mol
+        Settled, hydrogens implicit.
+
+    Notes
+    -----
+    Tags stay valid, since hydrogens come last at every atom. The two hydrogens
+    of a C=CH2 group get their sides as the symmetry takes them, so that models
+    in space agree with it.
+    """
+    full = Chem.AddHs(mol)
+    for end in terminal_alkenes(mol):
+        references = end.cis if end.cis is not None else end.trans
+        if references is None:
+            continue
+        first = next(
+            n.GetIdx()
+            for n in full.GetAtomWithIdx(end.outer).GetNeighbors()
+            if n.GetIdx() >= mol.GetNumAtoms()
+        )
+        bond = full.GetBondBetweenAtoms(end.outer, end.inner)
+        pair = (first, references)
+        if bond.GetBeginAtomIdx() != end.outer:
+            pair = pair[::-1]
+        bond.SetStereoAtoms(*pair)
+        is_cis = end.cis is not None
+        bond.SetStereo(
+            Chem.BondStereo.STEREOCIS if is_cis else Chem.BondStereo.STEREOTRANS
+        )
+    return full
 
 
 def open_centres(mol: Chem.Mol) -> tuple[int, ...]:

@@ -319,3 +319,39 @@ def _ortho_size(mol: Chem.Mol, end: int, position: int) -> float:
 @functools.cache
 def _pattern(smarts: str) -> Chem.Mol:
     return Chem.MolFromSmarts(smarts)
+
+
+@dataclass(frozen=True, slots=True, kw_only=True)
+class TerminalAlkene:
+    """A C=CH2 end: what stands cis and trans to its first hydrogen.
+
+    ``cis`` and ``trans`` are None for a hydrogen.
+    """
+
+    outer: int
+    inner: int
+    cis: int | None
+    trans: int | None
+
+
+def terminal_alkenes(mol: Chem.Mol) -> tuple[TerminalAlkene, ...]:
+    """All C=CH2 and N=CH2 groups whose two hydrogens have unlike sides."""
+    found = []
+    for link in _double_bonds(mol):
+        if link.kind != "alkene":
+            continue
+        for outer, inner, own, other in (
+            (*link.ends, *link.positions),
+            (*link.ends[::-1], *link.positions[::-1]),
+        ):
+            if FIRST_H in own and FIRST_H not in other:
+                cis, trans = other if link.sign > 0 else other[::-1]
+                found.append(
+                    TerminalAlkene(
+                        outer=outer,
+                        inner=inner,
+                        cis=cis if cis >= 0 else None,
+                        trans=trans if trans >= 0 else None,
+                    )
+                )
+    return tuple(found)
