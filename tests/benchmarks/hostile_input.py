@@ -17,6 +17,7 @@ import re
 import resource
 import shutil
 import signal
+import sys
 import tempfile
 import time
 import warnings
@@ -35,7 +36,7 @@ Files = dict[str, bytes]
 
 LIMIT_S = 10.0
 LIMIT_BYTES = 2**30
-BATCH = 1000
+BATCH = 500
 # Wall time without a word from a worker: far above any load on the machine.
 SILENCE_S = 900.0
 # Small representatives of every format; the folder is the data set itself.
@@ -385,6 +386,9 @@ def main() -> None:
                 slowest, slowest_seed = seconds, seed
             if seconds > LIMIT_S:
                 failures.append(f"seed {seed}: took {seconds:.1f} s")
+        print(
+            f"{sum(outcomes.values())} cases, {len(failures)} failures", file=sys.stderr
+        )
     if peak > LIMIT_BYTES:
         failures.append(f"memory {peak / 2**20:.0f} MiB")
     print(
