@@ -26,7 +26,13 @@ from spinledger_app.sketch.drawing import EMPTY, Drawing, merged, part
 from spinledger_app.sketch.gestures import Edit, Kit
 from spinledger_app.sketch.molfile import molblock
 from spinledger_app.sketch.toolbar import Toolbar
-from spinledger_app.sketch.transfer import holds_structure, mime_data, svg, text_of
+from spinledger_app.sketch.transfer import (
+    holds_structure,
+    leave_plain_text,
+    mime_data,
+    svg,
+    text_of,
+)
 from spinledger_app.sketch.words import tool_hint
 from spinledger_app.theme import Look
 
@@ -68,6 +74,9 @@ class StructureEditor(QWidget):
         self.toolbar.kit_wanted.connect(self.choose)
         self.canvas.kit_wanted.connect(self.choose)
         self.canvas.drawing_changed.connect(self._take_drawing)
+        app = QGuiApplication.instance()
+        assert isinstance(app, QGuiApplication)
+        app.aboutToQuit.connect(leave_plain_text)
         self.setAcceptDrops(True)
         self.setFocusProxy(self.canvas)
         self.setAccessibleName(say("Sketch"))

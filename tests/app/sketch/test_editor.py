@@ -3,6 +3,10 @@
 from __future__ import annotations
 
 import math
+import os
+import subprocess
+import sys
+from collections.abc import Iterator
 from functools import partial
 from pathlib import Path
 from xml.etree import ElementTree as ET
@@ -27,6 +31,7 @@ from spinledger_app.sketch.drawing import Point
 from spinledger_app.sketch.editor import StructureEditor
 from spinledger_app.sketch.gestures import NOWHERE, Kit, Spot, Tool
 from spinledger_app.sketch.painting import Shown, presented
+from spinledger_app.sketch.transfer import leave_plain_text
 from spinledger_app.sketch.view import handle_px
 from spinledger_app.theme import DARK, LIGHT, Look, TextRect, load_fonts
 
@@ -118,7 +123,7 @@ class Hand:
 
 
 @pytest.fixture
-def hand(qtbot: QtBot) -> Hand:
+def hand(qtbot: QtBot) -> Iterator[Hand]:
     load_fonts()
     editor = StructureEditor(Look(tokens=LIGHT))
     qtbot.addWidget(editor)
@@ -127,7 +132,8 @@ def hand(qtbot: QtBot) -> Hand:
         editor.show()
     editor.activateWindow()
     editor.canvas.setFocus()
-    return Hand(editor)
+    yield Hand(editor)
+    leave_plain_text()
 
 
 MIDDLE = (0.0, 0.0)
@@ -564,3 +570,29 @@ def test_editor_has_names_for_screen_readers(hand: Hand) -> None:
     QTest.keyClick(chosen, Qt.Key.Key_Right)
     assert hand.canvas.kit.tool is Tool.WEDGE
     assert hand.editor.toolbar.buttons[Tool.WEDGE].hasFocus()
+
+
+def test_program_ends_well_after_copying() -> None:
+    # In a process of its own: what is checked is how the process ends.
+    script = """
+from PySide6.QtCore import QTimer
+from PySide6.QtWidgets import QApplication
+app = QApplication([])
+from spinledger_app.sketch.editor import StructureEditor
+from spinledger_app.theme import Look
+editor = StructureEditor(Look())
+editor.show_structure("CCO")
+editor.copy()
+QTimer.singleShot(0, app.quit)
+app.exec()
+assert app.clipboard().text() == "CCO"
+"""
+    ended = subprocess.run(
+        [sys.executable, "-c", script],
+        env={**os.environ, "QT_QPA_PLATFORM": "offscreen"},
+        capture_output=True,
+        check=False,
+        text=True,
+        timeout=60,
+    )
+    assert (ended.returncode, ended.stderr) == (0, "")
