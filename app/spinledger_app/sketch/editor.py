@@ -7,6 +7,7 @@ from pathlib import Path
 
 from PySide6.QtCore import QMimeData, QRectF, QSize, Qt, Signal
 from PySide6.QtGui import (
+    QContextMenuEvent,
     QDragEnterEvent,
     QDropEvent,
     QGuiApplication,
@@ -15,7 +16,7 @@ from PySide6.QtGui import (
     QPainter,
     QPaintEvent,
 )
-from PySide6.QtWidgets import QVBoxLayout, QWidget
+from PySide6.QtWidgets import QMenu, QVBoxLayout, QWidget
 
 from spinledger.errors import OutputError, StructureError
 from spinledger_app.painting.ink import SECOND, SECOND_INK, Ink
@@ -51,12 +52,16 @@ class StructureEditor(QWidget):
         valence rule; the fault is shown in place.
     structure_text_rejected : Signal(str)
         One sentence about a pasted or dropped text that is no structure.
+    picture_wanted : Signal()
+        The picture is to be saved; whoever hears it asks for a file and calls
+        :meth:`save_svg`.
     history_changed : Signal()
         What can be undone or redone is another.
     """
 
     structure_changed = Signal(str)
     structure_text_rejected = Signal(str)
+    picture_wanted = Signal()
     history_changed = Signal()
 
     def __init__(self, look: Look, parent: QWidget | None = None) -> None:
@@ -254,6 +259,43 @@ class StructureEditor(QWidget):
     def select_all(self) -> None:
         """Select every atom."""
         self.canvas.select(frozenset(range(len(self.drawing.atoms))))
+
+    def menu(self) -> QMenu:
+        """All that can be done with the whole drawing, with its keys."""
+        menu = QMenu(self)
+        has_atoms, undo, redo = bool(self.drawing.atoms), say("Undo"), say("Redo")
+        entries: tuple[tuple[str, str, Callable[[], None], bool], ...] = (
+            (undo, "Ctrl+Z", self.undo, bool(self.undo_label)),
+            (redo, "Ctrl+Y", self.redo, bool(self.redo_label)),
+            ("", "", self.undo, False),
+            (say("Cut"), "Ctrl+X", self.cut, bool(self.canvas.selected)),
+            (say("Copy"), "Ctrl+C", self.copy, has_atoms),
+            (say("Paste"), "Ctrl+V", self.paste, True),
+            (say("Select all"), "Ctrl+A", self.select_all, has_atoms),
+            ("", "", self.undo, False),
+            (say("Clean up"), "Ctrl+L", self.clean_up, has_atoms),
+            (say("Show all"), "Home", self.canvas.fit, has_atoms),
+            (say("Clear"), "", self.clear, has_atoms),
+            (say("Save picture…"), "", self.picture_wanted.emit, has_atoms),
+        )
+        for name, key, act, is_enabled in entries:
+            if not name:
+                menu.addSeparator()
+                continue
+            action = menu.addAction(f"{name}\t{key}")
+            action.setEnabled(is_enabled)
+            action.triggered.connect(act)
+        return menu
+
+    def clear(self) -> None:
+        """Delete all that is drawn; can be undone."""
+        self.canvas.apply(Edit(label="Clear", drawing=EMPTY))
+
+    def contextMenuEvent(self, event: QContextMenuEvent) -> None:
+        """Offer what can be done with the drawing."""
+        menu = self.menu()
+        menu.setAttribute(Qt.WidgetAttribute.WA_DeleteOnClose)
+        menu.popup(event.globalPos())
 
     def dragEnterEvent(self, event: QDragEnterEvent) -> None:
         """Accept what may be a structure."""

@@ -572,6 +572,24 @@ def test_editor_has_names_for_screen_readers(hand: Hand) -> None:
     assert hand.editor.toolbar.buttons[Tool.WEDGE].hasFocus()
 
 
+def test_menu_does_what_it_says_and_greys_what_it_cannot(hand: Hand) -> None:
+    entries = {
+        one.text().partition("\t")[0]: one.isEnabled()
+        for one in hand.editor.menu().actions()
+    }
+    assert entries["Paste"]
+    assert not entries["Undo"]
+    assert not entries["Clean up"]
+    hand.editor.show_structure("CCO")
+    menu = hand.editor.menu()
+    clear = next(one for one in menu.actions() if one.text().startswith("Clear"))
+    clear.trigger()
+    assert hand.smiles == ""
+    assert hand.told == [""]
+    hand.editor.undo()
+    assert hand.smiles == "CCO"
+
+
 def test_program_ends_well_after_copying() -> None:
     # In a process of its own: what is checked is how the process ends.
     script = """
