@@ -119,6 +119,7 @@ class ClaimsPainter:
             self.ink.hline(left, right, layout.soil, "bark")
         self._feet()
         self._strays()
+        self._take_stems_and_leaves()
         # Low storeys first: upper crowns and their casings lie over the stalks.
         for placed in sorted(self.grove.trees, key=lambda one: not one.is_low):
             self._clipped(placed)
@@ -136,6 +137,18 @@ class ClaimsPainter:
                 )
         for label in self.grove.labels:
             self._label(label)
+
+    def _take_stems_and_leaves(self) -> None:
+        """Keep texts off stems and large leaves."""
+        for placed in self.grove.trees:
+            top, bottom = placed.fork_y, placed.soil_y
+            self._texts.take(QRectF(placed.root_x - 2, top, 4, bottom - top))
+            if not self._is_wide or placed.style != "branches":
+                continue
+            for leaf in placed.tree.leaves:
+                x = self._x(leaf.tip_ppm, placed)
+                height = placed.leaf_y - placed.tip_y
+                self._texts.take(QRectF(x - 4, placed.tip_y, 8, height))
 
     def _feet(self) -> None:
         width = 1.3 if self._is_wide else 1.0

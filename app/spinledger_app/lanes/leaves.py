@@ -26,21 +26,17 @@ def leaf_path(
         )  # fmt: skip
         return path
     height = yb - yt
-    lean = xt - xb
     for side in (-1, 1):
-        outward = side * width
-        belly = QPointF(xb + lean * 0.35 + outward * 0.9, yb - height * 0.46)
-        low = QPointF(xb + outward * 0.5, yb - height * 0.08)
-        shoulder = QPointF(xb + lean * 0.8 + outward * 0.7, yt + height * 0.28)
-        neck = QPointF(xt + outward * 0.15, yt + height * 0.12)
+        w = side * width
+        low = (xb + w * 0.5, yb - height * 0.05, xb + w * 1.15, yb - height * 0.30)
+        belly = (xb + w, yb - height * 0.52)
+        high = (xb + w * 0.7, yt + height * 0.25, xt + w * 0.2, yt + height * 0.12)
         if side < 0:
-            path.cubicTo(low, QPointF(belly.x(), belly.y() + height * 0.2), belly)
-            path.cubicTo(shoulder, neck, QPointF(xt, yt))
+            path.cubicTo(*low, *belly)
+            path.cubicTo(*high, xt, yt)
         else:
-            path.cubicTo(neck, shoulder, belly)
-            path.cubicTo(
-                QPointF(belly.x(), belly.y() + height * 0.2), low, QPointF(xb, yb)
-            )
+            path.cubicTo(high[2], high[3], high[0], high[1], *belly)
+            path.cubicTo(low[2], low[3], low[0], low[1], xb, yb)
     return path
 
 

@@ -14,6 +14,8 @@ _RADII_PX = (24.0, 34.0, 46.0, 60.0, 78.0, 98.0)
 _TAG_HEIGHT_PX = 20.0
 _STACK_PX = 24.0
 _EDGE_PX = 4.0
+_IN_RING_COST = 30.0
+_LARGEST_RING = 9
 
 
 @dataclass(frozen=True, slots=True, kw_only=True)
@@ -147,11 +149,12 @@ def place_tags(
         if atom.symbol
     ]
     segments = [(places[b.start], places[b.end]) for b in drawing.bonds]
+    rings = [[places[i] for i in ring] for ring in _rings(drawing)]
     placed: list[PlacedTag] = []
     for wish in wishes:
         tag = _best_place(
             drawing, places, wish, size=size, height=height,
-            blocked=(texts, segments, placed),
+            blocked=(texts, segments, placed, rings),
         )  # fmt: skip
         placed.append(tag)
     return tuple(placed)
@@ -178,6 +181,7 @@ _Blocked = tuple[
     list[_Box],
     list[tuple[tuple[float, float], tuple[float, float]]],
     list[PlacedTag],
+    list[list[tuple[float, float]]],
 ]
 
 
@@ -278,7 +282,7 @@ def _widest_free_angle(
 
 
 def _cost(box: _Box, size: tuple[float, float], blocked: _Blocked) -> float:
-    texts, segments, placed = blocked
+    texts, segments, placed, rings = blocked
     outside = (
         max(0.0, 4 - box.left)
         + max(0.0, 4 - box.top)
@@ -299,4 +303,50 @@ def _cost(box: _Box, size: tuple[float, float], blocked: _Blocked) -> float:
             if grown.left < x < grown.right and grown.top < y < grown.bottom:
                 hits += 1
         cost += 40.0 * hits
+    middle = ((box.left + box.right) / 2, (box.top + box.bottom) / 2)
+    cost += _IN_RING_COST * sum(_is_inside(middle, ring) for ring in rings)
     return cost
+
+
+def _rings(drawing: Drawing) -> list[list[int]]:
+    """Shortest ring through every bond, as atoms in order; chains give none."""
+    neighbours: dict[int, list[int]] = {}
+    for bond in drawing.bonds:
+        neighbours.setdefault(bond.start, []).append(bond.end)
+        neighbours.setdefault(bond.end, []).append(bond.start)
+    rings: dict[frozenset[int], list[int]] = {}
+    for bond in drawing.bonds:
+        path = _way_round(neighbours, bond.start, bond.end)
+        if path:
+            rings[frozenset(path)] = path
+    return list(rings.values())
+
+
+def _way_round(
+    neighbours: dict[int, list[int]], start: int, end: int
+) -> list[int] | None:
+    """Shortest path from one end of a bond to the other without the bond."""
+    paths = [[start]]
+    seen = {start}
+    for _ in range(_LARGEST_RING):
+        longer = []
+        for path in paths:
+            for atom in neighbours[path[-1]]:
+                if atom == end and len(path) > 1:
+                    return [*path, end]
+                if atom not in seen and atom != end:
+                    seen.add(atom)
+                    longer.append([*path, atom])
+        paths = longer
+    return None
+
+
+def _is_inside(point: tuple[float, float], ring: Sequence[tuple[float, float]]) -> bool:
+    """Whether a point lies in a polygon (even-odd rule)."""
+    x, y = point
+    inside = False
+    for (x0, y0), (x1, y1) in zip(ring, [*ring[1:], ring[0]], strict=True):
+        crosses = (y0 > y) != (y1 > y)
+        if crosses and x < x0 + (y - y0) / (y1 - y0) * (x1 - x0):
+            inside = not inside
+    return inside

@@ -24,6 +24,8 @@ _OFF_SD = 3.0
 _FOOT_REACH_HZ = 6.0
 # A line's place is not claimed better than this, whatever the fit says.
 _SMALLEST_LINE_SD_HZ = 0.08
+# Nor better than this share of its width, where lines overlap.
+_WIDTH_SHARE = 0.15
 
 
 def trees(ledger: Ledger) -> tuple[TreeShape, ...]:
@@ -220,7 +222,11 @@ def _with_gaps(
         if abs(gap_hz) > _FOOT_REACH_HZ:
             measured.append(leaf)
             continue
-        sd_hz = max(float(sds_hz[nearest]), _SMALLEST_LINE_SD_HZ)
+        sd_hz = max(
+            float(sds_hz[nearest]),
+            _SMALLEST_LINE_SD_HZ,
+            _WIDTH_SHARE * lines[nearest].width_hz,
+        )
         measured.append(
             Leaf(
                 base_ppm=leaf.base_ppm,

@@ -181,7 +181,10 @@ class LedgerRow(QWidget):
         if self._body is not None:
             room = max(self.width() - 2 * MARGIN, 100)
             layout = self._body.layout()
-            height += 0 if layout is None else layout.totalHeightForWidth(room)
+            if layout is not None and layout.hasHeightForWidth():
+                height += layout.totalHeightForWidth(room)
+            elif layout is not None:
+                height += layout.totalSizeHint().height()
         return QSize(340, height)
 
     def minimumSizeHint(self) -> QSize:

@@ -33,6 +33,11 @@ class StatusRow(QWidget):
         self.setFixedHeight(look.px(HEIGHT_PX))
 
     @property
+    def is_error(self) -> bool:
+        """Whether what it says is that something is the matter."""
+        return self._is_error
+
+    @property
     def words(self) -> str:
         """What the row says at the left."""
         return self._left

@@ -39,6 +39,7 @@ from spinledger_app.views.controls import BenchButton, IconButton
 _MARGIN = 16
 _HEAD_PX = 36
 _FOOT_PX = 28
+_MANY_TAGS = 8
 
 
 class StructureCanvas(QWidget):
@@ -93,7 +94,7 @@ class StructureCanvas(QWidget):
         drawing = self._drawing
         if drawing is not None and drawing.atoms:
             px = self.look.px
-            side = px(36)
+            side = px(36 if len(self._wishes) < _MANY_TAGS else 52)
             room = (
                 float(side),
                 float(px(34)),
