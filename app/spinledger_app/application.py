@@ -12,6 +12,7 @@ from spinledger.project.document import Project
 from spinledger_app import tasks
 from spinledger_app.bench import Bench
 from spinledger_app.desk import Desk
+from spinledger_app.recovery import Autosave, left_behind
 from spinledger_app.settings import BenchSettings
 from spinledger_app.theme import LIGHT, Look, load_fonts
 from spinledger_app.views.main_window import MainWindow
@@ -62,14 +63,27 @@ def build(store: QSettings, *, solvent: str | None = None) -> Parts:
     )
 
 
+def _recovery_folder() -> Path:
+    place = QStandardPaths.writableLocation(
+        QStandardPaths.StandardLocation.AppLocalDataLocation
+    )
+    return Path(place) / "recovery"
+
+
 def run(*, places: Sequence[str], structure: str | None, solvent: str | None) -> int:
     """Show the window and go on until it is closed; gives the exit code."""
     app = QApplication.instance() or QApplication([])
     QCoreApplication.setOrganizationName("spinledger")
     QCoreApplication.setApplicationName("spinledger-bench")
     parts = build(QSettings(), solvent=solvent)
+    folder = _recovery_folder()
+    found = left_behind(folder)
+    autosave = Autosave(parts.bench.session, parts.pool, folder)
+    parts.desk.closing.connect(autosave.close)
     parts.window.show()
     parts.window.show_spectrum(False)
+    if found and not places:
+        parts.desk.offer_left_behind(found)
     # Manager and processes start after the window is up.
     QTimer.singleShot(0, lambda: parts.pool.start(tasks.WARM_UPS))
     parts.desk.open_later(list(places), structure)

@@ -188,6 +188,26 @@ class Bench(QObject):
             prepare=self._prepare_project,
         )
 
+    def open_left_behind(self, path: Path) -> None:
+        """Open autosaved work; it counts as unsaved, and its file goes away."""
+
+        def done(project: Project) -> None:
+            self.selection.clear()
+            self.session.replace(project, None)
+            self.session.forget_saved()
+            path.unlink(missing_ok=True)
+            self.told.emit(say("Opened what was not saved. Save it now."), False)
+            self._solve_soon()
+
+        self.pool.run(
+            tasks.load,
+            path,
+            done=done,
+            failed=self._fail,
+            lane="read",
+            prepare=self._prepare_project,
+        )
+
     def _prepare_project(self, project: Project) -> Project:
         if project.evidence is not None:
             constraints = standing_constraints(project)

@@ -4,9 +4,9 @@ from __future__ import annotations
 
 from pathlib import Path
 
-from PySide6.QtCore import QObject, QPointF, QTimer
+from PySide6.QtCore import QObject, QPointF, QTimer, Signal
 from PySide6.QtGui import QCloseEvent, QGuiApplication
-from PySide6.QtWidgets import QToolTip
+from PySide6.QtWidgets import QAbstractButton, QMessageBox, QToolTip
 
 from spinledger_app.bench import Bench
 from spinledger_app.handlers.claims import ClaimHandlers
@@ -24,6 +24,7 @@ from spinledger_app.presenters.ledger import ledger_text
 from spinledger_app.presenters.recipe import chips
 from spinledger_app.presenters.tags import structure_foot, structure_tags, tag_tips
 from spinledger_app.presenters.wording import say
+from spinledger_app.recovery import LeftBehind, discard
 from spinledger_app.selection import Marks
 from spinledger_app.settings import BenchSettings
 from spinledger_app.theme import Look
@@ -48,7 +49,14 @@ class Desk(QObject):
     bench : Bench
     settings : BenchSettings
     look : Look
+
+    Signals
+    -------
+    closing : none
+        The window closes for good.
     """
+
+    closing = Signal()
 
     def __init__(
         self, window: MainWindow, bench: Bench, settings: BenchSettings, look: Look
@@ -317,8 +325,31 @@ class Desk(QObject):
             return
         self.settings.set_geometry("window", self.window.saveGeometry())
         self.settings.lane_shares = self.window.lanes.shares
+        self.closing.emit()
         self.bench.pool.close()
         event.accept()
+
+    def offer_left_behind(self, found: list[LeftBehind]) -> None:
+        """Ask whether work that a crash left behind is wanted."""
+        newest = found[0]
+        local = newest.saved_at.astimezone()
+        box = QMessageBox(self.window)
+        box.setText(say("The program ended before this was saved."))
+        words = say("Work of {0} was kept. Open it?")
+        box.setInformativeText(words.replace("{0}", f"{local:%Y-%m-%d %H:%M}"))
+        roles = QMessageBox.ButtonRole
+        wanted = box.addButton(say("Open it"), roles.AcceptRole)
+        unwanted = box.addButton(say("Throw it away"), roles.DestructiveRole)
+        box.addButton(say("Later"), roles.RejectRole)
+
+        def take(button: QAbstractButton) -> None:
+            if button is wanted:
+                self.bench.open_left_behind(newest.path)
+            elif button is unwanted:
+                discard(found)
+
+        box.buttonClicked.connect(take)
+        box.open()
 
     def open_later(self, places: list[str], structure: str | None) -> None:
         """Open what the command line named, once the window is up."""

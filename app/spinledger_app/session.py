@@ -103,6 +103,11 @@ class Session(QObject):
         self._saved = project
         self.unsaved_changed.emit(self.is_unsaved)
 
+    def forget_saved(self) -> None:
+        """Count what is open as unsaved."""
+        self._saved = None
+        self.unsaved_changed.emit(self.is_unsaved)
+
     def show_state(self, index: int) -> None:
         """Show the project of one undo position; called by the undo stack."""
         before = self.project

@@ -50,6 +50,7 @@ class Job:
     failed: Callable[[str], None]
     told: Callable[[str, float], None]
     prepare: Callable[[Any], Any] | None = None
+    is_quiet: bool = False
     event: Any = None
     future: Future[Any] | None = field(default=None)
     is_superseded: bool = False
@@ -109,7 +110,7 @@ class WorkerPool(QObject):
             executor.submit(_run, warm_up, (), 0, self._queue, manager.Event())
         self._ready.emit()
 
-    def run(
+    def run(  # noqa: PLR0913 - a call and all that may come of it
         self,
         task: Callable[..., Any],
         *arguments: Any,
@@ -118,6 +119,7 @@ class WorkerPool(QObject):
         told: Callable[[str, float], None] = lambda _stage, _fraction: None,
         lane: str = "",
         prepare: Callable[[Any], Any] | None = None,
+        is_quiet: bool = False,
     ) -> Job:
         """Run ``task(progress, cancelled, *arguments)`` in another process.
 
@@ -133,6 +135,8 @@ class WorkerPool(QObject):
             An unfinished job on the same lane is cancelled; its result is dropped.
         prepare : callable, optional
             Run on the result in a background thread of this process.
+        is_quiet : bool
+            Nobody waits for it: it does not count as busy.
         """
         if lane:
             self.cancel(lane)
@@ -145,14 +149,15 @@ class WorkerPool(QObject):
             failed=failed,
             told=told,
             prepare=prepare,
+            is_quiet=is_quiet,
         )
-        was_idle = not self._jobs
+        was_busy = self.is_busy
         self._jobs[job.number] = job
         if self._executor is None or self._manager is None:
             self._waiting.append(job)
         else:
             self._submit(job)
-        if was_idle:
+        if self.is_busy and not was_busy:
             self.busy_changed.emit(True)
         return job
 
@@ -169,8 +174,8 @@ class WorkerPool(QObject):
 
     @property
     def is_busy(self) -> bool:
-        """Whether any job is unfinished."""
-        return bool(self._jobs)
+        """Whether any job that somebody waits for is unfinished."""
+        return any(not job.is_quiet for job in self._jobs.values())
 
     def close(self) -> None:
         """Stop everything; for the end of the program."""
@@ -247,8 +252,11 @@ class WorkerPool(QObject):
             job.failed(sentence_of(error))
 
     def _drop(self, job: Job) -> None:
-        if self._jobs.pop(job.number, None) is not None and not self._jobs:
+        if self._jobs.pop(job.number, None) is None:
+            return
+        if not self._jobs:
             self._timer.stop()
+        if not job.is_quiet and not self.is_busy:
             self.busy_changed.emit(False)
 
     def _drain(self) -> None:

@@ -243,6 +243,29 @@ def test_atoms_dropped_on_others_become_one_with_them() -> None:
     assert fused(two, {6, 7}) == two
 
 
+def test_atom_that_was_there_keeps_its_element_and_place() -> None:
+    drawn = with_element(merged(chain(2), chain(2)), 1, "O")
+    target, held = drawn.atoms[1], drawn.atoms[2]
+    by = (target.x - held.x + 0.1, target.y - held.y)
+    made = fused(moved(with_element(drawn, 2, "N"), {2, 3}, by), {2, 3})
+    assert smiles(made) == "COC"
+    assert made.atoms[1].place == target.place
+
+
+@pytest.mark.parametrize("orders", [(2, 1), (1, 2)])
+def test_bonds_that_fall_together_become_one_of_the_higher_order(
+    orders: tuple[int, int],
+) -> None:
+    drawn = merged(chain(2), chain(2))
+    for index, order in enumerate(orders):
+        drawn = with_order(drawn, index, order)
+    by = (
+        drawn.atoms[0].x - drawn.atoms[2].x,
+        drawn.atoms[0].y - drawn.atoms[2].y,
+    )
+    assert smiles(fused(moved(drawn, {2, 3}, by), {2, 3})) == "C=C"
+
+
 def test_merged_drawings_stand_apart() -> None:
     first, second = chain(4), ring_at(EMPTY, (0, 0), 6)
     both = merged(first, second)
