@@ -33,9 +33,8 @@ class Grown:
 def free_angle_rad(drawing: Drawing, atom: int) -> float:
     """Direction in which a new bond at an atom has most room, radians.
 
-    120° from a single neighbour, so that chains go in zigzag, straight on where
-    that neighbour is bound by a triple or a second double bond; else the middle
-    of the widest gap.
+    120° from a single neighbour, so that chains go in zigzag, and straight on from
+    a triple bond; else the middle of the widest gap.
     """
     x, y = drawing.atoms[atom].place
     angles = sorted(
@@ -84,14 +83,7 @@ def snapped_rad(start: Point, end: Point) -> float:
     return round(angle / _STEP_RAD) * _STEP_RAD
 
 
-def sprouted(
-    drawing: Drawing,
-    atom: int,
-    *,
-    angle_rad: float | None = None,
-    element: str = "C",
-    order: int = 1,
-) -> Grown:
+def sprouted(drawing: Drawing, atom: int, *, angle_rad: float | None = None) -> Grown:
     """Drawing with a bond grown from an atom, onto an atom that stands there.
 
     Parameters
@@ -104,14 +96,14 @@ def sprouted(
     place = (x + math.cos(angle), y + math.sin(angle))
     there = drawing.atom_at(place)
     if there is None or there == atom:
-        new = Atom(element=element, x=place[0], y=place[1])
+        new = Atom(x=place[0], y=place[1])
         drawing, there = with_atom(drawing, new), len(drawing.atoms)
-    return joined(drawing, atom, there, order=order)
+    return joined(drawing, atom, there)
 
 
-def joined(drawing: Drawing, first: int, second: int, *, order: int = 1) -> Grown:
+def joined(drawing: Drawing, first: int, second: int) -> Grown:
     """Drawing with a bond between two atoms, unless they are joined already."""
-    bond = Bond(start=first, end=second, order=order)
+    bond = Bond(start=first, end=second)
     return Grown(drawing=with_bond(drawing, bond), atom=second)
 
 
