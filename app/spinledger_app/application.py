@@ -4,8 +4,9 @@ from __future__ import annotations
 
 from collections.abc import Sequence
 from dataclasses import dataclass, replace
+from pathlib import Path
 
-from PySide6.QtCore import QCoreApplication, QSettings, QTimer
+from PySide6.QtCore import QCoreApplication, QSettings, QStandardPaths, QTimer
 from PySide6.QtWidgets import QApplication
 
 from spinledger.project.document import Project
