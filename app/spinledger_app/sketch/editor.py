@@ -22,7 +22,7 @@ from spinledger.errors import OutputError, StructureError
 from spinledger_app.painting.ink import SECOND, SECOND_INK, Ink
 from spinledger_app.presenters.wording import formula, say
 from spinledger_app.sketch.canvas import SketchCanvas
-from spinledger_app.sketch.chemistry import from_text
+from spinledger_app.sketch.chemistry import from_text, meaning
 from spinledger_app.sketch.drawing import EMPTY, Drawing, merged, part
 from spinledger_app.sketch.gestures import Edit, Kit
 from spinledger_app.sketch.molfile import molblock
@@ -68,6 +68,7 @@ class StructureEditor(QWidget):
         super().__init__(parent)
         self.look = look
         self._told = ""
+        self._shown = ""
         self._rejection = ""
         self.toolbar = Toolbar(look, self)
         self.canvas = SketchCanvas(look, self)
@@ -103,7 +104,10 @@ class StructureEditor(QWidget):
         return self.canvas.history.redo_label
 
     def show_structure(self, text: str) -> None:
-        """Show a structure from outside; that which was told last changes nothing.
+        """Show a structure from outside, without a way back to the one before.
+
+        The structure that is drawn already, in whatever text, changes nothing: its
+        layout and its undo steps stay.
 
         Parameters
         ----------
@@ -115,9 +119,13 @@ class StructureEditor(QWidget):
         StructureError
             If the text cannot be read as a structure.
         """
-        if text == self._told:
+        if text in (self._told, self._shown):
             return
         drawing = from_text(text) if text.strip() else EMPTY
+        smiles = self.canvas.meaning.smiles
+        self._shown = text
+        if smiles and meaning(drawing).smiles == smiles:
+            return
         self._told = text
         self._rejection = ""
         self.canvas.show_drawing(drawing)
@@ -215,7 +223,7 @@ class StructureEditor(QWidget):
             return
         text = molblock(self.drawing) if self.drawing.atoms else ""
         if text != self._told:
-            self._told = text
+            self._told, self._shown = text, text
             self.structure_changed.emit(text)
 
     def _insert_data(self, data: QMimeData) -> None:

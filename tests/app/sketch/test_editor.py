@@ -462,9 +462,25 @@ def test_showing_what_was_told_keeps_the_way_back(hand: Hand) -> None:
     hand.click(QPoint(200, 180))
     hand.editor.show_structure(hand.told[-1])
     assert hand.editor.undo_label == "Draw bond"
+    hand.editor.show_structure(read_structure(hand.told[-1]).molblock)
+    assert hand.editor.undo_label == "Draw bond"
     hand.editor.show_structure("CCO")
     assert hand.editor.undo_label == ""
     assert len(hand.told) == 1
+
+
+def test_half_drawn_fault_stays_when_the_last_sound_structure_is_shown(
+    hand: Hand,
+) -> None:
+    hand.editor.show_structure("CN(C)C")
+    hand.use(Tool.BOND)
+    hand.click(hand.atom(0))
+    known = read_structure(hand.told[-1]).molblock
+    hand.editor.show_structure(known)
+    hand.click(hand.atom(1))
+    assert hand.canvas.meaning.faults
+    hand.editor.show_structure(known)
+    assert hand.canvas.meaning.faults
 
 
 def test_clean_up_key_keeps_the_structure(hand: Hand) -> None:
