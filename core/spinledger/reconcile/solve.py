@@ -9,9 +9,12 @@ import time
 from collections.abc import Callable
 from dataclasses import dataclass, replace
 
+import numpy as np
+
 from spinledger.reconcile.assess import Assessment, assess
+from spinledger.reconcile.beam import shift_cost
 from spinledger.reconcile.coarse import CoarseSpectrum, FloatArray
-from spinledger.reconcile.exchange import Odds, best_order
+from spinledger.reconcile.exchange import Odds, best_order, like_pairs
 from spinledger.reconcile.match import (
     Hypothesis,
     match,
@@ -28,7 +31,7 @@ from spinledger.reconcile.refine_values import (
 )
 from spinledger.spins.clusters import QUICK_EFFORT
 from spinledger.spins.network import ClaimNetwork
-from spinledger.values.claim import ClaimSet
+from spinledger.values.claim import Claim, ClaimSet
 from spinledger.values.evidence import Evidence
 
 MAX_REFINED = 6
@@ -37,8 +40,14 @@ COST_WINDOW = 6.0
 # A fit this good needs only its near ties beside it.
 GOOD_RESIDUAL = 0.05
 NEAR_TIE_COST = 3.0
-MAX_FINISHED = 2
-FINISH_WINDOW = 2.5
+MAX_FINISHED = 4
+FINISH_WINDOW = 0.0
+MAX_ROUNDS = 3
+# Fits below this need no other arrangement.
+WELL_FITTED = 0.06
+NEIGHBOUR_PPM = 0.1
+NEIGHBOUR_PRICE = 5.0
+ALIKE_PRICE = 2.5
 # Where the best quick fit leaves this share, a finer one changes nothing.
 HOPELESS_RESIDUAL = 0.6
 # Misfit is judged after a boxcar of 3 Hz, so that broad stages tell fits apart.
@@ -198,6 +207,7 @@ def solve(
             break
         sketches.append(sketchpad.fitted(one, one.shifts_ppm, None, SKETCH))
     sketches.sort(key=_score)
+    sketches = _rearranged(sketchpad, sketches, limits)
     fits, rest = _finished(sketchpad, sketches, limits)
     best, odds = _ordered(evidence, claims, fits[0], constraints)
     return Solution(
@@ -208,6 +218,91 @@ def solve(
         match_cost=best_cost,
         is_complete=is_complete,
     )
+
+
+def _rearranged(
+    sketchpad: _Sketchpad, sketches: list[Fitted], limits: Limits
+) -> list[Fitted]:
+    """Sketches with neighbours and look-alikes of the best one exchanged.
+
+    The coarse view cannot tell the order of claims that lie a few line widths
+    apart; the exact line shape can.
+    """
+    tried = {_arrangement(fit) for fit in sketches}
+    for _ in range(MAX_ROUNDS):
+        best = sketches[0]
+        share = best.assessment.residual_share
+        if limits.is_rough or not WELL_FITTED < share < HOPELESS_RESIDUAL:
+            break
+        for shifts_ppm in exchanged_starts(sketchpad.network.claims, best, limit=6):
+            limits.checked()
+            if limits.is_over():
+                return sketches
+            start = replace(best.hypothesis, shifts_ppm=shifts_ppm)
+            if (key := _places(shifts_ppm)) in tried:
+                continue
+            tried.add(key)
+            sketches.append(sketchpad.fitted(start, shifts_ppm, None, SKETCH))
+        sketches.sort(key=_score)
+        if sketches[0] is best:
+            break
+    return sketches
+
+
+def _arrangement(fit: Fitted) -> tuple[int, ...]:
+    return _places(fit.refinement.shifts_ppm)
+
+
+def _places(shifts_ppm: FloatArray) -> tuple[int, ...]:
+    """Shifts in steps of 0.01 ppm, to know an arrangement again."""
+    return tuple(round(100.0 * float(shift)) for shift in shifts_ppm)
+
+
+def exchanged_starts(
+    claims: ClaimSet, fit: Fitted, *, limit: int
+) -> tuple[FloatArray, ...]:
+    """Shifts of a fit with two claims exchanged, the likeliest exchanges first.
+
+    Neighbours within 0.1 ppm, and claims of as many protons whose predictions
+    allow the exchange; not those whose exchange changes nothing.
+    """
+    gone = fit.hypothesis.absent | fit.hypothesis.hidden
+    same = {(one.first, one.second) for one in like_pairs(claims, gone)}
+    shifts = fit.refinement.shifts_ppm
+    here = [i for i in range(len(claims.claims)) if i not in gone]
+    rows: list[tuple[float, int, int]] = []
+    for position, first in enumerate(here):
+        for second in here[position + 1 :]:
+            one, other = claims.claims[first], claims.claims[second]
+            gap = abs(float(shifts[first] - shifts[second]))
+            if (first, second) in same or gap < 0.002:
+                continue
+            price = _exchange_price(
+                one, other, float(shifts[first]), float(shifts[second])
+            )
+            alike = one.n_protons == other.n_protons and price < ALIKE_PRICE
+            if alike or (gap < NEIGHBOUR_PPM and price < NEIGHBOUR_PRICE):
+                rows.append((price, first, second))
+    starts = []
+    for _, first, second in sorted(rows)[:limit]:
+        turned = np.array(shifts)
+        turned[first], turned[second] = shifts[second], shifts[first]
+        starts.append(turned)
+    return tuple(starts)
+
+
+def _exchange_price(
+    one: Claim, other: Claim, at_one_ppm: float, at_other_ppm: float
+) -> float:
+    """Rise of the shift cost when two claims take each other's place."""
+    z = [
+        (at_other_ppm - one.shift_ppm) / one.shift_sd_ppm,
+        (at_one_ppm - other.shift_ppm) / other.shift_sd_ppm,
+        (at_one_ppm - one.shift_ppm) / one.shift_sd_ppm,
+        (at_other_ppm - other.shift_ppm) / other.shift_sd_ppm,
+    ]
+    costs = shift_cost(np.array(z))
+    return float(costs[0] + costs[1] - costs[2] - costs[3])
 
 
 def _shows_something(claims: ClaimSet, hypothesis: Hypothesis) -> bool:
@@ -226,7 +321,9 @@ def _finished(
     fits: list[Fitted] = []
     for sketch in sketches[:MAX_FINISHED]:
         limits.checked()
-        if fits and (_is_far(sketch, sketches[0]) or limits.is_over()):
+        # The broad view can flatter a fit: others follow while they could win.
+        lowest = min(map(_score, fits), default=np.inf)
+        if fits and (_score(sketch) > lowest + FINISH_WINDOW or limits.is_over()):
             break
         refined = sketch.refinement
         fits.append(
@@ -242,11 +339,6 @@ def _finished(
 
 def _score(fit: Fitted) -> float:
     return fit.assessment.selection_score
-
-
-def _is_far(fit: Fitted, best: Fitted) -> bool:
-    """Whether a quick fit stands too far behind to be finished."""
-    return _score(fit) > _score(best) + FINISH_WINDOW
 
 
 def _is_good(fits: list[Fitted]) -> bool:
