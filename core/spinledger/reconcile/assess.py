@@ -5,6 +5,7 @@ Shifts in ppm, couplings and widths in Hz; z are residuals in sd.
 
 from __future__ import annotations
 
+from collections.abc import Sequence
 from dataclasses import dataclass, replace
 
 import numpy as np
@@ -145,7 +146,7 @@ def _mean(values: list[float]) -> float:
 def assess(
     evidence: Evidence,
     claims: ClaimSet,
-    refinement: Refinement,
+    fits: Sequence[Refinement],
     *,
     absent: frozenset[int],
     hidden: frozenset[int],
@@ -157,13 +158,18 @@ def assess(
     ----------
     evidence : Evidence
     claims : ClaimSet
-    refinement : Refinement
+    fits : sequence of Refinement
+        The refinement, then the broadened fit that it began with, if any. A
+        fine fit gives way to line shapes that no model has; the smaller misfit
+        of the two tells how well the claims are placed.
     absent, hidden : frozenset of int
         Claims that are not in the spectrum, and those under a mask.
     constraints : Constraints, optional
         Stretches left out by hand take no part.
     """
-    misfit = spectrum_misfit(evidence, refinement, constraints)
+    refinement = fits[0]
+    misfits = [spectrum_misfit(evidence, one, constraints) for one in fits]
+    misfit = min(misfits, key=lambda one: one.share)
     excess = exchangeable_excess(claims, refinement, absent | hidden)
     misfit = replace(
         misfit,

@@ -154,7 +154,7 @@ def evaluate(
     assessment = assess(
         judged,
         claims,
-        solution.best.refinement,
+        solution.fits,
         absent=solution.absent,
         hidden=solution.hidden,
         constraints=constraints,

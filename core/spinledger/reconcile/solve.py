@@ -40,14 +40,16 @@ COST_WINDOW = 6.0
 # A fit this good needs only its near ties beside it.
 GOOD_RESIDUAL = 0.05
 NEAR_TIE_COST = 3.0
-MAX_FINISHED = 4
-FINISH_WINDOW = 0.0
+MAX_FINISHED = 2
+FINISH_WINDOW = 3.0
 MAX_ROUNDS = 3
 # Fits below this need no other arrangement.
 WELL_FITTED = 0.06
 NEIGHBOUR_PPM = 0.1
 NEIGHBOUR_PRICE = 5.0
 ALIKE_PRICE = 2.5
+# How much sooner a claim that fits badly is exchanged.
+MISFIT_DRAW = 5.0
 # Where the best quick fit leaves this share, a finer one changes nothing.
 HOPELESS_RESIDUAL = 0.6
 # Misfit is judged after a boxcar of 3 Hz, so that broad stages tell fits apart.
@@ -112,11 +114,21 @@ class Limits:
 
 @dataclass(frozen=True, slots=True, eq=False, kw_only=True)
 class Fitted:
-    """One hypothesis after refinement."""
+    """One hypothesis after refinement.
+
+    Attributes
+    ----------
+    hypothesis : Hypothesis
+    refinement : Refinement
+    assessment : Assessment
+    broad : Refinement or None
+        The broadened fit that a fine one began with.
+    """
 
     hypothesis: Hypothesis
     refinement: Refinement
     assessment: Assessment
+    broad: Refinement | None = None
 
 
 @dataclass(frozen=True, slots=True, eq=False, kw_only=True)
@@ -144,6 +156,14 @@ class Solution:
     odds: tuple[Odds, ...]
     match_cost: float
     is_complete: bool
+
+    @property
+    def fits(self) -> tuple[Refinement, ...]:
+        """The best refinement, and the broadened fit that it began with."""
+        best = self.best
+        return (
+            (best.refinement,) if best.broad is None else (best.refinement, best.broad)
+        )
 
     @property
     def absent(self) -> frozenset[int]:
@@ -209,7 +229,7 @@ def solve(
     sketches.sort(key=_score)
     sketches = _rearranged(sketchpad, sketches, limits)
     fits, rest = _finished(sketchpad, sketches, limits)
-    best, odds = _ordered(evidence, claims, fits[0], constraints)
+    best, odds = sketchpad.ordered(fits[0])
     return Solution(
         claims=claims,
         best=best,
@@ -270,6 +290,7 @@ def exchanged_starts(
     same = {(one.first, one.second) for one in like_pairs(claims, gone)}
     shifts = fit.refinement.shifts_ppm
     here = [i for i in range(len(claims.claims)) if i not in gone]
+    misfits = {one.claim: one.residual_share for one in fit.assessment.claims}
     rows: list[tuple[float, int, int]] = []
     for position, first in enumerate(here):
         for second in here[position + 1 :]:
@@ -282,7 +303,8 @@ def exchanged_starts(
             )
             alike = one.n_protons == other.n_protons and price < ALIKE_PRICE
             if alike or (gap < NEIGHBOUR_PPM and price < NEIGHBOUR_PRICE):
-                rows.append((price, first, second))
+                worst = max(misfits.get(first, 0.0), misfits.get(second, 0.0))
+                rows.append((price - MISFIT_DRAW * min(worst, 1.0), first, second))
     starts = []
     for _, first, second in sorted(rows)[:limit]:
         turned = np.array(shifts)
@@ -323,17 +345,10 @@ def _finished(
         limits.checked()
         # The broad view can flatter a fit: others follow while they could win.
         lowest = min(map(_score, fits), default=np.inf)
-        if fits and (_score(sketch) > lowest + FINISH_WINDOW or limits.is_over()):
+        is_beaten = _score(sketch) > min(lowest, _score(sketches[0]) + FINISH_WINDOW)
+        if fits and (is_beaten or limits.is_over()):
             break
-        refined = sketch.refinement
-        fits.append(
-            sketchpad.fitted(
-                sketch.hypothesis,
-                refined.shifts_ppm,
-                refined.couplings_hz,
-                limits.finish,
-            )
-        )
+        fits.append(sketchpad.finished(sketch, limits.finish))
     return sorted(fits, key=_score), sketches[len(fits) :]
 
 
@@ -376,56 +391,45 @@ class _Sketchpad:
             constraints=self.constraints,
             settings=settings,
         )
+        return self._assessed(hypothesis, refinement, None)
+
+    def finished(self, sketch: Fitted, settings: RefineSettings) -> Fitted:
+        """A sketch refined on."""
+        fine = self.fitted(
+            sketch.hypothesis,
+            sketch.refinement.shifts_ppm,
+            sketch.refinement.couplings_hz,
+            settings,
+        )
+        return self._assessed(sketch.hypothesis, fine.refinement, sketch.refinement)
+
+    def ordered(self, fit: Fitted) -> tuple[Fitted, tuple[Odds, ...]]:
+        """The fit with look-alikes in their best order, assessed anew."""
+        refinement, odds = best_order(
+            self.network.claims,
+            fit.refinement,
+            fit.hypothesis.absent | fit.hypothesis.hidden,
+            offset_ppm=fit.assessment.offset_ppm,
+            constraints=self.constraints,
+        )
+        if refinement is fit.refinement:
+            return fit, odds
+        return self._assessed(fit.hypothesis, refinement, fit.broad), odds
+
+    def _assessed(
+        self, hypothesis: Hypothesis, refinement: Refinement, broad: Refinement | None
+    ) -> Fitted:
+        assessment = assess(
+            self.prepared.evidence,
+            self.network.claims,
+            [one for one in (refinement, broad) if one is not None],
+            absent=hypothesis.absent,
+            hidden=hypothesis.hidden,
+            constraints=self.constraints,
+        )
         return Fitted(
             hypothesis=hypothesis,
             refinement=refinement,
-            assessment=_assessed(
-                self.prepared.evidence,
-                claims,
-                hypothesis,
-                refinement,
-                self.constraints,
-            ),
+            assessment=assessment,
+            broad=broad,
         )
-
-
-def _assessed(
-    evidence: Evidence,
-    claims: ClaimSet,
-    hypothesis: Hypothesis,
-    refinement: Refinement,
-    constraints: Constraints | None,
-) -> Assessment:
-    return assess(
-        evidence,
-        claims,
-        refinement,
-        absent=hypothesis.absent,
-        hidden=hypothesis.hidden,
-        constraints=constraints,
-    )
-
-
-def _ordered(
-    evidence: Evidence,
-    claims: ClaimSet,
-    fit: Fitted,
-    constraints: Constraints | None,
-) -> tuple[Fitted, tuple[Odds, ...]]:
-    """The fit with look-alikes in their best order, assessed anew."""
-    left_out = fit.hypothesis.absent | fit.hypothesis.hidden
-    refinement, odds = best_order(
-        claims,
-        fit.refinement,
-        left_out,
-        offset_ppm=fit.assessment.offset_ppm,
-        constraints=constraints,
-    )
-    if refinement is fit.refinement:
-        return fit, odds
-    again = Fitted(
-        hypothesis=fit.hypothesis,
-        refinement=refinement,
-        assessment=_assessed(evidence, claims, fit.hypothesis, refinement, constraints),
-    )
-    return again, odds
