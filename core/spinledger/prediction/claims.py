@@ -24,6 +24,7 @@ from spinledger.structure.mobility import slow_bonds
 from spinledger.structure.read import molecule
 from spinledger.structure.settled import open_centres, settled, with_hydrogens
 from spinledger.structure.species import Solution, Species, in_solution
+from spinledger.structure.symmetry import Symmetry
 from spinledger.structure.topicity import (
     ProtonGroup,
     hetero_particles,
@@ -160,6 +161,12 @@ def _notes(
         notes.append(
             f"Rotation about the {' and '.join(kinds)} C-N bond is slow at this "
             "temperature; groups on its two sides are claimed apart."
+        )
+    rotamers = Symmetry(drawn, temperature_k=temperature_k).rotamers()
+    if rotamers:
+        notes.append(
+            f"The {' and '.join(rotamers)} may show two rotamers, that is, two sets of "
+            "signals; one set is claimed."
         )
     if open_centres(settled(drawn)):
         notes.append(

@@ -3,7 +3,7 @@
 from __future__ import annotations
 
 import re
-from collections import Counter
+from collections import Counter, defaultdict
 from collections.abc import Sequence
 
 from rdkit import Chem
@@ -36,7 +36,8 @@ def group_labels(
     Notes
     -----
     Given locants win; else templates and chain rules number the carbons.
-    Diastereotopic partners get the letters A and B.
+    Diastereotopic partners, and like groups of one constitution that differ in
+    space only, get the letters A and B.
     """
     numbers = [
         (given[i] if i < len(given) else None) or number
@@ -46,7 +47,7 @@ def group_labels(
     raw = [_label(mol, group, numbers) for group in groups]
     if several:
         raw = _told_apart_by_fragment(mol, groups, raw)
-    return _unique(_with_letters(groups, raw))
+    return _unique(_with_letters(_alike(mol, groups, raw), raw))
 
 
 def _label(mol: Chem.Mol, group: ProtonGroup, numbers: Sequence[str | None]) -> str:
@@ -154,18 +155,24 @@ def _told_apart_by_fragment(
     return out
 
 
-def _with_letters(groups: Sequence[ProtonGroup], labels: Sequence[str]) -> list[str]:
-    """Give partners on the same atoms the letters A, B, ..."""
-    out = list(labels)
-    done: set[int] = set()
+def _alike(
+    mol: Chem.Mol, groups: Sequence[ProtonGroup], labels: Sequence[str]
+) -> list[list[int]]:
+    """Groups of one constitution with one label."""
+    ranks = list(Chem.CanonicalRankAtoms(mol, breakTies=False, includeChirality=False))
+    sets: dict[tuple[str, frozenset[int]], list[int]] = defaultdict(list)
     for index, group in enumerate(groups):
-        alike = [p for p in group.partners if labels[p] == labels[index]]
-        members = sorted({index, *alike})
-        if index in done or len(members) < 2:
-            continue
+        constitution = frozenset(ranks[i] for i in group.carriers)
+        sets[labels[index], constitution].append(index)
+    return [members for members in sets.values() if len(members) > 1]
+
+
+def _with_letters(alike: Sequence[Sequence[int]], labels: Sequence[str]) -> list[str]:
+    """Give the members of each set the letters A, B, ..."""
+    out = list(labels)
+    for members in alike:
         for letter, member in zip(_LETTERS, members, strict=False):
             out[member] = _lettered(labels[member], letter)
-            done.add(member)
     return out
 
 

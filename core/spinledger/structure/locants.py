@@ -67,6 +67,22 @@ def locants(mol: Chem.Mol) -> tuple[str | None, ...]:
     return tuple(found)
 
 
+def _angular_methyls(mol: Chem.Mol, numbers: dict[int, str]) -> dict[int, str]:
+    """Methyls on C13 and C10 of a steroid are 18 and 19."""
+    smarts = next(text for name, text, _ in RING_TEMPLATES if name == "steroid")
+    matches = mol.GetSubstructMatches(_pattern(smarts), maxMatches=16)
+    if not any(set(match) == set(numbers) for match in matches):
+        return {}
+    by_number = {text: index for index, text in numbers.items()}
+    found = {}
+    for anchor, own in (("13", "18"), ("10", "19")):
+        atom = mol.GetAtomWithIdx(by_number[anchor])
+        for neighbour in atom.GetNeighbors():
+            if neighbour.GetDegree() == 1 and neighbour.GetAtomicNum() == 6:
+                found[neighbour.GetIdx()] = own
+    return found
+
+
 def _part_order(part: _Part) -> tuple[int, bool, int, int]:
     return (
         part.seniority,
@@ -87,6 +103,7 @@ def _parts(mol: Chem.Mol, fragment: Sequence[int]) -> Iterator[_Part]:
         else:
             numbers = _ring_numbers(mol, system, senior)
             rank = _of_part(mol, system, senior)
+        numbers |= _angular_methyls(mol, numbers)
         inside -= set(numbers)
         yield _Part(numbers=numbers, is_ring=True, seniority=rank)
     for chain in _chains(mol, inside):

@@ -114,6 +114,23 @@ class Symmetry:
         pairs = list(zip(first, second, strict=True))
         return self.maps(pairs, 1) or self.maps(pairs, -1)
 
+    def rotamers(self) -> tuple[str, ...]:
+        """Kinds of slow bonds to nitrogen with two unlike sides at both ends.
+
+        Such a bond makes two rotamers, which may show as two sets of signals.
+        """
+        found = set()
+        for link in self.links:
+            if link.kind in ("alkene", "cumulene", "hindered axis"):
+                continue
+            unlike = all(
+                min(side) < 0 or self.colours[side[0]] != self.colours[side[1]]
+                for side in link.positions
+            )
+            if unlike and min(link.positions[1]) >= 0:
+                found.add(link.kind)
+        return tuple(sorted(found))
+
     def maps(self, pairs: Sequence[tuple[Site, Site]], sense: Sense) -> bool:
         """Whether the molecule can be laid over itself with some sites given.
 

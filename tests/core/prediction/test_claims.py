@@ -241,3 +241,17 @@ def test_same_input_gives_the_same_numbers() -> None:
 def test_open_configuration_is_said() -> None:
     notes = claims_of("CC(O)CC", "CDCl3").notes
     assert any("stereocentres open" in note for note in notes)
+
+
+@pytest.mark.parametrize(
+    ("smiles", "expected"),
+    [
+        ("CC(=O)N(C)Cc1ccccc1", True),
+        ("CC(=O)N1CCCC1C(=O)O", True),
+        ("CN(C)C=O", False),  # two like groups: two sites, not two rotamers
+        ("CC(=O)NC", False),  # secondary amides are nearly all trans
+    ],
+)
+def test_rotamers_are_said(smiles: str, expected: bool) -> None:
+    notes = claims_of(smiles, "CDCl3").notes
+    assert any("rotamers" in note for note in notes) is expected
