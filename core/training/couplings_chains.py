@@ -36,7 +36,7 @@ CHAIN_TREES: dict[str, Any] = TREES | {
     "lambda_l2": 1.0,
 }
 N_CHAIN_TREES = 150
-CHAIN_RIDGE = 3.0
+CHAIN_RIDGE = 5.0
 TRAINED_MEANS = {
     "chain CH2-CH3": "chain_ch2_ch3",
     "chain CH2-CH2": "chain_ch2_ch2",

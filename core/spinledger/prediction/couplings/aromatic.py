@@ -59,8 +59,10 @@ class RingRule:
         family = self.key.split()[0]
         family = {"fused": "benzene", "indole": "pyrrole"}.get(family, family)
         name = f"{family} {_STEPS[self.steps]}"
-        is_beside = self.key == "azine ortho next to N"
-        return f"{name} next to N" if is_beside else name
+        for special in ("next to N", "across N"):
+            if self.key.endswith(special):
+                return f"{name} {special}"
+        return name
 
     @property
     def base(self) -> str:

@@ -62,8 +62,9 @@ class Frame:
         centres: dict[int, bool] = {}
         for info in Chem.FindPotentialStereo(self.mol):
             if info.type == Chem.StereoType.Atom_Tetrahedral:
+                atom = int(info.centeredOn)
                 is_open = info.specified == Chem.StereoSpecified.Unspecified
-                centres[int(info.centeredOn)] = is_open
+                centres[atom] = is_open and not self._is_bridgehead(atom)
         return frozenset(
             ring
             for ring in self.rings
@@ -159,6 +160,15 @@ class Frame:
             len(set(ring) & set(other)) >= 3
             for other in self.rings
             if set(other) != set(ring) and len(other) <= 6
+        )
+
+    def _is_bridgehead(self, atom: int) -> bool:
+        """Whether rings that share three atoms or more hold the atom in place."""
+        mine = [set(ring) for ring in self.rings if atom in ring]
+        return any(
+            len(first & second) >= 3
+            for index, first in enumerate(mine)
+            for second in mine[:index]
         )
 
     def paths(self, start: int, end: int) -> Iterator[tuple[int, ...]]:

@@ -28,7 +28,7 @@ _LARGEST_RIGID_RING = 7
 _SMALL_HETEROS = {6: "ring3", 8: "epoxide", 7: "aziridine", 16: "thiirane"}
 #: Ring couplings: error of the rule, and share of the spread over conformers
 #: that is doubt; both from published couplings of five- and six-rings.
-_RING_RULE_SD_HZ = 1.2
+_RING_RULE_SD_HZ = 1.1
 _CONFORMER_DOUBT = 0.25
 #: Force fields flatten rings of polyols; what the coupling of two axial protons
 #: between oxygens lacks by that in rigid sugars (glucose, inositol).
