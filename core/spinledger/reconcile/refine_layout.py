@@ -68,12 +68,15 @@ class Ground:
     frequency_mhz : float, MHz
     line_width_hz : float, Hz
         Typical width of the measured lines.
+    absent : frozenset of int
+        Claims that show no lines; exchangeable ones do not couple either.
     """
 
     start_shifts_hz: Floats
     fixed: Fixed
     frequency_mhz: float
     line_width_hz: float
+    absent: frozenset[int] = frozenset()
 
 
 def make_layout(
@@ -82,9 +85,14 @@ def make_layout(
     """Parameter vector for the claims and couplings that a plan draws."""
     claims = network.claims
     drawn = np.array(plan.drawn_claims, dtype=np.int64)
-    moving = np.array(plan.moving_claims, dtype=np.int64)
+    moving_claims, used_couplings = plan.moving_claims, plan.couplings
+    if plan.is_cut:
+        # Cuts follow the shifts: what one plan leaves out, the next may need, and
+        # one vector has to serve all stages.
+        moving_claims, used_couplings = _all_in_play(claims, ground.absent)
+    moving = np.array(moving_claims, dtype=np.int64)
     couplings = np.array(
-        [k for k in plan.couplings if k not in ground.fixed.couplings_hz],
+        [k for k in used_couplings if k not in ground.fixed.couplings_hz],
         dtype=np.int64,
     )
     shifts = [_shift_bounds(claims, int(k), ground) for k in moving]
@@ -118,6 +126,21 @@ def make_layout(
         high=table[:, 3],
         step_limits=table[:, 4],
     )
+
+
+def _all_in_play(
+    claims: ClaimSet, absent: frozenset[int]
+) -> tuple[tuple[int, ...], tuple[int, ...]]:
+    """Claims and couplings that could change some line, whatever the plan."""
+    gone = {k for k in absent if claims.claims[k].is_exchangeable}
+    owners = [particle.claim for particle in claims.particles]
+    moving = sorted({k for k in owners if k is not None and k not in gone})
+    couplings = [
+        index
+        for index, coupling in enumerate(claims.couplings)
+        if any(gone.isdisjoint({owners[a], owners[b]}) for a, b in coupling.pairs)
+    ]
+    return tuple(moving), tuple(couplings)
 
 
 _Row = tuple[float, float, float, float, float]

@@ -126,6 +126,7 @@ class Run:
                 fixed=self.fixed,
                 frequency_mhz=self.prepared.frequency_mhz,
                 line_width_hz=self.prepared.line_width_hz,
+                absent=self.start.absent,
             ),
             fits_gauss_share=fits_gauss_share,
         )

@@ -33,7 +33,7 @@ STANDARDS = {
 IMPURITY_TOLERANCE_PPM = 0.03
 SMALLEST_STRAY_PROTONS = 0.04
 UNOWNED_SHARE = 0.4
-SINGLET_REACH_HZ = 25.0
+SINGLET_REACH_HZ = 6.0
 # CH against (CH3)3 in one molecule.
 AREA_RATIO = 9.0
 # Half of 1J(C,H) from CH3 (125 Hz) to heteroarenes (200 Hz), from memory.
@@ -112,13 +112,18 @@ def _solvent_skeletons(solvent: str | None) -> set[str]:
 
 @dataclass(frozen=True, slots=True, kw_only=True)
 class Unowned:
-    """A stretch whose measured area no claim explains, with its centroid."""
+    """A stretch whose measured area no claim explains, with its centroid.
+
+    ``reach_hz`` is the span over which it stands above a quarter of its top: a
+    few Hz for one line, the distance of the outer strong lines for a multiplet.
+    """
 
     low_ppm: float
     high_ppm: float
     centre_ppm: float
     area: float
     share: float
+    reach_hz: float
 
 
 def unowned_stretches(
@@ -151,9 +156,16 @@ def unowned_stretches(
                 centre_ppm=spectrum.first_point_ppm - spectrum.step_ppm * middle,
                 area=area,
                 share=share,
+                reach_hz=_reach_points(positive[inside]) * spectrum.step_hz,
             )
         )
     return tuple(found)
+
+
+def _reach_points(heights: npt.NDArray[np.float64]) -> int:
+    """Points from the first to the last above a quarter of the top."""
+    above = np.flatnonzero(heights > 0.25 * heights.max())
+    return int(above[-1] - above[0])
 
 
 def book_strays(
@@ -271,17 +283,13 @@ def _hits(
     evidence: Evidence, unowned: Sequence[Unowned], lines: list[ImpurityLine]
 ) -> dict[int, float]:
     """Unowned stretches of a compound with their gaps; none if a line lacks."""
-    frequency = evidence.spectrum.spectrometer_frequency_mhz
     hits: dict[int, float] = {}
     for line in lines:
         near = [
             (abs(one.centre_ppm - line.shift_ppm), number)
             for number, one in enumerate(unowned)
             if abs(one.centre_ppm - line.shift_ppm) <= IMPURITY_TOLERANCE_PPM
-            and (
-                line.multiplicity != "s"
-                or (one.high_ppm - one.low_ppm) * frequency <= SINGLET_REACH_HZ
-            )
+            and (line.multiplicity != "s" or one.reach_hz <= SINGLET_REACH_HZ)
         ]
         if near:
             gap, number = min(near)
