@@ -48,6 +48,7 @@ def unowned(centre: float, area: float, half_width: float = 0.01) -> Unowned:
         centre_ppm=centre,
         area=area,
         share=1.0,
+        reach_hz=800.0 * max(half_width - 0.0075, 0.0),
     )
 
 
