@@ -39,7 +39,24 @@ FEATURES = (
     "unexplained",
     "coincidence",
 )
-RIDGE = 0.02
+# Where the data say little a weight stays near these. A worst residual is a
+# negative log likelihood, of which half is believed since residuals have heavier
+# tails than a Gaussian; means are shared with them.
+PRIOR_WEIGHTS = {
+    "misfit": 1.0,
+    "worst_misfit": 1.0,
+    "shift": 0.3,
+    "worst_shift": 0.4,
+    "rigid_coupling": 0.3,
+    "worst_rigid_coupling": 0.4,
+    "soft_coupling": 0.2,
+    "amplitude": 0.3,
+    "width": 0.3,
+    "open": 5.0,
+    "unexplained": 3.0,
+    "coincidence": 0.5,
+}
+RIDGE = 0.05
 # Of the weight of all wrong structures; the rest are wrong isomers.
 CROSS_WEIGHT = 0.25
 # A wrong structure accepted costs this many times a right one refused.
@@ -133,6 +150,7 @@ def fit(features: FloatArray, is_right: BoolArray, weights: FloatArray) -> Float
     """Intercept and weights (>= 0) of the logistic model."""
     scale = np.maximum(features.std(axis=0), 1e-6)
     z = features / scale
+    centre = np.array([PRIOR_WEIGHTS[name] for name in FEATURES]) * scale
     n = z.shape[1]
 
     def loss(parameters: FloatArray) -> tuple[float, FloatArray]:
@@ -142,8 +160,9 @@ def fit(features: FloatArray, is_right: BoolArray, weights: FloatArray) -> Float
         value = float((weights * np.logaddexp(0.0, -margins)).sum())
         slope = -weights * signs / (1.0 + np.exp(np.clip(margins, -500, 500)))
         gradient = np.concatenate([[slope.sum()], -(z.T @ slope)])
-        value += 0.5 * RIDGE * float(parameters[1:] @ parameters[1:])
-        gradient[1:] += RIDGE * parameters[1:]
+        off = parameters[1:] - centre
+        value += 0.5 * RIDGE * float(off @ off)
+        gradient[1:] += RIDGE * off
         return value, gradient
 
     start = np.concatenate([[2.0], np.full(n, 0.3)])
