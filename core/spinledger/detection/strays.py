@@ -39,6 +39,8 @@ _ENVELOPE_HZ = 5.0
 _REMNANT_SD = 6.0
 _WATER_NEAREST_HZ = 15.0
 _WATER_SMOOTHING_HZ = 2.0
+# Lines closer than this may be one line in a poor shim.
+_SHIM_REACH_HZ = 2.6
 _FOOT_SD = 10.0
 _CHAIN_SHARE = 2 / 9
 _CHAIN_RANGE = (0.4, 2.2)
@@ -133,7 +135,7 @@ def _water(signals: tuple[Signal, ...], facts: StrayFacts) -> list[Stray]:
         top = (
             _aqueous_top(signals, water, facts)
             if is_aqueous(solvent)
-            else _lone_top(signals, water)
+            else _lone_top(signals, water, facts.spectrum)
         )
         if top is None:
             continue
@@ -178,12 +180,24 @@ def _tallest_at_carrier(facts: StrayFacts, carrier_ppm: float) -> float | None:
     return float(spectrum.first_point_ppm - spectrum.step_ppm * (window.start + top))
 
 
-def _lone_top(signals: tuple[Signal, ...], water: WaterLine) -> float | None:
-    """The largest one-line signal near the place of water in an organic solvent."""
+def _lone_top(
+    signals: tuple[Signal, ...], water: WaterLine, spectrum: Spectrum
+) -> float | None:
+    """The largest one-line signal near the place of water in an organic solvent.
+
+    A poor shim gives one line several maxima: lines closer than that count as one.
+    """
     near = []
     for signal in signals:
         largest = max(signal.lines, key=lambda line: line.area)
-        lone = largest.area > _LONE_SHARE * sum(line.area for line in signal.lines)
+        reach_hz = max(_SHIM_REACH_HZ, largest.width_hz)
+        reach_ppm = reach_hz / spectrum.spectrometer_frequency_mhz
+        together = sum(
+            line.area
+            for line in signal.lines
+            if abs(line.shift_ppm - largest.shift_ppm) <= reach_ppm
+        )
+        lone = together > _LONE_SHARE * sum(line.area for line in signal.lines)
         close = abs(largest.shift_ppm - water.shift_ppm) < _WATER_TOLERANCE_PPM
         if lone and close:
             near.append(largest)
