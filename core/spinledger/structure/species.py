@@ -10,7 +10,7 @@ from rdkit import Chem
 
 from spinledger.processing.solvents import is_aqueous
 from spinledger.structure.acidity import as_salt, at_ph
-from spinledger.structure.sugars import anomers
+from spinledger.structure.sugars import sugar_forms
 
 # Share of the hydrate in water at room temperature (from memory): pattern
 # starts at the carbonyl carbon; mean share and its sd.
@@ -106,13 +106,13 @@ def _forms_ions(mol: Chem.Mol, solvent: str | None) -> bool:
 
 
 def _mixture(drawn: Species, notes: list[str]) -> Iterator[Species]:
-    pair = anomers(drawn.mol)
-    if pair is not None:
+    forms = sugar_forms(drawn.mol)
+    if forms:
         notes.append(
-            "A free sugar is a mixture of two anomers in water; both are claimed, "
-            "in a proportion that the spectrum decides."
+            f"A free sugar is a mixture in water; {len(forms)} forms (anomers, ring "
+            "sizes) are claimed, in a proportion that the spectrum decides."
         )
-        for form in pair:
+        for form in forms:
             yield Species(
                 mol=form.mol,
                 name=form.name,
