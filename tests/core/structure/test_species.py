@@ -187,3 +187,21 @@ def test_pyruvate_offers_its_hydrate() -> None:
 def test_ketone_and_aromatic_aldehyde_have_no_hydrate() -> None:
     for smiles in ("CC(C)=O", "O=Cc1ccccc1"):
         assert len(solution(smiles, "D2O").species) == 1
+
+
+def test_acetylacetone_is_mostly_enol_in_chloroform_and_keto_in_water() -> None:
+    """80-85 % enol in CDCl3, 15-20 % in water (textbook)."""
+    for drawn in ("CC(=O)CC(C)=O", "CC(O)=CC(C)=O"):
+        organic = solution(drawn, "CDCl3").species
+        shares = {s.name: s.share for s in organic}
+        assert shares["enol form"] == pytest.approx(0.82, abs=0.05)
+        assert shares["keto form"] == pytest.approx(0.18, abs=0.05)
+        assert Chem.MolToSmiles(organic[0].mol) == canonical(drawn)
+        water = {s.name: s.share for s in solution(drawn, "D2O").species}
+        assert water["enol form"] < 0.25
+
+
+def test_keto_ester_is_claimed_as_keto_with_a_note() -> None:
+    found = solution("CCOC(=O)CC(C)=O", "CDCl3")
+    assert len(found.species) == 1
+    assert any("enol" in note for note in found.notes)
