@@ -18,7 +18,7 @@ from spinledger.spins.clusters import (
 )
 from spinledger.spins.condense import condense_row, join
 from spinledger.spins.engine import EngineLines, SpinEngine
-from spinledger.spins.merging import Bond, Site, SpinPart, separate_parts
+from spinledger.spins.merging import Bond, SpinPart, separate_parts
 from spinledger.values.claim import ClaimSet
 
 Floats = npt.NDArray[np.float64]
@@ -404,11 +404,14 @@ def _make_piece(
             for k in cluster.members
         ),
         pairs=tuple((place[bond.first], place[bond.second]) for bond in bonds),
-        detected=_rows_of_sites(sites, seen, rows, cluster=cluster),
+        detected=tuple(
+            rows.index(site.claim) if s and site.claim is not None else -1
+            for site, s in zip(sites, seen, strict=True)
+        ),
     )
     protons = [0.0] * len(rows)
     for site, row in zip(sites, topology.detected, strict=True):
-        if 0 <= row < len(rows):
+        if row >= 0:
             protons[row] += site.n_spins
     return _Piece(
         engine=SpinEngine(topology),
@@ -418,26 +421,6 @@ def _make_piece(
         row_protons=tuple(protons),
         count=part.count,
     )
-
-
-def _rows_of_sites(
-    sites: list[Site], seen: list[bool], rows: list[int], *, cluster: Cluster
-) -> tuple[int, ...]:
-    """Row of every site; protons that are not reported share one more row.
-
-    The intensity of a line is T_row T_total, and the total is that of all
-    protons, reported here or not. Sites that do not flip have no line in common
-    with the others.
-    """
-    found = []
-    for number, site, is_seen in zip(cluster.members, sites, seen, strict=True):
-        if site.claim is None or (number in cluster.weak and not is_seen):
-            found.append(-1)
-        elif is_seen:
-            found.append(rows.index(site.claim))
-        else:
-            found.append(len(rows))
-    return tuple(found)
 
 
 def _shows(bond: Bond, cluster: Cluster) -> bool:
