@@ -30,8 +30,8 @@ from spinledger.io.read import read_acquired
 from spinledger.reconcile.evaluate import Bench, Evaluation, evaluate, lay_out
 from spinledger.reconcile.options import ReconcileOptions
 from spinledger.reconcile.ranking import limits_of
-from spinledger.report.json_ledger import ledger_to_json
 from spinledger.reconcile.run import ledger_of
+from spinledger.report.json_ledger import ledger_to_json
 from spinledger.structure.read import read_structure
 from spinledger.values.evidence import Evidence
 

@@ -177,6 +177,11 @@ def _notes(
         notes.append(
             "A metal that may be paramagnetic is drawn; its shifts cannot be foretold."
         )
+    if any(a.GetTotalNumHs() == 4 and a.GetFormalCharge() for a in drawn.GetAtoms()):
+        notes.append(
+            "NH4+ is a 1:1:1 triplet of 51 Hz by nitrogen-14 where it exchanges slowly; "
+            "one line is claimed."
+        )
     if any(a.GetIsotope() in (2, 3) for a in drawn.GetAtoms()):
         notes.append("Deuterium shows no 1H signal, and couplings to it are left out.")
     return tuple(notes)

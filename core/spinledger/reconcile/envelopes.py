@@ -10,7 +10,8 @@ from dataclasses import dataclass
 
 import numpy as np
 
-from spinledger.reconcile.assess import expected_protons, spectrum_misfit
+from spinledger.reconcile.assess import expected_protons
+from spinledger.reconcile.misfit import spectrum_misfit
 from spinledger.reconcile.options import Constraints
 from spinledger.reconcile.solve import Solution
 from spinledger.reconcile.windows import boxcar, points_of_hz

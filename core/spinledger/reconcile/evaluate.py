@@ -9,12 +9,13 @@ import numpy as np
 
 from spinledger.prediction.claims import make_claims
 from spinledger.processing.solvents import is_aqueous
-from spinledger.reconcile.assess import Assessment, assess, spectrum_misfit
+from spinledger.reconcile.assess import Assessment, assess
 from spinledger.reconcile.coarse import CoarseSpectrum, coarse_spectrum
 from spinledger.reconcile.companions import given_strays
 from spinledger.reconcile.entries import Booking, book_entries
 from spinledger.reconcile.judge import VerdictModel, load_model, logit_of, state_of
 from spinledger.reconcile.match import masked_by_hand
+from spinledger.reconcile.misfit import spectrum_misfit
 from spinledger.reconcile.mixture import joined
 from spinledger.reconcile.options import ReconcileOptions
 from spinledger.reconcile.solve import Limits, Solution, solve

@@ -11,10 +11,10 @@ from dataclasses import dataclass, replace
 import numpy as np
 
 from spinledger.reconcile.assess import COUPLING_EXTRA_SD_HZ, SHIFT_EXTRA_SD_PPM
-from spinledger.reconcile.beam import shift_cost
 from spinledger.reconcile.coarse import BoolArray, FloatArray
 from spinledger.reconcile.options import Constraints
 from spinledger.reconcile.refine_values import Refinement
+from spinledger.reconcile.search import shift_cost
 from spinledger.values.claim import ClaimSet
 
 SURE_ODDS = 0.95

@@ -10,13 +10,7 @@ from dataclasses import dataclass
 
 import numpy as np
 
-from spinledger.reconcile.beam import (
-    BeamSettings,
-    Placement,
-    Search,
-    prepare_search,
-    run_beam,
-)
+from spinledger.reconcile.beam import BeamSettings, Placement, run_beam
 from spinledger.reconcile.coarse import (
     CoarseSpectrum,
     FloatArray,
@@ -24,6 +18,7 @@ from spinledger.reconcile.coarse import (
     first_order_sticks,
 )
 from spinledger.reconcile.options import Constraints
+from spinledger.reconcile.search import Search, prepare_search
 from spinledger.values.arrays import locked_floats
 from spinledger.values.claim import ClaimSet
 from spinledger.values.evidence import Evidence

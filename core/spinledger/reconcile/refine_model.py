@@ -172,7 +172,7 @@ def evaluate(problem: Problem, parameters: Floats) -> Evaluation:
         layout.shifts_hz(parameters, problem.start_shifts_hz),
         layout.couplings_hz(parameters, problem.start_couplings_hz),
         derivatives=True,
-        intensity_derivatives=problem.exact_slopes,
+        intensity_derivatives="shared" if problem.exact_slopes else False,
         plan=problem.plan,
     )
     shape = _shape_at(problem, parameters)

@@ -61,7 +61,7 @@ def make_refinement(outcome: Outcome) -> Refinement:
     frequency_mhz = outcome.prepared.frequency_mhz
     claims = outcome.claims
     n_claims, n_couplings = len(claims.claims), len(claims.couplings)
-    covariance = np.linalg.inv(evaluation.hessian)
+    covariance: Floats = np.asarray(np.linalg.inv(evaluation.hessian), np.float64)
     sds = np.sqrt(np.diag(covariance))
     n_shifts = layout.shift_claims.size
     shift_sds = np.full(n_claims, np.nan)

@@ -12,7 +12,6 @@ from dataclasses import dataclass, replace
 import numpy as np
 
 from spinledger.reconcile.assess import Assessment, assess
-from spinledger.reconcile.beam import shift_cost
 from spinledger.reconcile.coarse import CoarseSpectrum, FloatArray
 from spinledger.reconcile.exchange import Odds, best_order, like_pairs
 from spinledger.reconcile.match import (
@@ -29,6 +28,7 @@ from spinledger.reconcile.refine_values import (
     Stage,
     Start,
 )
+from spinledger.reconcile.search import shift_cost
 from spinledger.spins.clusters import QUICK_EFFORT
 from spinledger.spins.network import ClaimNetwork
 from spinledger.values.claim import Claim, ClaimSet

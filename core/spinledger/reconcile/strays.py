@@ -17,7 +17,7 @@ from spinledger.processing.solvents import (
     impurity_lines,
     residual_lines,
 )
-from spinledger.reconcile.assess import SpectrumMisfit
+from spinledger.reconcile.misfit import SpectrumMisfit
 from spinledger.reconcile.options import Constraints
 from spinledger.reconcile.windows import points_of_hz, stretches
 from spinledger.structure.read import molecule

@@ -210,6 +210,12 @@ def _visibility(kind: str, solvent: str | None) -> tuple[Visibility, str]:
             "A carboxylic acid proton may be too broad to be seen; "
             "its absence is no evidence.",
         )
+    if kind in ("alcohol", "hemiacetal") and solvent != "DMSO-d6":
+        return (
+            "optional",
+            f"This proton ({kind}) exchanges; it may be broad or sharp, and its "
+            "coupling to the next CH, which is left out, may show.",
+        )
     return (
         "optional",
         f"This proton ({kind}) exchanges: broad or sharp, anywhere in a wide range.",

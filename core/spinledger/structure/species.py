@@ -1,4 +1,4 @@
-"""What is in solution: ions, anomers and hydrates of the drawn structure."""
+"""What is in solution: ions, anomers, hydrates and enols of the drawn structure."""
 
 from __future__ import annotations
 
@@ -10,7 +10,8 @@ from rdkit import Chem
 
 from spinledger.processing.solvents import is_aqueous
 from spinledger.structure.acidity import as_salt, at_ph
-from spinledger.structure.sugars import anomers
+from spinledger.structure.sugars import sugar_forms
+from spinledger.structure.tautomers import has_minor_enol, keto_enol_forms
 
 # Share of the hydrate in water at room temperature (from memory): pattern
 # starts at the carbonyl carbon; mean share and its sd.
@@ -77,8 +78,9 @@ def in_solution(
 
     Notes
     -----
-    In water: ions by pH; a free sugar as its two anomers; alpha-keto acids and
-    aldehydes with their hydrates. Elsewhere the drawing is taken, but acids
+    In water: ions by pH; a free sugar as its anomers and ring sizes; alpha-keto
+    acids and aldehydes with their hydrates. 1,3-diketones with their enols in
+    every solvent. Elsewhere the drawing is taken, but acids
     drawn beside bases form salts, and amino acids in methanol are zwitterions.
     """
     if is_aqueous(solvent):
@@ -94,10 +96,10 @@ def in_solution(
     found = [
         Species(mol=protonation.mol, borderline=protonation.borderline),
     ]
-    if is_aqueous(solvent):
+    mixture = tuple(_tautomers(found[0], solvent, notes))
+    if not mixture and is_aqueous(solvent):
         mixture = tuple(_mixture(found[0], notes))
-        return Solution(species=mixture or tuple(found), notes=tuple(notes))
-    return Solution(species=tuple(found), notes=tuple(notes))
+    return Solution(species=mixture or tuple(found), notes=tuple(notes))
 
 
 def _forms_ions(mol: Chem.Mol, solvent: str | None) -> bool:
@@ -105,14 +107,37 @@ def _forms_ions(mol: Chem.Mol, solvent: str | None) -> bool:
     return solvent in ("CD3OD", "TFE-d3") or len(Chem.GetMolFrags(mol)) > 1
 
 
-def _mixture(drawn: Species, notes: list[str]) -> Iterator[Species]:
-    pair = anomers(drawn.mol)
-    if pair is not None:
+def _tautomers(
+    drawn: Species, solvent: str | None, notes: list[str]
+) -> Iterator[Species]:
+    forms = keto_enol_forms(drawn.mol, solvent)
+    if forms:
         notes.append(
-            "A free sugar is a mixture of two anomers in water; both are claimed, "
-            "in a proportion that the spectrum decides."
+            "A 1,3-diketone is a mixture of keto and enol form; both are claimed, in a "
+            "proportion that the spectrum decides."
         )
-        for form in pair:
+    elif has_minor_enol(drawn.mol):
+        notes.append(
+            "Some enol (5 to 10 %) may show besides the keto form, which is claimed."
+        )
+    for form in forms:
+        yield Species(
+            mol=form.mol,
+            name=form.name,
+            share=form.share,
+            share_sd=form.share_sd,
+            borderline=drawn.borderline,
+        )
+
+
+def _mixture(drawn: Species, notes: list[str]) -> Iterator[Species]:
+    forms = sugar_forms(drawn.mol)
+    if forms:
+        notes.append(
+            f"A free sugar is a mixture in water; {len(forms)} forms (anomers, ring "
+            "sizes) are claimed, in a proportion that the spectrum decides."
+        )
+        for form in forms:
             yield Species(
                 mol=form.mol,
                 name=form.name,

@@ -6,7 +6,7 @@ from rdkit import Chem
 from spinledger.structure.acidity import at_ph
 from spinledger.structure.read import molecule, read_structure
 from spinledger.structure.species import Solution, in_solution
-from spinledger.structure.sugars import anomers
+from spinledger.structure.sugars import sugar_forms
 
 
 def solution(smiles: str, solvent: str | None, ph: float | None = None) -> Solution:
@@ -106,8 +106,7 @@ def test_drawn_anomer_comes_first() -> None:
 
 def test_mannose_prefers_alpha() -> None:
     """About two thirds alpha (Angyal 1984)."""
-    pair = anomers(molecule(read_structure(ALPHA_MANNOSE)))
-    assert pair is not None
+    pair = sugar_forms(molecule(read_structure(ALPHA_MANNOSE)))
     assert pair[0].name == "alpha"
     assert pair[0].share == pytest.approx(0.67, abs=0.04)
 
@@ -119,10 +118,48 @@ def test_mannose_prefers_alpha() -> None:
         "CO[C@@H]1O[C@H](CO)[C@@H](O)[C@H](O)[C@H]1O",  # methyl glucoside
         "O[C@H]1[C@H](O)[C@@H](O)[C@H](O)[C@@H](O)[C@H]1O",  # inositol
         "OC1CCCO1",
+        "OC[C@H]1O[C@H](OC[C@H]2O[C@@](CO)(O[C@H]3O[C@H](CO)[C@@H](O)[C@H](O)[C@H]3O)"
+        "[C@@H](O)[C@@H]2O)[C@H](O)[C@@H](O)[C@@H]1O",  # raffinose, not reducing
     ],
 )
 def test_others_have_no_anomers(smiles: str) -> None:
-    assert anomers(molecule(read_structure(smiles))) is None
+    assert sugar_forms(molecule(read_structure(smiles))) == ()
+
+
+FRUCTOPYRANOSE = "OC[C@@]1(O)OC[C@@H](O)[C@@H](O)[C@@H]1O"
+FRUCTOFURANOSE = "OC[C@H]1O[C@](O)(CO)[C@@H](O)[C@@H]1O"
+
+
+def test_fructose_changes_its_ring_size() -> None:
+    """About 70 % beta-pyranose, 25 % beta-furanose in water (Angyal 1984)."""
+    forms = sugar_forms(molecule(read_structure(FRUCTOPYRANOSE)))
+    found = {Chem.MolToSmiles(form.mol): form.share for form in forms}
+    assert found[canonical(FRUCTOPYRANOSE)] == pytest.approx(0.70, abs=0.05)
+    assert found[canonical(FRUCTOFURANOSE)] == pytest.approx(0.25, abs=0.05)
+
+
+def test_drawn_furanose_comes_first_though_it_is_the_minor_form() -> None:
+    forms = sugar_forms(molecule(read_structure(FRUCTOFURANOSE)))
+    assert Chem.MolToSmiles(forms[0].mol) == canonical(FRUCTOFURANOSE)
+    assert forms[0].share < forms[1].share
+
+
+def test_open_chain_sugar_closes_to_the_same_forms() -> None:
+    open_chain = sugar_forms(
+        molecule(read_structure("O=C[C@H](O)[C@@H](O)[C@H](O)[C@H](O)CO"))
+    )
+    ring = sugar_forms(molecule(read_structure(BETA_GLUCOSE)))
+    assert {Chem.MolToSmiles(f.mol) for f in open_chain} == {
+        Chem.MolToSmiles(f.mol) for f in ring
+    }
+
+
+def test_reducing_disaccharide_has_two_anomers() -> None:
+    lactose = (
+        "OC[C@H]1O[C@@H](O[C@H]2[C@H](O)[C@@H](O)C(O)O[C@@H]2CO)"
+        "[C@H](O)[C@@H](O)[C@H]1O"
+    )
+    assert len(sugar_forms(molecule(read_structure(lactose)))) == 2
 
 
 def test_glucose_is_one_species_in_dmso() -> None:
@@ -150,3 +187,21 @@ def test_pyruvate_offers_its_hydrate() -> None:
 def test_ketone_and_aromatic_aldehyde_have_no_hydrate() -> None:
     for smiles in ("CC(C)=O", "O=Cc1ccccc1"):
         assert len(solution(smiles, "D2O").species) == 1
+
+
+def test_acetylacetone_is_mostly_enol_in_chloroform_and_keto_in_water() -> None:
+    """80-85 % enol in CDCl3, 15-20 % in water (textbook)."""
+    for drawn in ("CC(=O)CC(C)=O", "CC(O)=CC(C)=O"):
+        organic = solution(drawn, "CDCl3").species
+        shares = {s.name: s.share for s in organic}
+        assert shares["enol form"] == pytest.approx(0.82, abs=0.05)
+        assert shares["keto form"] == pytest.approx(0.18, abs=0.05)
+        assert Chem.MolToSmiles(organic[0].mol) == canonical(drawn)
+        water = {s.name: s.share for s in solution(drawn, "D2O").species}
+        assert water["enol form"] < 0.25
+
+
+def test_keto_ester_is_claimed_as_keto_with_a_note() -> None:
+    found = solution("CCOC(=O)CC(C)=O", "CDCl3")
+    assert len(found.species) == 1
+    assert any("enol" in note for note in found.notes)
