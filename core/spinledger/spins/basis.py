@@ -13,6 +13,7 @@ from math import comb, prod
 
 import numpy as np
 import numpy.typing as npt
+import scipy.sparse
 
 Floats = npt.NDArray[np.float64]
 Integers = npt.NDArray[np.int64]
@@ -66,6 +67,8 @@ class BlockStack:
     off_coefficients : numpy.ndarray, shape (n_off,)
     off_starts, off_targets : numpy.ndarray of int
         Where each run of one (block, pair) begins, and block * n_pairs + pair.
+    change : scipy.sparse.csr_array, shape (n_blocks * size * n_parameters, n_blocks * size)
+        dH/dp of all parameters, rows ordered by block, row, parameter.
     """
 
     size: int
@@ -77,6 +80,7 @@ class BlockStack:
     off_coefficients: Floats
     off_starts: Integers
     off_targets: Integers
+    change: scipy.sparse.csr_array
 
 
 @dataclass(frozen=True, slots=True, eq=False, kw_only=True)
@@ -96,6 +100,9 @@ class TransitionStack:
         Its matrix element, 0 where there is none.
     weights : numpy.ndarray, shape (n,)
         Multiplicity over the normalisation: sums become protons.
+    ladders : tuple of tuple of Ladder
+        Lowering operator of every link and row; empty where blocks are small
+        and it is faster to do all in one call.
     """
 
     upper: int
@@ -105,6 +112,22 @@ class TransitionStack:
     targets: Integers
     coefficients: Floats
     weights: Floats
+    ladders: tuple[tuple[Ladder, ...], ...]
+
+
+@dataclass(frozen=True, slots=True, eq=False)
+class Ladder:
+    """A row's lowering operator between two blocks, its empty rows left out.
+
+    Attributes
+    ----------
+    used : numpy.ndarray of int, shape (n_used,)
+        Rows of the upper block that it leads from.
+    operator : scipy.sparse.csr_array, shape (n_used, rows of the flat stack)
+    """
+
+    used: Integers
+    operator: scipy.sparse.csr_array
 
 
 @dataclass(frozen=True, slots=True, eq=False, kw_only=True)
@@ -163,6 +186,11 @@ class _Layout:
     starts: tuple[int, ...]
 
 
+# Blocks from this size on are multiplied row by row, smaller ones in one call
+# (measured).
+_LADDER_SIZE = 48
+
+
 def spin_content(n_spins: int) -> tuple[tuple[int, int], ...]:
     """Total spins of n equivalent spins one half: (2 S, how often it occurs)."""
     return tuple(
@@ -186,8 +214,9 @@ def index_structure(topology: Topology) -> IndexStructure:
     base = row_position[off.first] - layout.row[off.first] * size[off.first]
     m = states.twice_m / 2.0
     pairs = np.array(topology.pairs, dtype=np.int64).reshape(-1, 2)
+    diagonal = np.hstack([m, m[:, pairs[:, 0]] * m[:, pairs[:, 1]]])
     return IndexStructure(
-        diagonal=np.hstack([m, m[:, pairs[:, 0]] * m[:, pairs[:, 1]]]),
+        diagonal=diagonal,
         diagonal_positions=row_position + layout.row,
         off_positions=base + low * size[off.first] + high,
         off_pairs=off.pair,
@@ -196,7 +225,7 @@ def index_structure(topology: Topology) -> IndexStructure:
             sum(c * n * n for c, n in zip(layout.counts, layout.sizes, strict=True))
         ),
         n_particles=len(topology.n_spins),
-        blocks=_block_stacks(layout, off, len(topology.pairs)),
+        blocks=_block_stacks(layout, off, diagonal, n_particles=len(topology.n_spins)),
         transitions=_transition_stacks(states, layout, topology),
         row_starts=_row_starts(topology),
     )
@@ -307,8 +336,9 @@ def _off_diagonal(states: _States, topology: Topology) -> _OffDiagonal:
 
 
 def _block_stacks(
-    layout: _Layout, off: _OffDiagonal, n_pairs: int
+    layout: _Layout, off: _OffDiagonal, diagonal: Floats, *, n_particles: int
 ) -> tuple[BlockStack, ...]:
+    n_pairs = diagonal.shape[1] - n_particles
     stacks = []
     for index, (size, count) in enumerate(
         zip(layout.sizes, layout.counts, strict=True)
@@ -322,20 +352,50 @@ def _block_stacks(
         mine, target = mine[order], target[order]
         runs = np.flatnonzero(np.diff(target, prepend=-1))
         rows = layout.block * size + layout.row
+        first, second = rows[off.first[mine]], rows[off.second[mine]]
         stacks.append(
             BlockStack(
                 size=size,
                 n_blocks=count,
                 states=table,
                 start=layout.starts[index],
-                off_rows=rows[off.first[mine]],
-                off_columns=rows[off.second[mine]],
+                off_rows=first,
+                off_columns=second,
                 off_coefficients=off.coefficient[mine],
                 off_starts=runs,
                 off_targets=target[runs],
+                change=_change(
+                    diagonal[table.ravel()],
+                    _OffDiagonal(
+                        first,
+                        second,
+                        n_particles + off.pair[mine],
+                        off.coefficient[mine],
+                    ),
+                ),
             )
         )
     return tuple(stacks)
+
+
+def _change(diagonal: Floats, off: _OffDiagonal) -> scipy.sparse.csr_array:
+    """dH/dp of all parameters as one sparse operator on a flat stack of vectors."""
+    n_rows, n_parameters = diagonal.shape
+    straight = np.arange(n_rows * n_parameters)
+    places = np.concatenate(
+        [
+            straight,
+            off.first * n_parameters + off.pair,
+            off.second * n_parameters + off.pair,
+        ]
+    )
+    columns = np.concatenate([straight // n_parameters, off.second, off.first])
+    values = np.concatenate([diagonal.ravel(), off.coefficient, off.coefficient])
+    values = values.astype(np.float32)
+    shape = (n_rows * n_parameters, n_rows)
+    return scipy.sparse.csr_array(
+        scipy.sparse.coo_array((values, (places, columns)), shape=shape)
+    )
 
 
 def _detected_order(topology: Topology) -> list[int]:
@@ -379,9 +439,45 @@ def _transition_stacks(
                 targets=np.stack([t for t, _, _ in tables]),
                 coefficients=np.stack([c for _, c, _ in tables]),
                 weights=states.multiplicity[states.combination[first]] / norm,
+                ladders=_ladders(layout, topology, (upper, lower), tables=tables),
             )
         )
     return tuple(stacks)
+
+
+def _ladders(
+    layout: _Layout,
+    topology: Topology,
+    stacks: tuple[int, int],
+    *,
+    tables: list[tuple[Integers, Floats, Integers]],
+) -> tuple[tuple[Ladder, ...], ...]:
+    upper, lower = stacks
+    size = layout.sizes[upper]
+    if size < _LADDER_SIZE:
+        return ()
+    n_flat = layout.counts[lower] * layout.sizes[lower]
+    starts = _row_starts(topology).tolist()
+    ends = [*starts[1:], len(_detected_order(topology))]
+    found = []
+    for targets, coefficients, _ in tables:
+        found.append(
+            tuple(
+                _ladder(targets[begin:end], coefficients[begin:end], n_flat)
+                for begin, end in zip(starts, ends, strict=True)
+            )
+        )
+    return tuple(found)
+
+
+def _ladder(targets: Integers, coefficients: Floats, n_flat: int) -> Ladder:
+    particle, row = np.nonzero(coefficients)
+    used, place = np.unique(row, return_inverse=True)
+    operator = scipy.sparse.coo_array(
+        (coefficients[particle, row], (place, targets[particle, row])),
+        shape=(used.size, n_flat),
+    )
+    return Ladder(used, scipy.sparse.csr_array(operator))
 
 
 _Link = tuple[int, int, int, int]

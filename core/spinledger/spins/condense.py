@@ -64,8 +64,9 @@ def condense_row(
     d_frequency = d_protons = None
     if lines.d_frequencies is not None:
         moved = (lines.d_frequencies[:, kept] * size).T
-        if lines.d_intensities is not None:
-            changes = lines.d_intensities[:, row, kept].T
+        changed = lines.row_changes(row, kept)
+        if changed is not None:
+            changes = changed.T
             offset = frequencies - np.repeat(
                 centres, np.diff(starts, append=frequencies.size)
             )

@@ -6,6 +6,8 @@ intensities by the first-order change of the states.
 
 from __future__ import annotations
 
+from collections.abc import Iterator
+
 import numpy as np
 import numpy.typing as npt
 
@@ -13,10 +15,12 @@ from spinledger.spins.basis import BlockStack, IndexStructure, TransitionStack
 from spinledger.spins.solution import EigenSystem, Kept, Moments
 
 Floats = npt.NDArray[np.float64]
+Integers = npt.NDArray[np.int64]
+Singles = npt.NDArray[np.float32]
 
 # States closer than this are taken as degenerate and not mixed: any mixture of
 # them has the same lines, and the exact split is far below any line width.
-_DEGENERATE_HZ = 1e-7
+_DEGENERATE_HZ = 1e-6
 
 
 def of_frequencies(
@@ -27,30 +31,60 @@ def of_frequencies(
         _energy_slopes(index, stack, vectors)
         for stack, vectors in zip(index.blocks, eigen.vectors, strict=True)
     ]
-    parts = []
+    out = np.empty((index.diagonal.shape[1], sum(lines.flat.size for lines in kept)))
+    begin = 0
     for stack, lines in zip(index.transitions, kept, strict=True):
-        above = slopes[stack.upper][stack.upper_blocks]
-        below = slopes[stack.lower][stack.lower_blocks]
-        parts.append(
-            above[lines.link, :, lines.upper].T - below[lines.link, :, lines.lower].T
-        )
-    return np.concatenate(parts, axis=1)
+        part = out[:, begin : begin + lines.flat.size]
+        _differences(stack, lines, slopes[stack.upper], slopes[stack.lower], out=part)
+        begin += lines.flat.size
+    return out
+
+
+def _differences(
+    stack: TransitionStack, lines: Kept, above: Floats, below: Floats, *, out: Floats
+) -> None:
+    """Slope of the upper state minus that of the lower one, for kept lines."""
+    n_links, n_upper, n_lower = lines.shape
+    n_each = n_upper * n_lower
+    if lines.flat.size == n_links * n_each:
+        for link in range(n_links):
+            a, b = int(stack.upper_blocks[link]), int(stack.lower_blocks[link])
+            part = out[:, link * n_each : (link + 1) * n_each]
+            np.subtract(
+                above[:, a * n_upper : (a + 1) * n_upper, None],
+                below[:, None, b * n_lower : (b + 1) * n_lower],
+                out=_as_table(part, n_upper),
+            )
+        return
+    link_of, upper, lower = lines.indices()
+    out[:] = above.take(stack.upper_blocks[link_of] * n_upper + upper, axis=1)
+    out -= below.take(stack.lower_blocks[link_of] * n_lower + lower, axis=1)
+
+
+def _as_table(part: Floats, n_upper: int) -> Floats:
+    """View of (n, upper * lower) as (n, upper, lower), without a copy."""
+    n_lower = part.shape[1] // n_upper
+    row, item = part.strides
+    return np.lib.stride_tricks.as_strided(
+        part,
+        (part.shape[0], n_upper, n_lower),
+        (row, n_lower * item, item),
+    )
 
 
 def _energy_slopes(index: IndexStructure, stack: BlockStack, vectors: Floats) -> Floats:
-    """dE/dp of every state, shape (n_blocks, n_parameters, size)."""
+    """dE/dp of every state, shape (n_parameters, n_blocks * size)."""
     diagonal = index.diagonal[stack.states]
     slopes: Floats = diagonal.transpose(0, 2, 1) @ (vectors * vectors)
     if stack.off_starts.size:
-        n_parameters = diagonal.shape[-1]
-        n_pairs = n_parameters - index.n_particles
+        n_pairs = diagonal.shape[-1] - index.n_particles
         flat = vectors.reshape(-1, stack.size)
         products = flat[stack.off_rows] * flat[stack.off_columns]
         products *= 2.0 * stack.off_coefficients[:, None]
         sums = np.add.reduceat(products, stack.off_starts, axis=0)
         block, pair = np.divmod(stack.off_targets, n_pairs)
         slopes[block, index.n_particles + pair] += sums
-    return slopes
+    return slopes.transpose(1, 0, 2).reshape(diagonal.shape[-1], -1)
 
 
 def of_intensities(
@@ -68,83 +102,131 @@ def of_intensities(
     Notes
     -----
     With V = U' (dH/dp) U and X_ab = V_ab / (E_b - E_a), dU = U X, so
-    dT = X_k' T + T X_(k+1) and d(T_row T) = dT_row T + T_row dT.
+    dT = X_k' T + T X_(k+1) and d(T_row T) = dT_row T + T_row dT. Products are
+    taken in single precision, which is right to about 1e-6 of the largest
+    derivative and twice as fast.
     """
-    mixings = [
-        _mixings(index, stack, energies, vectors)
+    mixings = _all_mixings(index, eigen)
+    n_rows = kept[0].intensities.shape[0]
+    shape = (index.diagonal.shape[1], n_rows, sum(lines.flat.size for lines in kept))
+    out = np.empty(shape)
+    begin = 0
+    for stack, moment, lines in zip(index.transitions, moments, kept, strict=True):
+        part = out[:, :, begin : begin + lines.flat.size]
+        _one_stack(stack, moment, lines, mixings=mixings, out=part)
+        begin += lines.flat.size
+    return out
+
+
+def of_moments(
+    index: IndexStructure,
+    eigen: EigenSystem,
+    moments: list[Moments],
+    kept: list[Kept],
+) -> tuple[Floats, Floats]:
+    """Derivatives of the total moments, and what turns them into rows.
+
+    Returns
+    -------
+    numpy.ndarray, shape (n_parameters, n_lines); numpy.ndarray, (n_rows, n_lines)
+        d(T_row T) is given as 2 T_row dT: right in the sum over all rows.
+    """
+    mixings = _all_mixings(index, eigen)
+    n_rows = kept[0].intensities.shape[0]
+    n_lines = sum(lines.flat.size for lines in kept)
+    out = np.empty((index.diagonal.shape[1], n_lines))
+    factors = np.empty((n_rows, n_lines))
+    begin = 0
+    for stack, moment, lines in zip(index.transitions, moments, kept, strict=True):
+        part = slice(begin, begin + lines.flat.size)
+        for link, here, flat in _links(lines):
+            changed = _moment_change(
+                moment.total[link].astype(np.float32),
+                mixings[stack.upper][stack.upper_blocks[link]],
+                mixings[stack.lower][stack.lower_blocks[link]],
+            )
+            out[:, part][:, here] = _picked(changed, flat)
+            for row in range(n_rows):
+                own = moment.rows[link, row].ravel()[flat]
+                factors[row, part][here] = 2.0 * stack.weights[link] * own
+        begin += lines.flat.size
+    return out, factors
+
+
+def _all_mixings(index: IndexStructure, eigen: EigenSystem) -> list[Singles]:
+    return [
+        _mixings(stack, energies, vectors)
         for stack, energies, vectors in zip(
             index.blocks, eigen.energies, eigen.vectors, strict=True
         )
     ]
-    parts = []
-    for stack, moment, lines in zip(index.transitions, moments, kept, strict=True):
-        parts.append(_one_stack(stack, moment, lines, mixings=mixings))
-    return np.concatenate(parts, axis=2)
+
+
+def _links(lines: Kept) -> Iterator[tuple[int, slice, Integers]]:
+    """Every link with kept lines: where they stand, and their places in it."""
+    n_links, upper, lower = lines.shape
+    ends = np.searchsorted(lines.flat, upper * lower * np.arange(n_links + 1))
+    for link in range(n_links):
+        here = slice(int(ends[link]), int(ends[link + 1]))
+        if here.start < here.stop:
+            yield link, here, lines.flat[here] - link * upper * lower
 
 
 def _one_stack(
-    stack: TransitionStack, moment: Moments, lines: Kept, *, mixings: list[Floats]
-) -> Floats:
-    n_parameters = mixings[stack.upper].shape[1]
-    n_rows = moment.rows.shape[1]
-    out = np.empty((n_parameters, n_rows, lines.link.size))
-    for link in range(stack.weights.size):
-        here = np.flatnonzero(lines.link == link)
-        if here.size == 0:
-            continue
+    stack: TransitionStack,
+    moment: Moments,
+    lines: Kept,
+    *,
+    mixings: list[Singles],
+    out: Floats,
+) -> None:
+    n_all = moment.rows.shape[1]
+    for link, here, flat in _links(lines):
         above = mixings[stack.upper][stack.upper_blocks[link]]
         below = mixings[stack.lower][stack.lower_blocks[link]]
-        where = (lines.upper[here], lines.lower[here])
-        total = moment.total[link][where]
-        changes = np.empty((n_parameters, n_rows, here.size))
-        for row in range(n_rows):
-            changes[:, row] = _moment_change(moment.rows[link, row], above, below)[
-                (slice(None), *where)
-            ]
-        of_total = changes.sum(axis=1)
-        own = moment.rows[link][(slice(None), *where)]
-        out[:, :, here] = stack.weights[link] * (
-            changes * total + own * of_total[:, None]
-        )
-    return out
+        rows = moment.rows[link].astype(np.float32)
+        changes = [
+            _picked(_moment_change(rows[row], above, below), flat)
+            for row in range(n_all)
+        ]
+        total = stack.weights[link] * moment.total[link].ravel()[flat]
+        if n_all == 1:
+            np.multiply(changes[0], 2.0 * total, out=out[:, 0, here])
+            continue
+        of_total = sum(changes[1:], start=changes[0])
+        for row in range(out.shape[1]):
+            own = stack.weights[link] * moment.rows[link, row].ravel()[flat]
+            np.multiply(changes[row], total, out=out[:, row, here])
+            out[:, row, here] += of_total * own
 
 
-def _moment_change(moments: Floats, above: Floats, below: Floats) -> Floats:
-    """X_k' T + T X_(k+1) for every parameter; X is antisymmetric, so X' = -X."""
-    n_parameters, size_above, _ = above.shape
-    size_below = below.shape[1]
-    change = (above.reshape(-1, size_above) @ moments).reshape(
-        n_parameters, size_above, size_below
-    )
-    other: Floats = np.matmul(moments, below)
-    other -= change
-    return other
+def _picked(table: Singles, flat: Integers) -> Singles:
+    """Columns of the kept lines; all of them need no copy."""
+    return table if flat.size == table.shape[1] else table.take(flat, axis=1)
 
 
-def _mixings(
-    index: IndexStructure, stack: BlockStack, energies: Floats, vectors: Floats
-) -> Floats:
-    """X of every parameter, shape (n_blocks, n_parameters, size, size)."""
-    n_particles = index.n_particles
+def _moment_change(moments: Singles, above: Singles, below: Singles) -> Singles:
+    """X_k' T + T X_(k+1), shape (n_parameters, upper size * lower size).
+
+    X is antisymmetric, so X' = -X.
+    """
+    size_above, n_parameters, _ = above.shape
+    size_below = below.shape[0]
+    other = moments @ below.reshape(size_below, -1)
+    other -= (above.reshape(-1, size_above) @ moments).reshape(size_above, -1)
+    table = other.reshape(size_above, n_parameters, size_below).transpose(1, 0, 2)
+    return np.ascontiguousarray(table).reshape(n_parameters, -1)
+
+
+def _mixings(stack: BlockStack, energies: Floats, vectors: Floats) -> Singles:
+    """X of every parameter, shape (n_blocks, size, n_parameters, size)."""
     gaps = energies[:, None, :] - energies[:, :, None]
     close = np.abs(gaps) < _DEGENERATE_HZ
     inverse = np.where(close, 0.0, 1.0 / np.where(close, 1.0, gaps))
-    diagonal = index.diagonal[stack.states].transpose(0, 2, 1)
-    changed = diagonal[..., None] * vectors[:, None]
-    if stack.off_starts.size:
-        n_pairs = diagonal.shape[1] - n_particles
-        ends = np.append(stack.off_starts[1:], stack.off_rows.size)
-        for begin, end, target in zip(
-            stack.off_starts, ends, stack.off_targets, strict=True
-        ):
-            block, pair = divmod(int(target), n_pairs)
-            rows = stack.off_rows[begin:end] - block * stack.size
-            columns = stack.off_columns[begin:end] - block * stack.size
-            scale = stack.off_coefficients[begin:end, None]
-            out = changed[block, n_particles + pair]
-            # A composite particle can step twice from one row, so add unbuffered.
-            np.add.at(out, rows, scale * vectors[block, columns])
-            np.add.at(out, columns, scale * vectors[block, rows])
-    mixing: Floats = np.matmul(vectors.transpose(0, 2, 1)[:, None], changed)
-    mixing *= inverse[:, None]
-    return mixing
+    states = vectors.astype(np.float32)
+    changed = stack.change @ states.reshape(-1, stack.size)
+    mixing = np.matmul(
+        states.transpose(0, 2, 1), changed.reshape(stack.n_blocks, stack.size, -1)
+    ).reshape(stack.n_blocks, stack.size, -1, stack.size)
+    mixing *= inverse.astype(np.float32)[:, :, None, :]
+    return np.asarray(mixing, dtype=np.float32)

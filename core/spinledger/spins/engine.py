@@ -3,6 +3,7 @@
 from __future__ import annotations
 
 from dataclasses import dataclass
+from typing import Literal
 
 import numpy as np
 import numpy.typing as npt
@@ -20,10 +21,6 @@ from spinledger.values.spin_system import SpinSystem, Transitions
 Floats = npt.NDArray[np.float64]
 Integers = npt.NDArray[np.int64]
 
-# Half the rows of a lowering operator are empty; below this size it is faster
-# to multiply them all in one call than to pick them (measured).
-_SPLIT_SIZE = 48
-
 
 @dataclass(frozen=True, slots=True, eq=False, kw_only=True)
 class EngineLines:
@@ -37,12 +34,28 @@ class EngineLines:
         Derivative by every particle's frequency, then by every pair's J.
     d_intensities : numpy.ndarray or None, shape (n_parameters, n_rows, n_lines)
         Protons per Hz.
+    d_moments : numpy.ndarray or None, shape (n_parameters, n_lines)
+        Derivative of the total transition moment, in place of the former.
+    row_factors : numpy.ndarray or None, shape (n_rows, n_lines)
+        Share of each row in it: times ``d_moments`` they are derivatives of
+        intensities that add up over the rows exactly, while their split among
+        the rows is that of the intensities.
     """
 
     frequencies_hz: Floats
     intensities: Floats
     d_frequencies: Floats | None = None
     d_intensities: Floats | None = None
+    d_moments: Floats | None = None
+    row_factors: Floats | None = None
+
+    def row_changes(self, row: int, kept: Integers) -> Floats | None:
+        """Derivatives of one row's intensities, (n_parameters, n_kept), or None."""
+        if self.d_intensities is not None:
+            return self.d_intensities[:, row, kept]
+        if self.d_moments is None or self.row_factors is None:
+            return None
+        return np.asarray(self.d_moments[:, kept] * self.row_factors[row, kept])
 
 
 class SpinEngine:
@@ -89,7 +102,7 @@ class SpinEngine:
             )
             products += stack.weights.size * (above + below) * above * below
         # Two operations for each product, 25e9 a second on one 2020s core.
-        return 8e-5 * products * self.n_parameters * max(self.topology.n_rows, 1)
+        return 8e-5 * products * self.n_parameters
 
     def diagonalise(self, frequencies_hz: Floats, couplings_hz: Floats) -> EigenSystem:
         """Energies and states of all blocks.
@@ -124,8 +137,9 @@ class SpinEngine:
         couplings_hz: Floats,
         *,
         smallest: float = 0.0,
+        n_rows: int | None = None,
         derivatives: bool = False,
-        intensity_derivatives: bool = False,
+        intensity_derivatives: bool | Literal["shared"] = False,
     ) -> EngineLines:
         """All lines with an intensity above ``smallest`` in some row.
 
@@ -135,28 +149,41 @@ class SpinEngine:
         couplings_hz : numpy.ndarray, shape (n_pairs,), Hz
         smallest : float, protons
             Lines at or under it in every row are left out.
+        n_rows : int or None
+            Only the first so many rows are handed on (all count in the total).
         derivatives, intensity_derivatives : bool
-            Also give the derivatives of frequencies, and of intensities.
+            Also give the derivatives of frequencies, and of intensities; for
+            these "shared" gives only that of the total and its split, which is
+            as many times faster as there are rows.
         """
         eigen = self.diagonalise(frequencies_hz, couplings_hz)
-        moments = [self._moments(stack, eigen) for stack in self._index.transitions]
-        kept = [_select(moment, smallest) for moment in moments]
+        stacks = self._index.transitions
+        reported = self.topology.n_rows if n_rows is None else n_rows
+        moments = [self._moments(stack, eigen) for stack in stacks]
+        kept = [_select(moment, smallest, reported) for moment in moments]
         frequencies = [
             _frequencies(stack, eigen, kept_here)
-            for stack, kept_here in zip(self._index.transitions, kept, strict=True)
+            for stack, kept_here in zip(stacks, kept, strict=True)
         ]
         d_frequencies = d_intensities = None
         if derivatives or intensity_derivatives:
             d_frequencies = closed_form.of_frequencies(self._index, eigen, kept)
-            if intensity_derivatives:
-                d_intensities = closed_form.of_intensities(
-                    self._index, eigen, moments, kept
-                )
+        d_moments = row_factors = None
+        if intensity_derivatives == "shared":
+            d_moments, row_factors = closed_form.of_moments(
+                self._index, eigen, moments, kept
+            )
+        elif intensity_derivatives:
+            d_intensities = closed_form.of_intensities(
+                self._index, eigen, moments, kept
+            )
         return EngineLines(
             frequencies_hz=np.concatenate(frequencies),
             intensities=np.concatenate([k.intensities for k in kept], axis=1),
             d_frequencies=d_frequencies,
             d_intensities=d_intensities,
+            d_moments=d_moments,
+            row_factors=row_factors,
         )
 
     def _moments(self, stack: TransitionStack, eigen: EigenSystem) -> Moments:
@@ -164,11 +191,12 @@ class SpinEngine:
         upper = eigen.vectors[stack.upper][stack.upper_blocks]
         lower = eigen.vectors[stack.lower]
         flat = lower.reshape(-1, lower.shape[-1])
-        if upper.shape[-1] < _SPLIT_SIZE:
-            rows = _all_rows_at_once(stack, upper, flat, self._index.row_starts)
+        if stack.ladders:
+            rows = _row_by_row(stack, upper, flat)
         else:
-            rows = _row_by_row(stack, upper, flat, self._index.row_starts)
-        return Moments(rows, rows.sum(axis=1), stack.weights)
+            rows = _all_rows_at_once(stack, upper, flat, self._index.row_starts)
+        total = rows[:, 0] if rows.shape[1] == 1 else rows.sum(axis=1)
+        return Moments(rows, total, stack.weights)
 
 
 def _eigh(matrices: Floats) -> tuple[Floats, Floats]:
@@ -188,44 +216,43 @@ def _all_rows_at_once(
     return moments
 
 
-def _row_by_row(
-    stack: TransitionStack, upper: Floats, flat: Floats, row_starts: Integers
-) -> Floats:
-    n_links, n_detected, size = stack.targets.shape
-    ends = np.append(row_starts[1:], n_detected)
-    moments = np.zeros((n_links, row_starts.size, size, flat.shape[-1]))
-    for link in range(n_links):
-        for row, (begin, end) in enumerate(zip(row_starts, ends, strict=True)):
-            for particle in range(begin, end):
-                coefficients = stack.coefficients[link, particle]
-                used = np.flatnonzero(coefficients)
-                if used.size:
-                    reached = flat[stack.targets[link, particle, used]]
-                    reached *= coefficients[used, None]
-                    moments[link, row] += upper[link, used].T @ reached
+def _row_by_row(stack: TransitionStack, upper: Floats, flat: Floats) -> Floats:
+    n_links, size = upper.shape[:2]
+    n_rows = len(stack.ladders[0])
+    moments = np.zeros((n_links, n_rows, size, flat.shape[-1]))
+    for link, ladders in enumerate(stack.ladders):
+        for row, ladder in enumerate(ladders):
+            if ladder.used.size:
+                reached = ladder.operator @ flat
+                from_states = upper[link]
+                if ladder.used.size < size:
+                    from_states = from_states[ladder.used]
+                np.matmul(from_states.T, reached, out=moments[link, row])
     return moments
 
 
-def _select(moments: Moments, smallest: float) -> Kept:
-    intensities = moments.rows * moments.total[:, None]
-    intensities *= moments.weights[:, None, None, None]
-    strongest = np.abs(intensities).max(axis=1)
-    link, upper, lower = np.nonzero(strongest > smallest)
-    return Kept(
-        link,
-        upper,
-        lower,
-        np.ascontiguousarray(intensities[link, :, upper, lower].T),
-    )
+def _select(moments: Moments, smallest: float, n_rows: int) -> Kept:
+    """Lines above the threshold in one of the first rows."""
+    total, rows = moments.total, moments.rows[:, :n_rows]
+    n_links, upper, lower = total.shape
+    if moments.rows.shape[1] == 1:
+        strength = total * total
+    else:
+        strength = np.abs(rows).max(axis=1) * np.abs(total)
+    strength *= moments.weights[:, None, None]
+    flat = np.flatnonzero(strength > smallest)
+    picked = np.empty((n_rows, flat.size))
+    weighted = (total * moments.weights[:, None, None]).ravel()[flat]
+    for row in range(n_rows):
+        np.multiply(rows[:, row].ravel()[flat], weighted, out=picked[row])
+    return Kept(flat, (n_links, upper, lower), picked)
 
 
 def _frequencies(stack: TransitionStack, eigen: EigenSystem, kept: Kept) -> Floats:
     from_energy = eigen.energies[stack.upper][stack.upper_blocks]
     to_energy = eigen.energies[stack.lower][stack.lower_blocks]
-    frequencies: Floats = (
-        from_energy[kept.link, kept.upper] - to_energy[kept.link, kept.lower]
-    )
-    return frequencies
+    gaps = from_energy[:, :, None] - to_energy[:, None, :]
+    return np.asarray(gaps.ravel()[kept.flat])
 
 
 def simulate(

@@ -3,6 +3,7 @@
 from __future__ import annotations
 
 from dataclasses import dataclass, field
+from typing import Literal
 
 import numpy as np
 import numpy.typing as npt
@@ -18,11 +19,14 @@ from spinledger.spins.clusters import (
 )
 from spinledger.spins.condense import condense_row, join
 from spinledger.spins.engine import EngineLines, SpinEngine
-from spinledger.spins.merging import Bond, SpinPart, separate_parts
+from spinledger.spins.merging import Bond, Site, SpinPart, separate_parts
 from spinledger.values.claim import ClaimSet
 
 Floats = npt.NDArray[np.float64]
 Integers = npt.NDArray[np.int64]
+
+# Derivatives of frequencies, and of intensities.
+_Wanted = tuple[bool, bool | Literal["shared"]]
 
 
 @dataclass(frozen=True, slots=True, eq=False, kw_only=True)
@@ -210,7 +214,7 @@ class ClaimNetwork:
         couplings_hz: Floats,
         *,
         derivatives: bool = False,
-        intensity_derivatives: bool = False,
+        intensity_derivatives: bool | Literal["shared"] = False,
         without: frozenset[int] = frozenset(),
         plan: Plan | None = None,
     ) -> ClaimLineSet:
@@ -223,8 +227,10 @@ class ClaimNetwork:
         couplings_hz : numpy.ndarray, shape (n_couplings,), Hz
         derivatives : bool
             Also give ``d_frequency``.
-        intensity_derivatives : bool
-            Also give ``d_frequency`` and ``d_protons`` (dearer).
+        intensity_derivatives : bool or "shared"
+            Also give ``d_frequency`` and ``d_protons`` (dearer). "shared" gives
+            ``d_protons`` whose sum over the claims is exact and whose split is
+            that of the intensities: enough to steer a fit, and much cheaper.
         without : frozenset of int
             Claims that show no lines; exchangeable ones couple no more either.
             Not looked at where a plan is given.
@@ -242,7 +248,7 @@ class ClaimNetwork:
         self._check(shifts, couplings)
         if plan is None:
             plan = self.plan(shifts, couplings, without=without)
-        wanted = (derivatives or intensity_derivatives, intensity_derivatives)
+        wanted = (derivatives or bool(intensity_derivatives), intensity_derivatives)
         groups = [
             group
             for piece in plan.pieces
@@ -291,7 +297,7 @@ class ClaimNetwork:
         plan: Plan,
         shifts: Floats,
         *,
-        wanted: tuple[bool, bool],
+        wanted: _Wanted,
     ) -> ClaimLineSet:
         n_parameters = self.n_claims + self.n_couplings
         for claim, protons in plan.singlets:
@@ -404,14 +410,11 @@ def _make_piece(
             for k in cluster.members
         ),
         pairs=tuple((place[bond.first], place[bond.second]) for bond in bonds),
-        detected=tuple(
-            rows.index(site.claim) if s and site.claim is not None else -1
-            for site, s in zip(sites, seen, strict=True)
-        ),
+        detected=_rows_of_sites(sites, seen, rows, cluster=cluster),
     )
     protons = [0.0] * len(rows)
     for site, row in zip(sites, topology.detected, strict=True):
-        if row >= 0:
+        if 0 <= row < len(rows):
             protons[row] += site.n_spins
     return _Piece(
         engine=SpinEngine(topology),
@@ -421,6 +424,26 @@ def _make_piece(
         row_protons=tuple(protons),
         count=part.count,
     )
+
+
+def _rows_of_sites(
+    sites: list[Site], seen: list[bool], rows: list[int], *, cluster: Cluster
+) -> tuple[int, ...]:
+    """Row of every site; protons that are not reported share one more row.
+
+    The intensity of a line is T_row T_total, and the total is that of all
+    protons, reported here or not. Sites that do not flip have no line in common
+    with the others.
+    """
+    found = []
+    for number, site, is_seen in zip(cluster.members, sites, seen, strict=True):
+        if site.claim is None or (number in cluster.weak and not is_seen):
+            found.append(-1)
+        elif is_seen:
+            found.append(rows.index(site.claim))
+        else:
+            found.append(len(rows))
+    return tuple(found)
 
 
 def _shows(bond: Bond, cluster: Cluster) -> bool:
@@ -435,7 +458,7 @@ def _piece_lines(
     couplings: Floats,
     *,
     effort: Effort,
-    wanted: tuple[bool, bool],
+    wanted: _Wanted,
 ) -> list[_RowLines]:
     frequencies = shifts[piece.columns]
     frequencies[[c is None for c in piece.site_claims]] = 0.0
@@ -443,6 +466,7 @@ def _piece_lines(
         frequencies,
         couplings[piece.bond_couplings],
         smallest=effort.smallest,
+        n_rows=len(piece.row_claims),
         derivatives=wanted[0],
         intensity_derivatives=wanted[1],
     )
@@ -487,10 +511,13 @@ def _onto_claims(
     d_intensities = lines.d_intensities
     if d_intensities is not None:
         d_intensities = np.tensordot(fold, d_intensities, axes=1)
+    d_moments = lines.d_moments
     folded = EngineLines(
         frequencies_hz=lines.frequencies_hz,
         intensities=lines.intensities,
         d_frequencies=fold @ lines.d_frequencies,
         d_intensities=d_intensities,
+        d_moments=None if d_moments is None else fold @ d_moments,
+        row_factors=lines.row_factors,
     )
     return folded, np.array(columns, dtype=np.int64)

@@ -32,7 +32,11 @@ class Moments:
 class Kept:
     """Lines of one transition stack that are strong enough to keep."""
 
-    link: Integers
-    upper: Integers
-    lower: Integers
+    flat: Integers  # places among all (link, upper, lower)
+    shape: tuple[int, int, int]
     intensities: Floats  # (n_rows, n_kept)
+
+    def indices(self) -> tuple[Integers, Integers, Integers]:
+        """Link, upper and lower state of every kept line."""
+        link, upper, lower = np.unravel_index(self.flat, self.shape)
+        return link, upper, lower

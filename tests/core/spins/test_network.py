@@ -190,7 +190,8 @@ def test_absent_claim_still_splits_unless_it_exchanges(
     shifts, couplings = predictions(claims, 500.0)
     lines = ClaimNetwork(claims).lines(shifts, couplings, without=frozenset({1}))
     assert set(lines.claim.tolist()) == {0}
-    assert lines.frequencies_hz.size == n_lines
+    # At J / dnu = 0.013 the partner's own lines carry 0.3 % of this claim.
+    assert int((np.abs(lines.protons) > 0.01).sum()) == n_lines
 
 
 def test_derivatives_of_shared_parameters_agree_with_differences() -> None:
