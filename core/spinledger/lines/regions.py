@@ -6,7 +6,6 @@ from dataclasses import dataclass
 
 import numpy as np
 import numpy.typing as npt
-from scipy import ndimage
 
 from spinledger.lines.derivative import curvature_magnitude, points_per_degree
 from spinledger.lines.noise import EDGE_SHARE, quiet_rms
@@ -23,10 +22,9 @@ class RegionSearch:
         Smoothing of the second derivative.
     noise_factor : float
         A point belongs to a region above this many noise sd.
-    top_share, reach_hz, far_share : float
-        It must also stand above this share of the tallest point within
-        ``reach_hz``, and above a smaller share of the tallest of all: the wiggles
-        of a FID that was cut short stay below, weak signals far from water do not.
+    top_share : float
+        It must also stand above this share of the tallest point, so that the
+        wiggles of a FID that was cut short stay below.
     join_hz, pad_hz, least_hz : float, Hz
         Gaps that are closed, margin put on, and width below which a region is
         dropped.
@@ -37,8 +35,6 @@ class RegionSearch:
     sigma_hz: float = 0.8
     noise_factor: float = 6.0
     top_share: float = 3e-4
-    reach_hz: float = 150.0
-    far_share: float = 2e-5
     join_hz: float = 10.0
     pad_hz: float = 5.0
     least_hz: float = 0.8
@@ -101,6 +97,7 @@ def find_regions(
     *,
     step_hz: float,
     search: RegionSearch | None = None,
+    weighed: npt.NDArray[np.bool_] | None = None,
 ) -> Regions:
     """Signal regions of a spectrum whose phase need not be right.
 
@@ -109,6 +106,8 @@ def find_regions(
     values : numpy.ndarray, shape (n_points,), real or complex
     step_hz : float, Hz
     search : RegionSearch, optional
+    weighed : numpy.ndarray of bool, shape (n_points,), optional
+        Points among which the tallest is looked for; water may be left out.
 
     Notes
     -----
@@ -125,26 +124,15 @@ def find_regions(
     ) / np.sqrt(channels)
     edge = int(settings.edge_share * values.size)
     inner = slice(edge, values.size - edge)
-    raised = curvature > _threshold(curvature, inner, settings, step_hz, sd)
+    counted = curvature[inner] if weighed is None else curvature[inner][weighed[inner]]
+    threshold = max(
+        settings.noise_factor * sd,
+        settings.top_share * float(counted.max(initial=0.0)),
+    )
+    raised = curvature > threshold
     raised[:edge] = False
     raised[values.size - edge :] = False
     return _regions_from(raised, values, curvature, step_hz, settings, sd)
-
-
-def _threshold(
-    curvature: npt.NDArray[np.float64],
-    inner: slice,
-    settings: RegionSearch,
-    step_hz: float,
-    sd: float,
-) -> npt.NDArray[np.float64]:
-    """Height that a point must reach, shape (n_points,)."""
-    reach = 2 * int(settings.reach_hz / step_hz) + 1
-    local = ndimage.maximum_filter1d(curvature, reach)
-    floor = max(
-        settings.noise_factor * sd, settings.far_share * float(curvature[inner].max())
-    )
-    return np.maximum(settings.top_share * local, floor)
 
 
 def _regions_from(

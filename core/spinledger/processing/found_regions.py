@@ -30,12 +30,24 @@ class FoundRegions:
 def found_regions(transformed: Transformed, *, water_at_carrier: bool) -> FoundRegions:
     """Signal regions of an unphased spectrum, with and without water."""
     values, step_hz = transformed.values, transformed.step_hz
-    regions = find_regions(values, step_hz=step_hz)
+    weighed = _away_from_water(transformed) if water_at_carrier else None
+    regions = find_regions(values, step_hz=step_hz, weighed=weighed)
     usable = _with_lines(values, regions, step_hz)
     if water_at_carrier:
         dry = usable & ~_at_water(transformed, regions)
         usable = dry if dry.any() else usable
     return FoundRegions(kept=regions.select(usable), dropped=regions.select(~usable))
+
+
+def _away_from_water(transformed: Transformed) -> npt.NDArray[np.bool_]:
+    """Points beyond the reach of water's own lines, shape (n_points,)."""
+    n_points = transformed.values.size
+    step_ppm = transformed.step_hz / transformed.spectrometer_frequency_mhz
+    index = np.arange(n_points)
+    shifts = transformed.first_point_ppm - step_ppm * index
+    carrier = (n_points + 1) // 2 - 1
+    near = np.abs(index - carrier) * step_ppm < 2 * _CARRIER_MARGIN_PPM
+    return np.asarray(~near & ((shifts < _WATER_PPM[0]) | (shifts > _WATER_PPM[1])))
 
 
 def _with_lines(

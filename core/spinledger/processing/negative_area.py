@@ -12,6 +12,7 @@ from spinledger.lines.regions import Regions
 from spinledger.processing.phase import sweep_positions
 
 _WIDEN_HZ = 10.0
+_INTRUDE_HZ = 2.0
 _MOST_POINTS = 512
 _BASE_SHARE = 12
 _HEIGHT_CAP = 10.0
@@ -62,12 +63,9 @@ class NegativeAreaCost:
         step_hz: float,
         noise_sd: float,
     ) -> None:
-        widen = int(_WIDEN_HZ / step_hz)
+        spans = _widened(regions, step_hz, values.size)
         positions = sweep_positions(values.size)
-        pieces = [
-            _averaged(values, positions, max(0, start - widen), stop + widen)
-            for start, stop in zip(regions.starts, regions.stops, strict=True)
-        ]
+        pieces = [_averaged(values, positions, start, stop) for start, stop in spans]
         lengths = np.array([piece[0].size for piece in pieces])
         self._values = np.concatenate([piece[0] for piece in pieces])
         self._x = np.concatenate([piece[1] for piece in pieces])
@@ -193,6 +191,21 @@ def _descend(
         slope_rad=float(angles[1]),
         cost=float(result.fun),
     )
+
+
+def _widened(regions: Regions, step_hz: float, n_points: int) -> list[tuple[int, int]]:
+    """Regions with a margin, but not onto the lines of the next region.
+
+    A base drawn through the ends would else stand on a neighbour's lines. Regions
+    already hold a few Hz beyond their lines.
+    """
+    widen, intrude = int(_WIDEN_HZ / step_hz), int(_INTRUDE_HZ / step_hz)
+    lows, highs = regions.starts - widen, regions.stops + widen
+    lows[1:] = np.maximum(lows[1:], regions.stops[:-1] - intrude)
+    highs[:-1] = np.minimum(highs[:-1], regions.starts[1:] + intrude)
+    lows = np.minimum(np.maximum(lows, 0), regions.starts)
+    highs = np.maximum(np.minimum(highs, n_points), regions.stops)
+    return [(int(a), int(b)) for a, b in zip(lows, highs, strict=True)]
 
 
 def _averaged(

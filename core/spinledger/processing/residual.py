@@ -28,6 +28,9 @@ _WIDEST_HZ = 2.6
 # Solvents that are rarely met, or that show other residual lines besides.
 _RARITY = {"toluene-d8": -4.0, "CD3CO2D": -4.0, "DMF-d7": -4.0}
 _QUINTET_RATIOS = (1 / 3, 2 / 3, 2 / 3, 1 / 3)
+# Outer to inner lines: 1/2 in 1:2:3:2:1, 1/4 in the 1:4:6:4:1 of four equal protons;
+# a second derivative reads 0.3 to 0.5, and 0.07 to 0.22.
+_LEAST_OUTER = 0.26
 _QUINTET_PLACES = (-2, -1, 1, 2)
 _QUINTET_WINDOW_PPM = (1.5, 4.2)
 _QUINTET_SPLITTINGS_HZ = np.arange(1.5, 2.75, 0.05)
@@ -213,14 +216,19 @@ def _best_comb(
 def _comb_figure(
     apart_hz: npt.NDArray[np.float64], shares: npt.NDArray[np.float64], splitting: float
 ) -> float | None:
-    ratio_error, misses = 0.0, []
-    for place, ratio in zip(_QUINTET_PLACES, _QUINTET_RATIOS, strict=True):
+    """Figure of a comb with one splitting; None where a line is missing."""
+    seen, misses = [], []
+    for place in _QUINTET_PLACES:
         there = np.flatnonzero(np.abs(apart_hz - place * splitting) < _QUINTET_LINE_HZ)
         if there.size == 0:
             return None
         tallest = there[np.argmax(shares[there])]
-        ratio_error = max(ratio_error, abs(float(shares[tallest]) - ratio))
+        seen.append(float(shares[tallest]))
         misses.append(float(apart_hz[tallest]) - place * splitting)
+    far_low, near_low, near_high, far_high = seen
+    if far_low + far_high < _LEAST_OUTER * (near_low + near_high):
+        return None
+    ratio_error = float(np.abs(np.array(seen) - _QUINTET_RATIOS).max())
     distance = np.abs(apart_hz)
     outside = (distance > 2.45 * splitting) & (distance < 4 * splitting)
     return ratio_error + float(shares[outside].max(initial=0.0)) + float(np.std(misses))
