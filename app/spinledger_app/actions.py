@@ -114,6 +114,16 @@ def _view() -> tuple[ActionText, ...]:
         ActionText(name="text_100", menu=menu, words=say("Text at 100 %"), keys="Ctrl+0", is_checkable=True),
         ActionText(name="text_115", menu=menu, words=say("Text at 115 %"), is_checkable=True),
         ActionText(name="text_130", menu=menu, words=say("Text at 130 %"), is_checkable=True, ends_group=True),
+        ActionText(
+            name="language_en", menu=menu, words=say("English"), is_checkable=True
+        ),
+        ActionText(
+            name="language_de",
+            menu=menu,
+            words=say("German"),
+            is_checkable=True,
+            ends_group=True,
+        ),
         ActionText(name="default_sizes", menu=menu, words=say("Panels at their default sizes")),
     )  # fmt: skip
 

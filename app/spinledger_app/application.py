@@ -13,6 +13,7 @@ from spinledger.project.document import Project
 from spinledger_app import tasks
 from spinledger_app.bench import Bench
 from spinledger_app.desk import Desk
+from spinledger_app.languages import Words, chosen, table_of
 from spinledger_app.recovery import Autosave, left_behind
 from spinledger_app.settings import BenchSettings
 from spinledger_app.theme import LIGHT, Look, load_fonts
@@ -76,7 +77,10 @@ def run(*, places: Sequence[str], structure: str | None, solvent: str | None) ->
     app = QApplication.instance() or QApplication([])
     QCoreApplication.setOrganizationName("spinledger")
     QCoreApplication.setApplicationName("spinledger-bench")
-    parts = build(QSettings(), solvent=solvent)
+    store = QSettings()
+    words = Words(table_of(chosen(BenchSettings(store).language)))
+    QCoreApplication.installTranslator(words)
+    parts = build(store, solvent=solvent)
     folder = _recovery_folder()
     found = left_behind(folder)
     autosave = Autosave(parts.bench.session, parts.pool, folder)

@@ -16,6 +16,7 @@ from spinledger_app.handlers.menus import MenuHandlers
 from spinledger_app.handlers.process import ProcessHandlers
 from spinledger_app.handlers.view import ViewHandlers
 from spinledger_app.lanes.targets import Target
+from spinledger_app.languages import NAMES, chosen
 from spinledger_app.places import example_place
 from spinledger_app.presenters import contenders as contender_words
 from spinledger_app.presenters.cursor import cursor_text, title, view_text
@@ -287,6 +288,8 @@ class Desk(QObject):
         checks |= {name: theme == one for name, one in THEME_ACTIONS.items()}
         scale = self.look.text_scale
         checks |= {name: scale == one for name, one in TEXT_SCALES.items()}
+        language = chosen(self.settings.language)
+        checks |= {f"language_{code}": language == code for code in NAMES}
         self.window.show_checks(checks)
 
     # -- wishes ----------------------------------------------------------------------

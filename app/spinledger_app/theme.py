@@ -14,6 +14,7 @@ ThemeName = Literal["light", "dark", "high contrast"]
 StateName = Literal["settled", "disputed", "open", "silent", "stray"]
 
 FAMILY = "Source Sans Pro"
+_MOST_WIDTHS = 5000
 _FONT_FILES = ("Regular", "It", "Semibold", "SemiboldIt")
 
 # Okabe and Ito's colour-blind-safe palette, the same in all themes.
@@ -206,6 +207,9 @@ class Look:
     text_log: list[TextRect] | None = None
     _fonts: dict[tuple[float, int, bool], QFont] = field(default_factory=dict)
     _metrics: dict[tuple[float, int, bool], QFontMetricsF] = field(default_factory=dict)
+    _widths: dict[tuple[str, float, int, bool], float] = field(default_factory=dict)
+    _colours: dict[tuple[str, str], QColor] = field(default_factory=dict)
+    _coloured: Tokens | None = None
 
     def px(self, size: float) -> int:
         """Length that grows with the user's text size, logical px."""
@@ -216,6 +220,7 @@ class Look:
         self.text_scale = text_scale
         self._fonts.clear()
         self._metrics.clear()
+        self._widths.clear()
 
     def font(self, size: float = 14, weight: int = 400, italic: bool = False) -> QFont:
         """Face of the bench at a size in px before the user's text size."""
@@ -243,12 +248,34 @@ class Look:
             self._metrics[key] = QFontMetricsF(self.font(size, weight, italic))
         return self._metrics[key]
 
-    def width(self, text: str, size: float = 14, weight: int = 400) -> float:
-        """Width of a text, px."""
-        return self.metrics(size, weight).horizontalAdvance(text)
+    def width(
+        self, text: str, size: float = 14, weight: int = 400, italic: bool = False
+    ) -> float:
+        """Width of a text, px; measured once."""
+        key = (text, size, weight, italic)
+        width = self._widths.get(key)
+        if width is None:
+            if len(self._widths) > _MOST_WIDTHS:
+                self._widths.clear()
+            width = self.metrics(size, weight, italic).horizontalAdvance(text)
+            self._widths[key] = width
+        return width
 
     def colour(self, token: str) -> QColor:
-        """Colour by role: a token's name, or ``fill:`` or ``tone:`` and a state."""
+        """Colour by role: a token's name, or ``fill:`` or ``tone:`` and a state.
+
+        A fresh copy, so that its alpha may be changed.
+        """
+        key = (self.tokens.name, token)
+        found = self._colours.get(key)
+        if found is None or self.tokens is not self._coloured:
+            if self.tokens is not self._coloured:
+                self._colours.clear()
+                self._coloured = self.tokens
+            found = self._colours[key] = self._made_colour(token)
+        return QColor(found)
+
+    def _made_colour(self, token: str) -> QColor:
         kind, _, state = token.partition(":")
         if kind == "fill":
             return QColor(STATE_FILLS[state])

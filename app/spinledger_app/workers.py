@@ -6,6 +6,7 @@ import contextlib
 import itertools
 import logging
 import multiprocessing
+import multiprocessing.connection
 import os
 import signal
 import threading
@@ -291,11 +292,26 @@ def sentence_of(error: BaseException) -> str:
 
 def _ignore_interrupts() -> None:
     signal.signal(signal.SIGINT, signal.SIG_IGN)
+    _end_with_parent()
+
+
+def _end_with_parent() -> None:
+    """Let this process end when the window's process does, however that ends."""
+    parent = multiprocessing.parent_process()
+    if parent is None:
+        return
+
+    def watch() -> None:
+        multiprocessing.connection.wait([parent.sentinel])
+        os._exit(0)
+
+    threading.Thread(target=watch, name="parent watch", daemon=True).start()
 
 
 def _calm_down() -> None:
     """Let the window have the processor first; called once in each process."""
     signal.signal(signal.SIGINT, signal.SIG_IGN)
+    _end_with_parent()
     for name in _ONE_THREAD:
         os.environ[name] = "1"
     if hasattr(os, "nice"):

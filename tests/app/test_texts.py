@@ -13,6 +13,7 @@ from text_checks import contrast, faults
 
 from spinledger_app.application import Parts
 from spinledger_app.theme import DARK, HIGH_CONTRAST, LIGHT, STATE_FILLS, Tokens
+from spinledger_app.views.controls import BenchButton
 
 Show = Callable[[Parts], None]
 
@@ -65,6 +66,11 @@ def disputed(parts: Parts) -> None:
     parts.window.lanes.zoom_to(2.36, 2.50)
 
 
+def unfolded(parts: Parts) -> None:
+    folded(parts)
+    parts.bench.selection.select("2-HA")
+
+
 def chosen(parts: Parts) -> None:
     folded(parts)
     scene = parts.bench.scene
@@ -86,9 +92,15 @@ STATES: list[Show] = [
     own_gains,
     zoomed,
     disputed,
+    unfolded,
     chosen,
     two_open,
 ]
+
+
+def buttons_of(parts: Parts) -> list[BenchButton]:
+    found = parts.window.findChildren(BenchButton)
+    return [button for button in found if button.isVisible()]
 
 
 def look_for_faults(parts: Parts) -> list[str]:
@@ -98,6 +110,8 @@ def look_for_faults(parts: Parts) -> list[str]:
     image = parts.window.grab().toImage()
     parts.look.text_log = None
     assert len(log) > 20  # the log is being written at all
+    low = [b.text() for b in buttons_of(parts) if b.height() < 24]
+    assert low == []  # hit areas are 24 px at least
     return faults(parts.window, log, image)
 
 

@@ -2,6 +2,9 @@
 
 from __future__ import annotations
 
+import subprocess
+import sys
+import time
 from collections.abc import Iterator
 from pathlib import Path
 
@@ -128,3 +131,45 @@ def test_a_process_that_dies_is_told_and_replaced(
     said = outcome(qtbot, pool, die)
     assert said.startswith("failed The working process ended")
     assert outcome(qtbot, pool, add, 2, 2) == "done 4"
+
+
+ORPHANER = """
+import os, sys, time
+os.environ["QT_QPA_PLATFORM"] = "offscreen"
+sys.path.insert(0, sys.argv[1])
+from errands import wait_for_cancel
+from PySide6.QtCore import QCoreApplication
+from spinledger_app.workers import WorkerPool
+
+if __name__ == "__main__":
+    app = QCoreApplication([])
+    pool = WorkerPool()
+    pool.start()
+    pool.run(wait_for_cancel, done=print, failed=print)
+    begun = time.monotonic()
+    while pool._executor is None or not pool._executor._processes:
+        app.processEvents()
+        time.sleep(0.01)
+    time.sleep(1.0)
+    print(*pool._executor._processes, flush=True)
+    os._exit(1)  # as if it were killed
+"""
+
+
+def test_working_processes_end_with_a_killed_window(tmp_path: Path) -> None:
+    script = tmp_path / "orphaner.py"
+    script.write_text(ORPHANER)
+    folder = str(Path(__file__).parent)
+    run = subprocess.run(
+        [sys.executable, str(script), folder],
+        capture_output=True,
+        text=True,
+        check=False,
+        timeout=60,
+    )
+    pids = [int(word) for word in run.stdout.split()]
+    assert pids
+    deadline = time.monotonic() + 20
+    while any(Path(f"/proc/{pid}").exists() for pid in pids):
+        assert time.monotonic() < deadline, "a working process lives on"
+        time.sleep(0.05)

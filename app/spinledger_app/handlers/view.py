@@ -10,6 +10,7 @@ from PySide6.QtGui import QGuiApplication
 
 from spinledger_app.handlers.context import Context
 from spinledger_app.lanes.layout import DEFAULT_SHARES
+from spinledger_app.presenters.wording import say
 from spinledger_app.theme import DARK, HIGH_CONTRAST, LIGHT
 from spinledger_app.views import dialogs
 
@@ -32,6 +33,8 @@ class ViewHandlers:
             "home": self.home,
             "back": self.back,
             "default_sizes": self.default_sizes,
+            "language_en": lambda: self.take_language("en"),
+            "language_de": lambda: self.take_language("de"),
             "keys": self.keys,
             "about": self.about,
         }
@@ -125,6 +128,13 @@ class ViewHandlers:
         if self.settings.folds_when_solved and not self.window.lanes.is_folded:
             self.window.lanes.set_folded(True)
             self.context.show_view()
+
+    def take_language(self, code: str) -> None:
+        """Remember another language; every text is made anew at the next start."""
+        self.settings.language = code
+        self.window.status.show_message(
+            say("The language changes when the program starts again.")
+        )
 
     def keys(self) -> None:
         """Show keys and gestures."""

@@ -344,9 +344,10 @@ class ClaimsPainter:
         ends: list[float],
         crown_y: float,
     ) -> None:
-        ground = self._ground(placed.tree.claim)
-        for path, width in strokes:
-            self.ink.stroke(path, ground, width + _CASING_PX)
+        if self._is_crowded(placed):
+            ground = self._ground(placed.tree.claim)
+            for path, width in strokes:
+                self.ink.stroke(path, ground, width + _CASING_PX)
         x = placed.root_x
         self.ink.line((x, placed.soil_y), (x, placed.fork_y), "bark", 1.8)
         for path, width in strokes:
@@ -355,6 +356,14 @@ class ClaimsPainter:
         painter.setPen(QPen(self.ink.colour("bark"), 1.0 if placed.is_low else 1.2))
         lines = [QLineF(x, crown_y, x, placed.leaf_y - 1) for x in ends]
         painter.drawLines(lines)
+
+    def _is_crowded(self, placed: PlacedTree) -> bool:
+        """Whether another tree stands in the same place, so that casings tell."""
+        left, right = placed.span
+        return any(
+            other is not placed and other.span[0] < right and left < other.span[1]
+            for other in self.grove.trees
+        )
 
     def _leaves(self, placed: PlacedTree, bases: list[float]) -> None:
         """All leaves of a tree as one path."""

@@ -8,7 +8,7 @@ from dataclasses import dataclass
 import numpy as np
 import numpy.typing as npt
 from PySide6.QtCore import QRectF, Qt
-from PySide6.QtGui import QPen
+from PySide6.QtGui import QColor, QImage, QPen, QPixmap
 
 from spinledger_app.lanes.layout import LaneLayout
 from spinledger_app.lanes.polygons import polygon
@@ -171,17 +171,54 @@ def _clip(
 def _paint_model(ink: Ink, drawn: Curve, layout: LaneLayout) -> None:
     colour = ink.colour("model_fill")
     colour.setAlpha(ink.look.tokens.model_fill_alpha)
-    xs = np.concatenate(([drawn.upper_xs[0]], drawn.upper_xs, [drawn.upper_xs[-1]]))
-    ys = np.concatenate(([layout.baseline], drawn.upper_ys, [layout.baseline]))
     painter = ink.painter
-    painter.setPen(Qt.PenStyle.NoPen)
-    painter.setBrush(colour)
-    painter.drawPolygon(polygon(xs, ys))
-    painter.setBrush(Qt.BrushStyle.NoBrush)
+    is_crowded = drawn.xs.size > drawn.upper_xs.size
+    if is_crowded and isinstance(painter.device(), QPixmap):
+        _fill_columns(ink, drawn, layout, colour)
+    else:
+        xs = np.concatenate(([drawn.upper_xs[0]], drawn.upper_xs, [drawn.upper_xs[-1]]))
+        ys = np.concatenate(([layout.baseline], drawn.upper_ys, [layout.baseline]))
+        painter.setPen(Qt.PenStyle.NoPen)
+        painter.setBrush(colour)
+        painter.drawPolygon(polygon(xs, ys))
+        painter.setBrush(Qt.BrushStyle.NoBrush)
     # Two strokes of 1 px, 0.3 px apart: Qt draws wider pens ten times slower.
     painter.setPen(QPen(ink.colour("model_edge"), 1.0))
     for drop in (0.0, _EDGE_PX - 1.0):
         painter.drawPolyline(polygon(drawn.upper_xs, drawn.upper_ys + drop))
+
+
+def _fill_columns(ink: Ink, drawn: Curve, layout: LaneLayout, colour: QColor) -> None:
+    """Fill under a curve of one value a device column, as a picture.
+
+    A polygon with a thousand spikes takes Qt tens of milliseconds.
+    """
+    ratio = ink.columns_per_px
+    top = layout.evidence_top
+    n_rows = max(1, round((layout.baseline - top) * ratio))
+    edges = (drawn.upper_ys - top) * ratio
+    n_columns = edges.size
+    alpha = colour.alpha()
+    red, green, blue = (
+        round(value * alpha / 255)
+        for value in (colour.red(), colour.green(), colour.blue())
+    )
+    pixel = np.uint32(alpha << 24 | red << 16 | green << 8 | blue)
+    is_under = np.arange(n_rows)[:, None] >= edges[None, :]
+    pixels = np.where(is_under, pixel, np.uint32(0))
+    image = QImage(
+        pixels.data,
+        n_columns,
+        n_rows,
+        4 * n_columns,
+        QImage.Format.Format_ARGB32_Premultiplied,
+    )
+    # Columns stand about their centres.
+    step = 1.0 / ratio
+    left = float(drawn.upper_xs[0]) - step / 2
+    width = float(drawn.upper_xs[-1] - drawn.upper_xs[0]) + step
+    target = QRectF(left, top, width, n_rows / ratio)
+    ink.painter.drawImage(target, image)
 
 
 def _paint_integrals(

@@ -337,6 +337,7 @@ def _spread(labels: Sequence[RootLabel], left: float, right: float) -> list[Root
     """Labels moved apart as little as needed, in order, inside left to right."""
     xs = [label.x for label in labels]
     for _ in range(80):
+        before = list(xs)
         for i in range(len(xs) - 1):
             need = (labels[i].width + labels[i + 1].width) / 2 + LABEL_GAP_PX
             lack = need - (xs[i + 1] - xs[i])
@@ -346,6 +347,8 @@ def _spread(labels: Sequence[RootLabel], left: float, right: float) -> list[Root
         for i, label in enumerate(labels):
             half = label.width / 2
             xs[i] = min(max(xs[i], left + half), right - half)
+        if xs == before:
+            break
     for i in range(1, len(xs)):  # whatever is left is pushed to the right, then back
         need = (labels[i - 1].width + labels[i].width) / 2 + LABEL_GAP_PX
         xs[i] = max(xs[i], xs[i - 1] + need)

@@ -2,7 +2,7 @@
 
 from __future__ import annotations
 
-from dataclasses import dataclass, replace
+from dataclasses import dataclass, field, replace
 
 import numpy as np
 import numpy.typing as npt
@@ -54,12 +54,18 @@ class ShiftMap:
     right_px: float
     px_per_ppm: float
     scroll_px: float = 0.0
+    _starts: tuple[float, ...] = field(init=False, repr=False, compare=False)
 
     def __post_init__(self) -> None:
         if not self.stretches:
             raise ValueError("stretches: need one or more")
         if not self.px_per_ppm > 0:
             raise ValueError(f"px_per_ppm must be > 0, got {self.px_per_ppm!r}")
+        starts = [self.left_px - self.scroll_px]
+        for stretch in self.stretches[:-1]:
+            width_px = stretch.width_ppm * self.px_per_ppm
+            starts.append(starts[-1] + width_px + FOLD_WIDTH_PX)
+        object.__setattr__(self, "_starts", tuple(starts))
 
     @classmethod
     def fitted(
@@ -104,10 +110,7 @@ class ShiftMap:
 
     def span(self, index: int) -> tuple[float, float]:
         """Left and right end of a stretch on the screen, not clipped, px."""
-        before = self.stretches[:index]
-        start = self.left_px - self.scroll_px
-        start += sum(one.width_ppm for one in before) * self.px_per_ppm
-        start += FOLD_WIDTH_PX * index
+        start = self._starts[index]
         return start, start + self.stretches[index].width_ppm * self.px_per_ppm
 
     def visible(self) -> tuple[int, ...]:
@@ -148,8 +151,8 @@ class ShiftMap:
             index = self.stretch_of(shift_ppm)
         if index is None:
             return None
-        start, _ = self.span(index)
-        return start + (self.stretches[index].high_ppm - shift_ppm) * self.px_per_ppm
+        high = self.stretches[index].high_ppm
+        return self._starts[index] + (high - shift_ppm) * self.px_per_ppm
 
     def xs_of(
         self, shifts_ppm: npt.NDArray[np.float64], index: int

@@ -88,7 +88,7 @@ class Ink:
         """
         metrics = self.look.metrics(face.size, face.weight, face.italic)
         shown = text
-        width = metrics.horizontalAdvance(text)
+        width = self.look.width(text, face.size, face.weight, face.italic)
         if max_width is not None and width > max_width:
             shown = elided(metrics.horizontalAdvance, text, max_width)
             width = metrics.horizontalAdvance(shown)

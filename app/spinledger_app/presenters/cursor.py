@@ -84,7 +84,7 @@ def view_text(
 ) -> str:
     """What part of the axis is looked at, and at which scale."""
     if scene is None or camera is None or shift_map is None:
-        return ""
+        return say("Autosave on")
     if camera.is_at_home and shift_map.is_folded:
         hidden = scene.whole.width_ppm - sum(s.width_ppm for s in shift_map.stretches)
         return (

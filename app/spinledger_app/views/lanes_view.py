@@ -227,6 +227,11 @@ class LanesView(QWidget):
             self._eased = self._ease_from.between(self.camera.map, smooth)
         self.refresh()
 
+    def finish_easing(self) -> None:
+        """Be where the view is going, at once."""
+        self._stop_easing()
+        self.refresh()
+
     def _stop_easing(self) -> None:
         self._timer.stop()
         self._ease_from = self._eased = None
