@@ -88,7 +88,7 @@ def memory_growth(table: Path, out: Path, options: ReconcileOptions) -> float | 
 
 def dask_seconds(table: Path, out: Path, options: ReconcileOptions) -> float:
     """Seconds on a local cluster of two."""
-    from distributed import LocalCluster  # noqa: PLC0415 - an extra
+    from distributed import LocalCluster  # an extra
 
     with LocalCluster(
         n_workers=2, threads_per_worker=1, dashboard_address=None

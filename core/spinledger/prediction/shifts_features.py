@@ -143,11 +143,13 @@ def _counts_by_conjugation(
     it is saturated.
     """
     conjugation = around.conjugation
-    linked = conjugation.any(axis=1)
+    linked = np.any(conjugation, axis=1)
     start = np.zeros((chosen.size, linked.size), bool)
     start[np.arange(chosen.size), chosen] = True
     bonded = (around.distances[chosen] == 1) & linked
-    is_inside = np.asarray(linked[chosen])[:, None]
+    is_inside: npt.NDArray[np.bool_] = np.asarray(linked, np.bool_)[chosen][
+        :, np.newaxis
+    ]
     seen = start.copy()
     shells = []
     frontier = np.where(is_inside, start, False)
