@@ -51,3 +51,14 @@ def test_no_core_file_but_io_names_the_vendor_reader() -> None:
         and path.relative_to(root).parts[0] != "io"
     ]
     assert offenders == []
+
+
+def test_reading_and_processing_start_without_libraries_they_rarely_need() -> None:
+    # scipy.stats and scipy.signal cost half a second, nmrglue brings both.
+    code = "import sys, spinledger.detection.evidence, spinledger.io.read\n"
+    code += "print([n for n in ('scipy.stats', 'scipy.signal', 'nmrglue') "
+    code += "if n in sys.modules])"
+    done = subprocess.run(
+        [sys.executable, "-c", code], capture_output=True, text=True, check=True
+    )
+    assert done.stdout.strip() == "[]"

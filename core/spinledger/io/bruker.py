@@ -17,7 +17,6 @@ from pathlib import Path
 
 import numpy as np
 import numpy.typing as npt
-from nmrglue.fileio import bruker as nmrglue_bruker
 
 from spinledger.errors import SpectrumFormatError
 from spinledger.io import normalise
@@ -36,6 +35,7 @@ from spinledger.io.samples import (
     check_fid_samples,
     check_frequency,
     check_width,
+    complex_from_parts,
     make_spectrum,
     plausible_carrier,
     scaled,
@@ -208,9 +208,9 @@ def _read_fid(place: _Place, acqus: Block) -> Fid:
     frequency_mhz = check_frequency(header, acqus.number("$BF1", "$SFO1"))
     n_declared = _declared_points(header, acqus)
     raw = _read_numbers(fid, acqus, "$BYTORDA", "$DTYPA")
-    samples, notes = check_fid_samples(
-        fid, nmrglue_bruker.complexify_data(raw[: raw.size // 2 * 2]), n_declared
-    )
+    even = raw.size // 2 * 2
+    values = complex_from_parts(raw[0:even:2], raw[1:even:2])
+    samples, notes = check_fid_samples(fid, values, n_declared)
     delay, delay_notes = _delay(acqus, samples)
     offset_hz = acqus.number("$O1")
     return Fid(

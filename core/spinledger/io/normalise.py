@@ -7,8 +7,6 @@ import math
 import re
 from pathlib import Path
 
-from nmrglue.fileio.bruker import bruker_dsp_table
-
 from spinledger.errors import SpectrumFormatError
 
 _MASS_FIRST = re.compile(r"(\d{1,3})\s*-?\s*([A-Za-z]{1,2})")
@@ -115,6 +113,9 @@ def bruker_group_delay(
         return delay_points
     if decimation is None or decimation <= 1:
         return 0.0
+    # nmrglue takes a second to import: only the older files need its table.
+    from nmrglue.fileio.bruker import bruker_dsp_table  # noqa: PLC0415
+
     by_decimation = bruker_dsp_table.get(round(firmware or 0), {})
     found = by_decimation.get(round(decimation))
     return None if found is None else float(found)

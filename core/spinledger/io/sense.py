@@ -6,7 +6,7 @@ from dataclasses import dataclass, replace
 
 import numpy as np
 import numpy.typing as npt
-from scipy.signal import fftconvolve
+import scipy.fft
 
 from spinledger.values.acquisition import Fid
 from spinledger.values.spectrum import Spectrum
@@ -144,6 +144,8 @@ def _best_match(
     profile: npt.NDArray[np.float64], target: npt.NDArray[np.float64], reach: int
 ) -> float:
     """Highest correlation within some bins of offset."""
-    correlation = fftconvolve(target, profile[::-1])
-    middle = profile.size - 1
-    return float(np.max(correlation[middle - reach : middle + reach + 1]))
+    size = scipy.fft.next_fast_len(target.size + profile.size, real=True)
+    product = scipy.fft.rfft(target, size) * np.conj(scipy.fft.rfft(profile, size))
+    # Offset k stands at index k, and negative ones count from the end.
+    correlation = scipy.fft.irfft(product, size)
+    return float(np.max(correlation[np.arange(-reach, reach + 1)]))

@@ -12,7 +12,6 @@ from pathlib import Path
 
 import numpy as np
 import numpy.typing as npt
-from nmrglue.fileio import spinsolve as nmrglue_spinsolve
 
 from spinledger.errors import SpectrumFormatError
 from spinledger.io import normalise
@@ -186,6 +185,9 @@ def _read_1d(path: Path) -> tuple[npt.NDArray[np.float64], npt.NDArray[np.comple
         raise SpectrumFormatError(
             path, "is cut short or damaged; copy the experiment folder again"
         )
+    # nmrglue takes a second to import: only where there is such a file.
+    from nmrglue.fileio import spinsolve as nmrglue_spinsolve  # noqa: PLC0415
+
     with vendor_border(path):
         header, values = nmrglue_spinsolve.read(
             str(path.parent), specfile=path.name, acqupar="", procpar=""

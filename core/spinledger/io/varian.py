@@ -13,7 +13,6 @@ from pathlib import Path
 
 import numpy as np
 import numpy.typing as npt
-from nmrglue.fileio import varian as nmrglue_varian
 
 from spinledger.errors import SpectrumFormatError
 from spinledger.io import normalise
@@ -165,6 +164,9 @@ def _read_trace(path: Path) -> tuple[npt.NDArray[np.complexfloating], int]:
         raise SpectrumFormatError(
             path, "is cut short within its header; copy the experiment folder again"
         )
+    # nmrglue takes a second to import: only where there is such a file.
+    from nmrglue.fileio import varian as nmrglue_varian  # noqa: PLC0415
+
     header = nmrglue_varian.fileheader2dic(
         struct.unpack(">6i2hi", content[:_FILE_HEADER_BYTES])
     )

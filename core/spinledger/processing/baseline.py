@@ -4,7 +4,6 @@ from __future__ import annotations
 
 import numpy as np
 import numpy.typing as npt
-from pybaselines.utils import whittaker_smooth
 
 from spinledger.values.recipe import Baseline
 from spinledger.values.spectrum import Spectrum
@@ -69,6 +68,9 @@ def _free_bins(
 def _robust_whittaker(
     binned: npt.NDArray[np.float64], free: npt.NDArray[np.bool_], stiffness: float
 ) -> npt.NDArray[np.float64]:
+    # Half a second with what it brings along: only where a baseline is drawn.
+    from pybaselines.utils import whittaker_smooth  # noqa: PLC0415
+
     scale = float(np.abs(binned).max())
     if scale == 0 or not free.any():
         return np.zeros(binned.size)
