@@ -3,6 +3,7 @@
 import csv
 import json
 import os
+import re
 import shutil
 import subprocess
 import sys
@@ -280,6 +281,7 @@ def test_process_writes_csv_jcamp_and_a_recipe_that_gives_the_same(
     )
     assert code == 0
     assert "Phase:" in said
+    assert re.search(r"quality: phase good to \d+\.\d degrees, baseline \d", said)
     code, _, _ = run(capsys, "process", BATCH, "--recipe", recipe, "--out", again)
     assert code == 0
     assert first.read_bytes() == again.read_bytes()

@@ -13,6 +13,7 @@ from spinledger.io.read import read_acquired
 from spinledger.io.write import write_csv, write_jcamp
 from spinledger.processing.automatic import process, reprocess
 from spinledger.report.files import write_file
+from spinledger.values.evidence import ProcessingQuality
 from spinledger.values.recipe import Recipe
 
 _JCAMP_ENDINGS = (".jdx", ".dx", ".jcamp")
@@ -46,6 +47,7 @@ def run(arguments: argparse.Namespace) -> int:
             f"{key} {_words(value)}" for key, value in row.items() if key != "step"
         )
         sys.stdout.write(f"{row['step']}: {details}\n")
+    sys.stdout.write(f"quality: {_quality_words(processed.quality)}\n")
     for doubt in processed.quality.doubts:
         sys.stdout.write(f"doubt: {doubt}\n")
     return 0
@@ -64,6 +66,13 @@ def _read_recipe(path: Path) -> Recipe:
         raise RecipeFileError(
             f"{path}: this is not a stored recipe ({error})"
         ) from error
+
+
+def _quality_words(quality: ProcessingQuality) -> str:
+    flatness = f"baseline {quality.baseline_sd:.2f} noise sd (1 is flat)"
+    if quality.phase_sd_deg is None:
+        return f"phase not estimated, {flatness}"
+    return f"phase good to {quality.phase_sd_deg:.1f} degrees, {flatness}"
 
 
 def _words(value: object) -> str:

@@ -76,7 +76,7 @@ def satellites(signals: tuple[Signal, ...], frequency_mhz: float) -> tuple[Stray
             parent, _SATELLITE_RANGE_HZ, _SATELLITE_SHARE, _ISOTOPE_SHIFT_HZ
         ):
             why = (
-                f"13C satellite of the line at {table.hz[parent] / frequency_mhz:.3f} "
+                f"13C satellite of the line at {table.hz[parent] / frequency_mhz:z.3f} "
                 f"ppm, 1J(CH) {table.hz[high] - table.hz[low]:.0f} Hz."
             )
             strays += [_stray(table, one, "satellite", why) for one in (low, high)]

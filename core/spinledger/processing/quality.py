@@ -43,7 +43,7 @@ def acquisition_doubts(
     low, high = spectrum.last_point_ppm + edge_ppm, spectrum.first_point_ppm - edge_ppm
     if low > _LOW_PPM or high < _HIGH_PPM:
         doubts.append(
-            f"The sweep only covers {high:.1f} to {low:.1f} ppm; signals outside "
+            f"The sweep only covers {high:z.1f} to {low:z.1f} ppm; signals outside "
             "are missing or folded in."
         )
     return tuple(doubts)

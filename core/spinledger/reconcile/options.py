@@ -79,7 +79,7 @@ class Constraints:
     def sentences(self) -> tuple[str, ...]:
         """Plain sentences for the audit trail, one a hand edit."""
         pinned = [
-            f"{pin.claim} put between {pin.low_ppm:.3f} and {pin.high_ppm:.3f} ppm"
+            f"{pin.claim} put between {pin.low_ppm:z.3f} and {pin.high_ppm:z.3f} ppm"
             for pin in self.pins
         ]
         taken_off = [f"{claim} taken off its signal" for claim in self.absent]
@@ -88,10 +88,10 @@ class Constraints:
             for one in self.fixed_couplings
         ]
         left_out = [
-            f"{low:.3f} to {high:.3f} ppm left out" for low, high in self.excluded_ppm
+            f"{low:z.3f} to {high:z.3f} ppm left out" for low, high in self.excluded_ppm
         ]
         declared = [
-            f"{one.low_ppm:.3f} to {one.high_ppm:.3f} ppm: {one.why}"
+            f"{one.low_ppm:z.3f} to {one.high_ppm:z.3f} ppm: {one.why}"
             for one in self.impurities
         ]
         return (*pinned, *taken_off, *fixed, *left_out, *declared)

@@ -67,7 +67,7 @@ def _stray_sentences(strays: tuple[Stray, ...]) -> list[str]:
     ]
     rows.sort(key=lambda stray: -(stray.protons or 0.0))
     return [
-        f"the signal at {stray.low_ppm:.2f} to {stray.high_ppm:.2f} ppm has no owner"
+        f"the signal at {stray.low_ppm:z.2f} to {stray.high_ppm:z.2f} ppm has no owner"
         + (f" ({stray.protons:.1f} H by area)" if stray.protons is not None else "")
         for stray in rows[:4]
     ]

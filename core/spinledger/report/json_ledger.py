@@ -147,6 +147,10 @@ def evidence_to_json(evidence: Evidence) -> dict[str, Any]:
         "solvent_header": evidence.solvent_header,
         "temperature_k": finite(metadata.temperature_k),
         "format": metadata.format_name,
+        "quality": {
+            "phase_sd_deg": finite(evidence.quality.phase_sd_deg),
+            "baseline_sd": finite(evidence.quality.baseline_sd),
+        },
         "doubts": [*metadata.notes, *evidence.quality.doubts],
     }
 

@@ -159,8 +159,21 @@ def audit_rows(ledger: Ledger) -> tuple[tuple[str, str], ...]:
         ("Reference", f"{evidence.reference.by}: {outgoing(evidence.reference.why)}"),
         ("Solvent seen", evidence.solvent_seen or "none"),
         ("Solvent in the file", evidence.solvent_header or "none"),
+        ("Phase", _phase_words(evidence.quality.phase_sd_deg)),
+        (
+            "Baseline",
+            f"{evidence.quality.baseline_sd:.1f} noise sd over the signal-free "
+            "stretches; 1 is flat",
+        ),
     ]
-    return tuple(rows)
+    doubts = (*metadata.notes, *evidence.quality.doubts)
+    return (*rows, *(("Doubt", outgoing(doubt)) for doubt in doubts))
+
+
+def _phase_words(sd_deg: float | None) -> str:
+    if sd_deg is None:
+        return "as it was given; not estimated"
+    return f"estimated error {sd_deg:.1f}\u00a0degrees in the worst signal"
 
 
 def recipe_lines(ledger: Ledger) -> tuple[str, ...]:

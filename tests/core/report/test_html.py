@@ -14,6 +14,7 @@ from spinledger.report.context import ReportContext
 from spinledger.report.html import report_html
 from spinledger.report.published import parse_published
 from spinledger.values.acquisition import Metadata
+from spinledger.values.evidence import ProcessingQuality
 from spinledger.values.ledger import Verdict
 
 VOID = {"meta", "br", "img", "link", "hr", "input"}
@@ -125,6 +126,18 @@ def test_audit_trail_holds_hash_recipe_and_versions() -> None:
     assert "7c1e40d9a2b351f8" * 4 in words
     assert "Digital-filter delay of 67.98 points taken out" in words
     assert re.search(r"Made with spinledger \S+ python", words.replace(",", ""))
+
+
+def test_audit_trail_says_how_far_the_processing_is_to_be_trusted() -> None:
+    ledger = invented_ledger()
+    quality = ProcessingQuality(
+        phase_sd_deg=4.26, baseline_sd=1.5, doubts=("The phase is doubtful.",)
+    )
+    doubtful = replace(ledger, evidence=replace(ledger.evidence, quality=quality))
+    words = words_of(report_html(doubtful)).replace("\u00a0", " ")
+    assert "estimated error 4.3 degrees in the worst signal" in words
+    assert "1.5 noise sd over the signal-free stretches" in words
+    assert "The phase is doubtful." in words
 
 
 def test_sample_records_and_signatures_are_printed() -> None:

@@ -15,6 +15,7 @@ from spinledger.report.json_ledger import (
     read_ledger_json,
     visible_protons,
 )
+from spinledger.values.evidence import ProcessingQuality
 from spinledger.values.ledger import EntryCoupling
 
 NUMBER = (int, float)
@@ -218,3 +219,14 @@ def test_reader_takes_file_or_folder_and_refuses_the_rest(tmp_path: Path) -> Non
         read_ledger_json(other)
     with pytest.raises(LedgerFileError, match="no such file"):
         read_ledger_json(tmp_path / "absent.json")
+
+
+def test_quality_of_the_processing_stands_in_the_record() -> None:
+    ledger = invented_ledger()
+    quality = ProcessingQuality(
+        phase_sd_deg=4.26, baseline_sd=1.5, doubts=("The phase is doubtful.",)
+    )
+    doubtful = replace(ledger, evidence=replace(ledger.evidence, quality=quality))
+    spectrum = ledger_to_json(doubtful)["spectrum"]
+    assert spectrum["quality"] == {"phase_sd_deg": 4.26, "baseline_sd": 1.5}
+    assert "The phase is doubtful." in spectrum["doubts"]
