@@ -95,3 +95,23 @@ class UsageError(SpinLedgerError):
 
 class CancelledError(SpinLedgerError):
     """The user stopped a long computation; nothing was changed."""
+
+
+class SideEvidenceError(SpinLedgerError, ValueError):
+    """Typed or pasted side evidence could not be understood.
+
+    Attributes
+    ----------
+    source : str
+        File name, or "side evidence" where it was typed.
+    reason : str
+        One sentence for the user.
+    """
+
+    def __init__(self, source: str, reason: str) -> None:
+        super().__init__(source, reason)
+        self.source = source
+        self.reason = reason
+
+    def __str__(self) -> str:
+        return f"{self.source}: {self.reason}"

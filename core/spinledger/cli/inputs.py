@@ -7,7 +7,8 @@ from pathlib import Path
 
 from spinledger.errors import StructureError, UsageError
 from spinledger.processing.solvents import canonical_solvent, solvent_names
-from spinledger.reconcile.options import Candidate, ReconcileOptions
+from spinledger.reconcile.options import Candidate, Constraints, ReconcileOptions
+from spinledger.reconcile.side_reading import side_evidence_from
 from spinledger.structure.read import read_structure, read_structures
 
 
@@ -36,9 +37,12 @@ def options_of(arguments: argparse.Namespace) -> ReconcileOptions:
     ------
     StructureError
         If a file of species or companions cannot be read.
+    SideEvidenceError
+        If the side evidence cannot be read or understood.
     """
     species = read_structures(arguments.species) if arguments.species else ()
     companions = read_structures(arguments.strays) if arguments.strays else ()
+    side = side_evidence_from(arguments.side) if arguments.side else None
     return ReconcileOptions(
         ph=arguments.ph,
         temperature_k=arguments.temperature,
@@ -46,6 +50,7 @@ def options_of(arguments: argparse.Namespace) -> ReconcileOptions:
         companions=companions,
         n_contenders=arguments.contenders,
         quick=arguments.quick,
+        constraints=Constraints(side=side),
     )
 
 

@@ -69,6 +69,12 @@ def _matching_options(parser: argparse.ArgumentParser) -> None:
         "--strays", metavar="FILE.smi", type=Path, help="what else may be in the tube"
     )
     parser.add_argument(
+        "--side",
+        metavar="FILE_OR_TEXT",
+        help="carbon count or list, HSQC or COSY pairs, as in 'carbons: 9; HSQC: "
+        "4.12/60.5, 1.26/14.2'",
+    )
+    parser.add_argument(
         "--contenders",
         metavar="N",
         type=_count(0),

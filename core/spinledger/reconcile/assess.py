@@ -13,6 +13,7 @@ import numpy as np
 from spinledger.reconcile.misfit import SpectrumMisfit, spectrum_misfit
 from spinledger.reconcile.options import Constraints
 from spinledger.reconcile.refine_values import Refinement
+from spinledger.reconcile.side_costs import placement_cost
 from spinledger.values.claim import Claim, ClaimSet
 from spinledger.values.evidence import Evidence
 
@@ -182,6 +183,12 @@ def assess(
         couplings=couplings,
         selection_score=_selection_score(
             misfit, rows, couplings, n_skipped=_n_skipped(claims, absent)
+        )
+        + placement_cost(
+            claims,
+            refinement.shifts_ppm,
+            absent | hidden,
+            constraints.side if constraints else None,
         ),
     )
 

@@ -18,6 +18,7 @@ from spinledger.reconcile.match import masked_by_hand
 from spinledger.reconcile.misfit import spectrum_misfit
 from spinledger.reconcile.mixture import joined
 from spinledger.reconcile.options import ReconcileOptions
+from spinledger.reconcile.side_verdict import side_findings
 from spinledger.reconcile.solve import Limits, Solution, solve
 from spinledger.reconcile.strays import (
     Unowned,
@@ -30,7 +31,7 @@ from spinledger.reconcile.strays import (
 from spinledger.reconcile.tails import with_tails
 from spinledger.values.claim import Claim, ClaimSet
 from spinledger.values.evidence import Evidence, Stray
-from spinledger.values.ledger import VerdictState
+from spinledger.values.ledger import SideFinding, VerdictState
 from spinledger.values.structure import Structure
 
 MUCH_IMPURITY = 0.2
@@ -60,6 +61,8 @@ class Evaluation:
     logit : float or None
         Log odds at a prior of one half.
     state : str
+    side : tuple of SideFinding
+        What carbon list, HSQC and COSY said; their cost is in the logit.
     """
 
     structure: Structure
@@ -72,6 +75,7 @@ class Evaluation:
     faults: dict[str, float]
     logit: float | None
     state: VerdictState
+    side: tuple[SideFinding, ...] = ()
 
     @property
     def probability(self) -> float | None:
@@ -161,7 +165,8 @@ def evaluate(
         constraints=constraints,
     )
     faults = assessment.faults()
-    logit = logit_of(faults, bench.model)
+    side = side_findings(structure, claims, solution, evidence, bench.options)
+    logit = logit_of(faults, bench.model) - sum(one.cost for one in side)
     rest = [one for number, one in enumerate(unowned) if number not in explained]
     return Evaluation(
         structure=structure,
@@ -176,6 +181,7 @@ def evaluate(
         faults=faults,
         logit=logit,
         state=state_of(1.0 / (1.0 + float(np.exp(-logit))), bench.model),
+        side=side,
     )
 
 

@@ -15,6 +15,8 @@ from spinledger.reconcile.coarse import BoolArray, FloatArray
 from spinledger.reconcile.options import Constraints
 from spinledger.reconcile.refine_values import Refinement
 from spinledger.reconcile.search import shift_cost
+from spinledger.reconcile.side_costs import placement_cost
+from spinledger.reconcile.side_evidence import SideEvidence
 from spinledger.values.claim import ClaimSet
 
 SURE_ODDS = 0.95
@@ -130,16 +132,22 @@ def best_order(
             (claims.claims[pair.first].label, claims.claims[pair.second].label)
         )
     ]
+    side = constraints.side if constraints else None
+
+    def change(fit: Refinement, pair: Exchange) -> float:
+        return _change(claims, fit, pair, offset_ppm) + _side_change(
+            claims, fit, pair, absent, side
+        )
+
     current = refinement
     for _ in range(len(pairs) + 1):
-        changes = [_change(claims, current, pair, offset_ppm) for pair in pairs]
+        changes = [change(current, pair) for pair in pairs]
         if not changes or min(changes) > -1e-9:
             break
         current = exchanged(claims, current, pairs[int(np.argmin(changes))])
     odds = []
     for pair in pairs:
-        change = _change(claims, current, pair, offset_ppm)
-        share = float(1.0 / (1.0 + np.exp(-min(change, 50.0))))
+        share = float(1.0 / (1.0 + np.exp(-min(change(current, pair), 50.0))))
         if share < SURE_ODDS:
             odds.append(Odds(first=pair.first, second=pair.second, odds=share))
     return current, tuple(odds)
@@ -159,6 +167,20 @@ def _change(
         claims, moved, _turned_flags(determined, list(pair.couplings)), pair
     )
     return after - before
+
+
+def _side_change(
+    claims: ClaimSet,
+    refinement: Refinement,
+    pair: Exchange,
+    absent: frozenset[int],
+    side: SideEvidence | None,
+) -> float:
+    """What HSQC and COSY add to the cost of the exchanged order."""
+    turned = _turned(refinement.shifts_ppm, [(pair.first, pair.second)])
+    return placement_cost(claims, turned, absent, side) - placement_cost(
+        claims, refinement.shifts_ppm, absent, side
+    )
 
 
 def _shift(

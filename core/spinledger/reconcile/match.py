@@ -6,7 +6,7 @@ Shifts in ppm; costs are negative log likelihoods.
 from __future__ import annotations
 
 from collections.abc import Callable, Iterable
-from dataclasses import dataclass
+from dataclasses import dataclass, replace
 
 import numpy as np
 
@@ -19,6 +19,8 @@ from spinledger.reconcile.coarse import (
 )
 from spinledger.reconcile.options import Constraints
 from spinledger.reconcile.search import Search, prepare_search
+from spinledger.reconcile.side_costs import placement_cost
+from spinledger.reconcile.side_evidence import SideEvidence
 from spinledger.values.arrays import locked_floats
 from spinledger.values.claim import ClaimSet
 from spinledger.values.evidence import Evidence
@@ -126,6 +128,8 @@ def match(
             if abs(np.log(scale)) < NOTICEABLE_SCALE:
                 break
     settled = [_with_offset(one, claims, evidence.reference.sd_ppm) for one in found]
+    if constraints is not None and constraints.side is not None:
+        settled = [_with_side(one, claims, constraints.side) for one in settled]
     return Match(hypotheses=_best_distinct(settled, view), coarse=view)
 
 
@@ -247,6 +251,15 @@ def _with_offset(
         area_per_proton=hypothesis.area_per_proton,
         amplitudes=hypothesis.amplitudes,
     )
+
+
+def _with_side(
+    hypothesis: Hypothesis, claims: ClaimSet, side: SideEvidence
+) -> Hypothesis:
+    """Cost with what HSQC and COSY say of the placement."""
+    gone = hypothesis.absent | hypothesis.hidden
+    extra = placement_cost(claims, hypothesis.shifts_ppm, gone, side)
+    return replace(hypothesis, cost=hypothesis.cost + extra)
 
 
 def _t(z: FloatArray) -> FloatArray:

@@ -7,6 +7,7 @@ from __future__ import annotations
 
 from dataclasses import dataclass, field
 
+from spinledger.reconcile.side_evidence import SideEvidence
 from spinledger.values.structure import Structure
 
 
@@ -57,6 +58,8 @@ class Constraints:
         Stretches that take no part and are booked as strays.
     absent : tuple of str
         Claims that the user took off their signal: they stay open.
+    side : SideEvidence or None
+        Carbon list, HSQC and COSY pairs; no edit, but heeded like one.
     """
 
     pins: tuple[Pin, ...] = ()
@@ -64,6 +67,7 @@ class Constraints:
     excluded_ppm: tuple[tuple[float, float], ...] = ()
     impurities: tuple[DeclaredImpurity, ...] = ()
     absent: tuple[str, ...] = ()
+    side: SideEvidence | None = None
 
     @property
     def is_empty(self) -> bool:

@@ -24,6 +24,7 @@ def verdict_reasons(evaluation: Evaluation) -> tuple[str, ...]:
     entries = evaluation.booking.entries
     against = [reason for entry in _open(entries) for reason in entry.reasons]
     against += [reason for entry in _disputed(entries) for reason in entry.reasons]
+    against += [one.sentence for one in evaluation.side if one.cost > 0]
     against += _stray_sentences(evaluation.strays)
     share = evaluation.assessment.residual_share
     if share > POOR_RESIDUAL:
@@ -33,6 +34,7 @@ def verdict_reasons(evaluation: Evaluation) -> tuple[str, ...]:
         )
     for_it = [_settled_sentence(evaluation), *_order_sentences(entries)]
     said = [*against, *for_it] if against else for_it
+    said += [one.sentence for one in evaluation.side if one.cost == 0]
     said += _circumstances(evaluation)
     return tuple(sentence for sentence in said if sentence)
 

@@ -207,6 +207,7 @@ def ledger_of(
         advice=advice,
         edits=options.constraints.sentences(),
         cautions=cautions(own),
+        side=own.side,
     )
 
 

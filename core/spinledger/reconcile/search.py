@@ -18,6 +18,7 @@ from spinledger.reconcile.coarse import (
     first_order_sticks,
 )
 from spinledger.reconcile.options import Constraints
+from spinledger.reconcile.side_costs import hsqc_prior
 from spinledger.values.claim import Claim, ClaimSet
 
 ComplexArray = npt.NDArray[np.complex128]
@@ -192,6 +193,8 @@ def _priors(
         # Nothing can hide under a mask where it is not expected.
         far_under_mask = (coarse.trust < 0.5) & (np.abs(z) > HIDDEN_REACH_SD)
         cost = np.where(far_under_mask, FORBIDDEN_COST, shift_cost(z))
+        if constraints and not claim.is_exchangeable:
+            cost = cost + hsqc_prior(constraints.side, coarse.grid_ppm)
         for pin in constraints.pins if constraints else ():
             if pin.claim == claim.label:
                 outside = (coarse.grid_ppm < pin.low_ppm) | (

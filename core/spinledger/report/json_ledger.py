@@ -23,6 +23,7 @@ from spinledger.values.ledger import (
     EntryCoupling,
     EntryGroup,
     Ledger,
+    SideFinding,
 )
 from spinledger.values.structure import Structure
 
@@ -86,6 +87,7 @@ def ledger_to_json(ledger: Ledger) -> dict[str, Any]:
         "edits": list(ledger.edits),
         "versions": versions(),
         "cautions": list(ledger.cautions),
+        "side": [_side(one) for one in ledger.side],
     }
 
 
@@ -283,6 +285,14 @@ def _advice(advice: Advice) -> dict[str, Any]:
         "measurement": advice.measurement,
         "expected_discrimination": finite(advice.expected_discrimination),
         "look_for": advice.look_for,
+    }
+
+
+def _side(finding: SideFinding) -> dict[str, Any]:
+    return {
+        "kind": finding.kind,
+        "sentence": finding.sentence,
+        "cost": finite(finding.cost),
     }
 
 

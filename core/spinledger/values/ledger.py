@@ -115,6 +115,24 @@ class Advice:
     look_for: str
 
 
+@dataclass(frozen=True, slots=True, kw_only=True)
+class SideFinding:
+    """What one kind of side evidence said of the structure.
+
+    Attributes
+    ----------
+    kind : str
+        "carbons", "HSQC" or "COSY".
+    sentence : str
+    cost : float
+        Natural log odds taken off the structure; 0 where it agrees.
+    """
+
+    kind: str
+    sentence: str
+    cost: float
+
+
 @dataclass(frozen=True, slots=True, eq=False, kw_only=True)
 class ClaimLines:
     """Fitted exact lines of one claim: shifts in ppm, areas in protons."""
@@ -160,3 +178,4 @@ class Ledger:
     advice: tuple[Advice, ...] = ()
     edits: tuple[str, ...] = ()
     cautions: tuple[str, ...] = ()
+    side: tuple[SideFinding, ...] = ()
