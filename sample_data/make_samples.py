@@ -264,10 +264,17 @@ def offset_hz(shift_ppm: float) -> float:
 
 def make_fid(sample: Sample) -> npt.NDArray[np.complex128]:
     """The FID as the receiver would hand it over, delay included, unit scale."""
+    return fid_of(sample_lines(sample), sample)
+
+
+def fid_of(
+    lines: list[tuple[float, float, float]], sample: Sample
+) -> npt.NDArray[np.complex128]:
+    """FID of any lines, measured like a sample: its noise, seed and phase."""
     rng = np.random.default_rng(sample.seed)
     times_s = np.arange(2 * N_POINTS) / WIDTH_HZ
     fid = np.zeros(times_s.size, dtype=np.complex128)
-    for at_hz, area, width_hz in sample_lines(sample):
+    for at_hz, area, width_hz in lines:
         fid += area * np.exp((2j * np.pi * at_hz - np.pi * width_hz) * times_s)
     # A shim that is a little off: a tenth of every line stands 0.7 Hz to one side.
     fid *= 0.9 + 0.1 * np.exp(2j * np.pi * 0.7 * times_s)

@@ -1,0 +1,1 @@
+"""Several spectra of one sample: what they say together."""
