@@ -190,6 +190,25 @@ def _predict(commands: _Subparsers[argparse.ArgumentParser]) -> None:
     parser.add_argument(
         "--svg", metavar="FILE", type=Path, help="draw the simulated spectrum"
     )
+    parser.add_argument(
+        "--nearest",
+        action="store_true",
+        help="print the known environments behind every shift",
+    )
+    exchange = parser.add_mutually_exclusive_group()
+    exchange.add_argument(
+        "--slow-exchange",
+        dest="slow_exchange",
+        action="store_true",
+        default=None,
+        help="OH and NH show their couplings",
+    )
+    exchange.add_argument(
+        "--fast-exchange",
+        dest="slow_exchange",
+        action="store_false",
+        help="OH and NH show no couplings",
+    )
     parser.add_argument("--json", action="store_true", help="print JSON")
 
 

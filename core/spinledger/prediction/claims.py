@@ -12,6 +12,10 @@ from rdkit import Chem
 from spinledger.prediction.couplings import predict_couplings
 from spinledger.prediction.shifts import predict_shifts
 from spinledger.prediction.shifts_pairs import pair_offsets
+from spinledger.prediction.shifts_reasons import (
+    KnownEnvironment,
+    known_environments,
+)
 from spinledger.processing.solvents import canonical_solvent, is_aqueous
 from spinledger.structure.exchange import (
     Exchange,
@@ -30,6 +34,7 @@ from spinledger.structure.topicity import (
     hetero_particles,
     proton_groups,
 )
+from spinledger.structure.vantage import places
 from spinledger.values.claim import (
     Claim,
     ClaimSet,
@@ -52,6 +57,7 @@ def make_claims(
     solvent: str | None,
     ph: float | None = None,
     temperature_k: float | None = None,
+    slow_exchange: bool | None = None,
 ) -> ClaimSet:
     """Everything that a structure claims about its proton spectrum.
 
@@ -64,6 +70,9 @@ def make_claims(
         Of a solution in water; 7.4 is taken where it is not known.
     temperature_k : float, K, optional
         Of the sample; decides which bonds turn slowly.
+    slow_exchange : bool, optional
+        Whether OH and NH that are seen show their couplings to CH. Both happen in
+        CDCl3; where it is not given, the usual case of the solvent is taken.
 
     Returns
     -------
@@ -73,7 +82,7 @@ def make_claims(
         molecule with hydrogens appended (:func:`species_models`).
     """
     known = canonical_solvent(solvent) if solvent else None
-    return _claims(structure, known or solvent, ph, temperature_k)
+    return _claims(structure, known or solvent, ph, temperature_k, slow_exchange)
 
 
 def species_models(
@@ -85,12 +94,46 @@ def species_models(
     return tuple(with_hydrogens(settled(species.mol)) for species in solution.species)
 
 
+def environments_of(
+    structure: Structure,
+    claims: ClaimSet,
+    *,
+    solvent: str | None,
+    ph: float | None = None,
+) -> tuple[tuple[KnownEnvironment, ...], ...]:
+    """Known environments behind the shift of every claim, nearest last.
+
+    Parameters
+    ----------
+    structure : Structure
+    claims : ClaimSet
+        Made of it by :func:`make_claims` with the same solvent and pH.
+    solvent : str or None
+    ph : float, optional
+
+    Returns
+    -------
+    tuple of tuple of KnownEnvironment, one a claim
+        Empty for exchangeable protons, whose shift is a usual range.
+    """
+    known = canonical_solvent(solvent) if solvent else None
+    solution = in_solution(molecule(structure), known or solvent, ph)
+    models = [settled(species.mol) for species in solution.species]
+    return tuple(
+        ()
+        if claim.is_exchangeable
+        else known_environments(models[claim.species], claim.atoms[0])
+        for claim in claims.claims
+    )
+
+
 @functools.lru_cache(maxsize=128)
 def _claims(
     structure: Structure,
     solvent: str | None,
     ph: float | None,
     temperature_k: float | None,
+    slow_exchange: bool | None,
 ) -> ClaimSet:
     drawn = molecule(structure)
     solution = in_solution(drawn, solvent, ph)
@@ -102,6 +145,7 @@ def _claims(
         solvent=solvent,
         ph=ph,
         temperature_k=temperature_k,
+        slow_exchange=slow_exchange,
         numbers=numbers,
         n_given=drawn.GetNumAtoms(),
     )
@@ -194,6 +238,7 @@ class _Maker:
     solvent: str | None
     ph: float | None
     temperature_k: float | None
+    slow_exchange: bool | None
     numbers: tuple[str | None, ...]
     n_given: int
 
@@ -236,7 +281,8 @@ class _Maker:
                 carbons, predict_shifts(mol, carbons, solvent=self.solvent), strict=True
             )
         )
-        offsets = pair_offsets(mol, groups)
+        offsets = pair_offsets(mol, groups, predicted, temperature_k=self.temperature_k)
+        where = places(mol, groups)
         claims = []
         for index, group in enumerate(groups):
             swap = swapping.get(group.carriers[0])
@@ -261,6 +307,7 @@ class _Maker:
                     shift_source=source,
                     visibility=visibility,
                     why=why,
+                    place=where[index],
                 )
             )
         return claims
@@ -291,6 +338,8 @@ class _Maker:
     def _couples(self, swap: Exchange | None) -> bool:
         if swap is None or not swap.is_exchangeable:
             return True
+        if self.slow_exchange is not None:
+            return self.slow_exchange
         return couples_over_exchange(swap.kind, self.solvent)
 
 

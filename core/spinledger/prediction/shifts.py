@@ -1,35 +1,26 @@
 """Shifts of protons on carbon, with calibrated intervals; ppm.
 
-The mean of a table of known neighbourhoods corrected by boosted trees, and of
-trees on counted surroundings alone. Model files and their origin: data/SOURCE.md.
+A table of known neighbourhoods and a sum of increments start it; boosted trees and
+small networks correct them. How the parts were made: data/SOURCE.md.
 """
 
 from __future__ import annotations
 
-import functools
-import gzip
-import json
 from collections.abc import Sequence
 from dataclasses import dataclass
-from importlib import resources
-from typing import TYPE_CHECKING, Any, Final
+from typing import Final
 
 import numpy as np
 import numpy.typing as npt
 from rdkit import Chem
 
 from spinledger.prediction.shifts_features import Surroundings, feature_matrix
-from spinledger.prediction.shifts_spheres import (
-    N_SPHERES,
-    Lookup,
-    Sphere,
-    SphereTable,
-    sphere_codes,
-)
+from spinledger.prediction.shifts_increments import fragment_counts
+from spinledger.prediction.shifts_model import ShiftModel, boosted, load_model
+from spinledger.prediction.shifts_network import network_inputs
+from spinledger.prediction.shifts_spheres import Lookup, coarse_codes, fine_codes
 from spinledger.prediction.shifts_types import proton_class
-
-if TYPE_CHECKING:
-    import lightgbm
+from spinledger.processing.solvents import is_aqueous
 
 # Most training labels do not name their solvent (common practice: CDCl3), so
 # the interval is widened for others. D2O 1.25 is measured on published fits,
@@ -68,6 +59,11 @@ class ShiftPrediction:
         Labels with just these surroundings.
     source : str
         The same in words.
+    gap_ppm : float, ppm
+        Distance of the two protons of the carbon (or of two methyls), if they
+        are not alike.
+    gap_factor : float
+        The distance is within this factor, either way, in 68 of 100 cases.
     """
 
     shift_ppm: float
@@ -76,19 +72,17 @@ class ShiftPrediction:
     sphere: int
     examples: int
     source: str
+    gap_ppm: float
+    gap_factor: float
 
 
 @dataclass(frozen=True, slots=True, eq=False, kw_only=True)
-class ShiftModel:
-    """Everything that was learned."""
+class _Base:
+    """What table and increments say of some atoms, and what the trees are shown."""
 
-    table: SphereTable
-    residual: lightgbm.Booster
-    direct: lightgbm.Booster
-    scale: lightgbm.Booster
-    columns: npt.NDArray[np.int64]
-    solvents: tuple[str, ...]
-    class_factors: dict[str, tuple[float, float]]
+    lookup: Lookup
+    estimates_ppm: npt.NDArray[np.float64]
+    columns: npt.NDArray[np.float64]
 
 
 def predict_shifts(
@@ -113,30 +107,82 @@ def predict_shifts(
     if not atoms:
         return ()
     model = load_model()
-    classes = [proton_class(mol.GetAtomWithIdx(i)) for i in atoms]
-    lookup = model.table.look_up(sphere_codes(mol)[list(atoms)], classes)
-    counted = feature_matrix(Surroundings(mol), atoms)[:, model.columns]
-    known = model.solvents.index(solvent) if solvent in model.solvents else -1
-    direct_input = np.column_stack([counted, np.full(len(atoms), known)])
-    stacked = np.column_stack([direct_input, lookup.features]).astype(np.float32)
-    means = (
-        lookup.estimates_ppm
-        + _predicted(model.residual, stacked)
-        + _predicted(model.direct, direct_input.astype(np.float32))
-    ) / 2
-    scales = np.exp(_predicted(model.scale, stacked))
-    widening = _widening(solvent)
-    return tuple(
-        _prediction(
-            model,
-            lookup,
-            index,
-            class_name=classes[index],
-            mean=float(means[index]),
-            scale=float(scales[index]) * widening,
-        )
-        for index in range(len(atoms))
+    chosen = list(atoms)
+    classes = [proton_class(mol.GetAtomWithIdx(i)) for i in chosen]
+    around = Surroundings(mol)
+    base = _base(model, mol, chosen, classes, around)
+    features = feature_matrix(around, chosen)
+    solvent_column = np.full(len(chosen), _solvent_index(model, solvent))
+    counted = np.column_stack([features[:, model.columns], solvent_column]).astype(
+        np.float32
     )
+    stacked = np.column_stack([counted, base.columns]).astype(np.float32)
+    means = _means(model, base, counted, stacked, classes)
+    scales = np.exp(boosted(model.scale, stacked)) * _widening(solvent)
+    gaps = model.gap.predict(features)
+    out = []
+    for index, name in enumerate(classes):
+        factors = model.class_factors.get(name, model.class_factors["all"])
+        sphere = int(base.lookup.depths[index])
+        examples = int(base.lookup.examples[index])
+        out.append(
+            ShiftPrediction(
+                shift_ppm=float(means[index]),
+                sd_ppm=float(scales[index]) * factors[0],
+                half_width_95_ppm=float(scales[index]) * factors[1],
+                sphere=sphere,
+                examples=examples,
+                source=_in_words(
+                    sphere, examples, float(base.lookup.spreads_ppm[index])
+                ),
+                gap_ppm=float(gaps[index]),
+                gap_factor=model.gap.factor(name),
+            )
+        )
+    return tuple(out)
+
+
+def _base(
+    model: ShiftModel,
+    mol: Chem.Mol,
+    atoms: list[int],
+    classes: list[str],
+    around: Surroundings,
+) -> _Base:
+    lookup = model.table.look_up(
+        fine_codes(mol)[atoms], coarse_codes(mol)[atoms], classes
+    )
+    counts = fragment_counts(mol, atoms, around.distances)
+    sums = model.increments.estimate(counts, classes)
+    return _Base(
+        lookup=lookup,
+        estimates_ppm=(lookup.estimates_ppm + sums) / 2,
+        columns=np.column_stack([lookup.features, sums, sums - lookup.estimates_ppm]),
+    )
+
+
+def _means(
+    model: ShiftModel,
+    base: _Base,
+    counted: npt.NDArray[np.float32],
+    stacked: npt.NDArray[np.float32],
+    classes: list[str],
+) -> npt.NDArray[np.float64]:
+    """Weighted mean of the trees' and the networks' answers."""
+    shown = network_inputs(counted, base.columns, classes, len(model.solvents))
+    corrections = [network.predict(shown) for network in model.networks]
+    parts = {
+        "residual": base.estimates_ppm + boosted(model.residual, stacked),
+        "direct": boosted(model.direct, counted),
+        "network": base.estimates_ppm + np.mean(corrections, axis=0),
+    }
+    weighted = [model.shares[name] * part for name, part in parts.items()]
+    return np.asarray(np.sum(weighted, axis=0), dtype=np.float64)
+
+
+def _solvent_index(model: ShiftModel, solvent: str | None) -> int:
+    known = "D2O" if is_aqueous(solvent) else solvent
+    return model.solvents.index(known) if known in model.solvents else -1
 
 
 def _widening(solvent: str | None) -> float:
@@ -145,83 +191,9 @@ def _widening(solvent: str | None) -> float:
     return _WIDENING.get(solvent, _OTHER_SOLVENT)
 
 
-def _predicted(
-    booster: lightgbm.Booster, rows: npt.NDArray[np.float32]
-) -> npt.NDArray[np.float64]:
-    return np.asarray(booster.predict(rows, num_threads=1), dtype=np.float64)
-
-
-def _prediction(
-    model: ShiftModel,
-    lookup: Lookup,
-    index: int,
-    *,
-    class_name: str,
-    mean: float,
-    scale: float,
-) -> ShiftPrediction:
-    inner, outer = model.class_factors.get(class_name, model.class_factors["all"])
-    sphere, examples = int(lookup.depths[index]), int(lookup.examples[index])
-    return ShiftPrediction(
-        shift_ppm=mean,
-        sd_ppm=inner * scale,
-        half_width_95_ppm=outer * scale,
-        sphere=sphere,
-        examples=examples,
-        source=_in_words(sphere, examples, float(lookup.deviations_ppm[index])),
-    )
-
-
 def _in_words(sphere: int, examples: int, spread_ppm: float) -> str:
     if examples == 0:
         return "surroundings not known; from counted neighbours alone"
     count = "1 example" if examples == 1 else f"{examples} examples"
     spread = f", mean spread {spread_ppm:.2f} ppm" if examples > 1 else ""
     return f"known environment to sphere {sphere}, {count}{spread}"
-
-
-@functools.cache
-def load_model() -> ShiftModel:
-    """Read the model files; once a process."""
-    facts = json.loads(_read("shift_facts.json"))
-    return ShiftModel(
-        table=_load_table(),
-        residual=_load_booster("shift_residual.txt.gz"),
-        direct=_load_booster("shift_direct.txt.gz"),
-        scale=_load_booster("shift_scale.txt.gz"),
-        columns=np.array(facts["columns"], dtype=np.int64),
-        solvents=tuple(facts["solvents"]),
-        class_factors={k: (v[0], v[1]) for k, v in facts["class_factors"].items()},
-    )
-
-
-def _read(name: str) -> bytes:
-    return (resources.files("spinledger.prediction") / "data" / name).read_bytes()
-
-
-def _load_booster(name: str) -> lightgbm.Booster:
-    import lightgbm  # noqa: PLC0415 - 0.4 s, only where shifts are predicted
-
-    return lightgbm.Booster(model_str=gzip.decompress(_read(name)).decode())
-
-
-def _load_table() -> SphereTable:
-    folder = resources.files("spinledger.prediction") / "data"
-    with (
-        resources.as_file(folder / "shift_table.npz") as path,
-        np.load(path, allow_pickle=False) as arrays,
-    ):
-        return SphereTable(
-            class_medians_ppm=arrays["class_medians_ppm"],
-            class_sds_ppm=arrays["class_sds_ppm"],
-            spheres=tuple(_sphere(arrays, radius) for radius in range(N_SPHERES)),
-        )
-
-
-def _sphere(arrays: Any, radius: int) -> Sphere:
-    return Sphere(
-        codes=arrays[f"codes_{radius}"],
-        medians_ppm=arrays[f"medians_{radius}"].astype(np.float32),
-        deviations_ppm=arrays[f"deviations_{radius}"].astype(np.float32),
-        counts=arrays[f"counts_{radius}"].astype(np.float32),
-    )

@@ -11,6 +11,7 @@ import numpy.typing as npt
 from rdkit import Chem
 from rdkit.Chem import rdPartialCharges
 
+from spinledger.prediction.shifts_chairs import chair_features
 from spinledger.prediction.shifts_faces import face_counts
 from spinledger.prediction.shifts_types import (
     ATOM_TYPES,
@@ -120,6 +121,7 @@ def feature_matrix(
         _atom_scalars(around, chosen),
         _shell_scalars(around, chosen),
         _ring_scalars(around, chosen),
+        chair_features(around.mol, atoms),
     ]
     return np.hstack(blocks).astype(np.float32)
 
@@ -143,13 +145,11 @@ def _counts_by_conjugation(
     it is saturated.
     """
     conjugation = around.conjugation
-    linked = np.any(conjugation, axis=1)
+    linked: npt.NDArray[np.bool_] = np.any(conjugation > 0, axis=1)
     start = np.zeros((chosen.size, linked.size), bool)
     start[np.arange(chosen.size), chosen] = True
     bonded = (around.distances[chosen] == 1) & linked
-    is_inside: npt.NDArray[np.bool_] = np.asarray(linked, np.bool_)[chosen][
-        :, np.newaxis
-    ]
+    is_inside = linked[chosen][:, None]
     seen = start.copy()
     shells = []
     frontier = np.where(is_inside, start, False)

@@ -34,6 +34,9 @@ class Claim:
         Label of the diastereotopic partner on the same atom(s), if any.
     shift_source : str
         How we know: "known environment to sphere 4, 17 examples", ...
+    place : str
+        Where it stands: "axial", "equatorial", "pro-R", "pro-S", "axial, pro-R", or
+        "" where there is nothing to say or it is not known.
     """
 
     label: str
@@ -47,6 +50,7 @@ class Claim:
     why: str = ""
     pair: str | None = None
     shift_source: str = ""
+    place: str = ""
 
 
 @dataclass(frozen=True, slots=True, kw_only=True)

@@ -26,7 +26,7 @@ def hetero_vicinal(frame: Frame, first: int, second: int) -> Estimate | None:
 def _hydroxyl(frame: Frame, carbon: int) -> Estimate | None:
     if not frame.is_sp3_carbon(carbon):
         return None
-    key = "H-O-CH3" if frame.n_hydrogens(carbon) == 3 else "H-O-C-H"
+    key = {3: "H-O-CH3", 2: "H-O-CH2"}.get(frame.n_hydrogens(carbon), "H-O-C-H")
     return from_table(key, "H-O-C-H", is_rigid=False)
 
 
