@@ -11,9 +11,13 @@ from rdkit import Chem
 
 from spinledger.prediction.shifts import ShiftPrediction
 from spinledger.prediction.shifts_alkene import cis_trans_difference_ppm
-from spinledger.prediction.shifts_rotation import rotation_gap_ppm
+from spinledger.prediction.shifts_rotation import formamide_sign, rotation_gap_ppm
 from spinledger.structure.mobility import slow_bonds
-from spinledger.structure.stereo_elements import TerminalAlkene, terminal_alkenes
+from spinledger.structure.stereo_elements import (
+    TerminalAlkene,
+    stereo_elements,
+    terminal_alkenes,
+)
 from spinledger.structure.topicity import ProtonGroup
 from spinledger.structure.vantage import axial_preferences
 
@@ -94,6 +98,7 @@ class _Offsets:
         self.ends = {end.outer: end for end in terminal_alkenes(mol)}
         self.twins = _twins(mol, groups)
         self.slow = slow_bonds(mol, temperature_k)
+        self.links = stereo_elements(mol, temperature_k).links
         self.preferences = axial_preferences(mol, groups)
 
     def of(self, index: int) -> tuple[float, float]:
@@ -130,6 +135,9 @@ class _Offsets:
         end = self.ends.get(group.carriers[0])
         if end is not None:
             return _alkene_sign(self.mol, end, group, self.groups[twin])
+        of_formamide = formamide_sign(self.mol, self.links, group.carriers[0])
+        if of_formamide is not None:
+            return of_formamide
         preference = self.preferences.get(index, 0.0)
         if abs(preference) >= _LEAST_PREFERENCE:
             return -1.0 if preference > 0 else 1.0

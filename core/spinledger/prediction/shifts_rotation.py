@@ -8,6 +8,7 @@ from typing import Final
 from rdkit import Chem
 
 from spinledger.structure.mobility import SlowBond
+from spinledger.structure.stereo_elements import Link
 
 # Distance of two N-methyl groups at room temperature in CDCl3 or DMSO-d6, from
 # memory of handbook spectra: DMF 0.09, dimethylacetamide 0.08, dimethylbenzamide
@@ -66,6 +67,46 @@ def rotation_gap_ppm(
         return None
     gap = max(found)
     return gap, max(_RELATIVE_SD * gap, _LEAST_SD_PPM)
+
+
+def formamide_sign(mol: Chem.Mol, links: Sequence[Link], carrier: int) -> float | None:
+    """+1 where a group beside a formamide nitrogen stands at lower field than its twin.
+
+    Parameters
+    ----------
+    mol : Chem.Mol
+        Hydrogens implicit.
+    links : sequence of Link
+        Slow bonds among them, see
+        :func:`spinledger.structure.stereo_elements.stereo_elements`.
+    carrier : int
+        Carbon with two or three protons.
+
+    Returns
+    -------
+    float or None
+        None where the carrier is not bonded to such a nitrogen. N-CH3 and N-CH2
+        anti to the oxygen, beside the formyl proton, stand at lower field [1]_.
+
+    References
+    ----------
+    .. [1] F. A. L. Anet, A. J. R. Bourn, J. Am. Chem. Soc. 87 (1965) 5250-5251,
+       doi:10.1021/ja00950a048 (nuclear Overhauser effect of dimethylformamide).
+    """
+    if mol.GetAtomWithIdx(carrier).GetTotalNumHs() < 2:
+        return None
+    for link in links:
+        if link.kind != "formamide" or carrier not in link.positions[1]:
+            continue
+        oxygens = [
+            i >= 0 and mol.GetAtomWithIdx(i).GetAtomicNum() == 8
+            for i in link.positions[0]
+        ]
+        if True in oxygens:
+            # First positions of both ends are cis.
+            beside = link.positions[1][oxygens.index(True)]
+            return -1.0 if carrier == beside else 1.0
+    return None
 
 
 def _path(mol: Chem.Mol, first: int, last: int) -> tuple[int, ...]:
