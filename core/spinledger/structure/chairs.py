@@ -134,7 +134,7 @@ def _faces(
 ) -> tuple[dict[int, int], ...] | None:
     """Faces of all positions; None where the configuration is not known."""
     single = [i for i in ring if _n_outside(mol, ring, i) == 1]
-    faces = []
+    faces: list[dict[int, int]] = []
     for place, index in enumerate(ring):
         before, after = ring[place - 1], ring[(place + 1) % _SIZE]
         atom = mol.GetAtomWithIdx(index)
