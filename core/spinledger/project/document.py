@@ -9,6 +9,7 @@ from __future__ import annotations
 from dataclasses import dataclass, replace
 from typing import TYPE_CHECKING
 
+from spinledger.sample.roles import Role
 from spinledger.values.acquisition import Acquired
 from spinledger.values.evidence import Evidence
 from spinledger.values.ledger import Ledger, Verdict
@@ -84,8 +85,48 @@ class AuditLine:
 
 
 @dataclass(frozen=True, slots=True, eq=False, kw_only=True)
+class SampleSpectrum:
+    """One spectrum of the sample with everything that is its own.
+
+    Attributes
+    ----------
+    key : int
+        Unique in the project, in the order of coming.
+    role : str
+        What it is for, see :data:`spinledger.sample.roles.ROLES`.
+    role_why : str
+        One sentence; "Set by hand." where the user chose.
+    source_name, source_path, acquired, recipe, evidence, ledger
+        As of a project.
+    verdict_before_edits : Verdict or None
+    edits : tuple of Edit
+    solvent : str or None
+    temperature_k : float or None, K
+    prefer_processed : bool
+    """
+
+    key: int
+    role: Role = "main"
+    role_why: str = ""
+    source_name: str | None = None
+    source_path: str | None = None
+    acquired: Acquired | None = None
+    recipe: Recipe | None = None
+    evidence: Evidence | None = None
+    ledger: Ledger | None = None
+    verdict_before_edits: Verdict | None = None
+    edits: tuple[Edit, ...] = ()
+    solvent: str | None = None
+    temperature_k: float | None = None
+    prefer_processed: bool = False
+
+
+@dataclass(frozen=True, slots=True, eq=False, kw_only=True)
 class Project:
     """Everything that is open: evidence side, claims side, edits and records.
+
+    A sample may have several spectra. One is shown: its recipe, evidence, ledger
+    and edits stand in the project's own fields; the others wait in ``others``.
 
     Attributes
     ----------
@@ -112,6 +153,10 @@ class Project:
     labels : tuple of (str, str)
         Automatic claim label and the label that is shown instead.
     audit : tuple of AuditLine
+    key, role, role_why
+        Of the spectrum that is shown.
+    others : tuple of SampleSpectrum
+        The sample's other spectra.
     """
 
     name: str = "Untitled"
@@ -128,6 +173,10 @@ class Project:
     edits: tuple[Edit, ...] = ()
     labels: tuple[tuple[str, str], ...] = ()
     audit: tuple[AuditLine, ...] = ()
+    key: int = 0
+    role: Role = "main"
+    role_why: str = ""
+    others: tuple[SampleSpectrum, ...] = ()
 
     @property
     def needs_evidence(self) -> bool:
@@ -199,9 +248,25 @@ def open_structure(project: Project, structure: Structure, *, when: str) -> Proj
         ledger=None,
         verdict_before_edits=None,
         labels=(),
-        edits=tuple(edit for edit in project.edits if not edit.names_claims),
+        edits=_without_claims(project.edits),
+        others=tuple(
+            replace(
+                _unsolved(one),
+                verdict_before_edits=None,
+                edits=_without_claims(one.edits),
+            )
+            for one in project.others
+        ),
         audit=(*project.audit, line),
     )
+
+
+def _without_claims(edits: tuple[Edit, ...]) -> tuple[Edit, ...]:
+    return tuple(edit for edit in edits if not edit.names_claims)
+
+
+def _unsolved(spectrum: SampleSpectrum) -> SampleSpectrum:
+    return replace(spectrum, ledger=None)
 
 
 def with_evidence(project: Project, evidence: Evidence) -> Project:
@@ -242,6 +307,9 @@ def with_options(project: Project, options: ProjectOptions, *, when: str) -> Pro
         if _processing_differs(project.options, options)
         else (project.evidence),
         ledger=None,
+        others=tuple(map(_unsolved, project.others))
+        if _claims_differ(project.options, options)
+        else project.others,
         audit=(*project.audit, line),
     )
 
@@ -249,6 +317,13 @@ def with_options(project: Project, options: ProjectOptions, *, when: str) -> Pro
 def _processing_differs(before: ProjectOptions, after: ProjectOptions) -> bool:
     names = ("solvent", "temperature_k", "prefer_processed")
     return any(getattr(before, name) != getattr(after, name) for name in names)
+
+
+def _claims_differ(before: ProjectOptions, after: ProjectOptions) -> bool:
+    """Whether options changed that all spectra of the sample share."""
+    own = ("solvent", "temperature_k", "prefer_processed")
+    plain = dict.fromkeys(own)
+    return replace(before, **plain) != replace(after, **plain)  # type: ignore[arg-type]  # only compared
 
 
 def _difference(before: ProjectOptions, after: ProjectOptions) -> str:

@@ -6,7 +6,7 @@ from collections.abc import Callable, Mapping
 from dataclasses import fields, replace
 from typing import Any
 
-from spinledger.project.document import Project
+from spinledger.project.document import Project, SampleSpectrum
 from spinledger.values.claim import ClaimSet
 from spinledger.values.ledger import Entry, Ledger, Model
 
@@ -56,12 +56,31 @@ def rename(project: Project, claim: str, label: str) -> Project:
         labels=kept,
         edits=tuple(relabel_edit(edit, renamed) for edit in project.edits),
     )
+    changed = replace(
+        changed, others=tuple(_relabel_spectrum(one, renamed) for one in project.others)
+    )
     if project.ledger is None:
         return changed
     ledger = relabel_ledger(project.ledger, renamed)
     if was_current:  # the edits read differently now, but ask for the same
         ledger = replace(ledger, edits=changed.solving_edits)
     return replace(changed, ledger=ledger)
+
+
+def _relabel_spectrum(
+    spectrum: SampleSpectrum, renamed: Mapping[str, str]
+) -> SampleSpectrum:
+    """The same for a spectrum of the sample that is not shown."""
+    before = tuple(one.description for one in spectrum.edits if one.needs_solving)
+    edits = tuple(relabel_edit(edit, renamed) for edit in spectrum.edits)
+    ledger = spectrum.ledger
+    if ledger is not None:
+        was_current = ledger.edits == before
+        ledger = relabel_ledger(ledger, renamed)
+        if was_current:
+            after = tuple(one.description for one in edits if one.needs_solving)
+            ledger = replace(ledger, edits=after)
+    return replace(spectrum, edits=edits, ledger=ledger)
 
 
 def relabel_ledger(ledger: Ledger, labels: Mapping[str, str]) -> Ledger:

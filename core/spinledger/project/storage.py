@@ -18,7 +18,7 @@ import numpy.typing as npt
 
 from spinledger.errors import OutputError, SpinLedgerError
 from spinledger.project.codec import Encoder, decode
-from spinledger.project.document import Project
+from spinledger.project.document import Project, SampleSpectrum
 
 SCHEMA = 1
 MIME_TYPE = "application/vnd.spinledger.project+zip"
@@ -124,7 +124,8 @@ def _packed(project: Project) -> bytes:
     ledger = project.ledger
     shared = ledger is not None and ledger.evidence is project.evidence
     # The ledger holds the same evidence; it is written once.
-    tree = encoder.encode(replace(project, evidence=None) if shared else project)
+    slim = replace(project, others=tuple(map(_without_twin, project.others)))
+    tree = encoder.encode(replace(slim, evidence=None) if shared else slim)
     entries = {
         _DOCUMENT: _json_bytes(
             {"schema": SCHEMA, "evidence_of_ledger": shared, "project": tree}
@@ -243,9 +244,24 @@ def _decoded(entries: dict[str, bytes]) -> Project:
     project = decode(tree["project"], arrays)
     if not isinstance(project, Project):
         raise ValueError("no project inside")
+    project = replace(project, others=tuple(map(_with_twin, project.others)))
     if tree.get("evidence_of_ledger") and project.ledger is not None:
         return replace(project, evidence=project.ledger.evidence)
     return project
+
+
+def _without_twin(spectrum: SampleSpectrum) -> SampleSpectrum:
+    """Spectrum without the evidence that its ledger holds already."""
+    ledger = spectrum.ledger
+    if ledger is None or ledger.evidence is not spectrum.evidence:
+        return spectrum
+    return replace(spectrum, evidence=None)
+
+
+def _with_twin(spectrum: SampleSpectrum) -> SampleSpectrum:
+    if spectrum.evidence is not None or spectrum.ledger is None:
+        return spectrum
+    return replace(spectrum, evidence=spectrum.ledger.evidence)
 
 
 def _json_entry(archive: zipfile.ZipFile, name: str, path: Path) -> dict[str, Any]:
