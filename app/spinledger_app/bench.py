@@ -2,94 +2,74 @@
 
 from __future__ import annotations
 
-from collections.abc import Callable, Sequence
+from collections.abc import Sequence
 from dataclasses import replace
-from datetime import UTC, datetime
 from pathlib import Path
 
 from PySide6.QtCore import QObject, QTimer, Signal
 
+from spinledger.errors import StructureError
 from spinledger.project.constraints import reconcile_options, standing_constraints
 from spinledger.project.document import (
     Project,
     open_spectrum,
     open_structure,
     with_evidence,
+    with_layout,
     with_ledger,
     with_options,
+    without_structure,
 )
 from spinledger.project.edits import Edit, SetRecipe, apply_edit
 from spinledger.project.labels import relabel_ledger, shown_labels
-from spinledger.report.context import context_of
 from spinledger.values.evidence import Evidence
 from spinledger.values.ledger import Ledger
 from spinledger.values.recipe import Recipe
+from spinledger.values.structure import Structure
 from spinledger_app import tasks
 from spinledger_app.lanes.scene import LaneScene
 from spinledger_app.presenters.scenes import SceneStore
 from spinledger_app.presenters.structure import Drawing
 from spinledger_app.presenters.wording import say
 from spinledger_app.selection import Selection
-from spinledger_app.session import Session
 from spinledger_app.workers import WorkerPool
+from spinledger_app.writing import WritingBench, now
 
 _RESOLVE_AFTER_MS = 60
 
 
-def now() -> str:
-    """Time of the wall clock, ISO 8601 with its zone."""
-    return datetime.now(UTC).isoformat(timespec="seconds")
-
-
-class Bench(QObject):
+class Bench(WritingBench):
     """Runs the work behind the window and tells what came of it.
 
     Signals
     -------
-    told : str sentence, bool is_error
-    progressed : float, or None when nothing runs
     unreadable : str sentence
         Data could not be read; empty when they could.
     shown : none
         Something to show has changed: project, scene, drawing or thumbnails.
     first_ledger : none
         A spectrum and a structure have met for the first time.
-    saved : str path
-    reported : tuple of paths
-    copied_text : str
     """
 
-    told = Signal(str, bool)
-    progressed = Signal(object)
     unreadable = Signal(str)
     shown = Signal()
     first_ledger = Signal()
-    saved = Signal(str)
-    reported = Signal(object)
-    sentence_ready = Signal(str)
 
     def __init__(self, pool: WorkerPool, parent: QObject | None = None) -> None:
-        super().__init__(parent)
-        self.pool = pool
-        self.session = Session()
+        super().__init__(pool, parent)
         self.selection = Selection()
         self.scenes = SceneStore()
         self.drawing: Drawing | None = None
         self.thumbnails: dict[str, Drawing] = {}
         self.is_full_tested = False
         self.last_fault_place: Path | None = None
+        self.drawn_here: Structure | None = None
         self._drawn_smiles: str | None = None
         self._timer = QTimer(self)
         self._timer.setSingleShot(True)
         self._timer.setInterval(_RESOLVE_AFTER_MS)
         self._timer.timeout.connect(self.solve)
         self.session.project_changed.connect(self._follow)
-        self.pool.busy_changed.connect(self._on_busy)
-
-    @property
-    def project(self) -> Project:
-        """The open project."""
-        return self.session.project
 
     @property
     def scene(self) -> LaneScene | None:
@@ -169,6 +149,45 @@ class Bench(QObject):
         self.pool.run(
             tasks.read_claim, text, done=done, failed=self._fail, lane="structure"
         )
+
+    def take_drawing(self, block: str) -> None:
+        """Take what was drawn in the sketch, a molfile; empty removes the structure.
+
+        The structure is remembered as ``drawn_here``, so that the sketch does not
+        show again what it shows already.
+        """
+        from spinledger.structure.read import (  # noqa: PLC0415 - loads RDKit
+            read_structure,
+        )
+        from spinledger_app.presenters.drawing import (  # noqa: PLC0415 - as above
+            is_same_but_for_layout,
+        )
+
+        when = now()
+        if not block:
+            self.selection.clear()
+            self.session.apply(
+                say("remove the structure"),
+                lambda project: without_structure(project, when=when),
+            )
+            return
+        try:
+            structure = read_structure(block)
+        except StructureError as error:
+            self._fail(error.reason)
+            return
+        before = self.project.structure
+        if before is not None and is_same_but_for_layout(before, structure):
+            laid = with_layout(self.project, structure)
+            self.drawn_here = laid.structure
+            self.session.apply(say("move atoms"), lambda _: laid)
+            return
+        self.drawn_here = structure
+        self.selection.clear()
+        self.session.apply(
+            say("draw"), lambda project: open_structure(project, structure, when=when)
+        )
+        self._solve_soon()
 
     def open_project(self, path: Path) -> None:
         """Open a project file."""
@@ -423,81 +442,6 @@ class Bench(QObject):
         self.pool.run(
             tasks.draw_smiles, wanted, done=done, failed=self._fail, lane="thumbnails"
         )
-
-    # -- writing -----------------------------------------------------------------
-
-    def save(self, path: Path) -> None:
-        """Save the project file."""
-        project = self.project
-
-        def done(_path: Path) -> None:
-            self.session.mark_saved(project, path)
-            self.told.emit(say("Saved {0}.").replace("{0}", path.name), False)
-            self.saved.emit(str(path))
-
-        self.pool.run(
-            tasks.save, project, path, done=done, failed=self._fail, lane="save"
-        )
-
-    def write_report(self, folder: Path, formats: Sequence[str]) -> None:
-        """Write the report into a folder."""
-        self._write(tasks.write_report, folder, tuple(formats))
-
-    def write_pdf(self, path: Path) -> None:
-        """Write the report as PDF."""
-        self._write(tasks.write_pdf, path)
-
-    def _write(self, task: Callable[..., object], place: Path, *more: object) -> None:
-        ledger = self.project.ledger
-        if ledger is None:
-            self._fail(say("There is no ledger to report yet."))
-            return
-        day = datetime.now(UTC).astimezone()
-        context = context_of(self.project, date=f"{day.day} {day:%B %Y}")
-
-        def done(result: object) -> None:
-            paths = result if isinstance(result, tuple) else (result,)
-            words = say("Report written to {0}.").replace("{0}", str(place))
-            self.told.emit(words, False)
-            self.reported.emit(paths)
-
-        self.pool.run(
-            task,
-            ledger,
-            place,
-            *more,
-            context,
-            done=done,
-            failed=self._fail,
-            told=self._tell_stage,
-            lane="report",
-        )
-
-    def ask_sentence(self) -> None:
-        """Make the experimental-section text; told by ``sentence_ready``."""
-        ledger = self.project.ledger
-        if ledger is None:
-            self._fail(say("There is no ledger to report yet."))
-            return
-        self.pool.run(
-            tasks.experimental_sentence,
-            ledger,
-            done=self.sentence_ready.emit,
-            failed=self._fail,
-            lane="sentence",
-        )
-
-    # -- telling -----------------------------------------------------------------
-
-    def _tell_stage(self, stage: str, fraction: float) -> None:
-        self.told.emit(say(stage[:1].upper() + stage[1:]) + " …", False)
-        self.progressed.emit(min(max(fraction, 0.02), 1.0))
-
-    def _on_busy(self, is_busy: bool) -> None:
-        self.progressed.emit(0.02 if is_busy else None)
-
-    def _fail(self, sentence: str) -> None:
-        self.told.emit(sentence, True)
 
 
 def _is_same_spectrum(one: Evidence, other: Evidence) -> bool:

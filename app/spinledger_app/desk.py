@@ -8,6 +8,7 @@ from PySide6.QtCore import QObject, QPointF, QTimer, Signal
 from PySide6.QtGui import QCloseEvent, QGuiApplication
 from PySide6.QtWidgets import QAbstractButton, QMessageBox, QToolTip
 
+from spinledger.errors import StructureError
 from spinledger_app.bench import Bench
 from spinledger_app.handlers.claims import ClaimHandlers
 from spinledger_app.handlers.context import Context
@@ -146,7 +147,15 @@ class Desk(QObject):
         sketch, ledger = window.sketch, window.ledger
         sketch.paste_wanted.connect(self.files.paste)
         sketch.copy_wanted.connect(self.files.copy_smiles)
-        for panel in (sketch.canvas, ledger):
+        sketch.structure_drawn.connect(self.bench.take_drawing)
+        editor = sketch.editor
+        editor.structure_text_rejected.connect(
+            lambda text: window.status.show_message(text, is_error=True)
+        )
+        editor.picture_wanted.connect(self.files.save_structure_picture)
+        editor.undo_wanted.connect(lambda: self.do("undo"))
+        editor.redo_wanted.connect(lambda: self.do("redo"))
+        for panel in (sketch.tags, ledger):
             panel.claim_clicked.connect(claims.click_claim)
             panel.claim_hovered.connect(selection.hover)
             panel.menu_wanted.connect(self.menus.of_claim)
@@ -194,16 +203,20 @@ class Desk(QObject):
         self._show_marks(Marks(), self.bench.selection.marks)
 
     def _show_structure(self) -> None:
-        project, window = self.bench.project, self.window
-        window.show_structure_size(project.structure is not None)
-        if project.structure is None or self.bench.drawing is None:
-            window.sketch.show_structure(None)
-            return
-        window.sketch.show_structure(
-            self.bench.drawing,
-            structure_tags(project),
-            tag_tips(project),
-            structure_foot(project, self.bench.drawing),
+        project, window, bench = self.bench.project, self.window, self.bench
+        drawn, bench.drawn_here = bench.drawn_here, None
+        structure = project.structure
+        window.show_structure_size(structure is not None)
+        sketch = window.sketch
+        try:
+            is_own = structure is not None and structure is drawn
+            sketch.show_structure(structure, is_own=is_own)
+        except StructureError as error:
+            window.status.show_message(error.reason, is_error=True)
+        drawing = bench.drawing if structure is not None else None
+        sketch.show_mass(drawing.mass if drawing is not None else "")
+        sketch.show_claims(
+            structure_tags(project), tag_tips(project), structure_foot(project, drawing)
         )
 
     def _show_ledger(self) -> None:
@@ -238,7 +251,7 @@ class Desk(QObject):
         pointed = marks.hovered or marks.selected
         if scene is not None and pointed is not None:
             partners = scene.partners.get(pointed, ())
-        window.sketch.canvas.show_marks(marks, partners)
+        window.sketch.tags.show_marks(marks, partners)
         if (before.selected is None) != (marks.selected is None):
             self._show_abilities()
         if marks.waiting_claim not in (None, before.waiting_claim):

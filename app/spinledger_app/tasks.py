@@ -25,6 +25,8 @@ from spinledger_app.presenters.structure import Drawing
 Progress = Callable[[str, float], None]
 Cancelled = Callable[[], bool]
 
+_LONGEST_PATH = 1024
+
 
 @dataclass(frozen=True, slots=True, eq=False, kw_only=True)
 class ReadSpectrum:
@@ -89,10 +91,15 @@ def gather(
 
 
 def read_claim(_progress: Progress, _cancelled: Cancelled, text: str) -> ReadClaim:
-    """Structure from SMILES, InChI, a molfile text or a file, with its drawing."""
+    """Structure from SMILES, InChI, CDXML, a molfile text or a file, and its drawing."""
     from spinledger.structure.read import read_structure
     from spinledger_app.presenters.drawing import drawing_of
+    from spinledger_app.sketch.chemistry import molfile_of_cdxml
 
+    if Path(text).suffix.lower() == ".cdxml" and len(text) < _LONGEST_PATH:
+        text = Path(text).read_text(encoding="utf-8", errors="replace")
+    if "<CDXML" in text:
+        text = molfile_of_cdxml(text)
     structure = read_structure(text)
     return ReadClaim(structure=structure, drawing=drawing_of(structure))
 

@@ -152,6 +152,9 @@ class WorkerPool(QObject):
             prepare=prepare,
             is_quiet=is_quiet,
         )
+        if self._is_closed:
+            job.is_superseded = True
+            return job
         was_busy = self.is_busy
         self._jobs[job.number] = job
         if self._executor is None or self._manager is None:

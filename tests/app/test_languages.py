@@ -17,16 +17,12 @@ from spinledger_app.application import Parts
 from spinledger_app.languages import NAMES, Words, chosen, table_of
 
 APP = Path(spinledger_app.__file__).parent
-# The structure editor keeps its own list of words.
-ELSEWHERE = "sketch"
 
 
 def spoken() -> set[str]:
     """All literals that the program hands to ``say``."""
     found = set()
     for path in APP.rglob("*.py"):
-        if ELSEWHERE in path.parts:
-            continue
         for node in ast.walk(ast.parse(path.read_text(encoding="utf-8"))):
             is_say = isinstance(node, ast.Call) and (
                 isinstance(node.func, ast.Name) and node.func.id == "say"

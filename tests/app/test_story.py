@@ -77,8 +77,8 @@ def test_first_table_in_two_actions(qtbot: QtBot, parts: Parts) -> None:
     rows = [row for row in parts.window.ledger.rows if row.isVisible()]
     assert len(rows) == len(ledger.entries)
     assert parts.window.lanes.is_folded  # folds by itself once it is solved
-    assert all(tag.claim for tag in parts.window.sketch.canvas.tags)
-    assert len(parts.window.sketch.canvas.tags) == len(ledger.entries)
+    assert all(tag.claim for tag in parts.window.sketch.tags.placed)
+    assert len(parts.window.sketch.tags.placed) == len(ledger.entries)
     # The invented tube was made with the CH2 protons at 2.491 and 2.419 ppm;
     # 0.003 ppm is three line widths.
     found = sorted((shift_of(parts, "2-HA"), shift_of(parts, "2-HB")))
@@ -129,7 +129,7 @@ def test_signal_and_proton_are_put_together(qtbot: QtBot, parts: Parts) -> None:
     assert chosen is not None
     mark = scene.signal(chosen)
     assert mark is not None
-    tag = next(t for t in parts.window.sketch.canvas.tags if t.claim == "3-H")
+    tag = next(t for t in parts.window.sketch.tags.placed if t.claim == "3-H")
     x, y = tag.centre
     click(qtbot, parts.window.sketch.canvas, QPoint(round(x), round(y)))
     edit = parts.bench.project.edits[-1]

@@ -8,11 +8,14 @@ from pathlib import Path
 from PySide6.QtGui import QGuiApplication, QPixmap
 from PySide6.QtWidgets import QFileDialog, QMessageBox
 
+from spinledger.errors import OutputError
 from spinledger.project.document import with_sample
+from spinledger_app.clipboard import put_table
 from spinledger_app.handlers.context import Context
 from spinledger_app.places import Kind, example_place, kind_of
-from spinledger_app.presenters.clipboard import structure_text, table_html, table_tsv
+from spinledger_app.presenters.clipboard import table_html, table_tsv
 from spinledger_app.presenters.wording import say
+from spinledger_app.sketch.transfer import text_of
 from spinledger_app.views import dialogs
 
 
@@ -173,10 +176,11 @@ class FileHandlers:
         """Take a structure, or data files, from the clipboard."""
         data = QGuiApplication.clipboard().mimeData()
         places = [url.toLocalFile() for url in data.urls() if url.isLocalFile()]
-        text = structure_text(data)
         if places:
             self.open_places(places)
-        elif text:
+            return
+        text = text_of(data)
+        if text.strip():
             self.bench.take_structure(text)
         else:
             self.window.status.show_message(
@@ -185,6 +189,20 @@ class FileHandlers:
                 ),
                 is_error=True,
             )
+
+    def save_structure_picture(self) -> None:
+        """Ask for a file, then write the structure as a vector picture."""
+        start = str(Path(self.settings.last_folder) / "structure.svg")
+        chosen, _ = QFileDialog.getSaveFileName(
+            self.window, say("Save picture"), start, "SVG (*.svg)"
+        )
+        if self._chosen_place(chosen):
+            try:
+                self.window.sketch.editor.save_svg(Path(chosen))
+            except OutputError as error:
+                self.window.status.show_message(str(error), is_error=True)
+                return
+            self.window.status.show_message(say("Picture saved."))
 
     def open_structure(self) -> None:
         """Choose a structure file."""
@@ -228,8 +246,7 @@ class FileHandlers:
         """Put the assignment table on the clipboard, as text and as a table."""
         ledger = self.bench.project.ledger
         if ledger is not None:
-            data = dialogs.table_data(table_tsv(ledger), table_html(ledger))
-            QGuiApplication.clipboard().setMimeData(data)
+            put_table(table_tsv(ledger), table_html(ledger))
             self.window.status.show_message(say("Assignment table copied."))
 
     def copy_smiles(self) -> None:

@@ -1,30 +1,12 @@
-"""What goes to and comes from the clipboard."""
+"""The assignment table as it goes to the clipboard."""
 
 from __future__ import annotations
 
 from html import escape
 
-from PySide6.QtCore import QMimeData
-
 from spinledger.values.ledger import Entry, Ledger
 
-_STRUCTURE_FORMATS = (
-    "chemical/x-mdl-molfile",
-    "chemical/x-mdl-sdfile",
-    "chemical/x-daylight-smiles",
-    "chemical/x-inchi",
-)
 _HEAD = ("Claim", "Shift, ppm", "Protons", "Pattern", "J, Hz (partner)", "State")
-
-
-def structure_text(data: QMimeData) -> str:
-    """Structure on the clipboard as text; empty where there is none."""
-    for name in _STRUCTURE_FORMATS:
-        if data.hasFormat(name):
-            text = bytes(data.data(name).data()).decode("utf-8", errors="replace")
-            if text.strip("\0 \n"):
-                return text.strip("\0")
-    return data.text().strip("\0") if data.hasText() else ""
 
 
 def table_rows(ledger: Ledger) -> list[tuple[str, ...]]:

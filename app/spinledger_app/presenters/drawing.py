@@ -9,6 +9,7 @@ from rdkit import Chem
 from rdkit.Chem import Descriptors, rdMolDescriptors
 
 from spinledger.report.sketch import drawable
+from spinledger.structure.read import molecule
 from spinledger.values.structure import Structure
 from spinledger_app.presenters.structure import Drawing, DrawnAtom, DrawnBond
 
@@ -29,6 +30,24 @@ def drawing_of(structure: Structure) -> Drawing:
         mass=f"{Descriptors.MolWt(mol):.2f}",  # type: ignore[attr-defined]
         stereo=_stereo(mol),
     )
+
+
+def is_same_but_for_layout(one: Structure, other: Structure) -> bool:
+    """Whether two structures are the same, atom by atom, and only lie otherwise."""
+    return one.smiles == other.smiles and _table(one) == _table(other)
+
+
+def _table(structure: Structure) -> tuple[object, ...]:
+    mol = molecule(structure)
+    atoms = tuple(
+        (atom.GetAtomicNum(), atom.GetFormalCharge(), atom.GetIsotope())
+        for atom in mol.GetAtoms()
+    )
+    bonds = frozenset(
+        frozenset((bond.GetBeginAtomIdx(), bond.GetEndAtomIdx()))
+        for bond in mol.GetBonds()
+    )
+    return atoms, bonds
 
 
 def _bond_length(mol: Any) -> float:

@@ -14,7 +14,7 @@ Tag = tuple[str, str, tuple[int, ...]]
 def structure_tags(project: Project) -> tuple[Tag, ...]:
     """One tag a claim: (claim, state, atoms); none before the first ledger."""
     ledger = project.ledger
-    if ledger is None:
+    if ledger is None or project.structure is None:
         return ()
     return tuple((entry.claim, entry.state, entry.atoms) for entry in ledger.entries)
 
@@ -50,12 +50,13 @@ def _source(claim: Claim | None) -> str:
     return "; ".join(part for part in parts if part)
 
 
-def structure_foot(project: Project, drawing: Drawing) -> tuple[str, str]:
+def structure_foot(project: Project, drawing: Drawing | None) -> tuple[str, str]:
     """Remarks under the structure: solvent left, configuration right."""
     solvent = None
     if project.evidence is not None:
         solvent = project.evidence.solvent
     solvent = solvent or project.options.solvent
     left = f"{say('Solvent')} {chemical(solvent)}" if solvent else ""
-    right = f"{drawing.stereo} {say('as drawn')}" if drawing.stereo else ""
+    stereo = drawing.stereo if drawing is not None else ""
+    right = f"{stereo} {say('as drawn')}" if stereo else ""
     return left, right

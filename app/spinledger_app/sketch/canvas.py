@@ -88,6 +88,7 @@ class SketchCanvas(QWidget):
 
     drawing_changed = Signal()
     kit_wanted = Signal(object)
+    view_changed = Signal()
 
     def __init__(self, look: Look, parent: QWidget | None = None) -> None:
         super().__init__(parent)
@@ -97,7 +98,11 @@ class SketchCanvas(QWidget):
         self.meaning = Meaning()
         self.selected: frozenset[int] = frozenset()
         self.spot: Spot = NOWHERE
-        self.view = View()
+        self.shows_stereo = True
+        # Kept free about the drawing when all of it is shown: px at the sides, over
+        # and under it.
+        self.margins_px: tuple[float, float, float] = (_MARGIN_PX,) * 3
+        self._view = View()
         self._press: Press | None = None
         self._mouse_px: Point = (0.0, 0.0)
         self._preview: tuple[Drawing, Meaning] | None = None
@@ -111,6 +116,22 @@ class SketchCanvas(QWidget):
     def drawing(self) -> Drawing:
         """The drawing as it stands."""
         return self.history.present
+
+    @property
+    def view(self) -> View:
+        """How the drawing lies on the screen."""
+        return self._view
+
+    @view.setter
+    def view(self, view: View) -> None:
+        self._view = view
+        self.view_changed.emit()
+        self.update()
+
+    @property
+    def is_dragging(self) -> bool:
+        """Whether a button is down on the drawing."""
+        return self._press is not None
 
     def show_drawing(self, drawing: Drawing) -> None:
         """Take a drawing from outside, without a way back to the one before."""
@@ -161,10 +182,10 @@ class SketchCanvas(QWidget):
 
     def fit(self) -> None:
         """Show the whole drawing in the middle."""
+        side, over, under = (self.look.px(one) for one in self.margins_px)
         self.view = fitted(
-            self.drawing, (self.width(), self.height()), self.look.px(_MARGIN_PX)
+            self.drawing, (self.width(), self.height()), (side, over, under)
         )
-        self.update()
 
     def _go(self, history: History) -> None:
         if history == self.history:
@@ -187,9 +208,10 @@ class SketchCanvas(QWidget):
         self.setAccessibleDescription(described(self.drawing, self.meaning, self.spot))
 
     def _spot_under_mouse(self) -> Spot:
-        return self._spot_at(self._mouse_px) if self.underMouse() else NOWHERE
+        return self.spot_at(self._mouse_px) if self.underMouse() else NOWHERE
 
-    def _spot_at(self, point_px: Point) -> Spot:
+    def spot_at(self, point_px: Point) -> Spot:
+        """Atom or bond under a point of the screen."""
         reach = min(_REACH_PX / self.view.scale_px, 0.45)
         return gestures.spot_at(self.drawing, self.view.to_drawing(point_px), reach)
 
@@ -199,7 +221,7 @@ class SketchCanvas(QWidget):
         """Begin a click or a drag."""
         self.setFocus(Qt.FocusReason.MouseFocusReason)
         self._mouse_px = _point(event.position())
-        self.spot = self._spot_at(self._mouse_px)
+        self.spot = self.spot_at(self._mouse_px)
         kind: PressKind
         if event.button() == Qt.MouseButton.MiddleButton:
             kind = "pan"
@@ -216,7 +238,7 @@ class SketchCanvas(QWidget):
         self._mouse_px = _point(event.position())
         press = self._press
         if press is None:
-            self.spot = self._spot_at(self._mouse_px)
+            self.spot = self.spot_at(self._mouse_px)
             is_near = self.spot != NOWHERE
             self.setCursor(
                 Qt.CursorShape.PointingHandCursor
@@ -257,7 +279,7 @@ class SketchCanvas(QWidget):
                 self.drawing.atoms
             )
             self.apply(edit, select=moving if keeps else frozenset())
-            self.spot = self._spot_at(self._mouse_px)
+            self.spot = self.spot_at(self._mouse_px)
 
     def mouseDoubleClickEvent(self, event: QMouseEvent) -> None:
         """Select all that hangs together; another click with the other tools."""
@@ -272,7 +294,7 @@ class SketchCanvas(QWidget):
             return
         place = self.view.to_drawing(press.at_px)
         self.apply(gestures.click(self.drawing, self.kit, press.spot, place))
-        self.spot = self._spot_at(self._mouse_px)
+        self.spot = self.spot_at(self._mouse_px)
         self.update()
 
     def _pick(self, spot: Spot, *, is_more: bool) -> None:
@@ -338,7 +360,7 @@ class SketchCanvas(QWidget):
         if self.spot != NOWHERE and edit is not None:
             self.apply(edit)
             if edit.atom is None and self.spot == NOWHERE:
-                self.spot = self._spot_at(self._mouse_px)
+                self.spot = self.spot_at(self._mouse_px)
             return True
         kit = chosen_kit(self.kit, text)
         if kit is None:
@@ -425,10 +447,11 @@ class SketchCanvas(QWidget):
         is_same = len(drawing.atoms) == len(self.drawing.atoms)
         if is_same:
             paint_halo(ink, drawing, self.view, self.selected)
+        is_plain = self._preview is None and self.shows_stereo
         shown = Shown(
             drawing=drawing,
             hydrogens=known.hydrogens,
-            labels=known.labels if self._preview is None else (),
+            labels=known.labels if is_plain else (),
             faulty={fault.atom for fault in known.faults},
         )
         paint_drawing(ink, shown, self.view)

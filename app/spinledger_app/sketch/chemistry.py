@@ -318,7 +318,7 @@ def _one_record(text: str) -> str:
         If there are several structures in an SDF, or none that can be read.
     """
     if "<CDXML" in text:
-        return _from_cdxml(text)
+        return molfile_of_cdxml(text)
     if _RECORD_END not in text:
         return text
     records = [one for one in text.split(_RECORD_END) if _MOLFILE_END in one]
@@ -330,7 +330,14 @@ def _one_record(text: str) -> str:
     return records[0].lstrip("\r\n") if records[0].startswith("\n\n\n") else records[0]
 
 
-def _from_cdxml(text: str) -> str:
+def molfile_of_cdxml(text: str) -> str:
+    """Molfile of all that a CDXML text draws.
+
+    Raises
+    ------
+    StructureError
+        If it holds no structure.
+    """
     with rdBase.BlockLogs():
         found = Chem.MolsFromCDXML(text, sanitize=True, removeHs=False)
     mols = [mol for mol in found if mol is not None and mol.GetNumAtoms()]

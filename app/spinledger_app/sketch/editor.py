@@ -19,6 +19,7 @@ from PySide6.QtGui import (
 from PySide6.QtWidgets import QMenu, QVBoxLayout, QWidget
 
 from spinledger.errors import OutputError, StructureError
+from spinledger_app.clipboard import leave_plain_text
 from spinledger_app.painting.ink import SECOND, SECOND_INK, Ink
 from spinledger_app.presenters.wording import formula, say
 from spinledger_app.sketch.canvas import SketchCanvas
@@ -29,7 +30,6 @@ from spinledger_app.sketch.molfile import molblock
 from spinledger_app.sketch.toolbar import Toolbar
 from spinledger_app.sketch.transfer import (
     holds_structure,
-    leave_plain_text,
     mime_data,
     svg,
     text_of,
@@ -57,16 +57,23 @@ class StructureEditor(QWidget):
         :meth:`save_svg`.
     history_changed : Signal()
         What can be undone or redone is another.
+    undo_wanted, redo_wanted : Signal()
+        Where whoever embeds the editor keeps the way back (``keeps_history`` is
+        False), told instead of stepping back alone.
     """
 
     structure_changed = Signal(str)
     structure_text_rejected = Signal(str)
     picture_wanted = Signal()
     history_changed = Signal()
+    undo_wanted = Signal()
+    redo_wanted = Signal()
 
     def __init__(self, look: Look, parent: QWidget | None = None) -> None:
         super().__init__(parent)
         self.look = look
+        self.keeps_history = True
+        self._remark = ("", "")
         self._told = ""
         self._shown = ""
         self._rejection = ""
@@ -103,11 +110,11 @@ class StructureEditor(QWidget):
         """Name of the edit that would be made again; empty if there is none."""
         return self.canvas.history.redo_label
 
-    def show_structure(self, text: str) -> None:
+    def show_structure(self, text: str, *, is_anew: bool = False) -> None:
         """Show a structure from outside, without a way back to the one before.
 
         The structure that is drawn already, in whatever text, changes nothing: its
-        layout and its undo steps stay.
+        layout and its undo steps stay, unless it is to be shown anew.
 
         Parameters
         ----------
@@ -119,12 +126,12 @@ class StructureEditor(QWidget):
         StructureError
             If the text cannot be read as a structure.
         """
-        if text in (self._told, self._shown):
+        if not is_anew and text in (self._told, self._shown):
             return
         drawing = from_text(text) if text.strip() else EMPTY
         smiles = self.canvas.meaning.smiles
         self._shown = text
-        if smiles and meaning(drawing).smiles == smiles:
+        if not is_anew and smiles and meaning(drawing).smiles == smiles:
             return
         self._told = text
         self._rejection = ""
@@ -139,13 +146,27 @@ class StructureEditor(QWidget):
         self.toolbar.show_kit(kit)
         self.update()
 
+    def show_remark(self, left: str, right: str) -> None:
+        """Say something about the structure under it, at the left and the right."""
+        self._remark = (left, right)
+        self.update()
+
     def undo(self) -> None:
-        """Take the last edit back."""
-        self.canvas.undo()
+        """Take the last edit back, or ask whoever keeps the way back to do so.
+
+        A drawing with a fault was never told; the way back from it is here.
+        """
+        if self.keeps_history or self.canvas.meaning.faults:
+            self.canvas.undo()
+        else:
+            self.undo_wanted.emit()
 
     def redo(self) -> None:
         """Make the edit again that was taken back."""
-        self.canvas.redo()
+        if self.keeps_history or self.canvas.meaning.faults:
+            self.canvas.redo()
+        else:
+            self.redo_wanted.emit()
 
     def clean_up(self) -> None:
         """Lay the structure out anew."""
@@ -271,10 +292,11 @@ class StructureEditor(QWidget):
     def menu(self) -> QMenu:
         """All that can be done with the whole drawing, with its keys."""
         menu = QMenu(self)
+        is_embedded = not self.keeps_history
         has_atoms, undo, redo = bool(self.drawing.atoms), say("Undo"), say("Redo")
         entries: tuple[tuple[str, str, Callable[[], None], bool], ...] = (
-            (undo, "Ctrl+Z", self.undo, bool(self.undo_label)),
-            (redo, "Ctrl+Y", self.redo, bool(self.redo_label)),
+            (undo, "Ctrl+Z", self.undo, bool(self.undo_label) or is_embedded),
+            (redo, "Ctrl+Y", self.redo, bool(self.redo_label) or is_embedded),
             ("", "", self.undo, False),
             (say("Cut"), "Ctrl+X", self.cut, bool(self.canvas.selected)),
             (say("Copy"), "Ctrl+C", self.copy, has_atoms),
@@ -335,8 +357,16 @@ class StructureEditor(QWidget):
         is_told = bool(self._rejection or self.canvas.meaning.faults)
         width = self.width() - 2 * _MARGIN_PX
         if not is_told and self.canvas.meaning.formula:
-            summary = formula(self.canvas.meaning.formula)
-            ink.text(_MARGIN_PX, top + px(17), summary, SECOND_INK, max_width=width)
+            left, right = self._remark
+            if not left and not right:
+                left = formula(self.canvas.meaning.formula)
+            taken = ink.text(
+                _MARGIN_PX, top + px(17), left, SECOND_INK, max_width=width
+            )
+            ink.text(
+                self.width() - _MARGIN_PX, top + px(17), right, SECOND, align="right",
+                max_width=width - taken - 10,
+            )  # fmt: skip
             ink.text(_MARGIN_PX, top + px(34), self.foot(), SECOND, max_width=width)
         else:
             face = SECOND_INK if is_told else SECOND

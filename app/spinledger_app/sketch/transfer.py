@@ -6,10 +6,11 @@ from pathlib import Path
 from typing import Final
 
 from PySide6.QtCore import QBuffer, QByteArray, QIODevice, QMimeData, QRect, QSize
-from PySide6.QtGui import QGuiApplication, QPainter
+from PySide6.QtGui import QPainter
 from PySide6.QtSvg import QSvgGenerator
 
 from spinledger.errors import StructureError
+from spinledger_app.clipboard import OwnData
 from spinledger_app.painting.ink import Ink
 from spinledger_app.sketch.chemistry import meaning
 from spinledger_app.sketch.drawing import Drawing
@@ -31,10 +32,6 @@ _ENDINGS: Final = frozenset(
 _LARGEST_FILE_BYTES: Final = 2_000_000
 _SVG_SCALE_PX: Final = 34.0
 _SVG_MARGIN_PX: Final = 24.0
-
-
-class _OwnData(QMimeData):
-    """Data that this program made, told from that of others by its class."""
 
 
 def holds_structure(data: QMimeData) -> bool:
@@ -61,12 +58,12 @@ def text_of(data: QMimeData) -> str:
     return data.text().strip("\0") if data.hasText() else ""
 
 
-def mime_data(drawing: Drawing, look: Look) -> QMimeData:
+def mime_data(drawing: Drawing, look: Look) -> OwnData:
     """Drawing as molfile, SMILES and vector picture.
 
     Plain text is the SMILES; the molfile where a fault leaves no SMILES.
     """
-    data = _OwnData()
+    data = OwnData()
     block, smiles = molblock(drawing), meaning(drawing).smiles
     data.setData("chemical/x-mdl-molfile", QByteArray(block.encode()))
     if smiles:
@@ -74,18 +71,6 @@ def mime_data(drawing: Drawing, look: Look) -> QMimeData:
     data.setData("image/svg+xml", QByteArray(svg(drawing, look)))
     data.setText(smiles or block)
     return data
-
-
-def leave_plain_text() -> None:
-    """Keep only the plain text of what this program put on the clipboard.
-
-    To be called when the program ends. Qt drops the clipboard's contents after
-    Python is gone, which must not meet an object that Python made.
-    """
-    clipboard = QGuiApplication.clipboard()
-    is_ours = isinstance(clipboard.mimeData(), _OwnData)
-    if is_ours or clipboard.ownsClipboard():
-        clipboard.setText(clipboard.text())
 
 
 def svg(drawing: Drawing, look: Look) -> bytes:

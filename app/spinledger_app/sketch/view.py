@@ -45,11 +45,17 @@ class View:
         )
 
 
-def fitted(drawing: Drawing, size_px: Point, margin_px: float) -> View:
-    """View with the drawing in the middle, as large as it may be."""
+def fitted(
+    drawing: Drawing, size_px: Point, margins_px: tuple[float, float, float]
+) -> View:
+    """View with the drawing in the middle, as large as it may be.
+
+    ``margins_px`` are kept free at both sides, over and under the drawing.
+    """
     left, low, right, high = drawing.bounds
-    wide = max(size_px[0] - 2 * margin_px, 1.0)
-    tall = max(size_px[1] - 2 * margin_px, 1.0)
+    side, over, under = margins_px
+    wide = max(size_px[0] - 2 * side, 1.0)
+    tall = max(size_px[1] - over - under, 1.0)
     scale = min(
         _LARGEST_PX,
         wide / max(right - left, 1e-9),
@@ -59,7 +65,7 @@ def fitted(drawing: Drawing, size_px: Point, margin_px: float) -> View:
     return View(
         scale_px=scale,
         x_px=size_px[0] / 2 - (left + right) / 2 * scale,
-        y_px=size_px[1] / 2 + (low + high) / 2 * scale,
+        y_px=over + tall / 2 + (low + high) / 2 * scale,
     )
 
 

@@ -7,7 +7,6 @@ from collections.abc import Sequence
 from importlib.metadata import PackageNotFoundError, version
 from pathlib import Path
 
-from PySide6.QtCore import QMimeData
 from PySide6.QtWidgets import (
     QCheckBox,
     QComboBox,
@@ -451,12 +450,3 @@ def _version(name: str) -> str:
         return version(name)
     except PackageNotFoundError:
         return ""
-
-
-def table_data(text: str, html: str) -> QMimeData:
-    """The same table for a spreadsheet and for a text processor."""
-    data = QMimeData()
-    data.setText(text)
-    data.setHtml(html)
-    data.setData("text/tab-separated-values", text.encode())
-    return data

@@ -249,14 +249,7 @@ def open_structure(project: Project, structure: Structure, *, when: str) -> Proj
         verdict_before_edits=None,
         labels=(),
         edits=_without_claims(project.edits),
-        others=tuple(
-            replace(
-                _unsolved(one),
-                verdict_before_edits=None,
-                edits=_without_claims(one.edits),
-            )
-            for one in project.others
-        ),
+        others=_without_ledgers(project.others),
         audit=(*project.audit, line),
     )
 
@@ -267,6 +260,49 @@ def _without_claims(edits: tuple[Edit, ...]) -> tuple[Edit, ...]:
 
 def _unsolved(spectrum: SampleSpectrum) -> SampleSpectrum:
     return replace(spectrum, ledger=None)
+
+
+def _without_ledgers(
+    spectra: tuple[SampleSpectrum, ...],
+) -> tuple[SampleSpectrum, ...]:
+    """Other spectra of the sample before any structure was claimed."""
+    return tuple(
+        replace(
+            _unsolved(one), verdict_before_edits=None, edits=_without_claims(one.edits)
+        )
+        for one in spectra
+    )
+
+
+def with_layout(project: Project, structure: Structure) -> Project:
+    """Project whose structure is drawn otherwise; claims and ledger stay.
+
+    Raises
+    ------
+    ValueError
+        If it is another structure.
+    """
+    before = project.structure
+    if before is None or before.smiles != structure.smiles:
+        raise ValueError("structure: a layout cannot change what is drawn")
+    return replace(project, structure=replace(before, molblock=structure.molblock))
+
+
+def without_structure(project: Project, *, when: str) -> Project:
+    """Project without a claimed structure, its ledger and the edits of its claims."""
+    if project.structure is None:
+        return project
+    line = AuditLine(when=when, what=f"Structure {project.structure.smiles} removed.")
+    return replace(
+        project,
+        structure=None,
+        ledger=None,
+        verdict_before_edits=None,
+        labels=(),
+        edits=_without_claims(project.edits),
+        others=_without_ledgers(project.others),
+        audit=(*project.audit, line),
+    )
 
 
 def with_evidence(project: Project, evidence: Evidence) -> Project:

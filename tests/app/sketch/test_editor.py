@@ -26,12 +26,12 @@ from pytestqt.qtbot import QtBot
 
 from spinledger.errors import OutputError
 from spinledger.structure.read import read_structure
+from spinledger_app.clipboard import leave_plain_text
 from spinledger_app.sketch.chemistry import meaning, smiles
 from spinledger_app.sketch.drawing import Point
 from spinledger_app.sketch.editor import StructureEditor
 from spinledger_app.sketch.gestures import NOWHERE, Kit, Spot, Tool
 from spinledger_app.sketch.painting import Shown, presented
-from spinledger_app.sketch.transfer import leave_plain_text
 from spinledger_app.sketch.view import handle_px
 from spinledger_app.theme import DARK, LIGHT, Look, TextRect, load_fonts
 
