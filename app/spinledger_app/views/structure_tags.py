@@ -61,6 +61,7 @@ class TagLayer(QWidget):
     def __init__(self, canvas: SketchCanvas, parent: QWidget) -> None:
         # Not a child of the surface: keys that no tag takes must not reach it.
         super().__init__(parent)
+        self._ground = parent
         self.look = canvas.look
         self.canvas = canvas
         self.placed: tuple[PlacedTag, ...] = ()
@@ -148,7 +149,7 @@ class TagLayer(QWidget):
         self.update()
 
     def _cover(self) -> None:
-        corner = self.canvas.mapTo(self.parentWidget(), QPoint(0, 0))
+        corner = self.canvas.mapTo(self._ground, QPoint(0, 0))
         self.setGeometry(QRect(corner, self.canvas.size()))
         self.raise_()
 
