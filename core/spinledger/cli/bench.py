@@ -6,6 +6,7 @@ import argparse
 import subprocess
 import sys
 from importlib.util import find_spec
+from pathlib import Path
 
 from spinledger.errors import SpinLedgerError
 
@@ -30,12 +31,20 @@ def run(arguments: argparse.Namespace) -> int:
                 f"the bench needs {name.split('.')[0]}, which is not installed; install "
                 'it with "pip install spinledger[bench]"'
             )
-    command = [sys.executable, "-m", "spinledger_app"]
+    command = _bench_command()
     if arguments.data is not None:
         command.append(arguments.data)
     if arguments.structure is not None:
         command += ["--structure", arguments.structure]
     return 0 if subprocess.call(command) == 0 else 1
+
+
+def _bench_command() -> list[str]:
+    """How the bench is started: as a module, or as the packaged program beside."""
+    if getattr(sys, "frozen", False):
+        own = Path(sys.executable)
+        return [str(own.with_name(f"spinledger-bench{own.suffix}"))]
+    return [sys.executable, "-m", "spinledger_app"]
 
 
 def _is_missing(name: str) -> bool:

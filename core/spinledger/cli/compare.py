@@ -15,6 +15,7 @@ from spinledger.report.compare import (
 )
 from spinledger.report.json_ledger import LedgerFileError, read_ledger_json
 from spinledger.report.published import ListedSignal, read_published
+from spinledger.report.words import plain
 
 
 def run(arguments: argparse.Namespace) -> int:
@@ -38,7 +39,7 @@ def run(arguments: argparse.Namespace) -> int:
 
 def _text(comparison: ListComparison) -> str:
     lines = [
-        f"common offset {comparison.offset_ppm:+.3f} ppm (here minus published), "
+        f"common offset {plain(comparison.offset_ppm, 3, sign='+')} ppm (here minus published), "
         "taken out of every difference",
         *comparison.remarks,
         f"{'here':>15s} {'published':>15s} {'diff/ppm':>9s}  J/Hz here/published",
@@ -56,7 +57,7 @@ def _pair(pair: ComparedPair) -> str:
     remarks = f"  [{'; '.join(pair.remarks)}]" if pair.remarks else ""
     return (
         f"{_place(pair.mine, 3):>15s} {_place(pair.published, 2):>15s} "
-        f"{pair.difference_ppm:>+9.3f}  {couplings}  {pair.mine.label}{remarks}"
+        f"{plain(pair.difference_ppm, 3, sign='+'):>9s}  {couplings}  {pair.mine.label}{remarks}"
     )
 
 
@@ -68,5 +69,5 @@ def _signal(signal: ListedSignal) -> str:
 
 def _place(signal: ListedSignal, digits: int) -> str:
     if signal.low_ppm == signal.high_ppm:
-        return f"{signal.high_ppm:.{digits}f}"
-    return f"{signal.high_ppm:.2f}-{signal.low_ppm:.2f}"
+        return plain(signal.high_ppm, digits)
+    return f"{plain(signal.high_ppm, 2)}-{plain(signal.low_ppm, 2)}"

@@ -17,6 +17,7 @@ from spinledger.report.simulated import (
     predicted_claims,
     simulated_svg,
 )
+from spinledger.report.words import plain
 from spinledger.structure.read import read_structure
 from spinledger.values.claim import ClaimSet
 
@@ -68,7 +69,7 @@ def run(arguments: argparse.Namespace) -> int:
 
 def _line(row: PredictedClaim) -> str:
     claim = row.claim
-    shift = f"{claim.shift_ppm:.2f} ± {claim.shift_sd_ppm:.2f}"
+    shift = f"{plain(claim.shift_ppm, 2)} ± {claim.shift_sd_ppm:.2f}"
     pattern = "" if row.tree is None else row.tree.multiplicity
     text = (
         f"{claim.label:<12s}{claim.n_protons:>3d}  {shift:<15s}{pattern:<9s} "
@@ -79,7 +80,7 @@ def _line(row: PredictedClaim) -> str:
     if claim.why:
         text += f"{'':17s}{claim.visibility}: {claim.why}\n"
     for partner, j_hz, sd_hz, kind, source in row.couplings:
-        text += f"{'':17s}J({partner}) {j_hz:.1f} ± {sd_hz:.1f} Hz, {kind}"
+        text += f"{'':17s}J({partner}) {plain(j_hz, 1)} ± {sd_hz:.1f} Hz, {kind}"
         text += f" [{source}]\n" if source else "\n"
     return text
 

@@ -5,7 +5,7 @@ from __future__ import annotations
 import csv
 import io
 
-from spinledger.report.words import outgoing_state, with_sd
+from spinledger.report.words import outgoing_state, plain, with_sd
 from spinledger.values.ledger import Entry, EntryCoupling, Ledger
 
 COLUMNS = (
@@ -93,7 +93,7 @@ def _group(entry: Entry) -> str:
 
 
 def _digits(value: float | None, digits: int) -> str:
-    return "" if value is None else f"{value:.{digits}f}"
+    return "" if value is None else plain(value, digits)
 
 
 def _safe(text: str) -> str:

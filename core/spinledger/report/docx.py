@@ -1,13 +1,9 @@
-"""report.docx: the tables and the journal text as an editable document.
-
-Drawings are vector in the HTML and PDF forms; Word's own format takes no SVG
-from here, so the document names figure.svg instead of embedding a raster image.
-"""
+"""report.docx: figures, tables and the journal text as an editable document."""
 
 from __future__ import annotations
 
 import io
-from collections.abc import Iterable, Sequence
+from collections.abc import Callable, Iterable, Mapping, Sequence
 from typing import Any
 
 from docx import Document
@@ -19,18 +15,27 @@ from docx.shared import Mm, Pt, RGBColor
 from spinledger.project.audit import versions
 from spinledger.report.cautions import accuracy_ppm, printed_cautions
 from spinledger.report.context import ReportContext
+from spinledger.report.docx_figure import add_figure
+from spinledger.report.figure import FIGURE_LEGEND, expansion_svgs, overview_svg
 from spinledger.report.html import report_subtitle, report_title
+from spinledger.report.sketch import sketch_svg
 from spinledger.report.tables import (
     ASSIGNMENT_HEAD,
+    COMPARISON_HEAD,
     CONTENDER_HEAD,
+    SIGNATURE_HEAD,
     STRAY_HEAD,
     advice_rows,
     assignment_rows,
     audit_rows,
     balance_cells,
+    comparison_rows,
+    comparison_sentence,
     contender_rows,
     probability_words,
     recipe_lines,
+    sample_rows,
+    signature_rows,
     stray_rows,
     verdict_title,
 )
@@ -43,9 +48,12 @@ from spinledger.report.words import fixed, outgoing
 from spinledger.values.ledger import Ledger
 
 _INK = RGBColor(0x1D, 0x22, 0x26)
+_FACE = "Arial"
 _MUTED = RGBColor(0x57, 0x5D, 0x62)
 # Millimetres of the 178 between the margins of an A4 page.
-_ASSIGNMENT_WIDTHS = (18, 20, 15, 15, 48, 23, 18, 21)
+_ASSIGNMENT_WIDTHS = (17, 20, 17, 15, 46, 24, 18, 21)
+_WIDTH_MM = 178.0
+_COMPARISON_WIDTHS = (30, 25, 28, 22, 35, 38)
 _LISTING_WIDTHS = (45, 25, 33, 75)
 
 
@@ -66,17 +74,21 @@ def report_docx(ledger: Ledger, context: ReportContext | None = None) -> bytes:
     document = Document()
     _page(document)
     _opening(document, ledger, chosen)
-    _assignment(document, ledger)
-    _text(document, ledger, chosen)
-    _bullets(document, "Cautions", printed_cautions(ledger))
-    _listing(document, "Strays", STRAY_HEAD, stray_rows(ledger))
-    _listing(document, "Contenders", CONTENDER_HEAD, contender_rows(ledger))
-    _bullets(
-        document,
-        "Next measurement",
-        [f"{what}: {look_for}" for what, look_for in advice_rows(ledger)],
-    )
-    _audit(document, ledger, chosen)
+    makers: Mapping[str, Callable[[Any, Ledger, ReportContext], None]] = {
+        "evidence": _evidence,
+        "assignment": _assignment,
+        "text": _text,
+        "cautions": _cautions,
+        "expansions": _expansions,
+        "strays": _strays,
+        "contenders": _contenders,
+        "comparison": _comparison,
+        "advice": _advice,
+        "audit": _audit,
+        "signatures": _signatures,
+    }
+    for name in chosen.sections:
+        makers[name](document, ledger, chosen)
     stream = io.BytesIO()
     document.save(stream)
     return stream.getvalue()
@@ -89,9 +101,16 @@ def _page(document: Any) -> None:
         setattr(section, side, Mm(16))
     style = document.styles["Normal"]
     style.font.size = Pt(9)
+    style.font.name = _FACE
     style.paragraph_format.space_after = Pt(4)
     for name in ("Title", "Heading 1", "Heading 2"):
-        document.styles[name].font.color.rgb = _INK
+        heading = document.styles[name]
+        heading.font.color.rgb = _INK
+        heading.font.name = _FACE
+        # A theme's own face would win over the name.
+        fonts = heading.element.rPr.rFonts
+        for mark in [key for key in fonts.attrib if key.endswith("Theme")]:
+            del fonts.attrib[mark]
 
 
 def _opening(document: Any, ledger: Ledger, context: ReportContext) -> None:
@@ -106,10 +125,16 @@ def _opening(document: Any, ledger: Ledger, context: ReportContext) -> None:
     reasons = " ".join(outgoing(one) for one in ledger.verdict.reasons)
     if reasons:
         document.add_paragraph(reasons)
-    _muted(document.add_paragraph(), "The figure stands in figure.svg and report.html.")
+    add_figure(document, sketch_svg(ledger))
 
 
-def _assignment(document: Any, ledger: Ledger) -> None:
+def _evidence(document: Any, ledger: Ledger, _context: ReportContext) -> None:
+    document.add_heading("Evidence and claims", level=2)
+    add_figure(document, overview_svg(ledger), width_mm=_WIDTH_MM)
+    _muted(document.add_paragraph(), FIGURE_LEGEND)
+
+
+def _assignment(document: Any, ledger: Ledger, _context: ReportContext) -> None:
     document.add_heading("Assignment", level=2)
     rows = [row.cells for row in assignment_rows(ledger)]
     table = _table(
@@ -118,7 +143,7 @@ def _assignment(document: Any, ledger: Ledger) -> None:
         [*rows, balance_cells(ledger)],
         widths_mm=_ASSIGNMENT_WIDTHS,
     )
-    _double_rule(table.rows[-1])
+    _rule(table.rows[-1], "double")
     doubt = fixed(accuracy_ppm(ledger), 3)
     _muted(
         document.add_paragraph(),
@@ -144,6 +169,66 @@ def _text(document: Any, ledger: Ledger, context: ReportContext) -> None:
     _muted(document.add_paragraph(), reference_sentence(ledger))
 
 
+def _cautions(document: Any, ledger: Ledger, _context: ReportContext) -> None:
+    _bullets(document, "Cautions", printed_cautions(ledger))
+
+
+def _expansions(document: Any, ledger: Ledger, _context: ReportContext) -> None:
+    drawings = expansion_svgs(ledger)
+    if not drawings:
+        return
+    document.add_heading("Expansions", level=2)
+    table = document.add_table(rows=0, cols=2)
+    for rank in range(0, len(drawings), 2):
+        row = table.add_row()
+        _unbroken(row)
+        for cell, (_, drawing) in zip(
+            row.cells, drawings[rank : rank + 2], strict=False
+        ):
+            add_figure(
+                document, drawing, width_mm=_WIDTH_MM / 2 - 6, where=cell.paragraphs[0]
+            )
+
+
+def _strays(document: Any, ledger: Ledger, _context: ReportContext) -> None:
+    _listing(document, "Strays", STRAY_HEAD, stray_rows(ledger))
+
+
+def _contenders(document: Any, ledger: Ledger, _context: ReportContext) -> None:
+    _listing(document, "Contenders", CONTENDER_HEAD, contender_rows(ledger))
+
+
+def _comparison(document: Any, _ledger: Ledger, context: ReportContext) -> None:
+    comparison = context.comparison
+    if comparison is None:
+        return
+    document.add_heading("Published list", level=2)
+    document.add_paragraph(comparison_sentence(comparison))
+    for remark in comparison.remarks:
+        document.add_paragraph(remark, style="List Bullet")
+    _table(
+        document,
+        COMPARISON_HEAD,
+        comparison_rows(comparison),
+        widths_mm=_COMPARISON_WIDTHS,
+    )
+
+
+def _advice(document: Any, ledger: Ledger, _context: ReportContext) -> None:
+    listed = [f"{what}: {look_for}" for what, look_for in advice_rows(ledger)]
+    _bullets(document, "Next measurement", listed)
+
+
+def _signatures(document: Any, _ledger: Ledger, context: ReportContext) -> None:
+    document.add_heading("Signatures", level=2)
+    _table(
+        document,
+        SIGNATURE_HEAD,
+        signature_rows(context.sample),
+        widths_mm=(30, 55, 38, 55),
+    )
+
+
 def _listing(
     document: Any, title: str, head: Sequence[str], rows: Sequence[Sequence[str]]
 ) -> None:
@@ -165,7 +250,8 @@ def _bullets(document: Any, title: str, sentences: Iterable[str]) -> None:
 
 def _audit(document: Any, ledger: Ledger, context: ReportContext) -> None:
     document.add_heading("Audit trail", level=2)
-    _table(document, ("What", "Value"), audit_rows(ledger), widths_mm=(38, 140))
+    facts = (*sample_rows(context.sample), *audit_rows(ledger))
+    _table(document, ("What", "Value"), facts, widths_mm=(38, 140))
     for line in recipe_lines(ledger):
         document.add_paragraph(line, style="List Number")
     for edit in ledger.edits:
@@ -188,8 +274,11 @@ def _table(
     for cell, name in zip(table.rows[0].cells, head, strict=True):
         _fill(cell, name, is_muted=True)
     _repeat(table.rows[0])
+    _rule(table.rows[0], "single")
     for values in rows:
-        cells = table.add_row().cells
+        row = table.add_row()
+        _unbroken(row)
+        cells = row.cells
         for rank, (cell, value) in enumerate(zip(cells, values, strict=True)):
             _fill(cell, value, is_bold=rank == 0)
     for column, width in zip(table.columns, widths_mm, strict=True):
@@ -217,6 +306,11 @@ def _muted(paragraph: Any, text: str) -> None:
     run.font.size = Pt(8.5)
 
 
+def _unbroken(row: Any) -> None:
+    """Keep a row on one page."""
+    row._tr.get_or_add_trPr().append(OxmlElement("w:cantSplit"))
+
+
 def _repeat(row: Any) -> None:
     """Let the head stand again on every page."""
     mark = OxmlElement("w:tblHeader")
@@ -224,12 +318,12 @@ def _repeat(row: Any) -> None:
     row._tr.get_or_add_trPr().append(mark)
 
 
-def _double_rule(row: Any) -> None:
-    """Close the account: a double line under the last row."""
+def _rule(row: Any, kind: str) -> None:
+    """A line under a row; the account is closed by a double one."""
     for cell in row.cells:
         borders = OxmlElement("w:tcBorders")
         line = OxmlElement("w:bottom")
-        line.set(qn("w:val"), "double")
+        line.set(qn("w:val"), kind)
         line.set(qn("w:sz"), "4")
         borders.append(line)
         cell._tc.get_or_add_tcPr().append(borders)

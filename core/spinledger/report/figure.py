@@ -40,6 +40,11 @@ from spinledger.values.ledger import Entry, Ledger
 
 # Content of an A4 page with 16 mm margins at 96 px an inch.
 PAGE_WIDTH = 673.0
+FIGURE_LEGEND = (
+    "Ink is measured, blue is modelled; empty stretches of the axis are folded away. "
+    "One gain for all stretches. Under the trees: measured minus modelled in noise "
+    "sd, linear to 3 and logarithmic beyond."
+)
 _FOOT = 8.0
 # Room on the left for the residue's scale and the axis name.
 _GUTTER = 30.0

@@ -21,6 +21,7 @@ from spinledger.report.tables import (
     ASSIGNMENT_HEAD,
     COMPARISON_HEAD,
     CONTENDER_HEAD,
+    SIGNATURE_HEAD,
     STRAY_HEAD,
     AssignmentRow,
     advice_rows,
@@ -28,9 +29,12 @@ from spinledger.report.tables import (
     audit_rows,
     balance_cells,
     comparison_rows,
+    comparison_sentence,
     contender_rows,
     probability_words,
     recipe_lines,
+    sample_rows,
+    signature_rows,
     stray_rows,
     verdict_title,
 )
@@ -43,7 +47,6 @@ from spinledger.report.words import (
     fixed,
     outgoing,
     outgoing_verdict,
-    signed,
     solvent_glyphs,
 )
 from spinledger.structure.read import molecule
@@ -278,9 +281,9 @@ def _comparison(_ledger: Ledger, context: ReportContext) -> str:
         return ""
     remarks = "".join(f"<li>{escape(one)}</li>" for one in comparison.remarks)
     return (
-        "<section><h3>Published list</h3><p>One common offset of "
-        f"{escape(signed(comparison.offset_ppm, 3))}\u00a0ppm (here minus published) "
-        f"is taken out of every difference.</p>{remarks and f'<ul>{remarks}</ul>'}"
+        "<section><h3>Published list</h3>"
+        f"<p>{escape(comparison_sentence(comparison))}</p>"
+        f"{remarks and f'<ul>{remarks}</ul>'}"
         f"{_table(COMPARISON_HEAD, comparison_rows(comparison))}</section>\n"
     )
 
@@ -296,7 +299,13 @@ def _advice(ledger: Ledger, _context: ReportContext) -> str:
 
 
 def _audit(ledger: Ledger, context: ReportContext) -> str:
-    facts = _definitions((*audit_rows(ledger), *_structure_facts(ledger)))
+    facts = _definitions(
+        (
+            *sample_rows(context.sample),
+            *audit_rows(ledger),
+            *_structure_facts(ledger),
+        )
+    )
     recipe = "".join(f"<li>{escape(one)}</li>" for one in recipe_lines(ledger))
     made_with = ", ".join(f"{name} {number}" for name, number in versions().items())
     edits = "".join(f"<li>{escape(one)}.</li>" for one in ledger.edits)
@@ -333,21 +342,13 @@ def _structure_facts(ledger: Ledger) -> tuple[tuple[str, str], ...]:
 
 
 def _signatures(_ledger: Ledger, context: ReportContext) -> str:
-    signed = context.sample.sign_offs
     lines = "".join(
-        f"<tr><td>{escape(one.role)}</td><td>{escape(one.name)}</td>"
-        f"<td>{escape(one.when)}</td><td>{escape(one.remark)}</td></tr>"
-        for one in signed
-    )
-    blank = "".join(
-        f"<tr><td>{role}</td><td></td><td></td><td></td></tr>"
-        for role in ("Made by", "Reviewed by")
-        if role not in {one.role for one in signed}
+        f"<tr>{''.join(f'<td>{escape(cell)}</td>' for cell in row)}</tr>"
+        for row in signature_rows(context.sample)
     )
     return (
         '<section><h3>Signatures</h3><table class="signatures"><thead>'
-        f"{_head(('Role', 'Name', 'Date', 'Remark'))}</thead>"
-        f"<tbody>{lines}{blank}</tbody></table></section>\n"
+        f"{_head(SIGNATURE_HEAD)}</thead><tbody>{lines}</tbody></table></section>\n"
     )
 
 

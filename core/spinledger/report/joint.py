@@ -14,7 +14,7 @@ from typing import Any
 
 from spinledger.project.audit import versions
 from spinledger.report.json_ledger import SCHEMA, evidence_to_json, finite
-from spinledger.report.words import outgoing_state
+from spinledger.report.words import outgoing_state, plain
 from spinledger.values.ledger import Entry, Ledger, VerdictState
 
 
@@ -135,7 +135,7 @@ def joint_csv(ledgers: Sequence[Ledger]) -> str:
 def _cells(ledger: Ledger, entry: Entry | None) -> list[str]:
     if entry is None:
         return ["", ""]
-    shift = "" if entry.shift_ppm is None else f"{entry.shift_ppm:.4f}"
+    shift = "" if entry.shift_ppm is None else plain(entry.shift_ppm, 4)
     return [shift, outgoing_state(ledger, entry)]
 
 

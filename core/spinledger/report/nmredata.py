@@ -22,6 +22,7 @@ from spinledger import __version__
 from spinledger.errors import SpinLedgerError
 from spinledger.report.sketch import drawable
 from spinledger.report.text import signal_groups
+from spinledger.report.words import plain
 from spinledger.values.ledger import Entry, EntryCoupling, Ledger
 
 UNKNOWN_SHIFT = 777.777
@@ -199,7 +200,7 @@ def _assignment(ledger: Ledger) -> str:
     for entry in ledger.entries:
         shift = UNKNOWN_SHIFT if entry.shift_ppm is None else entry.shift_ppm
         atoms = ", ".join(f"H{atom + 1}" for atom in entry.atoms)
-        lines.append(f"{quoted(entry.claim)}, {shift:.5f}, {atoms}{_END}")
+        lines.append(f"{quoted(entry.claim)}, {plain(shift, 5)}, {atoms}{_END}")
     done: set[frozenset[str]] = set()
     for entry in ledger.entries:
         if entry.group is None or not _is_interchangeable(entry):
@@ -222,7 +223,7 @@ def _couplings(ledger: Ledger) -> str:
             if order.get(coupling.partner, -1) > order[entry.claim]:
                 lines.append(
                     f"{quoted(entry.claim)}, {quoted(coupling.partner)}, "
-                    f"{coupling.j_hz:.3f}{_END}"
+                    f"{plain(coupling.j_hz, 3)}{_END}"
                 )
     return "".join(lines)
 
@@ -254,7 +255,7 @@ def _signal(group: Sequence[Entry]) -> str:
     items.append(f"L={labels[0]}" if len(labels) == 1 else f"L=({'&'.join(labels)})")
     found = [one.integral_protons for one in group if one.integral_protons is not None]
     if found:
-        items.append(f"E={sum(found):.4f}")
+        items.append(f"E={plain(sum(found), 4)}")
     if first.width_hz is not None:
         items.append(f"W={first.width_hz:.2f}")
     return f"{', '.join(items)}{_END}"
@@ -263,8 +264,8 @@ def _signal(group: Sequence[Entry]) -> str:
 def _place(group: Sequence[Entry]) -> str:
     ranges = [entry.range_ppm for entry in group if entry.range_ppm is not None]
     if len(group) > 1 and ranges:
-        return f"{max(r[1] for r in ranges):.4f}-{min(r[0] for r in ranges):.4f}"
-    return f"{group[0].shift_ppm or 0.0:.4f}"
+        return f"{plain(max(r[1] for r in ranges), 4)}-{plain(min(r[0] for r in ranges), 4)}"
+    return plain(group[0].shift_ppm or 0.0, 4)
 
 
 def _assigned(coupling: EntryCoupling) -> str:

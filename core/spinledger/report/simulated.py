@@ -25,7 +25,7 @@ from spinledger.report.lanes import (
 from spinledger.report.palette import BARK, MUTED
 from spinledger.report.roots import RootLabel, draw_roots
 from spinledger.report.svg import Canvas
-from spinledger.report.trees import Level, Tree, draw_tree, storeys
+from spinledger.report.trees import Tree, draw_tree, storeys
 from spinledger.report.words import label_glyphs
 from spinledger.spins.network import ClaimNetwork
 from spinledger.spins.tree import Tree as ExactTree
@@ -206,9 +206,7 @@ def _drawn_tree(claim: Claim, exact: ExactTree, field_mhz: float) -> Tree:
         state="settled" if claim.visibility == "seen" else "silent",
         root_ppm=claim.shift_ppm,
         levels=tuple(
-            Level(j_hz=level.coupling_hz, n_protons=level.n_spins)
-            for level in exact.levels
-            if level.coupling_hz >= 0.3 * _WIDTH_HZ
+            level for level in exact.levels if level.coupling_hz >= 0.3 * _WIDTH_HZ
         ),
         tips_ppm=tuple((exact.lines_hz[strong] / field_mhz).tolist()),
         weights=tuple(exact.line_protons[strong].tolist()),

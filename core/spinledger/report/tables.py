@@ -7,6 +7,7 @@ from __future__ import annotations
 
 from dataclasses import dataclass
 
+from spinledger.project.document import Sample
 from spinledger.report.compare import ListComparison
 from spinledger.report.published import ListedSignal
 from spinledger.report.words import (
@@ -54,6 +55,9 @@ COMPARISON_HEAD = (
     "J, Hz",
     "Remarks",
 )
+# Who made it, who went through it as a second person, who lets it go.
+ROLES = ("Made by", "Reviewed by", "Released by")
+SIGNATURE_HEAD = ("Role", "Name", "Date", "Remark")
 _SHIFT_DIGITS = 4
 _J_DIGITS = 2
 
@@ -134,6 +138,38 @@ def comparison_rows(comparison: ListComparison) -> tuple[tuple[str, ...], ...]:
     return tuple(rows)
 
 
+def comparison_sentence(comparison: ListComparison) -> str:
+    """What was taken out of the differences to a published list."""
+    offset = signed(comparison.offset_ppm, 3)
+    return (
+        f"One common offset of {offset}\u00a0ppm (here minus published) is taken out "
+        "of every difference."
+    )
+
+
+def sample_rows(sample: Sample) -> tuple[tuple[str, str], ...]:
+    """What the label of the tube says; fields left empty are left out."""
+    rows = (
+        ("Sample", sample.name),
+        ("Batch", sample.batch),
+        ("Submitted by", sample.submitted_by),
+        ("Laboratory", sample.laboratory),
+        ("Prepared", sample.prepared),
+        ("Remark", sample.remark),
+    )
+    return tuple((name, value) for name, value in rows if value)
+
+
+def signature_rows(sample: Sample) -> tuple[tuple[str, str, str, str], ...]:
+    """Signed lines, then blank ones for the maker and a second person's review."""
+    signed_lines = [
+        (one.role, one.name, one.when, one.remark) for one in sample.sign_offs
+    ]
+    roles = {line[0] for line in signed_lines}
+    blank = [(role, "", "", "") for role in ROLES if role not in roles]
+    return (*signed_lines, *blank)
+
+
 def _listed_shift(signal: ListedSignal, digits: int) -> str:
     if signal.low_ppm == signal.high_ppm:
         return fixed(signal.high_ppm, digits)
@@ -156,6 +192,8 @@ def audit_rows(ledger: Ledger) -> tuple[tuple[str, str], ...]:
         ("Acquired", metadata.acquired_on or "not in the file"),
         ("Scans", str(metadata.n_scans or "not in the file")),
         ("Pulse program", metadata.pulse_program or "not in the file"),
+        ("Pulse angle", _measured(metadata.pulse_angle_deg, "°")),
+        ("Delay between scans", _measured(metadata.relaxation_delay_s, "\u00a0s")),
         ("Reference", f"{evidence.reference.by}: {outgoing(evidence.reference.why)}"),
         ("Solvent seen", evidence.solvent_seen or "none"),
         ("Solvent in the file", evidence.solvent_header or "none"),
@@ -174,6 +212,10 @@ def _phase_words(sd_deg: float | None) -> str:
     if sd_deg is None:
         return "as it was given; not estimated"
     return f"estimated error {sd_deg:.1f}\u00a0degrees in the worst signal"
+
+
+def _measured(value: float | None, unit: str) -> str:
+    return "not in the file" if value is None else f"{value:g}{unit}"
 
 
 def recipe_lines(ledger: Ledger) -> tuple[str, ...]:

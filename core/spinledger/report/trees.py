@@ -7,30 +7,26 @@ from __future__ import annotations
 
 from collections.abc import Callable, Sequence
 from dataclasses import dataclass
-from math import comb, sqrt
+from math import sqrt
 
 import numpy as np
 import numpy.typing as npt
 
 from spinledger.report.palette import BARK, PAPER, STATE_FILL, STATE_TONE
 from spinledger.report.svg import Canvas, number
+from spinledger.spins.tree import TreeLevel, first_order_levels, first_order_lines
+from spinledger.values.claim import ClaimSet
 from spinledger.values.ledger import ClaimLines, Entry, Ledger
 
 # Beyond this a crown cannot be read as branches any more.
 _MOST_LEAVES = 64
+# The pattern's letters are read with the same share of a line's width.
+_FINEST_SHARE = 0.5
 # Lines weaker than this share of the strongest would only be specks.
 _FAINTEST_SHARE = 0.02
 _STEM = 12.0
 _LEAF = 14.0
 _CLOSEST_LEAVES = 3.0
-
-
-@dataclass(frozen=True, slots=True, kw_only=True)
-class Level:
-    """One storey of branches: a coupling to ``n_protons`` equivalent partners."""
-
-    j_hz: float
-    n_protons: int
 
 
 @dataclass(frozen=True, slots=True, kw_only=True)
@@ -42,7 +38,7 @@ class Tree:
     claim : str
     state : str
     root_ppm : float, ppm
-    levels : tuple of Level
+    levels : tuple of TreeLevel
         Largest J first.
     tips_ppm : tuple of float, ppm
         Exact lines of the fit, or the first-order ones where there is no fit.
@@ -55,7 +51,7 @@ class Tree:
     claim: str
     state: str
     root_ppm: float
-    levels: tuple[Level, ...]
+    levels: tuple[TreeLevel, ...]
     tips_ppm: tuple[float, ...]
     weights: tuple[float, ...]
     width_ppm: float
@@ -85,7 +81,7 @@ def claim_tree(ledger: Ledger, entry: Entry) -> Tree | None:
         return None
     field_mhz = ledger.evidence.spectrum.spectrometer_frequency_mhz
     root = entry.shift_ppm if entry.shift_ppm is not None else entry.predicted_shift_ppm
-    levels = _levels(ledger, entry)
+    levels = tree_levels(ledger, entry)
     found = _lines_of(ledger, entry.claim)
     if entry.state == "open" or found is None:
         tips, weights = _first_order(root, levels, field_mhz)
@@ -177,25 +173,61 @@ def storeys(
     return tuple(rooms)
 
 
-def _levels(ledger: Ledger, entry: Entry) -> tuple[Level, ...]:
-    protons = {one.claim: one.protons for one in ledger.entries}
-    levels = sorted(
-        (
-            Level(j_hz=abs(one.j_hz), n_protons=protons.get(one.partner, 1))
-            for one in entry.couplings
-            if one.j_hz is not None and one.determined
-        ),
-        key=lambda level: -level.j_hz,
+def tree_levels(ledger: Ledger, entry: Entry) -> tuple[TreeLevel, ...]:
+    """Splittings to draw, by the rules that name the pattern, largest J first."""
+    couplings_hz = known_couplings_hz(ledger)
+    levels = first_order_levels(
+        ledger.claims,
+        ledger.claims.index_of(entry.claim),
+        couplings_hz,
+        finest_hz=_FINEST_SHARE * (entry.width_hz or 1.0),
     )
-    width_hz = entry.width_hz or 1.0
-    kept: list[Level] = []
+    kept: list[TreeLevel] = []
     n_leaves = 1
     for level in levels:
-        n_leaves *= level.n_protons + 1
-        if n_leaves > _MOST_LEAVES or level.j_hz < 0.3 * width_hz:
+        n_leaves *= level.n_spins + 1
+        if n_leaves > _MOST_LEAVES:
             break
         kept.append(level)
     return tuple(kept)
+
+
+def known_couplings_hz(ledger: Ledger) -> npt.NDArray[np.float64]:
+    """|J| of every coupling parameter as the entries book it, NaN where unknown.
+
+    Returns
+    -------
+    numpy.ndarray, shape (n_couplings,), Hz
+    """
+    entries = {entry.claim: entry for entry in ledger.entries}
+    found = np.full(len(ledger.claims.couplings), np.nan)
+    for index, coupling in enumerate(ledger.claims.couplings):
+        for own, partner in _ends(ledger.claims, coupling.pairs[0]):
+            values = [
+                abs(one.j_hz)
+                for one in (entries[own].couplings if own in entries else ())
+                if one.partner == partner
+                and one.predicted_j_hz == coupling.j_hz
+                and one.determined
+                and one.j_hz is not None
+            ]
+            if values:
+                found[index] = values[0]
+    return found
+
+
+def _ends(claims: ClaimSet, pair: tuple[int, int]) -> list[tuple[str, str]]:
+    """Both directions of a pair, as (claim, partner as an entry names it)."""
+    particles = [claims.particles[one] for one in pair]
+    names = [
+        one.nucleus if one.claim is None else claims.claims[one.claim].label
+        for one in particles
+    ]
+    return [
+        (names[side], names[1 - side])
+        for side in (0, 1)
+        if particles[side].claim is not None
+    ]
 
 
 def _lines_of(ledger: Ledger, claim: str) -> ClaimLines | None:
@@ -224,19 +256,10 @@ def _visible(
 
 
 def _first_order(
-    root_ppm: float, levels: Sequence[Level], field_mhz: float
+    root_ppm: float, levels: tuple[TreeLevel, ...], field_mhz: float
 ) -> tuple[npt.NDArray[np.float64], npt.NDArray[np.float64]]:
-    shifts = np.array([root_ppm])
-    weights = np.array([1.0])
-    for level in levels:
-        steps = np.arange(level.n_protons + 1) - level.n_protons / 2
-        shares = np.array(
-            [comb(level.n_protons, k) / 2**level.n_protons for k in range(steps.size)]
-        )
-        shifts = (shifts[:, None] + steps * level.j_hz / field_mhz).ravel()
-        weights = (weights[:, None] * shares).ravel()
-    order = np.argsort(shifts)
-    return shifts[order], weights[order]
+    lines_hz, shares = first_order_lines(root_ppm * field_mhz, levels)
+    return lines_hz / field_mhz, shares
 
 
 def _is_hedge(
@@ -263,7 +286,7 @@ def _leads_to_lines(
     per_hz: float,
 ) -> bool:
     """Every leaf has a line and every line a leaf within half the smallest J."""
-    smallest_hz = min((level.j_hz for level in tree.levels), default=1.0)
+    smallest_hz = min((level.coupling_hz for level in tree.levels), default=1.0)
     reach = max(0.5 * smallest_hz, 1.0) * per_hz
     gaps = np.abs(np.subtract.outer(leaf_x, tips))
     return bool(gaps.min(axis=1).max() <= reach and gaps.min(axis=0).max() <= reach)
@@ -328,8 +351,8 @@ def _branches(
         reached: list[float] = []
         strokes: list[str] = []
         for node in nodes:
-            for k in range(level.n_protons + 1):
-                end = node + (k - level.n_protons / 2) * level.j_hz / field_mhz
+            for k in range(level.n_spins + 1):
+                end = node + (k - level.n_spins / 2) * level.coupling_hz / field_mhz
                 strokes.append(_branch((x_of(node), y), (x_of(end), y - step)))
                 reached.append(end)
         canvas.path("".join(strokes), stroke=BARK, width=max(0.7, 1.4 - 0.2 * rank))

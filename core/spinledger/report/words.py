@@ -33,6 +33,8 @@ _BENCH_WORDS = (
     (re.compile(rf"\bsettled{_NAMED}"), r"assigned\g<named>"),
     (re.compile(rf"\bdisputed{_NAMED}"), r"inconsistent\g<named>"),
 )
+# A sign in front of a figure, not the hyphen of a name or of a range.
+_NEGATIVE = re.compile(r"(?<![\w.)\]\u2013-])-(?=\d)(?P<figure>\d+(?:\.\d+)?)")
 _SUBSCRIPTS = str.maketrans("0123456789", "₀₁₂₃₄₅₆₇₈₉")
 _SOLVENT_DIGITS = re.compile(r"(?<=[A-Za-z)])(\d+)")
 
@@ -66,7 +68,23 @@ def outgoing(sentence: str) -> str:
     """Sentence as it leaves: outgoing words for those of the bench, capital, stop."""
     for pattern, word in _BENCH_WORDS:
         sentence = pattern.sub(word, sentence)
-    return as_sentence(sentence)
+    return as_sentence(real_minus(sentence))
+
+
+def real_minus(sentence: str) -> str:
+    """Sentence with real minus signs, and zero without a sign.
+
+    Examples
+    --------
+    >>> real_minus("the line at -0.000 ppm, 2-HA, residual -1.4 sd")
+    'the line at 0.000 ppm, 2-HA, residual −1.4 sd'
+    """
+
+    def sign(match: re.Match[str]) -> str:
+        figure = match["figure"]
+        return figure if float(figure) == 0 else f"{MINUS}{figure}"
+
+    return _NEGATIVE.sub(sign, sentence)
 
 
 def as_sentence(text: str) -> str:
@@ -87,8 +105,9 @@ def as_sentence(text: str) -> str:
 
 
 def signed(value: float, digits: int) -> str:
-    """Fixed-point text with a real minus sign and a plus where it is positive."""
-    return _minus(f"{value:+.{digits}f}")
+    """Fixed-point text with its sign, a real minus; zero has none."""
+    text = f"{value:+.{digits}f}"
+    return text[1:] if float(text) == 0 else _minus(text)
 
 
 def fixed(value: float, digits: int) -> str:
@@ -118,6 +137,17 @@ def with_sd(value: float, sd: float | None, *, digits: int) -> str:
         decimals -= 1
         units = math.ceil(units / 10)
     return f"{fixed(value, decimals)}({units})"
+
+
+def plain(value: float, digits: int, *, sign: str = "") -> str:
+    """Fixed-point text for files that programs read; never minus zero.
+
+    Examples
+    --------
+    >>> plain(-0.0004, 3), plain(-1.5, 1), plain(1.5, 1, sign="+")
+    ('0.000', '-1.5', '+1.5')
+    """
+    return f"{value:{sign}z.{digits}f}"
 
 
 def plus_minus(value: float, sd: float, *, digits: int = 2) -> str:

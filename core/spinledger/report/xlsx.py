@@ -17,12 +17,17 @@ from spinledger.project.audit import versions
 from spinledger.report.cautions import printed_cautions
 from spinledger.report.context import ReportContext
 from spinledger.report.tables import (
+    COMPARISON_HEAD,
     CONTENDER_HEAD,
+    SIGNATURE_HEAD,
     STRAY_HEAD,
     audit_rows,
+    comparison_rows,
     contender_rows,
     probability_words,
     recipe_lines,
+    sample_rows,
+    signature_rows,
     stray_rows,
     verdict_title,
 )
@@ -87,6 +92,11 @@ def report_xlsx(ledger: Ledger, context: ReportContext | None = None) -> bytes:
     _sheet(book, "Contenders", CONTENDER_HEAD, contender_rows(ledger))
     _sheet(book, "Verdict", ("what", "value"), _verdict_rows(ledger, chosen))
     _sheet(book, "Audit", ("what", "value"), _audit_rows(ledger, chosen))
+    _sheet(book, "Signatures", SIGNATURE_HEAD, signature_rows(chosen.sample))
+    if chosen.comparison is not None:
+        _sheet(
+            book, "Published list", COMPARISON_HEAD, comparison_rows(chosen.comparison)
+        )
     stream = io.BytesIO()
     book.save(stream)
     return stream.getvalue()
@@ -149,7 +159,7 @@ def _verdict_rows(ledger: Ledger, context: ReportContext) -> list[tuple[Cell, ..
 
 
 def _audit_rows(ledger: Ledger, context: ReportContext) -> list[tuple[Cell, ...]]:
-    rows: list[tuple[Cell, ...]] = [*audit_rows(ledger)]
+    rows: list[tuple[Cell, ...]] = [*sample_rows(context.sample), *audit_rows(ledger)]
     rows += [("recipe", line) for line in recipe_lines(ledger)]
     rows += [("hand edit", edit) for edit in ledger.edits]
     rows += [(one.when, one.what) for one in context.audit]

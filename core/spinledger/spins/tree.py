@@ -177,6 +177,49 @@ def splitting_tree(
     )
 
 
+def first_order_levels(
+    claims: ClaimSet,
+    claim_index: int,
+    couplings_hz: Floats,
+    *,
+    finest_hz: float,
+    absent: frozenset[int] = frozenset(),
+) -> tuple[TreeLevel, ...]:
+    """Levels of a claim's tree alone, without the exact spectrum.
+
+    Parameters
+    ----------
+    claims : ClaimSet
+    claim_index : int
+    couplings_hz : numpy.ndarray, shape (n_couplings,), Hz
+        NaN where a coupling is not known; it makes no level.
+    finest_hz : float, Hz
+        Couplings under this, or closer than this, are not told apart.
+    absent : frozenset of int
+        Exchangeable claims that are not there and split nothing.
+
+    Returns
+    -------
+    tuple of TreeLevel
+        Largest J first; the same that `splitting_tree` draws.
+
+    Raises
+    ------
+    ValueError
+        If the claim is silent: it has no particle.
+    """
+    splittings = _splittings(claims, claim_index, frozenset(absent) - {claim_index})
+    known = tuple(s for s in splittings if np.isfinite(couplings_hz[s.coupling]))
+    return _levels(known, couplings_hz, finest_hz)
+
+
+def first_order_lines(
+    centre_hz: float, levels: tuple[TreeLevel, ...]
+) -> tuple[Floats, Floats]:
+    """Places (Hz, rising) and shares (sum 1) of the leaves of some levels."""
+    return _leaves(centre_hz, levels)
+
+
 @dataclass(frozen=True, slots=True)
 class _Splitting:
     """One coupling of the claim's first particle to spins of one kind."""

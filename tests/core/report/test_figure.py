@@ -13,7 +13,8 @@ from spinledger.report.folds import fold_axis, shown_regions
 from spinledger.report.lanes import residue_height, residue_heights, ticks
 from spinledger.report.sketch import sketch_svg
 from spinledger.report.svg import envelope
-from spinledger.report.trees import claim_tree
+from spinledger.report.trees import claim_tree, known_couplings_hz
+from spinledger.spins.tree import Resolution, splitting_tree
 
 SVG = "{http://www.w3.org/2000/svg}"
 
@@ -144,7 +145,7 @@ def test_tree_levels_fall_and_exact_lines_are_its_tips() -> None:
     ledger = invented_ledger()
     tree = claim_tree(ledger, next(e for e in ledger.entries if e.claim == "3-H"))
     assert tree is not None
-    assert [(level.j_hz, level.n_protons) for level in tree.levels] == [
+    assert [(level.coupling_hz, level.n_spins) for level in tree.levels] == [
         (8.60, 1),
         (6.31, 3),
         (3.41, 1),
@@ -152,6 +153,44 @@ def test_tree_levels_fall_and_exact_lines_are_its_tips() -> None:
     assert ledger.model is not None
     lines = next(one for one in ledger.model.claim_lines if one.claim == "3-H")
     assert set(tree.tips_ppm) <= set(lines.shifts_ppm.tolist())
+
+
+def test_drawn_tree_is_the_one_that_names_the_pattern() -> None:
+    ledger = invented_ledger()
+    field_mhz = ledger.evidence.spectrum.spectrometer_frequency_mhz
+    shifts = [one.shift_ppm or one.predicted_shift_ppm for one in ledger.entries]
+    couplings = known_couplings_hz(ledger)
+    assert np.all(np.isfinite(couplings))
+    for index, entry in enumerate(ledger.entries):
+        if not entry.couplings:
+            continue
+        drawn = claim_tree(ledger, entry)
+        named = splitting_tree(
+            ledger.claims,
+            index,
+            np.array(shifts) * field_mhz,
+            couplings,
+            resolution=Resolution(width_hz=entry.width_hz or 1.0),
+        )
+        assert drawn is not None
+        assert drawn.levels == named.levels
+
+
+def test_unknown_couplings_are_not_drawn() -> None:
+    ledger = invented_ledger()
+    entries = tuple(
+        replace(
+            one,
+            couplings=tuple(
+                replace(c, j_hz=None, determined=False) for c in one.couplings
+            ),
+        )
+        for one in ledger.entries
+    )
+    bare = replace(ledger, entries=entries)
+    tree = claim_tree(bare, next(e for e in bare.entries if e.claim == "3-H"))
+    assert tree is not None
+    assert tree.levels == ()
 
 
 def test_silent_claims_have_no_tree() -> None:

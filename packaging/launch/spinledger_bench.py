@@ -1,0 +1,13 @@
+"""Start of the packaged bench."""
+
+from __future__ import annotations
+
+import multiprocessing
+import sys
+
+if __name__ == "__main__":
+    # A worker process of a packaged program is this program once more.
+    multiprocessing.freeze_support()
+    from spinledger_app.__main__ import main
+
+    sys.exit(main())
