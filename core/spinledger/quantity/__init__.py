@@ -1,0 +1,1 @@
+"""How much there is: content by internal standard, and residual solvents."""
