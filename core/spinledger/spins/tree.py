@@ -9,6 +9,7 @@ from math import comb
 import numpy as np
 import numpy.typing as npt
 
+from spinledger.spins.first_order import Sticks, is_read_off, owned_lines
 from spinledger.spins.multiplicity import multiplicity_of
 from spinledger.spins.network import ClaimNetwork
 from spinledger.spins.synthesis import (
@@ -69,7 +70,8 @@ class Tree:
     roof : float
         Exact intensity above the centre minus that below, as a share.
     is_first_order : bool
-        Every line stands at a leaf and every leaf has its line; unequal
+        Every line stands at a leaf and every leaf has its line, so that the
+        spacings read J; a common displacement of all lines and unequal
         intensities (the roof) are allowed.
     spin_system : str or None
         "AA'XX'" or "AA'BB'" where the claim is half of one.
@@ -147,14 +149,18 @@ def splitting_tree(
     claim = network.claims.claims[claim_index]
     centre = float(shifts_hz[claim_index])
     leaves, weights = _leaves(centre, levels)
-    exact = network.lines(shifts_hz, couplings_hz, without=without)
+    plan = network.plan(shifts_hz, couplings_hz, without=without)
+    exact = network.lines(shifts_hz, couplings_hz, plan=plan)
     own = exact.claim == claim_index
     lines, protons = exact.frequencies_hz[own], exact.protons[own]
     leaf_protons = weights * float(protons.sum())
-    is_first_order = _agrees(
-        _Sticks(leaves, leaf_protons), _Sticks(lines, protons), fine.width_hz
-    )
     system = _spin_system(network.claims, claim_index, shifts_hz, couplings_hz)
+    is_first_order = is_read_off(
+        Sticks(leaves, leaf_protons),
+        owned_lines(exact, claim_index, bin_hz=plan.effort.bin_hz),
+        width_hz=fine.width_hz,
+        largest_shift_hz=0.5 * max((level.coupling_hz for level in levels), default=0),
+    ) and (system is None or _is_one_triplet(levels))
     return Tree(
         claim=claim.label,
         centre_hz=centre,
@@ -164,7 +170,7 @@ def splitting_tree(
         lines_hz=lines,
         line_protons=protons,
         departure=_departure(
-            _Sticks(leaves, leaf_protons), _Sticks(lines, protons), fine.width_hz
+            Sticks(leaves, leaf_protons), Sticks(lines, protons), fine.width_hz
         ),
         roof=_roof(lines, protons, centre),
         is_first_order=is_first_order,
@@ -301,13 +307,7 @@ def _leaves(centre_hz: float, levels: tuple[TreeLevel, ...]) -> tuple[Floats, Fl
     return leaves[order], weights[order]
 
 
-@dataclass(frozen=True, slots=True, eq=False)
-class _Sticks:
-    frequencies: Floats
-    protons: Floats
-
-
-def _departure(tree: _Sticks, exact: _Sticks, width_hz: float) -> float:
+def _departure(tree: Sticks, exact: Sticks, width_hz: float) -> float:
     """Half the area between both spectra over the area of the claim."""
     both = np.concatenate([tree.frequencies, exact.frequencies])
     step = width_hz / 8.0
@@ -329,34 +329,9 @@ def _roof(lines: Floats, protons: Floats, centre_hz: float) -> float:
     return float((protons * np.sign(lines - centre_hz)).sum()) / total
 
 
-# A tree is right if nine tenths of the exact intensity stand at leaves, and
-# nine tenths of the leaves have a third or more of their intensity.
-_ENOUGH = 0.9
-_LEAST_LEAF = 0.33
-_LARGEST_SHIFT_WIDTHS = 4.0
-
-
-def _agrees(tree: _Sticks, exact: _Sticks, width_hz: float) -> bool:
-    """True if the exact lines form the tree's pattern, wherever its centre is."""
-    reach = 0.6 * width_hz
-    limit = _LARGEST_SHIFT_WIDTHS * width_hz
-    shifts = np.arange(-limit, limit + 1e-9, 0.1 * width_hz)
-    gaps = exact.frequencies[:, None] - tree.frequencies[None, :]
-    total = float(np.abs(exact.protons).sum())
-    best_share, best_shift = 0.0, 0.0
-    for shift in shifts[np.argsort(np.abs(shifts), kind="stable")]:
-        near = np.abs(gaps - shift).min(axis=1) <= reach
-        share = float(np.abs(exact.protons[near]).sum()) / total
-        if share > best_share + 1e-9:
-            best_share, best_shift = share, float(shift)
-    if best_share < _ENOUGH:
-        return False
-    close = np.abs(gaps - best_shift) <= reach
-    alike = np.abs(tree.frequencies[:, None] - tree.frequencies[None, :]) <= reach
-    found = exact.protons @ close
-    expected = alike @ tree.protons
-    filled = tree.protons[found >= _LEAST_LEAF * expected].sum()
-    return bool(filled >= _ENOUGH * tree.protons.sum())
+def _is_one_triplet(levels: tuple[TreeLevel, ...]) -> bool:
+    """J and J' run together: the only first-order look of half a four-spin system."""
+    return len(levels) == 1 and levels[0].n_spins == 2
 
 
 def _all_known(levels: tuple[TreeLevel, ...], fine: Resolution) -> bool:

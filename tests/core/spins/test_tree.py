@@ -6,7 +6,9 @@ import numpy as np
 import pytest
 
 from core.spins.spin_cases import claim_set, predictions
+from spinledger.spins.first_order import owned_lines
 from spinledger.spins.multiplicity import multiplicity_of
+from spinledger.spins.network import ClaimNetwork
 from spinledger.spins.tree import Resolution, Tree, splitting_tree
 from spinledger.values.claim import ClaimSet
 
@@ -80,6 +82,78 @@ def test_four_spin_ring_is_named_and_never_a_doublet() -> None:
     )
     assert tree_of(claims, 0, 500.0).multiplicity == "m (AA′XX′)"
     assert tree_of(claims, 0, 100.0).multiplicity == "m (AA′BB′)"
+
+
+def test_four_spin_ring_with_broad_lines_is_still_no_doublet() -> None:
+    claims = claim_set(
+        [("2-H", [1, 1], 7.30), ("3-H", [1, 1], 6.90)],
+        [
+            ([(0, 2), (1, 3)], 8.4),
+            ([(0, 3), (1, 2)], 0.4),
+            ([(0, 1)], 2.3),
+            ([(2, 3)], 2.8),
+        ],
+    )
+    broad = Resolution(width_hz=4.0)
+    assert tree_of(claims, 0, 500.0, broad).multiplicity == "m (AA′XX′)"
+
+
+def ester(gap_hz: float) -> ClaimSet:
+    """CH2 beside a stereocentre with CH3, its protons some Hz apart at 400 MHz."""
+    return claim_set(
+        [
+            ("3-H", [1], 4.19),
+            ("2-HA", [1], 2.42 + gap_hz / 400.0),
+            ("2-HB", [1], 2.42),
+            ("4-H", [3], 1.22),
+        ],
+        [
+            ([(0, 1)], 3.4),
+            ([(0, 2)], 8.6),
+            ([(1, 2)], -16.5),
+            ([(0, 3)], 6.3),
+        ],
+    )
+
+
+@pytest.mark.parametrize(
+    ("gap_hz", "words"),
+    [(120.0, ["dqd", "dd", "dd", "d"]), (29.0, ["dqd", "dd", "dd", "d"])],
+)
+def test_displaced_pattern_whose_spacings_read_j_keeps_its_words(
+    gap_hz: float, words: list[str]
+) -> None:
+    """AB part of ABX: doublets of exactly J_AB, (J_AX + J_BX)/2 +- (D+ - D-)/2 apart.
+
+    D+- = hypot(gap +- (J_AX - J_BX)/2, J_AB): 8.27 and 3.73 Hz for a gap of 29 Hz
+    in place of 8.6 and 3.4 Hz, well inside the line; 7.5 and 4.5 Hz and outer
+    lines of a fifth for a gap of 12 Hz, which read wrongly.
+    """
+    fine = Resolution(width_hz=1.2)
+    found = [tree_of(ester(gap_hz), k, 400.0, fine).multiplicity for k in range(4)]
+    assert found == words
+
+
+def test_pattern_that_reads_wrong_couplings_has_no_words() -> None:
+    fine = Resolution(width_hz=1.2)
+    found = [tree_of(ester(12.0), k, 400.0, fine).multiplicity for k in (1, 2)]
+    assert found == ["m", "m"]
+
+
+def test_line_is_owned_by_the_claim_that_flips_in_it() -> None:
+    claims = claim_set([("A", [1], 2.05), ("B", [1], 2.0)], [([(0, 1)], 12.0)])
+    shifts, couplings = predictions(claims, 400.0)
+    exact = ClaimNetwork(claims).lines(shifts, couplings)
+    shares = [owned_lines(exact, claim, bin_hz=0.02).protons for claim in (0, 1)]
+    # AB in closed form, lines by rising frequency: 1 -+ J/D for outer and inner
+    # ones. In A's lines A flips by cos and B by sin of half of arcsin(J/D).
+    ratio = 12.0 / np.hypot(20.0, 12.0)
+    lines = 0.5 * (1 + ratio * np.array([-1, 1, 1, -1]))
+    half = 0.5 * np.arcsin(ratio)
+    near, far = np.cos(half) ** 2, np.sin(half) ** 2
+    # Closed forms both: rounding, and the thinning's scale of 1e-5.
+    np.testing.assert_allclose(shares[0], lines * [far, far, near, near], atol=1e-5)
+    np.testing.assert_allclose(shares[1], lines * [near, near, far, far], atol=1e-5)
 
 
 def test_unknown_coupling_makes_no_multiplicity() -> None:
