@@ -63,10 +63,9 @@ def condense_row(
     scale = protons / summed.sum()
     d_frequency = d_protons = None
     if lines.d_frequencies is not None:
-        moved = (lines.d_frequencies[:, kept] * size).T
-        changed = lines.row_changes(row, kept)
-        if changed is not None:
-            changes = changed.T
+        moved = lines.d_frequencies[kept] * size[:, None]
+        changes = lines.row_changes(row, kept)
+        if changes is not None:
             offset = frequencies - np.repeat(
                 centres, np.diff(starts, append=frequencies.size)
             )

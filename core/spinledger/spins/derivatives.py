@@ -25,55 +25,31 @@ _DEGENERATE_HZ = 1e-6
 
 def of_frequencies(
     index: IndexStructure, eigen: EigenSystem, kept: list[Kept]
-) -> Floats:
-    """Derivatives of the kept lines' frequencies, shape (n_parameters, n_lines)."""
+) -> Singles:
+    """Derivatives of the kept lines' frequencies, shape (n_lines, n_parameters)."""
     slopes = [
         _energy_slopes(index, stack, vectors)
         for stack, vectors in zip(index.blocks, eigen.vectors, strict=True)
     ]
-    out = np.empty((index.diagonal.shape[1], sum(lines.flat.size for lines in kept)))
+    n_lines = sum(lines.flat.size for lines in kept)
+    out = np.empty((n_lines, index.diagonal.shape[1]), dtype=np.float32)
     begin = 0
     for stack, lines in zip(index.transitions, kept, strict=True):
-        part = out[:, begin : begin + lines.flat.size]
-        _differences(stack, lines, slopes[stack.upper], slopes[stack.lower], out=part)
+        part = out[begin : begin + lines.flat.size]
+        link_of, upper, lower = lines.indices()
+        _, n_upper, n_lower = lines.shape
+        above = stack.upper_blocks[link_of] * n_upper + upper
+        below = stack.lower_blocks[link_of] * n_lower + lower
+        slopes[stack.upper].take(above, axis=0, out=part, mode="clip")
+        part -= slopes[stack.lower].take(below, axis=0)
         begin += lines.flat.size
     return out
 
 
-def _differences(
-    stack: TransitionStack, lines: Kept, above: Floats, below: Floats, *, out: Floats
-) -> None:
-    """Slope of the upper state minus that of the lower one, for kept lines."""
-    n_links, n_upper, n_lower = lines.shape
-    n_each = n_upper * n_lower
-    if lines.flat.size == n_links * n_each:
-        for link in range(n_links):
-            a, b = int(stack.upper_blocks[link]), int(stack.lower_blocks[link])
-            part = out[:, link * n_each : (link + 1) * n_each]
-            np.subtract(
-                above[:, a * n_upper : (a + 1) * n_upper, None],
-                below[:, None, b * n_lower : (b + 1) * n_lower],
-                out=_as_table(part, n_upper),
-            )
-        return
-    link_of, upper, lower = lines.indices()
-    out[:] = above.take(stack.upper_blocks[link_of] * n_upper + upper, axis=1)
-    out -= below.take(stack.lower_blocks[link_of] * n_lower + lower, axis=1)
-
-
-def _as_table(part: Floats, n_upper: int) -> Floats:
-    """View of (n, upper * lower) as (n, upper, lower), without a copy."""
-    n_lower = part.shape[1] // n_upper
-    row, item = part.strides
-    return np.lib.stride_tricks.as_strided(
-        part,
-        (part.shape[0], n_upper, n_lower),
-        (row, n_lower * item, item),
-    )
-
-
-def _energy_slopes(index: IndexStructure, stack: BlockStack, vectors: Floats) -> Floats:
-    """dE/dp of every state, shape (n_parameters, n_blocks * size)."""
+def _energy_slopes(
+    index: IndexStructure, stack: BlockStack, vectors: Floats
+) -> Singles:
+    """dE/dp of every state, shape (n_blocks * size, n_parameters)."""
     diagonal = index.diagonal[stack.states]
     slopes: Floats = diagonal.transpose(0, 2, 1) @ (vectors * vectors)
     if stack.off_starts.size:
@@ -84,7 +60,8 @@ def _energy_slopes(index: IndexStructure, stack: BlockStack, vectors: Floats) ->
         sums = np.add.reduceat(products, stack.off_starts, axis=0)
         block, pair = np.divmod(stack.off_targets, n_pairs)
         slopes[block, index.n_particles + pair] += sums
-    return slopes.transpose(1, 0, 2).reshape(diagonal.shape[-1], -1)
+    by_state = slopes.transpose(0, 2, 1).astype(np.float32, order="C")
+    return by_state.reshape(-1, diagonal.shape[-1])
 
 
 def of_intensities(
@@ -92,12 +69,12 @@ def of_intensities(
     eigen: EigenSystem,
     moments: list[Moments],
     kept: list[Kept],
-) -> Floats:
+) -> Singles:
     """Derivatives of the kept lines' intensities.
 
     Returns
     -------
-    numpy.ndarray, shape (n_parameters, n_rows, n_lines), protons per Hz
+    numpy.ndarray, shape (n_rows, n_lines, n_parameters), protons per Hz
 
     Notes
     -----
@@ -108,11 +85,11 @@ def of_intensities(
     """
     mixings = _all_mixings(index, eigen)
     n_rows = kept[0].intensities.shape[0]
-    shape = (index.diagonal.shape[1], n_rows, sum(lines.flat.size for lines in kept))
-    out = np.empty(shape)
+    n_lines = sum(lines.flat.size for lines in kept)
+    out = np.empty((n_rows, n_lines, index.diagonal.shape[1]), dtype=np.float32)
     begin = 0
     for stack, moment, lines in zip(index.transitions, moments, kept, strict=True):
-        part = out[:, :, begin : begin + lines.flat.size]
+        part = out[:, begin : begin + lines.flat.size]
         _one_stack(stack, moment, lines, mixings=mixings, out=part)
         begin += lines.flat.size
     return out
@@ -123,18 +100,18 @@ def of_moments(
     eigen: EigenSystem,
     moments: list[Moments],
     kept: list[Kept],
-) -> tuple[Floats, Floats]:
+) -> tuple[Singles, Floats]:
     """Derivatives of the total moments, and what turns them into rows.
 
     Returns
     -------
-    numpy.ndarray, shape (n_parameters, n_lines); numpy.ndarray, (n_rows, n_lines)
+    numpy.ndarray, shape (n_lines, n_parameters); numpy.ndarray, (n_rows, n_lines)
         d(T_row T) is given as 2 T_row dT: right in the sum over all rows.
     """
     mixings = _all_mixings(index, eigen)
     n_rows = kept[0].intensities.shape[0]
     n_lines = sum(lines.flat.size for lines in kept)
-    out = np.empty((index.diagonal.shape[1], n_lines))
+    out = np.empty((n_lines, index.diagonal.shape[1]), dtype=np.float32)
     factors = np.empty((n_rows, n_lines))
     begin = 0
     for stack, moment, lines in zip(index.transitions, moments, kept, strict=True):
@@ -145,7 +122,7 @@ def of_moments(
                 mixings[stack.upper][stack.upper_blocks[link]],
                 mixings[stack.lower][stack.lower_blocks[link]],
             )
-            out[:, part][:, here] = _picked(changed, flat)
+            out[part][here] = _picked(changed, flat)
             for row in range(n_rows):
                 own = moment.rows[link, row].ravel()[flat]
                 factors[row, part][here] = 2.0 * stack.weights[link] * own
@@ -189,24 +166,25 @@ def _one_stack(
             _picked(_moment_change(rows[row], above, below), flat)
             for row in range(n_all)
         ]
-        total = stack.weights[link] * moment.total[link].ravel()[flat]
+        total = _picked(moment.total[link].reshape(-1, 1), flat)
+        total = (stack.weights[link] * total).astype(np.float32)
         if n_all == 1:
-            np.multiply(changes[0], 2.0 * total, out=out[:, 0, here])
+            np.multiply(changes[0], 2.0 * total, out=out[0, here])
             continue
         of_total = sum(changes[1:], start=changes[0])
-        for row in range(out.shape[1]):
-            own = stack.weights[link] * moment.rows[link, row].ravel()[flat]
-            np.multiply(changes[row], total, out=out[:, row, here])
-            out[:, row, here] += of_total * own
+        for row in range(out.shape[0]):
+            own = stack.weights[link] * rows[row].reshape(-1, 1)[flat]
+            np.multiply(changes[row], total, out=out[row, here])
+            out[row, here] += of_total * own
 
 
 def _picked(table: Singles, flat: Integers) -> Singles:
-    """Columns of the kept lines; all of them need no copy."""
-    return table if flat.size == table.shape[1] else table.take(flat, axis=1)
+    """Rows of the kept lines; all of them need no copy."""
+    return table if flat.size == table.shape[0] else table.take(flat, axis=0)
 
 
 def _moment_change(moments: Singles, above: Singles, below: Singles) -> Singles:
-    """X_k' T + T X_(k+1), shape (n_parameters, upper size * lower size).
+    """X_k' T + T X_(k+1), shape (upper size * lower size, n_parameters).
 
     X is antisymmetric, so X' = -X.
     """
@@ -214,8 +192,8 @@ def _moment_change(moments: Singles, above: Singles, below: Singles) -> Singles:
     size_below = below.shape[0]
     other = moments @ below.reshape(size_below, -1)
     other -= (above.reshape(-1, size_above) @ moments).reshape(size_above, -1)
-    table = other.reshape(size_above, n_parameters, size_below).transpose(1, 0, 2)
-    return np.ascontiguousarray(table).reshape(n_parameters, -1)
+    table = other.reshape(size_above, n_parameters, size_below).transpose(0, 2, 1)
+    return np.ascontiguousarray(table).reshape(-1, n_parameters)
 
 
 def _mixings(stack: BlockStack, energies: Floats, vectors: Floats) -> Singles:

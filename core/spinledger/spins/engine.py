@@ -19,6 +19,7 @@ from spinledger.spins.solution import EigenSystem, Kept, Moments
 from spinledger.values.spin_system import SpinSystem, Transitions
 
 Floats = npt.NDArray[np.float64]
+Singles = npt.NDArray[np.float32]
 Integers = npt.NDArray[np.int64]
 
 
@@ -30,11 +31,12 @@ class EngineLines:
     ----------
     frequencies_hz : numpy.ndarray, shape (n_lines,), Hz
     intensities : numpy.ndarray, shape (n_rows, n_lines), protons
-    d_frequencies : numpy.ndarray or None, shape (n_parameters, n_lines)
-        Derivative by every particle's frequency, then by every pair's J.
-    d_intensities : numpy.ndarray or None, shape (n_parameters, n_rows, n_lines)
+    d_frequencies : numpy.ndarray or None, shape (n_lines, n_parameters)
+        Derivative by every particle's frequency, then by every pair's J; these
+        and the following in single precision.
+    d_intensities : numpy.ndarray or None, shape (n_rows, n_lines, n_parameters)
         Protons per Hz.
-    d_moments : numpy.ndarray or None, shape (n_parameters, n_lines)
+    d_moments : numpy.ndarray or None, shape (n_lines, n_parameters)
         Derivative of the total transition moment, in place of the former.
     row_factors : numpy.ndarray or None, shape (n_rows, n_lines)
         Share of each row in it: times ``d_moments`` they are derivatives of
@@ -44,18 +46,18 @@ class EngineLines:
 
     frequencies_hz: Floats
     intensities: Floats
-    d_frequencies: Floats | None = None
-    d_intensities: Floats | None = None
-    d_moments: Floats | None = None
+    d_frequencies: Singles | None = None
+    d_intensities: Singles | None = None
+    d_moments: Singles | None = None
     row_factors: Floats | None = None
 
     def row_changes(self, row: int, kept: Integers) -> Floats | None:
-        """Derivatives of one row's intensities, (n_parameters, n_kept), or None."""
+        """Derivatives of one row's intensities, (n_kept, n_parameters), or None."""
         if self.d_intensities is not None:
-            return self.d_intensities[:, row, kept]
+            return self.d_intensities[row, kept].astype(np.float64)
         if self.d_moments is None or self.row_factors is None:
             return None
-        return np.asarray(self.d_moments[:, kept] * self.row_factors[row, kept])
+        return np.asarray(self.d_moments[kept] * self.row_factors[row, kept, None])
 
 
 class SpinEngine:

@@ -504,20 +504,17 @@ def _onto_claims(
         n_claims + piece.bond_couplings
     ).tolist()
     columns = sorted({place for place in places if place >= 0})
-    fold = np.zeros((len(columns), len(places)))
+    fold = np.zeros((len(places), len(columns)), dtype=np.float32)
     for local, place in enumerate(places):
         if place >= 0:
-            fold[columns.index(place), local] = 1.0
-    d_intensities = lines.d_intensities
-    if d_intensities is not None:
-        d_intensities = np.tensordot(fold, d_intensities, axes=1)
-    d_moments = lines.d_moments
+            fold[local, columns.index(place)] = 1.0
+    d_intensities, d_moments = lines.d_intensities, lines.d_moments
     folded = EngineLines(
         frequencies_hz=lines.frequencies_hz,
         intensities=lines.intensities,
-        d_frequencies=fold @ lines.d_frequencies,
-        d_intensities=d_intensities,
-        d_moments=None if d_moments is None else fold @ d_moments,
+        d_frequencies=lines.d_frequencies @ fold,
+        d_intensities=None if d_intensities is None else d_intensities @ fold,
+        d_moments=None if d_moments is None else d_moments @ fold,
         row_factors=lines.row_factors,
     )
     return folded, np.array(columns, dtype=np.int64)

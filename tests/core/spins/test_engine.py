@@ -376,8 +376,8 @@ def test_derivatives_agree_with_differences(n_spins: tuple[int, ...]) -> None:
         above, below = at(point + step), at(point - step)
         # Central differences of 1e-4 Hz: h^2 f''' is some 1e-8, rounding 1e-9.
         np.testing.assert_allclose(
-            exact.d_frequencies[k], (above[0] - below[0]) / 2e-4, atol=2e-6
+            exact.d_frequencies[:, k], (above[0] - below[0]) / 2e-4, atol=2e-6
         )
         np.testing.assert_allclose(
-            exact.d_intensities[k], (above[1] - below[1]) / 2e-4, atol=2e-6
+            exact.d_intensities[:, :, k], (above[1] - below[1]) / 2e-4, atol=2e-6
         )
