@@ -197,6 +197,8 @@ def cluster_figures(n_spins: int) -> dict[str, float]:
         effort=Effort(
             cluster_cost=6 * FULL_EFFORT.cluster_cost,
             tolerance_hz=FULL_EFFORT.tolerance_hz / 4,
+            flip_tolerance_hz=FULL_EFFORT.flip_tolerance_hz / 4,
+            smallest=FULL_EFFORT.smallest / 10,
         ),
     )
     lines = network.lines(shifts, couplings, plan=plan)

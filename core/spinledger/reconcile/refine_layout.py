@@ -11,7 +11,8 @@ import numpy.typing as npt
 from spinledger.reconcile.match import held_couplings
 from spinledger.reconcile.options import Constraints
 from spinledger.reconcile.refine_model import Layout
-from spinledger.spins.network import ClaimNetwork, Plan
+from spinledger.spins.network import ClaimNetwork
+from spinledger.spins.plan import Plan
 from spinledger.values.claim import ClaimSet
 
 Floats = npt.NDArray[np.float64]

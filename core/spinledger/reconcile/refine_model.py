@@ -11,7 +11,8 @@ import numpy as np
 import numpy.typing as npt
 
 from spinledger.reconcile.refine_data import StageData
-from spinledger.spins.network import ClaimLineSet, ClaimNetwork, Plan
+from spinledger.spins.network import ClaimLineSet, ClaimNetwork
+from spinledger.spins.plan import Plan
 from spinledger.spins.synthesis import Images, LineList, LineShape, draw
 
 Floats = npt.NDArray[np.float64]

@@ -41,7 +41,8 @@ from spinledger.reconcile.refine_values import (
     Stage,
     Start,
 )
-from spinledger.spins.network import ClaimNetwork, Plan
+from spinledger.spins.network import ClaimNetwork
+from spinledger.spins.plan import Plan
 from spinledger.spins.synthesis import LineShape
 from spinledger.values.claim import ClaimSet
 from spinledger.values.evidence import Evidence, LineKernel

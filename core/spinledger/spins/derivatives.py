@@ -155,7 +155,7 @@ def _one_stack(
     lines: Kept,
     *,
     mixings: list[Singles],
-    out: Floats,
+    out: Singles,
 ) -> None:
     n_all = moment.rows.shape[1]
     for link, here, flat in _links(lines):

@@ -54,7 +54,7 @@ class EngineLines:
     def row_changes(self, row: int, kept: Integers) -> Floats | None:
         """Derivatives of one row's intensities, (n_kept, n_parameters), or None."""
         if self.d_intensities is not None:
-            return self.d_intensities[row, kept].astype(np.float64)
+            return np.asarray(self.d_intensities[row, kept], dtype=np.float64)
         if self.d_moments is None or self.row_factors is None:
             return None
         return np.asarray(self.d_moments[kept] * self.row_factors[row, kept, None])
