@@ -21,6 +21,7 @@ from spinledger.report.tables import (
     audit_rows,
     balance_cells,
     contender_rows,
+    geometry_rows,
     probability_words,
     recipe_lines,
     stray_rows,
@@ -162,6 +163,10 @@ def _flow(ledger: Ledger, context: ReportContext, look: Look) -> Flow:
     _listing(
         flow, "Contenders", CONTENDER_HEAD, contender_rows(ledger), (34, 12, 14, 40)
     )
+    shape = geometry_rows(ledger)
+    if shape:
+        flow.heading("Geometry by the couplings")
+        flow.bullets(list(shape))
     rows = advice_rows(ledger)
     if rows:
         flow.heading("Next measurement")

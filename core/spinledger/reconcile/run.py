@@ -11,6 +11,7 @@ from spinledger.reconcile.cautions import cautions
 from spinledger.reconcile.contenders import Isomer, close_isomers
 from spinledger.reconcile.entries import unsolved_entries
 from spinledger.reconcile.evaluate import Bench, Evaluation, evaluate, lay_out
+from spinledger.reconcile.geometry import what_couplings_say
 from spinledger.reconcile.judge import PRIOR, likelihood_ratio
 from spinledger.reconcile.options import Candidate, ReconcileOptions
 from spinledger.reconcile.ranking import (
@@ -26,6 +27,7 @@ from spinledger.reconcile.reasons import verdict_reasons
 from spinledger.reconcile.solve import Limits
 from spinledger.structure.read import molecule, read_structure
 from spinledger.values.evidence import Evidence
+from spinledger.values.geometry import Geometry
 from spinledger.values.ledger import (
     Advice,
     Balance,
@@ -96,7 +98,18 @@ def reconcile(
     contenders, tested = _contenders(own, bench, limits, report)
     report("weighing further measurements", 0.95)
     advice = () if chosen.quick else advise(own, tested, limits)
-    return ledger_of(own, contenders, advice=advice, options=chosen)
+    geometry = _geometry(own, chosen, limits)
+    ledger = ledger_of(own, contenders, advice=advice, options=chosen)
+    return replace(ledger, geometry=geometry)
+
+
+def _geometry(
+    own: Evaluation, options: ReconcileOptions, limits: Limits
+) -> Geometry | None:
+    """What the couplings say; nothing where they do not belong to the structure."""
+    if options.quick or own.state in ("not reconciled", "not judged"):
+        return None
+    return what_couplings_say(own, limits, ph=options.ph)
 
 
 def _silent(_stage: str, _fraction: float) -> None:

@@ -17,6 +17,7 @@ SECTIONS = (
     "expansions",
     "strays",
     "contenders",
+    "geometry",
     "comparison",
     "advice",
     "audit",

@@ -32,6 +32,7 @@ from spinledger.report.tables import (
     comparison_rows,
     comparison_sentence,
     contender_rows,
+    geometry_rows,
     probability_words,
     recipe_lines,
     sample_rows,
@@ -82,6 +83,7 @@ def report_docx(ledger: Ledger, context: ReportContext | None = None) -> bytes:
         "expansions": _expansions,
         "strays": _strays,
         "contenders": _contenders,
+        "geometry": _geometry,
         "comparison": _comparison,
         "advice": _advice,
         "audit": _audit,
@@ -212,6 +214,10 @@ def _comparison(document: Any, _ledger: Ledger, context: ReportContext) -> None:
         comparison_rows(comparison),
         widths_mm=_COMPARISON_WIDTHS,
     )
+
+
+def _geometry(document: Any, ledger: Ledger, _context: ReportContext) -> None:
+    _bullets(document, "Geometry by the couplings", geometry_rows(ledger))
 
 
 def _advice(document: Any, ledger: Ledger, _context: ReportContext) -> None:

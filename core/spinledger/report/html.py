@@ -31,6 +31,7 @@ from spinledger.report.tables import (
     comparison_rows,
     comparison_sentence,
     contender_rows,
+    geometry_rows,
     probability_words,
     recipe_lines,
     sample_rows,
@@ -86,6 +87,7 @@ def report_html(ledger: Ledger, context: ReportContext | None = None) -> str:
         "expansions": _expansions,
         "strays": _strays,
         "contenders": _contenders,
+        "geometry": _geometry,
         "comparison": _comparison,
         "advice": _advice,
         "audit": _audit,
@@ -273,6 +275,15 @@ def _contenders(ledger: Ledger, _context: ReportContext) -> str:
         else "<p>No other structure was tested against this spectrum.</p>"
     )
     return f"<section><h3>Contenders</h3>{body}</section>\n"
+
+
+def _geometry(ledger: Ledger, _context: ReportContext) -> str:
+    items = "".join(f"<li>{_held(one)}</li>" for one in geometry_rows(ledger))
+    return (
+        f"<section><h3>Geometry by the couplings</h3><ul>{items}</ul></section>\n"
+        if items
+        else ""
+    )
 
 
 def _comparison(_ledger: Ledger, context: ReportContext) -> str:

@@ -13,7 +13,8 @@ from dataclasses import dataclass
 from typing import Any
 
 from spinledger.project.audit import versions
-from spinledger.report.json_ledger import SCHEMA, evidence_to_json, finite
+from spinledger.report.json_ledger import SCHEMA, evidence_to_json
+from spinledger.report.numbers import finite
 from spinledger.report.words import outgoing_state, plain
 from spinledger.values.ledger import Entry, Ledger, VerdictState
 

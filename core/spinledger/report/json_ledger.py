@@ -6,7 +6,6 @@ Shifts and ranges in ppm, couplings in Hz, integrals in protons.
 from __future__ import annotations
 
 import json
-import math
 import re
 from pathlib import Path
 from typing import Any
@@ -15,6 +14,8 @@ from rdkit import Chem, rdBase
 
 from spinledger.errors import SpinLedgerError
 from spinledger.project.audit import versions
+from spinledger.report.json_geometry import geometry_to_json
+from spinledger.report.numbers import finite
 from spinledger.values.evidence import Evidence, Stray
 from spinledger.values.ledger import (
     Advice,
@@ -88,6 +89,7 @@ def ledger_to_json(ledger: Ledger) -> dict[str, Any]:
         "versions": versions(),
         "cautions": list(ledger.cautions),
         "side": [_side(one) for one in ledger.side],
+        "geometry": geometry_to_json(ledger.geometry),
     }
 
 
@@ -294,11 +296,3 @@ def _side(finding: SideFinding) -> dict[str, Any]:
         "sentence": finding.sentence,
         "cost": finite(finding.cost),
     }
-
-
-def finite(value: float | None) -> float | int | None:
-    """Plain finite number with seven digits, or None."""
-    if value is None or not math.isfinite(value):
-        return None
-    rounded = float(f"{float(value):.7g}") + 0.0  # minus zero becomes zero
-    return int(value) if isinstance(value, int) else rounded

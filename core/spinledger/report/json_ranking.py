@@ -7,7 +7,8 @@ from typing import Any
 
 from spinledger.project.audit import versions
 from spinledger.reconcile.ranking import RankedCandidate, Ranking
-from spinledger.report.json_ledger import SCHEMA, evidence_to_json, finite
+from spinledger.report.json_ledger import SCHEMA, evidence_to_json
+from spinledger.report.numbers import finite
 from spinledger.values.evidence import Evidence
 
 

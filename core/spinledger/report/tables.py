@@ -181,6 +181,13 @@ def advice_rows(ledger: Ledger) -> tuple[tuple[str, str], ...]:
     return tuple((one.measurement, outgoing(one.look_for)) for one in ledger.advice)
 
 
+def geometry_rows(ledger: Ledger) -> tuple[str, ...]:
+    """What the couplings say about the geometry, one sentence each."""
+    if ledger.geometry is None:
+        return ()
+    return tuple(outgoing(one) for one in ledger.geometry.sentences)
+
+
 def audit_rows(ledger: Ledger) -> tuple[tuple[str, str], ...]:
     """Name and value of everything a reader needs to repeat the result."""
     evidence = ledger.evidence

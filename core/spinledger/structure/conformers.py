@@ -2,6 +2,7 @@
 
 from __future__ import annotations
 
+import functools
 from collections.abc import Iterable
 from dataclasses import dataclass
 from typing import Any
@@ -107,9 +108,17 @@ def ensemble(
     .. [3] A. K. Rappe et al., J. Am. Chem. Soc. 114 (1992) 10024-10035,
        doi:10.1021/ja00051a040.
     """
-    tagged = _tagged_from_first(mol_with_hydrogens, seed)
+    # Conformers go by bonds and stereo alone, so that equal drawings share them.
+    known = mol_with_hydrogens.ToBinary(Chem.PropertyPickleOptions.NoProps)
+    return _ensemble(known, is_aqueous, seed)
+
+
+@functools.lru_cache(maxsize=64)
+def _ensemble(binary: bytes, is_aqueous: bool, seed: int) -> Ensemble:
+    mol = Chem.Mol(binary)
+    tagged = _tagged_from_first(mol, seed)
     if tagged is None:
-        return _empty(mol_with_hydrogens, "No three-dimensional model could be made.")
+        return _empty(mol, "No three-dimensional model could be made.")
     many = _embedded(tagged, n_conformers(tagged), seed)
     energies, reason = _minimise(many, _dielectric(many, is_aqueous))
     positions = np.array([c.GetPositions() for c in many.GetConformers()])

@@ -10,6 +10,7 @@ import numpy.typing as npt
 
 from spinledger.values.claim import ClaimSet
 from spinledger.values.evidence import Evidence, Stray
+from spinledger.values.geometry import Geometry
 from spinledger.values.structure import Structure
 
 State = Literal["settled", "disputed", "open", "silent"]
@@ -179,3 +180,4 @@ class Ledger:
     edits: tuple[str, ...] = ()
     cautions: tuple[str, ...] = ()
     side: tuple[SideFinding, ...] = ()
+    geometry: Geometry | None = None
