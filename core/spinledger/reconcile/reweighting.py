@@ -67,7 +67,7 @@ class Reweighted:
         told = together @ np.linalg.solve(
             covariance(self.values, self.weights) + np.diag(noise), together
         )
-        return mean, float(np.sqrt(max(own - told, 0.0) / self.trust))
+        return mean, float(np.sqrt(max(own - float(told), 0.0) / self.trust))
 
 
 def covariance(values: FloatArray, weights: FloatArray) -> FloatArray:

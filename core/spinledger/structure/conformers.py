@@ -115,7 +115,7 @@ def ensemble(
 
 @functools.lru_cache(maxsize=64)
 def _ensemble(binary: bytes, is_aqueous: bool, seed: int) -> Ensemble:
-    mol = Chem.Mol(binary)
+    mol = Chem.Mol(binary)  # type: ignore[call-overload]  # stub knows text only
     tagged = _tagged_from_first(mol, seed)
     if tagged is None:
         return _empty(mol, "No three-dimensional model could be made.")
