@@ -36,6 +36,7 @@ def build_parser() -> argparse.ArgumentParser:
         _compare,
         _sample,
         _report,
+        _quantify,
     ):
         add(commands)
     return parser
@@ -278,6 +279,74 @@ def _report(commands: _Subparsers[argparse.ArgumentParser]) -> None:
     )
     _output(parser)
     _formats(parser)
+
+
+def _quantify(commands: _Subparsers[argparse.ArgumentParser]) -> None:
+    parser = _command(
+        commands, "quantify", "Content by internal standard, and residual solvents"
+    )
+    parser.add_argument(
+        "data",
+        metavar="DATA",
+        type=Path,
+        help="data folder, file or zip, or a .sledger project",
+    )
+    parser.add_argument(
+        "--structure", metavar="FILE_OR_SMILES", help="claimed structure"
+    )
+    _output(parser)
+    _matching_options(parser)
+    _formats(parser)
+    _standard_options(parser.add_argument_group("internal standard"))
+    pulse = parser.add_argument_group("pulse and delay, where you know them better")
+    pulse.add_argument("--pulse-angle", metavar="DEG", type=_number(1, 180))
+    pulse.add_argument("--delay", metavar="S", type=_number(0, 3600))
+    pulse.add_argument(
+        "--t1",
+        metavar="S",
+        type=_number(0.001, 1000),
+        help="longest measured T1 of all signals (default: 5 s is assumed)",
+    )
+
+
+def _standard_options(group: argparse._ArgumentGroup) -> None:
+    group.add_argument("--standard-structure", metavar="FILE_OR_SMILES")
+    group.add_argument("--standard-name", metavar="NAME", help="as printed")
+    group.add_argument(
+        "--standard-protons",
+        metavar="N",
+        type=_count(1),
+        help="protons of its signal that is integrated",
+    )
+    group.add_argument(
+        "--standard-at",
+        metavar="PPM",
+        type=_number(-20, 40),
+        help="shift of that signal",
+    )
+    group.add_argument("--standard-mass", metavar="MG", type=_number(1e-6, 1e6))
+    group.add_argument("--sample-mass", metavar="MG", type=_number(1e-6, 1e6))
+    group.add_argument(
+        "--balance",
+        metavar="MG",
+        type=_number(0, 1000),
+        default=0.02,
+        help="standard uncertainty of one weighing (default: 0.02)",
+    )
+    group.add_argument(
+        "--standard-purity",
+        metavar="P",
+        type=_number(0.001, 1),
+        default=1.0,
+        help="mass fraction of its certificate (default: 1)",
+    )
+    group.add_argument(
+        "--standard-purity-u",
+        metavar="U",
+        type=_number(0, 1),
+        default=0.0,
+        help="standard uncertainty of that (default: 0)",
+    )
 
 
 def _number(low: float, high: float) -> Callable[[str], float]:

@@ -5,6 +5,7 @@ from __future__ import annotations
 from dataclasses import dataclass, field
 
 from spinledger.project.document import AuditLine, Project, Sample
+from spinledger.quantity.result import Quantity
 from spinledger.report.compare import ListComparison
 from spinledger.report.text import TextOptions
 from spinledger.values.ledger import Verdict
@@ -16,6 +17,7 @@ SECTIONS = (
     "cautions",
     "expansions",
     "strays",
+    "quantity",
     "contenders",
     "geometry",
     "comparison",
@@ -40,6 +42,8 @@ class ReportContext:
         Shown beside the verdict where hand edits changed it.
     text : TextOptions
         Journal form of the experimental sentence.
+    quantity : Quantity or None
+        Content that was asked for; None lets the report say what the strays tell.
     comparison : ListComparison or None
         A published list that was held against the ledger.
     sections : tuple of str
@@ -51,6 +55,7 @@ class ReportContext:
     audit: tuple[AuditLine, ...] = ()
     verdict_before_edits: Verdict | None = None
     text: TextOptions = field(default_factory=TextOptions)
+    quantity: Quantity | None = None
     comparison: ListComparison | None = None
     sections: tuple[str, ...] = SECTIONS
 

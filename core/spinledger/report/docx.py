@@ -18,6 +18,14 @@ from spinledger.report.context import ReportContext
 from spinledger.report.docx_figure import add_figure
 from spinledger.report.figure import FIGURE_LEGEND, expansion_svgs, overview_svg
 from spinledger.report.html import report_subtitle, report_title
+from spinledger.report.quantity_rows import (
+    BUDGET_HEAD,
+    CONTENT_HEAD,
+    budget_rows,
+    content_rows,
+    quantity_of,
+    quantity_sentences,
+)
 from spinledger.report.sketch import sketch_svg
 from spinledger.report.tables import (
     ASSIGNMENT_HEAD,
@@ -55,6 +63,8 @@ _MUTED = RGBColor(0x57, 0x5D, 0x62)
 _ASSIGNMENT_WIDTHS = (17, 20, 17, 15, 46, 24, 18, 21)
 _WIDTH_MM = 178.0
 _COMPARISON_WIDTHS = (30, 25, 28, 22, 35, 38)
+_BUDGET_WIDTHS = (52, 26, 28, 18, 14, 40)
+_CONTENT_WIDTHS = (58, 30, 20, 40, 30)
 _LISTING_WIDTHS = (45, 25, 33, 75)
 
 
@@ -82,6 +92,7 @@ def report_docx(ledger: Ledger, context: ReportContext | None = None) -> bytes:
         "cautions": _cautions,
         "expansions": _expansions,
         "strays": _strays,
+        "quantity": _quantity,
         "contenders": _contenders,
         "geometry": _geometry,
         "comparison": _comparison,
@@ -194,6 +205,21 @@ def _expansions(document: Any, ledger: Ledger, _context: ReportContext) -> None:
 
 def _strays(document: Any, ledger: Ledger, _context: ReportContext) -> None:
     _listing(document, "Strays", STRAY_HEAD, stray_rows(ledger))
+
+
+def _quantity(document: Any, ledger: Ledger, context: ReportContext) -> None:
+    quantity = quantity_of(ledger, context)
+    document.add_heading("Amounts", level=2)
+    for sentence in quantity_sentences(quantity):
+        document.add_paragraph(sentence)
+    purity = quantity.purity
+    if purity is not None and purity.budget is not None:
+        rows = budget_rows(purity.budget)
+        _table(document, BUDGET_HEAD, rows, widths_mm=_BUDGET_WIDTHS)
+        document.add_paragraph()
+    rows = content_rows(quantity.content)
+    if rows:
+        _table(document, CONTENT_HEAD, rows, widths_mm=_CONTENT_WIDTHS)
 
 
 def _contenders(document: Any, ledger: Ledger, _context: ReportContext) -> None:

@@ -15,6 +15,14 @@ from spinledger.report.context import ReportContext
 from spinledger.report.figure import expansion_svgs, overview_svg
 from spinledger.report.html_style import style_sheet
 from spinledger.report.json_ledger import given_name
+from spinledger.report.quantity_rows import (
+    BUDGET_HEAD,
+    CONTENT_HEAD,
+    budget_rows,
+    content_rows,
+    quantity_of,
+    quantity_sentences,
+)
 from spinledger.report.sketch import sketch_svg
 from spinledger.report.svg import number, state_mark
 from spinledger.report.tables import (
@@ -86,6 +94,7 @@ def report_html(ledger: Ledger, context: ReportContext | None = None) -> str:
         "cautions": _cautions,
         "expansions": _expansions,
         "strays": _strays,
+        "quantity": _quantity,
         "contenders": _contenders,
         "geometry": _geometry,
         "comparison": _comparison,
@@ -265,6 +274,20 @@ def _strays(ledger: Ledger, _context: ReportContext) -> str:
     rows = stray_rows(ledger)
     body = _table(STRAY_HEAD, rows) if rows else "<p>None. Every line has an owner.</p>"
     return f"<section><h3>Strays</h3>{body}</section>\n"
+
+
+def _quantity(ledger: Ledger, context: ReportContext) -> str:
+    quantity = quantity_of(ledger, context)
+    said = "".join(f"<p>{escape(one)}</p>" for one in quantity_sentences(quantity))
+    rows = content_rows(quantity.content)
+    purity = quantity.purity
+    budget = purity.budget if purity is not None else None
+    return (
+        f"<section><h3>Amounts</h3>{said}"
+        + (_table(BUDGET_HEAD, budget_rows(budget)) if budget is not None else "")
+        + (_table(CONTENT_HEAD, rows) if rows else "")
+        + "</section>\n"
+    )
 
 
 def _contenders(ledger: Ledger, _context: ReportContext) -> str:

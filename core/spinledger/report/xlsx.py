@@ -16,6 +16,12 @@ from openpyxl.utils import get_column_letter
 from spinledger.project.audit import versions
 from spinledger.report.cautions import printed_cautions
 from spinledger.report.context import ReportContext
+from spinledger.report.quantity_rows import (
+    CONTENT_HEAD,
+    content_rows,
+    quantity_of,
+    quantity_sentences,
+)
 from spinledger.report.tables import (
     COMPARISON_HEAD,
     CONTENDER_HEAD,
@@ -53,6 +59,16 @@ _ASSIGNMENT = (
     "integral_residual_sd",
     "j_residual_sd",
     "why",
+)
+_BUDGET = (
+    "quantity",
+    "value",
+    "unit",
+    "standard_uncertainty",
+    "distribution",
+    "sensitivity",
+    "share_of_variance",
+    "source",
 )
 _COUPLINGS = (
     "claim",
@@ -92,6 +108,7 @@ def report_xlsx(ledger: Ledger, context: ReportContext | None = None) -> bytes:
     _sheet(book, "Contenders", CONTENDER_HEAD, contender_rows(ledger))
     _sheet(book, "Verdict", ("what", "value"), _verdict_rows(ledger, chosen))
     _sheet(book, "Audit", ("what", "value"), _audit_rows(ledger, chosen))
+    _quantity_sheets(book, ledger, chosen)
     _sheet(book, "Signatures", SIGNATURE_HEAD, signature_rows(chosen.sample))
     if chosen.comparison is not None:
         _sheet(
@@ -100,6 +117,41 @@ def report_xlsx(ledger: Ledger, context: ReportContext | None = None) -> bytes:
     stream = io.BytesIO()
     book.save(stream)
     return stream.getvalue()
+
+
+def _quantity_sheets(book: Any, ledger: Ledger, context: ReportContext) -> None:
+    quantity = quantity_of(ledger, context)
+    said = [("", one) for one in quantity_sentences(quantity)]
+    rows = [*said, *content_rows(quantity.content)]
+    _sheet(book, "Amounts", CONTENT_HEAD, rows)
+    budget = quantity.purity.budget if quantity.purity is not None else None
+    if budget is None:
+        return
+    numbers: list[tuple[Cell, ...]] = [
+        (
+            one.source.name,
+            one.source.value,
+            one.source.unit,
+            one.source.standard_uncertainty,
+            one.source.distribution,
+            one.sensitivity,
+            one.share,
+            one.source.source,
+        )
+        for one in budget.rows
+    ]
+    total = (
+        "content",
+        budget.value,
+        "",
+        budget.standard_uncertainty,
+        "",
+        None,
+        1.0,
+        "",
+    )
+    expanded = (f"expanded, k = {budget.coverage_factor:g}", budget.expanded)
+    _sheet(book, "Budget", _BUDGET, [*numbers, total, expanded])
 
 
 def _entry(ledger: Ledger, entry: Entry) -> tuple[Cell, ...]:
