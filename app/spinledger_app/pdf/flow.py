@@ -31,20 +31,19 @@ TITLE = Face(size=25, weight=600)
 class Block:
     """Something with a height that is painted with its top at a given y.
 
-    ``keeps_next`` holds it on the page of the block after it.
+    ``keeps_next`` holds it on the page of the block after it; ``head`` is painted
+    above it again where it is the first on a page.
     """
 
     height: float
     paint: Paint
     keeps_next: bool = False
+    head: Block | None = None
 
 
 @dataclass(slots=True)
 class Flow:
-    """Blocks in order, and the pages they fall on.
-
-    ``head`` is painted again at the top of every page a table goes on to.
-    """
+    """Blocks in order, and the pages they fall on."""
 
     look: Look
     blocks: list[Block] = field(default_factory=list)
@@ -121,15 +120,24 @@ class Flow:
         pages: list[list[tuple[Block, float]]] = [[]]
         y = MARGIN
         for index, block in enumerate(self.blocks):
-            needed = block.height
-            if block.keeps_next and index + 1 < len(self.blocks):
-                needed += self.blocks[index + 1].height
-            if y + needed > bottom and pages[-1]:
+            if y + self._held_height(index) > bottom and pages[-1]:
                 pages.append([])
                 y = MARGIN
+                if block.head is not None:
+                    pages[-1].append((block.head, y))
+                    y += block.head.height
             pages[-1].append((block, y))
             y += block.height
         return pages
+
+    def _held_height(self, index: int) -> float:
+        """Height of a block with all that it must stay together with."""
+        total = 0.0
+        for block in self.blocks[index:]:
+            total += block.height
+            if not block.keeps_next:
+                break
+        return total
 
 
 @dataclass(frozen=True, slots=True, kw_only=True)
@@ -161,6 +169,7 @@ def add_table(
         ink.hline(flow.left, flow.right, y + 21, "rule")
 
     flow.add(22, paint_head, keeps_next=True)
+    head = flow.blocks[-1]
     for number, row in enumerate(rows):
         _add_row(
             flow,
@@ -169,6 +178,7 @@ def add_table(
             first_is_strong=first_is_strong,
             mark=marks[number] if number < len(marks) else "",
         )
+        flow.blocks[-1] = replace(flow.blocks[-1], head=head)
 
 
 def _add_row(
@@ -207,6 +217,7 @@ def add_double_rule(flow: Flow) -> None:
         ink.hline(flow.left, flow.right, y, "ink")
         ink.hline(flow.left, flow.right, y + 3, "ink")
 
-    last = flow.blocks[-1]
-    flow.blocks[-1] = replace(last, keeps_next=True)
+    # The closing row never stands on a page alone.
+    for rank in (-2, -1):
+        flow.blocks[rank] = replace(flow.blocks[rank], keeps_next=True)
     flow.add(8, paint)

@@ -4,6 +4,7 @@ from __future__ import annotations
 
 import os
 import tempfile
+from collections.abc import Callable, Mapping
 from pathlib import Path
 
 from PySide6.QtCore import QMarginsF
@@ -16,18 +17,21 @@ from spinledger.report.html import report_subtitle, report_title
 from spinledger.report.tables import (
     CONTENDER_HEAD,
     STRAY_HEAD,
-    advice_rows,
     assignment_rows,
     audit_rows,
     balance_cells,
     contender_rows,
-    geometry_rows,
     probability_words,
     recipe_lines,
+    sample_rows,
     stray_rows,
     verdict_title,
 )
-from spinledger.report.text import experimental_text, reference_sentence
+from spinledger.report.text import (
+    experimental_text,
+    reference_sentence,
+    standing_sentence,
+)
 from spinledger.report.words import fixed, outgoing
 from spinledger.values.ledger import Ledger
 from spinledger_app.painting.ink import SECOND, Face, Ink, wrap
@@ -45,6 +49,15 @@ from spinledger_app.pdf.flow import (
     Flow,
     add_double_rule,
     add_table,
+)
+from spinledger_app.pdf.sections import (
+    add_advice,
+    add_amounts,
+    add_comparison,
+    add_expansions,
+    add_geometry,
+    add_listing,
+    add_signatures,
 )
 from spinledger_app.presenters.drawing import drawing_of
 from spinledger_app.presenters.lanes import lane_scene
@@ -152,27 +165,46 @@ def _flow(ledger: Ledger, context: ReportContext, look: Look) -> Flow:
     flow = Flow(look)
     _opening(flow, ledger, context)
     _answer(flow, ledger)
-    _figure(flow, ledger)
-    _assignment(flow, ledger)
+    makers: Mapping[str, Callable[[Flow, Ledger, ReportContext], None]] = {
+        "evidence": _figure,
+        "assignment": _assignment,
+        "text": _text,
+        "cautions": _cautions,
+        "expansions": add_expansions,
+        "strays": _strays,
+        "quantity": add_amounts,
+        "contenders": _contenders,
+        "geometry": add_geometry,
+        "comparison": add_comparison,
+        "advice": add_advice,
+        "audit": _audit,
+        "signatures": add_signatures,
+    }
+    for name in context.sections:
+        makers[name](flow, ledger, context)
+    return flow
+
+
+def _text(flow: Flow, ledger: Ledger, context: ReportContext) -> None:
     flow.heading("For the experimental section")
     flow.paragraph(experimental_text(ledger, context.text))
+    if standing_sentence(ledger):
+        flow.paragraph(standing_sentence(ledger), Face(size=12, weight=600))
     flow.paragraph(reference_sentence(ledger), TEXT_MUTED)
+
+
+def _cautions(flow: Flow, ledger: Ledger, _context: ReportContext) -> None:
     flow.heading("Cautions")
-    flow.bullets([outgoing(one) for one in printed_cautions(ledger)])
-    _listing(flow, "Strays", STRAY_HEAD, stray_rows(ledger), (17, 12, 10, 61))
-    _listing(
-        flow, "Contenders", CONTENDER_HEAD, contender_rows(ledger), (34, 12, 14, 40)
-    )
-    shape = geometry_rows(ledger)
-    if shape:
-        flow.heading("Geometry by the couplings")
-        flow.bullets(list(shape))
-    rows = advice_rows(ledger)
-    if rows:
-        flow.heading("Next measurement")
-        flow.bullets([f"{what}: {look_for}" for what, look_for in rows])
-    _audit(flow, ledger, context)
-    return flow
+    flow.bullets(printed_cautions(ledger))
+
+
+def _strays(flow: Flow, ledger: Ledger, _context: ReportContext) -> None:
+    add_listing(flow, "Strays", STRAY_HEAD, stray_rows(ledger), (17, 12, 10, 61))
+
+
+def _contenders(flow: Flow, ledger: Ledger, _context: ReportContext) -> None:
+    rows = contender_rows(ledger)
+    add_listing(flow, "Contenders", CONTENDER_HEAD, rows, (34, 12, 14, 40))
 
 
 def _opening(flow: Flow, ledger: Ledger, context: ReportContext) -> None:
@@ -221,7 +253,7 @@ def _answer(flow: Flow, ledger: Ledger) -> None:
     flow.rule()
 
 
-def _figure(flow: Flow, ledger: Ledger) -> None:
+def _figure(flow: Flow, ledger: Ledger, _context: ReportContext) -> None:
     flow.gap(4)
     scene = lane_scene(ledger.evidence, ledger)
 
@@ -240,7 +272,7 @@ def _figure(flow: Flow, ledger: Ledger) -> None:
     flow.add(FIGURE_HEIGHT + 14, paint)
 
 
-def _assignment(flow: Flow, ledger: Ledger) -> None:
+def _assignment(flow: Flow, ledger: Ledger, _context: ReportContext) -> None:
     flow.heading("Assignment")
     rows = assignment_rows(ledger)
     cells = [row.cells for row in rows]
@@ -262,24 +294,9 @@ def _assignment(flow: Flow, ledger: Ledger) -> None:
             flow.paragraph(f"{row.cells[0]}: {' '.join(row.notes)}", CELL_MUTED)
 
 
-def _listing(
-    flow: Flow,
-    name: str,
-    head: tuple[str, ...],
-    rows: tuple[tuple[str, ...], ...],
-    shares: tuple[float, ...],
-) -> None:
-    if not rows:
-        return
-    flow.heading(name)
-    columns = [Column(head=h, share=s) for h, s in zip(head, shares, strict=True)]
-    add_table(flow, columns, rows)
-    add_double_rule(flow)
-
-
 def _audit(flow: Flow, ledger: Ledger, context: ReportContext) -> None:
     flow.heading("Audit trail")
-    for name, value in audit_rows(ledger):
+    for name, value in (*sample_rows(context.sample), *audit_rows(ledger)):
         flow.paragraph(f"{name}: {value}", CELL_MUTED)
     flow.gap(4)
     flow.bullets(recipe_lines(ledger), CELL_MUTED)

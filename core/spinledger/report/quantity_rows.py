@@ -12,7 +12,8 @@ from spinledger.quantity.content import Content, content
 from spinledger.quantity.purity import Purity
 from spinledger.quantity.result import Quantity
 from spinledger.report.context import ReportContext
-from spinledger.report.json_ledger import SCHEMA, finite
+from spinledger.report.json_ledger import SCHEMA
+from spinledger.report.numbers import finite
 from spinledger.report.words import fixed, label_glyphs, outgoing
 from spinledger.values.ledger import Ledger
 
