@@ -2,6 +2,7 @@
 
 from __future__ import annotations
 
+import re
 from collections.abc import Sequence
 
 from PySide6.QtCore import QByteArray, QRectF
@@ -29,8 +30,12 @@ from spinledger.report.tables import (
 from spinledger.values.ledger import Ledger
 from spinledger_app.painting.ink import Ink
 from spinledger_app.pdf.flow import CELL_MUTED, Column, Flow, add_double_rule, add_table
+from spinledger_app.theme import FAMILY
 
 _GAP = 17.0
+# Qt's SVG knows no clips and would paint their rectangles black.
+_FAMILY = re.compile(r'font-family="[^"]*"')
+_CLIP = re.compile(r"<clipPath.*?</clipPath>", re.DOTALL)
 
 
 def add_listing(
@@ -53,7 +58,8 @@ def add_listing(
 def add_expansions(flow: Flow, ledger: Ledger, _context: ReportContext) -> None:
     """Add every region with its trees, two in a row, at its own gain."""
     drawings = [
-        QSvgRenderer(QByteArray(svg.encode())) for _, svg in expansion_svgs(ledger)
+        QSvgRenderer(QByteArray(_for_qt(svg).encode()))
+        for _, svg in expansion_svgs(ledger)
     ]
     if not drawings:
         return
@@ -72,6 +78,11 @@ def add_expansions(flow: Flow, ledger: Ledger, _context: ReportContext) -> None:
                 drawing.render(ink.painter, QRectF(left, y, width, height))
 
         flow.add(height + 8, paint)
+
+
+def _for_qt(svg: str) -> str:
+    """Drawing without clips, in the program's own face."""
+    return _FAMILY.sub(f'font-family="{FAMILY}"', _CLIP.sub("", svg))
 
 
 def add_amounts(flow: Flow, ledger: Ledger, context: ReportContext) -> None:
