@@ -270,6 +270,31 @@ def _sample(commands: _Subparsers[argparse.ArgumentParser]) -> None:
     )
     _output(parser)
     _matching_options(parser)
+    parser.add_argument(
+        "--roles",
+        metavar="LIST",
+        help="comma list, one a spectrum: main, D2O shake, other solvent, other field, "
+        "other temperature, reference, starting material, crude, or guess",
+    )
+    parser.add_argument(
+        "--project",
+        metavar="FILE.sledger",
+        type=Path,
+        help="save all spectra as one project",
+    )
+    limits = (
+        ("--line-limit", "MOL_PERCENT", 1.0, "a new or missing line"),
+        ("--integral-limit", "PERCENT", 5.0, "an integral"),
+        ("--shift-limit", "PPM", 0.02, "a shift"),
+    )
+    for name, unit, usual, what in limits:
+        parser.add_argument(
+            name,
+            metavar=unit,
+            type=_number(1e-6, 1000),
+            default=usual,
+            help=f"what {what} may differ from a reference by (default: {usual:g})",
+        )
 
 
 def _report(commands: _Subparsers[argparse.ArgumentParser]) -> None:

@@ -57,6 +57,7 @@ def add_spectrum(
     source_path: str,
     when: str,
     role: Role | None = None,
+    again: bool = False,
 ) -> Project:
     """Project with one more spectrum of its sample; the shown one stays shown.
 
@@ -69,6 +70,8 @@ def add_spectrum(
     when : str
     role : str, optional
         Guessed from solvent, date and name if not given.
+    again : bool
+        Take data that are in the sample already once more.
 
     Raises
     ------
@@ -78,7 +81,7 @@ def add_spectrum(
     rows = spectra(project)
     metadata = acquired.metadata
     for one in rows:
-        if one.acquired is not None and one.acquired.metadata.sha256 == metadata.sha256:
+        if not again and _is_of(one, metadata):
             raise ValueError(
                 f"{metadata.source_name}: this spectrum is in the sample already"
             )
@@ -252,6 +255,10 @@ def solve_all(
         else:
             project = solve(project, when=when, progress=progress, cancelled=cancelled)
     return show_spectrum(project, shown)
+
+
+def _is_of(one: SampleSpectrum, metadata: Metadata) -> bool:
+    return one.acquired is not None and one.acquired.metadata.sha256 == metadata.sha256
 
 
 def _shown(project: Project) -> SampleSpectrum:

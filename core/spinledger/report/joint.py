@@ -1,7 +1,4 @@
-"""Several spectra of one tube: what they say together.
-
-Shifts in ppm.
-"""
+"""Several spectra of one tube: sample.json, sample.csv; shifts in ppm, J in Hz."""
 
 from __future__ import annotations
 
@@ -9,156 +6,215 @@ import csv
 import io
 import json
 from collections.abc import Sequence
-from dataclasses import dataclass
 from typing import Any
 
 from spinledger.project.audit import versions
 from spinledger.report.json_ledger import SCHEMA, evidence_to_json
 from spinledger.report.numbers import finite
 from spinledger.report.words import outgoing_state, plain
-from spinledger.values.ledger import Entry, Ledger, VerdictState
+from spinledger.sample.batch_reference import BatchComparison, Deviation
+from spinledger.sample.joint_values import (
+    Column,
+    JointLedger,
+    SharedCoupling,
+    Witness,
+    entry_of,
+)
+from spinledger.sample.shake import Shake
 
 
-@dataclass(frozen=True, slots=True, kw_only=True)
-class JointVerdict:
-    """Verdict over several spectra.
-
-    Attributes
-    ----------
-    state : str
-        Reconciled if every judged spectrum is, not reconciled if one is not,
-        undecided else, not judged if none was.
-    probability : float or None
-        That of the least probable spectrum. The odds are not multiplied: the
-        same predictions stand behind all spectra, so they are not independent.
-    reasons : tuple of str
-    """
-
-    state: VerdictState
-    probability: float | None
-    reasons: tuple[str, ...]
-
-
-def joint_verdict(ledgers: Sequence[Ledger]) -> JointVerdict:
-    """What the spectra say together.
-
-    Parameters
-    ----------
-    ledgers : sequence of Ledger
-        Of one structure; at least one.
-
-    Raises
-    ------
-    ValueError
-        If there is none.
-    """
-    if not ledgers:
-        raise ValueError("ledgers: need one or more")
-    judged = [one for one in ledgers if one.verdict.state != "not judged"]
-    states = {one.verdict.state for one in judged}
-    state: VerdictState = "undecided"
-    if not judged:
-        state = "not judged"
-    elif "not reconciled" in states:
-        state = "not reconciled"
-    elif states == {"reconciled"}:
-        state = "reconciled"
-    chances = [
-        one.verdict.probability for one in judged if one.verdict.probability is not None
-    ]
-    reasons = [
-        f"{_name(one)}: {one.verdict.state}."
-        for one in sorted(ledgers, key=lambda one: one.verdict.probability or 0.0)
-    ]
-    return JointVerdict(
-        state=state,
-        probability=min(chances) if chances else None,
-        reasons=(*reasons, *exchange_sentences(ledgers)),
-    )
-
-
-def exchange_sentences(ledgers: Sequence[Ledger]) -> tuple[str, ...]:
-    """One sentence for each exchangeable claim that comes and goes."""
-    sentences = []
-    for label in _exchangeable(ledgers):
-        seen = [_name(one) for one in ledgers if _is_seen(_entry(one, label))]
-        gone = [_name(one) for one in ledgers if not _is_seen(_entry(one, label))]
-        if seen and gone:
-            sentences.append(
-                f"{label} is seen in {', '.join(seen)} and not in {', '.join(gone)}, "
-                "as an exchangeable proton may."
-            )
-    return tuple(sentences)
-
-
-def joint_json(ledgers: Sequence[Ledger], folders: Sequence[str]) -> str:
+def joint_json(
+    joint: JointLedger,
+    witnesses: Sequence[Witness],
+    folders: Sequence[str],
+    comparisons: Sequence[BatchComparison] = (),
+) -> str:
     """Content of sample.json."""
-    verdict = joint_verdict(ledgers)
     tree: dict[str, Any] = {
         "schema": SCHEMA,
         "verdict": {
-            "state": verdict.state,
-            "probability": finite(verdict.probability),
-            "reasons": list(verdict.reasons),
+            "state": joint.state,
+            "probability": finite(joint.probability),
+            "reasons": list(joint.reasons),
         },
         "spectra": [
-            {
-                "folder": folder,
-                "spectrum": evidence_to_json(one.evidence),
-                "verdict": one.verdict.state,
-                "probability": finite(one.verdict.probability),
-            }
-            for one, folder in zip(ledgers, folders, strict=True)
+            _spectrum(column, one, folder)
+            for column, one, folder in zip(
+                joint.columns, witnesses, folders, strict=True
+            )
         ],
+        "claims": [
+            {
+                "claim": row.claim,
+                "protons": row.protons,
+                "spectra": [
+                    None
+                    if cell is None
+                    else {
+                        "shift_ppm": finite(cell.shift_ppm),
+                        "shift_sd_ppm": finite(cell.shift_sd_ppm),
+                        "state": cell.state,
+                    }
+                    for cell in row.cells
+                ],
+            }
+            for row in joint.rows
+        ],
+        "couplings": [_coupling(one) for one in joint.couplings],
+        "shakes": [_shake(one) for one in joint.shakes],
+        "comparisons": [comparison_to_json(one) for one in comparisons],
         "versions": versions(),
     }
     return json.dumps(tree, ensure_ascii=False, indent=1, allow_nan=False) + "\n"
 
 
-def joint_csv(ledgers: Sequence[Ledger]) -> str:
-    """sample.csv: one row a claim, one pair of columns a spectrum."""
+def _spectrum(column: Column, one: Witness, folder: str) -> dict[str, Any]:
+    again = column.refit
+    return {
+        "folder": folder,
+        "role": column.role,
+        "spectrum": evidence_to_json(one.ledger.evidence),
+        "temperature_k": finite(column.temperature_k),
+        "verdict": column.state,
+        "probability": finite(column.probability),
+        "counts": column.counts,
+        "turned": [list(pair) for pair in column.turned],
+        "refit": None
+        if again is None
+        else {
+            "unexplained_before": finite(again.share_before),
+            "unexplained_after": finite(again.share_after),
+            "taken": again.taken,
+        },
+    }
+
+
+def _coupling(one: SharedCoupling) -> dict[str, Any]:
+    return {
+        "claim": one.claim,
+        "partner": one.partner,
+        "j_hz": finite(one.j_hz),
+        "j_sd_hz": finite(one.sd_hz),
+        "spectra": [
+            None
+            if value is None
+            else {"j_hz": finite(value.value), "j_sd_hz": finite(value.sd)}
+            for value in one.values
+        ],
+        "chi2": finite(one.chi2),
+        "agrees": one.agrees,
+    }
+
+
+def _shake(shake: Shake) -> dict[str, Any]:
+    return {
+        "before": shake.before,
+        "after": shake.after,
+        "offset_ppm": finite(shake.alignment.offset_ppm),
+        "scale": finite(shake.alignment.scale),
+        "scale_sd": finite(shake.alignment.scale_sd),
+        "exchanged": [
+            {
+                "claims": list(one.claims),
+                "range_ppm": [finite(one.low_ppm), finite(one.high_ppm)],
+                "fraction": finite(one.fraction),
+                "sd": finite(one.sd),
+                "alone": one.is_alone,
+                "why": one.why,
+            }
+            for one in shake.fractions
+        ],
+        "collapsed": [
+            {
+                "claim": one.claim,
+                "partner": one.partner,
+                "j_hz": finite(one.j_hz),
+                "fraction": finite(one.fraction),
+                "sd": finite(one.sd),
+            }
+            for one in shake.collapses
+        ],
+        "gained": [
+            {
+                "range_ppm": [finite(one.low_ppm), finite(one.high_ppm)],
+                "kind": "water" if one.is_water else "unexplained",
+            }
+            for one in shake.gains
+        ],
+        "contradicts": shake.contradicts,
+    }
+
+
+def comparison_to_json(one: BatchComparison) -> dict[str, Any]:
+    """A batch against its reference, as plain lists and numbers."""
+    return {
+        "batch": one.batch,
+        "reference": one.reference,
+        "passed": one.passed,
+        "limits": {
+            "line_mol_percent": one.limits.line_mol_percent,
+            "integral_percent": one.limits.integral_percent,
+            "shift_ppm": one.limits.shift_ppm,
+        },
+        "deviations": [_deviation(row) for row in one.deviations],
+        "sentences": list(one.sentences()),
+    }
+
+
+def _deviation(one: Deviation) -> dict[str, Any]:
+    return {
+        "kind": one.kind,
+        "range_ppm": [finite(one.low_ppm), finite(one.high_ppm)],
+        "amount": finite(one.amount),
+        "sd": finite(one.sd),
+        "limit": one.limit,
+        "noise_sd": finite(one.noise_sd),
+    }
+
+
+def joint_csv(joint: JointLedger, witnesses: Sequence[Witness]) -> str:
+    """sample.csv: one row a claim, a pair of columns a spectrum; then the couplings."""
     stream = io.StringIO(newline="")
     writer = csv.writer(stream)
-    names = [_name(one) for one in ledgers]
+    names = [column.name for column in joint.columns]
     head = [f"{what} {name}" for name in names for what in ("shift_ppm", "state")]
     writer.writerow(["claim", "protons", *head])
-    labels = dict.fromkeys(e.claim for one in ledgers for e in one.entries)
-    for label in labels:
-        entries = [_entry(one, label) for one in ledgers]
-        protons = next(entry.protons for entry in entries if entry is not None)
+    for row in joint.rows:
         cells: list[str] = []
-        for ledger, entry in zip(ledgers, entries, strict=True):
-            cells += _cells(ledger, entry)
-        writer.writerow([label, protons, *cells])
+        for one, cell in zip(witnesses, row.cells, strict=True):
+            entry = entry_of(one.ledger, row.claim)
+            if cell is None or entry is None:
+                cells += ["", ""]
+                continue
+            shift = "" if cell.shift_ppm is None else plain(cell.shift_ppm, 4)
+            cells += [shift, outgoing_state(one.ledger, entry)]
+        writer.writerow([row.claim, row.protons, *cells])
     return stream.getvalue()
 
 
-def _cells(ledger: Ledger, entry: Entry | None) -> list[str]:
-    if entry is None:
-        return ["", ""]
-    shift = "" if entry.shift_ppm is None else plain(entry.shift_ppm, 4)
-    return [shift, outgoing_state(ledger, entry)]
-
-
-def _exchangeable(ledgers: Sequence[Ledger]) -> list[str]:
-    labels = dict.fromkeys(
-        claim.label
-        for one in ledgers
-        for claim in one.claims.claims
-        if claim.is_exchangeable
-    )
-    return list(labels)
-
-
-def _entry(ledger: Ledger, label: str) -> Entry | None:
-    return next((one for one in ledger.entries if one.claim == label), None)
-
-
-def _is_seen(entry: Entry | None) -> bool:
-    return entry is not None and entry.shift_ppm is not None
-
-
-def _name(ledger: Ledger) -> str:
-    metadata = ledger.evidence.metadata
-    solvent = f" in {ledger.evidence.solvent}" if ledger.evidence.solvent else ""
-    return f"{metadata.source_name}{solvent}"
+def couplings_csv(joint: JointLedger) -> str:
+    """couplings.csv: one row a coupling, a pair of columns a spectrum."""
+    stream = io.StringIO(newline="")
+    writer = csv.writer(stream)
+    names = [column.name for column in joint.columns]
+    head = [f"{what} {name}" for name in names for what in ("j_hz", "j_sd_hz")]
+    writer.writerow(["claim", "partner", "j_hz", "j_sd_hz", "agrees", *head])
+    for one in joint.couplings:
+        cells: list[str] = []
+        for value in one.values:
+            cells += (
+                ["", ""]
+                if value is None
+                else [plain(value.value, 3), plain(value.sd, 3)]
+            )
+        writer.writerow(
+            [
+                one.claim,
+                one.partner,
+                plain(one.j_hz, 3),
+                plain(one.sd_hz, 3),
+                "yes" if one.agrees else "no",
+                *cells,
+            ]
+        )
+    return stream.getvalue()
