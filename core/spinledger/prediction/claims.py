@@ -9,6 +9,7 @@ from typing import Final
 
 from rdkit import Chem
 
+from spinledger.prediction.claims_notes import notes_on
 from spinledger.prediction.couplings import predict_couplings
 from spinledger.prediction.shifts import predict_shifts
 from spinledger.prediction.shifts_pairs import pair_offsets
@@ -24,11 +25,9 @@ from spinledger.structure.exchange import (
 )
 from spinledger.structure.labels import group_labels
 from spinledger.structure.locants import locants
-from spinledger.structure.mobility import slow_bonds
 from spinledger.structure.read import molecule
-from spinledger.structure.settled import open_centres, settled, with_hydrogens
+from spinledger.structure.settled import settled, with_hydrogens
 from spinledger.structure.species import Solution, Species, in_solution
-from spinledger.structure.symmetry import Symmetry
 from spinledger.structure.topicity import (
     ProtonGroup,
     hetero_particles,
@@ -48,7 +47,6 @@ from spinledger.values.structure import Structure
 _MINOR_SHARE: Final = 0.15
 _BORDERLINE_SD_PPM: Final = 0.25
 _BORDERLINE_BONDS: Final = 3
-_PARAMAGNETIC: Final = frozenset({24, 25, 26, 27, 28, 29, *range(58, 71)})
 
 
 def make_claims(
@@ -153,7 +151,7 @@ def _claims(
         maker.claims_of(species, index, len(solution.species))
         for index, species in enumerate(solution.species)
     ]
-    return _joined(parts, solution, _notes(drawn, solution, temperature_k))
+    return _joined(parts, solution, notes_on(drawn, solution, temperature_k))
 
 
 @dataclass(frozen=True, slots=True, kw_only=True)
@@ -194,41 +192,6 @@ def _joined(
         species_shares=tuple((s.share, s.share_sd) for s in solution.species),
         notes=notes,
     )
-
-
-def _notes(
-    drawn: Chem.Mol, solution: Solution, temperature_k: float | None
-) -> tuple[str, ...]:
-    notes = list(solution.notes)
-    kinds = sorted({bond.kind for bond in slow_bonds(drawn, temperature_k)})
-    if kinds:
-        notes.append(
-            f"Rotation about the {' and '.join(kinds)} C-N bond is slow at this "
-            "temperature; groups on its two sides are claimed apart."
-        )
-    rotamers = Symmetry(drawn, temperature_k=temperature_k).rotamers()
-    if rotamers:
-        notes.append(
-            f"The {' and '.join(rotamers)} may show two rotamers, that is, two sets of "
-            "signals; one set is claimed."
-        )
-    if open_centres(settled(drawn)):
-        notes.append(
-            "The drawing leaves stereocentres open; one configuration is taken for "
-            "couplings, and geminal protons beside them are claimed apart."
-        )
-    if any(a.GetAtomicNum() in _PARAMAGNETIC for a in drawn.GetAtoms()):
-        notes.append(
-            "A metal that may be paramagnetic is drawn; its shifts cannot be foretold."
-        )
-    if any(a.GetTotalNumHs() == 4 and a.GetFormalCharge() for a in drawn.GetAtoms()):
-        notes.append(
-            "NH4+ is a 1:1:1 triplet of 51 Hz by nitrogen-14 where it exchanges slowly; "
-            "one line is claimed."
-        )
-    if any(a.GetIsotope() in (2, 3) for a in drawn.GetAtoms()):
-        notes.append("Deuterium shows no 1H signal, and couplings to it are left out.")
-    return tuple(notes)
 
 
 @dataclass(frozen=True, slots=True, kw_only=True)

@@ -159,7 +159,12 @@ def exchanges(
             Exchange(
                 kind=kind,
                 visibility="optional",
-                why=f"This C-H ({kind}) may fade: it swaps slowly with the solvent.",
+                why=(
+                    f"This C-H ({kind}) may fade: it swaps slowly with the solvent; "
+                    "CHD left over is a 1:1:1 triplet of 2 Hz, slightly upfield."
+                    if mol.GetAtomWithIdx(index).GetTotalNumHs() == 2
+                    else f"This C-H ({kind}) may fade: it swaps slowly with the solvent."
+                ),
                 is_exchangeable=False,
             ),
         )

@@ -101,6 +101,11 @@ def slow_bonds(
     k is taken from the barrier by the Eyring equation, for a distance of 40 Hz.
     """
     limit = merging_barrier_kcal(temperature_k or ROOM_TEMPERATURE_K)
+    return tuple(bond for bond in turning_bonds(mol) if bond.barrier_kcal > limit)
+
+
+def turning_bonds(mol: Chem.Mol) -> tuple[SlowBond, ...]:
+    """Bonds to nitrogen with some double-bond character, whatever their barrier."""
     excluded = {
         match[0] for match in mol.GetSubstructMatches(_pattern(_NOT_AMIDE_NITROGEN))
     }
@@ -112,7 +117,7 @@ def slow_bonds(
             if atoms in found or bond.IsInRing() or match[-1] in excluded:
                 continue
             found[atoms] = SlowBond(atoms=atoms, kind=kind, barrier_kcal=barrier)
-    return tuple(bond for bond in found.values() if bond.barrier_kcal > limit)
+    return tuple(found.values())
 
 
 def merging_barrier_kcal(temperature_k: float) -> float:

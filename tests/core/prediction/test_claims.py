@@ -4,6 +4,7 @@ import numpy as np
 import pytest
 
 from spinledger.prediction.claims import make_claims, species_models
+from spinledger.structure.mobility import merging_barrier_kcal
 from spinledger.structure.read import read_structure
 from spinledger.values.claim import Claim, ClaimSet
 
@@ -255,3 +256,76 @@ def test_open_configuration_is_said() -> None:
 def test_rotamers_are_said(smiles: str, expected: bool) -> None:
     notes = claims_of(smiles, "CDCl3").notes
     assert any("rotamers" in note for note in notes) is expected
+
+
+def test_methylene_of_a_chiral_ester_is_two_claims_that_may_coincide() -> None:
+    """Ethyl lactate: OCH2 is diastereotopic, and looks like "2H, q"."""
+    claims = claims_of("CCOC(=O)[C@H](C)O", "CDCl3")
+    high, low = (c for c in claims.claims if c.atoms == (1,))
+    assert high.n_protons == low.n_protons == 1
+    assert high.pair == low.label
+    # They may coincide: the distance is within one sd of each.
+    assert abs(high.shift_ppm - low.shift_ppm) < high.shift_sd_ppm
+
+
+def test_ammonium_is_said_to_be_a_triplet_by_nitrogen() -> None:
+    claims = claims_of("[NH4+].[Cl-]", "DMSO-d6")
+    (claim,) = claims.claims
+    assert claim.n_protons == 4
+    assert claim.is_exchangeable
+    assert any("1:1:1" in note and "51 Hz" in note for note in claims.notes)
+
+
+@pytest.mark.parametrize(
+    ("smiles", "atom", "low_ppm", "high_ppm"),
+    [
+        # Ethylamine in D2O (pH titrations, from memory): CH2 2.65 free, 3.07 as ion.
+        ("CCN", 1, 0.25, 0.7),
+        # Glycine: 3.18 at pH 12, 3.56 at pH 7.
+        ("NCC(=O)O", 1, 0.15, 0.7),
+    ],
+)
+def test_protonation_moves_the_alpha_protons_down(
+    smiles: str, atom: int, low_ppm: float, high_ppm: float
+) -> None:
+    shifts = {}
+    for ph in (7.0, 12.5):
+        claims = claims_of(smiles, "D2O", ph=ph)
+        (shifts[ph],) = (c.shift_ppm for c in claims.claims if c.atoms == (atom,))
+    assert low_ppm < shifts[7.0] - shifts[12.5] < high_ppm
+
+
+@pytest.mark.parametrize(
+    ("smiles", "words"),
+    [
+        ("C[Si](C)(C)CCO", "29Si"),
+        ("C[Sn](C)(C)C", "119Sn"),
+        ("C[Se]C", "77Se"),
+        ("OB(O)c1ccccc1", "11B"),
+        ("[2H]C([2H])([2H])OC", "Deuterium"),
+        ("[Fe].CCO", "paramagnetic"),
+        ("CN(C)C(=O)OC", "neither fast nor slow"),
+    ],
+)
+def test_what_the_claims_leave_out_is_said(smiles: str, words: str) -> None:
+    assert any(words in note for note in claims_of(smiles, "CDCl3").notes)
+
+
+def test_plain_compounds_have_no_notes() -> None:
+    assert claims_of("CCOC(C)=O", "CDCl3").notes == ()
+
+
+def test_fading_methylene_says_what_is_left() -> None:
+    claims = claims_of("CCOC(=O)CC(=O)OCC", "D2O")
+    (claim,) = (c for c in claims.claims if c.atoms == (5,))
+    assert claim.visibility == "optional"
+    assert "1:1:1" in claim.why
+
+
+def test_merging_barrier_is_the_closed_form() -> None:
+    """k = 2.22 times the distance (40 Hz), Eyring at 298.15 K."""
+    rate = 2.2214 * 40.0
+    k_b, h, r = 1.380649e-23, 6.62607015e-34, 1.987204e-3
+    expected = r * 298.15 * np.log(k_b * 298.15 / (h * rate))
+    # 1e-3: digits of the constants.
+    assert merging_barrier_kcal(298.15) == pytest.approx(expected, abs=1e-3)
