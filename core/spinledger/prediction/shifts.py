@@ -18,7 +18,12 @@ from spinledger.prediction.shifts_features import Surroundings, feature_matrix
 from spinledger.prediction.shifts_increments import fragment_counts
 from spinledger.prediction.shifts_model import ShiftModel, boosted, load_model
 from spinledger.prediction.shifts_network import network_inputs
-from spinledger.prediction.shifts_spheres import Lookup, coarse_codes, fine_codes
+from spinledger.prediction.shifts_spheres import (
+    Lookup,
+    coarse_codes,
+    coarse_neighbourhoods,
+    fine_codes,
+)
 from spinledger.prediction.shifts_types import proton_class
 from spinledger.processing.solvents import is_aqueous
 
@@ -149,10 +154,11 @@ def _base(
     classes: list[str],
     around: Surroundings,
 ) -> _Base:
+    wide = coarse_neighbourhoods(mol)
     lookup = model.table.look_up(
-        fine_codes(mol)[atoms], coarse_codes(mol)[atoms], classes
+        fine_codes(mol)[atoms], coarse_codes(mol, wide)[atoms], classes
     )
-    counts = fragment_counts(mol, atoms, around.distances)
+    counts = fragment_counts(mol, atoms, around.distances, wide)
     sums = model.increments.estimate(counts, classes)
     return _Base(
         lookup=lookup,

@@ -11,7 +11,6 @@ import numpy.typing as npt
 from rdkit import Chem
 from rdkit.Chem import rdPartialCharges
 
-from spinledger.prediction.shifts_chairs import chair_features
 from spinledger.prediction.shifts_faces import face_counts
 from spinledger.prediction.shifts_types import (
     ATOM_TYPES,
@@ -121,7 +120,6 @@ def feature_matrix(
         _atom_scalars(around, chosen),
         _shell_scalars(around, chosen),
         _ring_scalars(around, chosen),
-        chair_features(around.mol, atoms),
     ]
     return np.hstack(blocks).astype(np.float32)
 

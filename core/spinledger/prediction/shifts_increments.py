@@ -14,7 +14,7 @@ import numpy as np
 import numpy.typing as npt
 from rdkit import Chem
 
-from spinledger.prediction.shifts_spheres import coarse_invariant, neighbourhoods
+from spinledger.prediction.shifts_spheres import coarse_neighbourhoods
 from spinledger.prediction.shifts_types import PROTON_CLASSES, proton_class
 
 Keys = npt.NDArray[np.uint32]
@@ -74,7 +74,10 @@ class IncrementTable:
 
 
 def fragment_counts(
-    mol: Chem.Mol, atoms: Sequence[int], distances: npt.NDArray[np.float64]
+    mol: Chem.Mol,
+    atoms: Sequence[int],
+    distances: npt.NDArray[np.float64],
+    wide: npt.NDArray[np.uint64] | None = None,
 ) -> FragmentCounts:
     """Fragments around the protons of some atoms.
 
@@ -85,8 +88,10 @@ def fragment_counts(
     atoms : sequence of int
     distances : numpy.ndarray, shape (n_atoms, n_atoms)
         Bonds between atoms.
+    wide : numpy.ndarray, optional
+        From :func:`coarse_neighbourhoods`, where it is known already.
     """
-    codes = neighbourhoods(mol, coarse_invariant, len(_REACH_BONDS))
+    codes = coarse_neighbourhoods(mol) if wide is None else wide
     in_one_ring = np.zeros(distances.shape, dtype=np.uint64)
     for ring in mol.GetRingInfo().AtomRings():
         in_one_ring[np.ix_(ring, ring)] = 1

@@ -57,15 +57,9 @@ class GapModel:
         counted = features[:, self.columns]
         # Assignments give two values only where they are far apart, fits always
         # do: the geometric mean of both answers is taken.
-        logarithms = [
-            boosted(
-                self.booster,
-                np.column_stack([counted, np.full(len(counted), flag)]).astype(
-                    np.float32
-                ),
-            )
-            for flag in (0.0, 1.0)
-        ]
+        flags = np.repeat([0.0, 1.0], len(counted))
+        both = np.column_stack([np.vstack([counted, counted]), flags])
+        logarithms = boosted(self.booster, both.astype(np.float32)).reshape(2, -1)
         found = np.exp(np.mean(logarithms, axis=0)) - self.floor_ppm
         return np.asarray(np.maximum(found, 0.0), dtype=np.float64)
 

@@ -44,8 +44,22 @@ def fine_codes(mol: Chem.Mol) -> npt.NDArray[np.uint32]:
     return _truncated(neighbourhoods(mol, _fine_invariant, N_SPHERES))
 
 
-def coarse_codes(mol: Chem.Mol) -> npt.NDArray[np.uint32]:
+def coarse_neighbourhoods(mol: Chem.Mol) -> npt.NDArray[np.uint64]:
+    """Hashes by element and hybridisation only, shape (n_atoms, 6)."""
+    return neighbourhoods(mol, coarse_invariant, N_SPHERES)
+
+
+def coarse_codes(
+    mol: Chem.Mol, wide: npt.NDArray[np.uint64] | None = None
+) -> npt.NDArray[np.uint32]:
     """Code of every atom's neighbourhood by element and hybridisation only.
+
+    Parameters
+    ----------
+    mol : Chem.Mol
+        Hydrogens implicit.
+    wide : numpy.ndarray, optional
+        From :func:`coarse_neighbourhoods`, where it is known already.
 
     Returns
     -------
@@ -53,8 +67,10 @@ def coarse_codes(mol: Chem.Mol) -> npt.NDArray[np.uint32]:
         The class of the atom's own protons is mixed in.
     """
     classes = [PROTON_CLASSES.index(proton_class(atom)) for atom in mol.GetAtoms()]
-    wide = neighbourhoods(mol, coarse_invariant, N_SPHERES)
-    return _truncated(wide * np.uint64(1000003) + np.array(classes, np.uint64)[:, None])
+    known = coarse_neighbourhoods(mol) if wide is None else wide
+    return _truncated(
+        known * np.uint64(1000003) + np.array(classes, np.uint64)[:, None]
+    )
 
 
 Invariant = Callable[[Chem.Mol, Chem.Atom], tuple[object, ...]]

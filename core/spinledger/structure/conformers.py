@@ -30,6 +30,8 @@ AXIAL_CARBON_KCAL = 1.0
 WINDOW_KCAL = 8.0
 DUPLICATE_KCAL = 0.05
 DUPLICATE_DEG = 12.0
+#: A model of a larger molecule takes minutes and tells little of its shape.
+MOST_HEAVY_ATOMS = 100
 _AXIAL_LIMIT_DEG = 100.0
 
 
@@ -108,6 +110,11 @@ def ensemble(
     .. [3] A. K. Rappe et al., J. Am. Chem. Soc. 114 (1992) 10024-10035,
        doi:10.1021/ja00051a040.
     """
+    if mol_with_hydrogens.GetNumHeavyAtoms() > MOST_HEAVY_ATOMS:
+        return _empty(
+            mol_with_hydrogens,
+            f"More than {MOST_HEAVY_ATOMS} heavy atoms: no three-dimensional model is made.",
+        )
     # Conformers go by bonds and stereo alone, so that equal drawings share them.
     known = mol_with_hydrogens.ToBinary(Chem.PropertyPickleOptions.NoProps)
     return _ensemble(known, is_aqueous, seed)

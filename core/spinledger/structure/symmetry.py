@@ -10,9 +10,11 @@ average.
 
 from __future__ import annotations
 
+import sys
 from collections.abc import Iterator, Sequence
+from contextlib import contextmanager
 from itertools import pairwise, permutations, product
-from typing import Literal
+from typing import Final, Literal
 
 from rdkit import Chem
 
@@ -31,6 +33,11 @@ Site = tuple[int, int]
 """A heavy atom and FIRST_H or SECOND_H, or LONE where its hydrogens are alike."""
 
 Bond = frozenset[int]
+Branches = tuple[int, int, int, int]
+"""Parent and root of a branch, then of the branch it is laid over."""
+
+# A branch calls the next one through a handful of functions.
+_CALLS_PER_ATOM: Final = 10
 
 
 class Symmetry:
@@ -76,6 +83,21 @@ class Symmetry:
         self.link_of = {frozenset(link.ends): link for link in self.links}
         self.turning = self._turning_bonds()
         self.slotted = self._slotted_atoms()
+        self._beyond: dict[tuple[int, int], frozenset[int]] = {}
+        # Answers on branches in which no site is given: the same in every search.
+        self.known: dict[tuple[Sense, Branches], bool] = {}
+
+    def beyond(self, parent: int, atom: int) -> frozenset[int]:
+        """Atoms of the branch that hangs on a bond; all for a parent of -1."""
+        if (parent, atom) not in self._beyond:
+            seen, order = {atom}, [atom]
+            for index in order:
+                for other in self.neighbours[index]:
+                    if other not in seen and (index, other) != (atom, parent):
+                        seen.add(other)
+                        order.append(other)
+            self._beyond[parent, atom] = frozenset(seen)
+        return self._beyond[parent, atom]
 
     def sites(self) -> list[Site]:
         """All proton sites: one an atom, or two where geminal ones may differ."""
@@ -157,7 +179,8 @@ class Symmetry:
             return False
         start = next(iter(forced))
         search = _Search(self, forced, flips, sense)
-        return search.branch(-1, start, -1, forced[start])
+        with _room_for(self.mol.GetNumAtoms()):
+            return search.branch(-1, start, -1, forced[start])
 
     def _turning_bonds(self) -> set[Bond]:
         """Bonds outside rings and links, about which the molecule turns freely."""
@@ -180,6 +203,17 @@ class Symmetry:
                 if FIRST_H in side:
                     slotted.add(end)
         return frozenset(slotted)
+
+
+@contextmanager
+def _room_for(n_atoms: int) -> Iterator[None]:
+    """Allow calls as deep as the longest chain of so many atoms asks for."""
+    usual = sys.getrecursionlimit()
+    sys.setrecursionlimit(usual + _CALLS_PER_ATOM * n_atoms)
+    try:
+        yield
+    finally:
+        sys.setrecursionlimit(usual)
 
 
 def _refined(
@@ -242,7 +276,7 @@ class _Search:
         self.flips = flips
         self.source_marks = forced
         self.image_marks = {image: atom for atom, image in forced.items()}
-        self.answers: dict[tuple[int, int, int, int], bool] = {}
+        self.answers: dict[Branches, bool] = {}
 
     def branch(self, parent: int, atom: int, image_parent: int, image: int) -> bool:
         """Whether a branch can be laid over another one, roots on each other.
@@ -250,12 +284,28 @@ class _Search:
         ``parent`` is the atom that the branch hangs on, -1 for the whole.
         """
         key = (parent, atom, image_parent, image)
-        if key not in self.answers:
-            self.answers[key] = self._look_alike(atom, image) and any(
-                self._surroundings_fit(mapping, parent, image_parent)
-                for mapping in self._block_mappings(atom, image)
-            )
-        return self.answers[key]
+        if key in self.answers:
+            return self.answers[key]
+        is_free = self._is_free(key)
+        if is_free and (self.sense, key) in self.symmetry.known:
+            return self.symmetry.known[self.sense, key]
+        answer = self._look_alike(atom, image) and any(
+            self._surroundings_fit(mapping, parent, image_parent)
+            for mapping in self._block_mappings(atom, image)
+        )
+        self.answers[key] = answer
+        if is_free:
+            self.symmetry.known[self.sense, key] = answer
+        return answer
+
+    def _is_free(self, key: Branches) -> bool:
+        """Whether no given site lies in the two branches."""
+        parent, atom, image_parent, image = key
+        return self.source_marks.keys().isdisjoint(
+            self.symmetry.beyond(parent, atom)
+        ) and self.image_marks.keys().isdisjoint(
+            self.symmetry.beyond(image_parent, image)
+        )
 
     def _look_alike(self, atom: int, image: int) -> bool:
         colours = self.symmetry.colours

@@ -329,3 +329,10 @@ def test_merging_barrier_is_the_closed_form() -> None:
     expected = r * 298.15 * np.log(k_b * 298.15 / (h * rate))
     # 1e-3: digits of the constants.
     assert merging_barrier_kcal(298.15) == pytest.approx(expected, abs=1e-3)
+
+
+def test_very_large_structures_are_claimed_without_a_model_in_space() -> None:
+    """A chain of 150 carbons: 75 kinds of protons by its mirror plane."""
+    claims = claims_of("C" * 150, "CDCl3")
+    assert len(claims.claims) == 75
+    assert sum(claim.n_protons for claim in claims.claims) == 302
