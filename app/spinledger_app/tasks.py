@@ -11,16 +11,19 @@ from __future__ import annotations
 from collections.abc import Callable, Sequence
 from dataclasses import dataclass
 from pathlib import Path
+from typing import TYPE_CHECKING
 
 from spinledger.project.document import Project, ProjectOptions
 from spinledger.reconcile.options import ReconcileOptions
-from spinledger.report.context import ReportContext
 from spinledger.values.acquisition import Acquired
 from spinledger.values.evidence import Evidence
 from spinledger.values.ledger import Ledger
 from spinledger.values.recipe import Recipe
 from spinledger.values.structure import Structure
 from spinledger_app.presenters.structure import Drawing
+
+if TYPE_CHECKING:
+    from spinledger.report.context import ReportContext
 
 Progress = Callable[[str, float], None]
 Cancelled = Callable[[], bool]

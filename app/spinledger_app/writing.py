@@ -9,7 +9,6 @@ from pathlib import Path
 from PySide6.QtCore import QObject, Signal
 
 from spinledger.project.document import Project
-from spinledger.report.context import context_of
 from spinledger_app import tasks
 from spinledger_app.presenters.wording import say
 from spinledger_app.session import Session
@@ -72,6 +71,8 @@ class WritingBench(QObject):
         self._write(tasks.write_pdf, path)
 
     def _write(self, task: Callable[..., object], place: Path, *more: object) -> None:
+        from spinledger.report.context import context_of  # noqa: PLC0415 - loads much
+
         ledger = self.project.ledger
         if ledger is None:
             self._fail(say("There is no ledger to report yet."))

@@ -5,6 +5,7 @@ from __future__ import annotations
 import itertools
 from collections.abc import Callable, Sequence
 from dataclasses import dataclass, replace
+from math import inf
 from typing import Literal
 
 from spinledger_app.lanes.layout import LaneLayout
@@ -300,11 +301,11 @@ def _in_room(
     dropped: list[RootLabel] = []
     tag_width = 26.0
     while kept and _needed(kept, tag_width if dropped else 0.0) > right - left:
-        crowded = min(
-            kept, key=lambda one: (one.claims[0] in first, _elbow_room(one, kept))
+        rooms = _elbow_rooms(kept)
+        index = min(
+            range(len(kept)), key=lambda i: (kept[i].claims[0] in first, rooms[i])
         )
-        kept.remove(crowded)
-        dropped.append(crowded)
+        dropped.append(kept.pop(index))
     if dropped:
         kept.append(_tag(dropped, tag_width))
         kept.sort(key=lambda label: label.root_x)
@@ -316,9 +317,11 @@ def _needed(labels: Sequence[RootLabel], tag_width: float) -> float:
     return sum(one.width for one in labels) + gaps + tag_width
 
 
-def _elbow_room(label: RootLabel, labels: Sequence[RootLabel]) -> float:
-    others = [abs(one.root_x - label.root_x) for one in labels if one is not label]
-    return min(others, default=0.0)
+def _elbow_rooms(labels: Sequence[RootLabel]) -> list[float]:
+    """Distance of each root from its nearest neighbour; labels in order of roots."""
+    xs = [one.root_x for one in labels]
+    gaps = [inf, *(b - a for a, b in itertools.pairwise(xs)), inf]
+    return [min(pair) for pair in itertools.pairwise(gaps)]
 
 
 def _tag(dropped: Sequence[RootLabel], width: float) -> RootLabel:

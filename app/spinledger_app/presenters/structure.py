@@ -9,12 +9,19 @@ import math
 from collections.abc import Callable, Sequence
 from dataclasses import dataclass
 
+import numpy as np
+import numpy.typing as npt
+
+_Floats = npt.NDArray[np.float64]
+_Box = tuple[float, float, float, float]
+
 _ANGLES = 24
 _RADII_PX = (24.0, 34.0, 46.0, 60.0, 78.0, 98.0)
 _TAG_HEIGHT_PX = 20.0
 _STACK_PX = 24.0
 _EDGE_PX = 4.0
 _IN_RING_COST = 30.0
+_POINTS_ON_BOND = 13
 _LARGEST_RING = 9
 
 
@@ -144,45 +151,102 @@ def place_tags(
         Width of an atom's text, px.
     """
     texts = [
-        _Box.about(x, y, max(label_width(atom), 6.0) + 6, 20.0)
+        _box(x, y, max(label_width(atom), 6.0) + 6, 20.0)
         for (x, y), atom in zip(places, drawing.atoms, strict=True)
         if atom.symbol
     ]
     segments = [(places[b.start], places[b.end]) for b in drawing.bonds]
     rings = [[places[i] for i in ring] for ring in _rings(drawing)]
+    blocked = _Blocked(texts, segments, rings)
     placed: list[PlacedTag] = []
     for wish in wishes:
         tag = _best_place(
-            drawing, places, wish, size=size, height=height,
-            blocked=(texts, segments, placed, rings),
-        )  # fmt: skip
+            drawing, places, wish, size=size, height=height, blocked=blocked
+        )
+        right, bottom = tag.left + tag.width, tag.top + tag.height
+        blocked.add((tag.left, tag.top, right, bottom), tag.atom)
         placed.append(tag)
     return tuple(placed)
 
 
-@dataclass(frozen=True, slots=True)
-class _Box:
-    left: float
-    top: float
-    right: float
-    bottom: float
+class _Blocked:
+    """What a tag must not lie over: texts, bonds, rings and the tags before it."""
 
-    @classmethod
-    def about(cls, x: float, y: float, width: float, height: float) -> _Box:
-        return cls(x - width / 2, y - height / 2, x + width / 2, y + height / 2)
+    def __init__(
+        self,
+        texts: Sequence[_Box],
+        segments: Sequence[tuple[tuple[float, float], tuple[float, float]]],
+        rings: Sequence[Sequence[tuple[float, float]]],
+    ) -> None:
+        self.texts = np.array(texts, dtype=np.float64).reshape(-1, 4)
+        ends = np.array(segments, dtype=np.float64).reshape(-1, 2, 2)
+        shares = np.linspace(0.0, 1.0, _POINTS_ON_BOND)[None, :, None]
+        points = ends[:, :1] + (ends[:, 1:] - ends[:, :1]) * shares
+        self.bond_points = points.reshape(-1, 2)
+        self.rings = [np.array(ring, dtype=np.float64) for ring in rings]
+        self.tags = np.empty((0, 4))
+        self.atoms: list[int] = []
 
-    def overlap(self, other: _Box) -> float:
-        wide = min(self.right, other.right) - max(self.left, other.left)
-        high = min(self.bottom, other.bottom) - max(self.top, other.top)
-        return wide * high if wide > 0 and high > 0 else 0.0
+    def add(self, box: _Box, atom: int) -> None:
+        """Count a tag that was placed as blocked."""
+        self.tags = np.vstack([self.tags, box])
+        self.atoms.append(atom)
+
+    def costs(self, boxes: _Floats, size: tuple[float, float]) -> _Floats:
+        """Cost of every box, shape (n, 4) -> (n,): what it covers, what sticks out."""
+        left, top, right, bottom = boxes.T
+        outside = (
+            np.maximum(0.0, _EDGE_PX - left)
+            + np.maximum(0.0, _EDGE_PX - top)
+            + np.maximum(0.0, right - size[0] + _EDGE_PX)
+            + np.maximum(0.0, bottom - size[1] + _EDGE_PX)
+        )
+        grown = boxes + np.array([-3.0, -3.0, 3.0, 3.0])
+        cost: _Floats = 60.0 * outside
+        cost += 2.0 * _overlaps(boxes, self.texts)
+        cost += 4.0 * _overlaps(grown, self.tags)
+        cost += 40.0 * _n_inside(grown, self.bond_points)
+        middles = np.column_stack([(left + right) / 2, (top + bottom) / 2])
+        for ring in self.rings:
+            cost += _IN_RING_COST * _are_inside(middles, ring)
+        return cost
 
 
-_Blocked = tuple[
-    list[_Box],
-    list[tuple[tuple[float, float], tuple[float, float]]],
-    list[PlacedTag],
-    list[list[tuple[float, float]]],
-]
+def _box(x: float, y: float, width: float, height: float) -> _Box:
+    """Left, top, right and bottom about a middle."""
+    return x - width / 2, y - height / 2, x + width / 2, y + height / 2
+
+
+def _overlaps(boxes: _Floats, others: _Floats) -> _Floats:
+    """Area that each box shares with all others together, px²."""
+    wide = np.minimum(boxes[:, None, 2], others[None, :, 2]) - np.maximum(
+        boxes[:, None, 0], others[None, :, 0]
+    )
+    high = np.minimum(boxes[:, None, 3], others[None, :, 3]) - np.maximum(
+        boxes[:, None, 1], others[None, :, 1]
+    )
+    shared = np.where((wide > 0) & (high > 0), wide * high, 0.0)
+    return np.asarray(shared.sum(axis=1))
+
+
+def _n_inside(boxes: _Floats, points: _Floats) -> _Floats:
+    """How many of the points lie in each box."""
+    x, y = points[None, :, 0], points[None, :, 1]
+    inside = (boxes[:, None, 0] < x) & (x < boxes[:, None, 2])
+    inside &= (boxes[:, None, 1] < y) & (y < boxes[:, None, 3])
+    return np.asarray(inside.sum(axis=1), dtype=np.float64)
+
+
+def _are_inside(points: _Floats, ring: _Floats) -> _Floats:
+    """1 for each point in a polygon, else 0 (even-odd rule)."""
+    x, y = points[:, None, 0], points[:, None, 1]
+    x0, y0 = ring[None, :, 0], ring[None, :, 1]
+    after = np.roll(ring, -1, axis=0)
+    x1, y1 = after[None, :, 0], after[None, :, 1]
+    crosses = (y0 > y) != (y1 > y)
+    rise = np.where(y1 == y0, 1.0, y1 - y0)
+    is_left = x < x0 + (y - y0) / rise * (x1 - x0)
+    return np.asarray((crosses & is_left).sum(axis=1) % 2, dtype=np.float64)
 
 
 def _best_place(
@@ -200,42 +264,36 @@ def _best_place(
             continue
         x, y = places[atom]
         free = _widest_free_angle(drawing, places, atom)
-        stacked = sum(one.atom == atom for one in blocked[2])
-        for rank, (dx, dy) in enumerate(_offsets(free, wish.width, height, stacked)):
-            least = 0.9 * rank + 0.25 * math.hypot(dx, dy)
-            if best is not None and least >= best[0]:
-                if 0.9 * rank >= best[0]:
-                    break  # whatever comes is worse, however free its place is
-                continue
-            box, moved = _inside(_Box.about(x + dx, y + dy, wish.width, height), size)
-            cost = least + 0.5 * moved + _cost(box, size, blocked)
-            if best is None or cost < best[0]:
-                is_led = math.hypot(dx, dy) > 46 + wish.width / 3
-                best = cost, PlacedTag(
-                    claim=wish.claim, state=wish.state, left=round(box.left),
-                    top=round(box.top), width=wish.width, height=height, atom=atom,
-                    is_led=is_led,
-                )  # fmt: skip
+        stacked = blocked.atoms.count(atom)
+        offsets = np.array(_offsets(free, wish.width, height, stacked))
+        reach = np.hypot(offsets[:, 0], offsets[:, 1])
+        middles = offsets + np.array([x, y])
+        half = np.array([wish.width / 2, height / 2])
+        boxes = np.hstack([middles - half, middles + half])
+        boxes, moved = _inside(boxes, size)
+        cost: _Floats = 0.9 * np.arange(len(boxes)) + 0.25 * reach + 0.5 * moved
+        cost += blocked.costs(boxes, size)
+        index = int(np.argmin(cost))
+        if best is None or cost[index] < best[0]:
+            best = float(cost[index]), PlacedTag(
+                claim=wish.claim, state=wish.state, left=round(boxes[index, 0]),
+                top=round(boxes[index, 1]), width=wish.width, height=height, atom=atom,
+                is_led=bool(reach[index] > 46 + wish.width / 3),
+            )  # fmt: skip
     if best is None:
         raise ValueError(f"atoms: {wish.claim} names no atom of the drawing")
     return best[1]
 
 
-def _inside(box: _Box, size: tuple[float, float]) -> tuple[_Box, float]:
-    """Box pushed into the panel, and how far it was pushed."""
-    right, down = 0.0, 0.0
-    if box.left < _EDGE_PX:
-        right = _EDGE_PX - box.left
-    elif box.right > size[0] - _EDGE_PX:
-        right = size[0] - _EDGE_PX - box.right
-    if box.top < _EDGE_PX:
-        down = _EDGE_PX - box.top
-    elif box.bottom > size[1] - _EDGE_PX:
-        down = size[1] - _EDGE_PX - box.bottom
-    pushed = _Box(
-        box.left + right, box.top + down, box.right + right, box.bottom + down
-    )
-    return pushed, abs(right) + abs(down)
+def _inside(boxes: _Floats, size: tuple[float, float]) -> tuple[_Floats, _Floats]:
+    """Boxes pushed into the panel, and how far each was pushed."""
+    left, top, right, bottom = boxes.T
+    over_right = np.minimum(0.0, size[0] - _EDGE_PX - right)
+    aside = np.where(left < _EDGE_PX, _EDGE_PX - left, over_right)
+    over_bottom = np.minimum(0.0, size[1] - _EDGE_PX - bottom)
+    down = np.where(top < _EDGE_PX, _EDGE_PX - top, over_bottom)
+    pushed = boxes + np.column_stack([aside, down, aside, down])
+    return pushed, np.abs(aside) + np.abs(down)
 
 
 def _offsets(
@@ -281,33 +339,6 @@ def _widest_free_angle(
     return start + width / 2
 
 
-def _cost(box: _Box, size: tuple[float, float], blocked: _Blocked) -> float:
-    texts, segments, placed, rings = blocked
-    outside = (
-        max(0.0, 4 - box.left)
-        + max(0.0, 4 - box.top)
-        + max(0.0, box.right - size[0] + 4)
-        + max(0.0, box.bottom - size[1] + 4)
-    )
-    cost = 60.0 * outside
-    for text in texts:
-        cost += 2.0 * box.overlap(text)
-    grown = _Box(box.left - 3, box.top - 3, box.right + 3, box.bottom + 3)
-    for tag in placed:
-        other = _Box(tag.left, tag.top, tag.left + tag.width, tag.top + tag.height)
-        cost += 4.0 * grown.overlap(other)
-    for (x0, y0), (x1, y1) in segments:
-        hits = 0
-        for i in range(13):
-            x, y = x0 + (x1 - x0) * i / 12, y0 + (y1 - y0) * i / 12
-            if grown.left < x < grown.right and grown.top < y < grown.bottom:
-                hits += 1
-        cost += 40.0 * hits
-    middle = ((box.left + box.right) / 2, (box.top + box.bottom) / 2)
-    cost += _IN_RING_COST * sum(_is_inside(middle, ring) for ring in rings)
-    return cost
-
-
 def _rings(drawing: Drawing) -> list[list[int]]:
     """Shortest ring through every bond, as atoms in order; chains give none."""
     neighbours: dict[int, list[int]] = {}
@@ -339,14 +370,3 @@ def _way_round(
                     longer.append([*path, atom])
         paths = longer
     return None
-
-
-def _is_inside(point: tuple[float, float], ring: Sequence[tuple[float, float]]) -> bool:
-    """Whether a point lies in a polygon (even-odd rule)."""
-    x, y = point
-    inside = False
-    for (x0, y0), (x1, y1) in zip(ring, [*ring[1:], ring[0]], strict=True):
-        crosses = (y0 > y) != (y1 > y)
-        if crosses and x < x0 + (y - y0) / (y1 - y0) * (x1 - x0):
-            inside = not inside
-    return inside

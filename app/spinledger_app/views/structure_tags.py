@@ -4,7 +4,17 @@ from __future__ import annotations
 
 import math
 
-from PySide6.QtCore import QEvent, QObject, QPoint, QPointF, QRect, QRectF, Qt, Signal
+from PySide6.QtCore import (
+    QEvent,
+    QObject,
+    QPoint,
+    QPointF,
+    QRect,
+    QRectF,
+    Qt,
+    QTimer,
+    Signal,
+)
 from PySide6.QtGui import (
     QContextMenuEvent,
     QHelpEvent,
@@ -73,6 +83,12 @@ class TagLayer(QWidget):
         self.setAttribute(Qt.WidgetAttribute.WA_TransparentForMouseEvents)
         self.setFocusPolicy(Qt.FocusPolicy.TabFocus)
         self.setProperty("focusInside", True)
+        # Once a turn of the event loop, however often the view changes in it.
+        self._later = QTimer(self)
+        self._later.setSingleShot(True)
+        self._later.setInterval(0)
+        self._later.timeout.connect(self._lay_out)
+        self._laid: object = None
         canvas.installEventFilter(self)
         canvas.view_changed.connect(self.lay_out)
 
@@ -118,12 +134,22 @@ class TagLayer(QWidget):
         return [i for i, one in enumerate(atoms) if one.element != "H" or one.isotope]
 
     def lay_out(self) -> None:
-        """Place the tags anew."""
+        """Place the tags anew, at the end of this turn of the event loop."""
+        self.canvas.shows_stereo = not self._wishes  # letters and tags would meet
+        self._later.start()
+
+    def _lay_out(self) -> None:
         canvas, px = self.canvas, self.look.px
-        self.placed = ()
         self._cover()
         self.setVisible(self.is_shown)
-        canvas.shows_stereo = not self._wishes  # letters and tags would meet
+        state = (
+            canvas.drawing, canvas.view, self._wishes, canvas.size(),
+            self.look.text_scale,
+        )  # fmt: skip
+        if state == self._laid:
+            return
+        self._laid = state
+        self.placed = ()
         heavy = self.heavy_atoms()
         is_same = all(i < len(heavy) for _, _, atoms in self._wishes for i in atoms)
         if self._wishes and canvas.drawing.atoms and is_same:
