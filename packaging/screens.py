@@ -152,6 +152,25 @@ def claim_selected(studio: Studio) -> None:
     studio.parts.window.lanes.zoom_to(2.38, 2.53)
 
 
+def contenders(studio: Studio) -> None:
+    """A card of another structure pointed at, its menu open beside it."""
+    studio.parts.window.lanes.set_folded(True)
+    cards = studio.parts.window.contenders.cards
+    if cards:
+        cards[0].setFocus()
+
+
+def sketching(studio: Studio) -> None:
+    """A bond about to be drawn from an atom of the sample's structure."""
+    from spinledger_app.sketch.gestures import Kit, Spot, Tool
+
+    editor = studio.parts.window.sketch.editor
+    editor.choose(Kit(tool=Tool.BOND))
+    studio.parts.window.sketch.tags.hide()
+    editor.canvas.spot = Spot(atom=0)
+    editor.canvas.update()
+
+
 def disputed(studio: Studio) -> None:
     """The wrong isomer's structure on the same spectrum."""
     wrong = str(SAMPLES / "structures" / "wrong-isomer.mol")
@@ -165,6 +184,9 @@ def disputed(studio: Studio) -> None:
 
 def _acquired(name: str) -> Callable[[Studio], None]:
     def show(studio: Studio) -> None:
+        project = studio.parts.bench.project
+        if name in (project.source_path or "") and project.ledger is not None:
+            return  # solved for the picture before
         folder = SHARED / "acquired" / name
         facts = json.loads((folder / "truth.json").read_text())
         studio.open(folder / "raw", str(facts["smiles"]))
@@ -186,14 +208,18 @@ def shots() -> list[Shot]:
         Shot(name="zoomed", show=zoomed, theme="dark"),
         Shot(name="selected", show=claim_selected),
         Shot(name="contrast", show=folded, theme="high contrast"),
+        Shot(name="contenders", show=contenders),
+        Shot(name="sketching", show=sketching),
         Shot(name="disputed", show=disputed),
+        Shot(name="disputed", show=disputed, theme="dark"),
         Shot(name="solved", show=solved, size=(1920, 1080), scale=2),
         Shot(name="zoomed", show=zoomed, size=(1920, 1080), scale=2, theme="dark"),
     ]
     if (SHARED / "acquired").is_dir():
         made += [
-            Shot(name=name.split("_")[1], show=_acquired(name), size=(1920, 1080))
+            Shot(name=name.split("_")[1], show=_acquired(name), size=size, theme=theme)
             for name in ACQUIRED
+            for size, theme in (((1920, 1080), "light"), ((1366, 768), "dark"))
         ]
     return made
 

@@ -78,7 +78,8 @@ def _project() -> tuple[ActionText, ...]:
         ActionText(name="save_as", menu=menu, words=say("Save as…"), keys="Ctrl+Shift+S", needs="spectrum", ends_group=True),
         ActionText(name="sample", menu=menu, words=say("Sample and batch…"), ends_group=True),
         ActionText(name="report", menu=menu, words=say("Report…"), keys="Ctrl+R", needs="ledger"),
-        ActionText(name="pdf", menu=menu, words=say("Report as PDF…"), needs="ledger", ends_group=True),
+        ActionText(name="pdf", menu=menu, words=say("Report as PDF…"), needs="ledger"),
+        ActionText(name="print", menu=menu, words=say("Print report…"), keys="Ctrl+P", needs="ledger", ends_group=True),
         ActionText(name="quit", menu=menu, words=say("Quit"), keys="Ctrl+Q"),
     )  # fmt: skip
 
@@ -94,6 +95,7 @@ def _edit() -> tuple[ActionText, ...]:
         ActionText(name="copy_picture", menu=menu, words=say("Copy picture of the lanes"), keys="Ctrl+Shift+C", needs="spectrum"),
         ActionText(name="copy_sentence", menu=menu, words=say("Copy experimental sentence"), keys="Ctrl+E", needs="ledger"),
         ActionText(name="copy_table", menu=menu, words=say("Copy assignment table"), keys="Ctrl+T", needs="ledger"),
+        ActionText(name="copy_lines", menu=menu, words=say("Copy line list"), needs="spectrum"),
         ActionText(name="copy_smiles", menu=menu, words=say("Copy structure as SMILES"), needs="structure"),
     )  # fmt: skip
 
@@ -124,6 +126,7 @@ def _view() -> tuple[ActionText, ...]:
             is_checkable=True,
             ends_group=True,
         ),
+        ActionText(name="left_panels", menu=menu, words=say("Fold the left panels"), keys="F9", is_checkable=True),
         ActionText(name="default_sizes", menu=menu, words=say("Panels at their default sizes")),
     )  # fmt: skip
 
@@ -135,7 +138,8 @@ def _process() -> tuple[ActionText, ...]:
         ActionText(name="phase", menu=menu, words=say("Phase by hand…"), needs="spectrum"),
         ActionText(name="window", menu=menu, words=say("Window…"), needs="spectrum"),
         ActionText(name="reference", menu=menu, words=say("Set the shift of a line…"), needs="spectrum"),
-        ActionText(name="automatic", menu=menu, words=say("Process automatically again"), needs="spectrum", ends_group=True),
+        ActionText(name="automatic", menu=menu, words=say("Process automatically again"), needs="spectrum"),
+        ActionText(name="line_list", menu=menu, words=say("Line list…"), needs="spectrum", ends_group=True),
         ActionText(name="exclude", menu=menu, words=say("Leave the marked region out"), keys="X", needs="spectrum"),
         ActionText(name="include", menu=menu, words=say("Take the marked region in again"), keys="Shift+X", needs="spectrum"),
         ActionText(name="impurity", menu=menu, words=say("Mark the region as an impurity…"), keys="M", needs="spectrum"),
@@ -160,6 +164,8 @@ def _ledger() -> tuple[ActionText, ...]:
     return (
         ActionText(name="refine", menu=menu, words=say("Refine"), keys="R", needs="structure"),
         ActionText(name="cancel", menu=menu, words=say("Cancel"), keys="Ctrl+.", needs="busy", ends_group=True),
+        ActionText(name="add_contender", menu=menu, words=say("Add a contender…"), needs="structure"),
+        ActionText(name="n_contenders", menu=menu, words=say("Number of isomers to test…"), needs="structure", ends_group=True),
         ActionText(name="next_claim", menu=menu, words=say("Next claim"), keys="N", needs="ledger"),
         ActionText(name="previous_claim", menu=menu, words=say("Previous claim"), keys="B", needs="ledger"),
     )  # fmt: skip

@@ -60,6 +60,9 @@ def build(store: QSettings, *, solvent: str | None = None) -> Parts:
     geometry = settings.geometry("window")
     if geometry is not None:
         window.restoreGeometry(geometry)
+    sizes = settings.panel_sizes
+    if sizes is not None:
+        window.take_sizes(*sizes)
     return Parts(
         window=window, bench=bench, desk=desk, pool=pool, look=look, settings=settings
     )

@@ -12,6 +12,7 @@ from spinledger.errors import StructureError
 from spinledger.project.constraints import reconcile_options, standing_constraints
 from spinledger.project.document import (
     Project,
+    ProjectOptions,
     open_spectrum,
     open_structure,
     with_evidence,
@@ -245,10 +246,43 @@ class Bench(WritingBench):
     def set_solvent(self, solvent: str | None) -> None:
         """Say which solvent it is; the spectrum is processed again."""
         options = replace(self.project.options, solvent=solvent)
+        self._set_options(say("set solvent"), options)
+
+    def add_contender(self, text: str) -> None:
+        """Test another structure beside the claimed one."""
+
+        def done(read: tasks.ReadClaim) -> None:
+            structure = read.structure
+            self.thumbnails[structure.smiles] = read.drawing
+            options = self.project.options
+            known = {one.smiles for one in options.contenders}
+            if structure.smiles in known:
+                self.told.emit(say("This contender is tested already."), False)
+                return
+            contenders = (*options.contenders, structure)
+            self._set_options(
+                say("add a contender"), replace(options, contenders=contenders)
+            )
+
+        self.pool.run(
+            tasks.read_claim, text, done=done, failed=self._fail, lane="contender"
+        )
+
+    def drop_contender(self, smiles: str) -> None:
+        """Test a structure no longer that was added by hand."""
+        options = self.project.options
+        kept = tuple(one for one in options.contenders if one.smiles != smiles)
+        self._set_options(say("drop a contender"), replace(options, contenders=kept))
+
+    def set_n_contenders(self, number: int | None) -> None:
+        """Say how many isomers are enumerated; None leaves it to the program."""
+        options = replace(self.project.options, n_contenders=number)
+        self._set_options(say("number of isomers"), options)
+
+    def _set_options(self, what: str, options: ProjectOptions) -> None:
         when = now()
         self.session.apply(
-            say("set solvent"),
-            lambda project: with_options(project, options, when=when),
+            what, lambda project: with_options(project, options, when=when)
         )
         self._solve_soon()
 

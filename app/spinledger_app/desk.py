@@ -101,6 +101,7 @@ class Desk(QObject):
         if settings.lane_shares is not None:
             window.lanes.set_shares(settings.lane_shares)
         self.view.take_theme(settings.theme)
+        window.fold_left(settings.folds_left)
         self.show_all()
         window.status.show_message(say("Ready"))
 
@@ -167,6 +168,7 @@ class Desk(QObject):
         window.ribbon.place_wanted.connect(self.view.go_to_ppm)
         window.ribbon.window_wanted.connect(self.view.go_to_window)
         window.recipe.chip_clicked.connect(self.process.open_chip)
+        window.contenders.add_wanted.connect(lambda: self.do("add_contender"))
         window.contenders.card_activated.connect(self.menus.of_contender)
 
     def _wire_lanes(self) -> None:
@@ -177,6 +179,7 @@ class Desk(QObject):
         lanes.root_dropped.connect(claims.drop_root)
         lanes.branch_dropped.connect(claims.drop_branch)
         lanes.menu_wanted.connect(self.menus.of_lanes)
+        lanes.region_marked.connect(self.view.measure)
         lanes.view_changed.connect(self._show_view)
 
     # -- showing -------------------------------------------------------------------
@@ -222,6 +225,7 @@ class Desk(QObject):
     def _show_ledger(self) -> None:
         project, window = self.bench.project, self.window
         ledger = project.ledger
+        window.contenders.show_can_add(project.structure is not None)
         if ledger is None:
             window.ledger.show_empty()
             words = (
@@ -296,6 +300,7 @@ class Desk(QObject):
             "fold": lanes.is_folded,
             "own_gains": lanes.has_own_gains,
             "integrals": lanes.shows_integrals,
+            "left_panels": self.window.left_column.is_folded,
         }
         theme = self.settings.theme
         checks |= {name: theme == one for name, one in THEME_ACTIONS.items()}
@@ -341,6 +346,7 @@ class Desk(QObject):
             return
         self.settings.set_geometry("window", self.window.saveGeometry())
         self.settings.lane_shares = self.window.lanes.shares
+        self.settings.panel_sizes = self.window.sizes_by_hand
         self.closing.emit()
         self.bench.pool.close()
         event.accept()

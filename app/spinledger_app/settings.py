@@ -94,6 +94,35 @@ class BenchSettings:
         self._store.setValue(f"geometry/{name}", state)
 
     @property
+    def folds_left(self) -> bool:
+        """Whether the left panels are folded to a rail."""
+        return bool(self._store.value("folds_left", False, type=bool))
+
+    @folds_left.setter
+    def folds_left(self, is_folded: bool) -> None:
+        self._store.setValue("folds_left", is_folded)
+
+    @property
+    def panel_sizes(self) -> tuple[list[int], list[int]] | None:
+        """Widths of the panels and heights at the left; None for the default."""
+        text = str(self._store.value("panel_sizes", "", type=str))
+        across, _, down = text.partition("/")
+        try:
+            sizes = [int(one) for one in across.split()], [int(x) for x in down.split()]
+        except ValueError:
+            return None
+        if (len(sizes[0]), len(sizes[1])) != (3, 2) or min(sizes[0] + sizes[1]) < 0:
+            return None
+        return sizes
+
+    @panel_sizes.setter
+    def panel_sizes(self, sizes: tuple[list[int], list[int]] | None) -> None:
+        text = ""
+        if sizes is not None:
+            text = "/".join(" ".join(map(str, one)) for one in sizes)
+        self._store.setValue("panel_sizes", text)
+
+    @property
     def lane_shares(self) -> tuple[float, float, float] | None:
         """Heights of the lanes as shares; None for the default."""
         text = str(self._store.value("lane_shares", "", type=str))

@@ -5,6 +5,7 @@ from __future__ import annotations
 from collections.abc import Callable, Sequence
 from datetime import UTC, datetime
 from pathlib import Path
+from typing import TYPE_CHECKING
 
 from PySide6.QtCore import QObject, Signal
 
@@ -13,6 +14,9 @@ from spinledger_app import tasks
 from spinledger_app.presenters.wording import say
 from spinledger_app.session import Session
 from spinledger_app.workers import WorkerPool
+
+if TYPE_CHECKING:
+    from spinledger.report.context import ReportContext
 
 
 def now() -> str:
@@ -71,14 +75,11 @@ class WritingBench(QObject):
         self._write(tasks.write_pdf, path)
 
     def _write(self, task: Callable[..., object], place: Path, *more: object) -> None:
-        from spinledger.report.context import context_of  # noqa: PLC0415 - loads much
-
         ledger = self.project.ledger
         if ledger is None:
             self._fail(say("There is no ledger to report yet."))
             return
-        day = datetime.now(UTC).astimezone()
-        context = context_of(self.project, date=f"{day.day} {day:%B %Y}")
+        context = self.report_context()
 
         def done(result: object) -> None:
             paths = result if isinstance(result, tuple) else (result,)
@@ -97,6 +98,13 @@ class WritingBench(QObject):
             told=self._tell_stage,
             lane="report",
         )
+
+    def report_context(self) -> ReportContext:
+        """What the report says beside the ledger: sample, date, audit."""
+        from spinledger.report.context import context_of  # noqa: PLC0415 - loads much
+
+        day = datetime.now(UTC).astimezone()
+        return context_of(self.project, date=f"{day.day} {day:%B %Y}")
 
     def ask_sentence(self) -> None:
         """Make the experimental-section text; told by ``sentence_ready``."""

@@ -29,6 +29,7 @@ N_POINTS = 1_048_576
 N_TREES = 40
 FRAME_SECONDS = 4.0
 STALL_MS = 50
+PATIENCE_S = 900
 
 
 def main() -> None:
@@ -193,16 +194,16 @@ def stalls(arguments: list[str]) -> dict[str, float]:
         timer.start()
         parts.desk.files.open_places([data])
         bench.take_structure(structure)
-        until_quiet(240)
+        until_quiet(PATIENCE_S)
         ledger = bench.project.ledger
         if ledger is None:
             raise SystemExit("there is no ledger")
         for claim in [entry.claim for entry in ledger.entries][:2]:
             bench.selection.select(claim)
             parts.desk.do("unlink")
-            until_quiet(120)
+            until_quiet(PATIENCE_S)
             parts.desk.do("undo")
-            until_quiet(120)
+            until_quiet(PATIENCE_S)
         parts.pool.close()
     return {
         "longest_stall_ms": round(max(gaps) * 1000),

@@ -47,6 +47,8 @@ class ClaimHandlers:
             "next_claim": self.next_claim,
             "previous_claim": self.previous_claim,
             "refine": self.refine,
+            "add_contender": self.add_contender,
+            "n_contenders": self.set_n_contenders,
             "cancel": self.cancel,
         }
 
@@ -207,6 +209,27 @@ class ClaimHandlers:
     def refine(self) -> None:
         """Solve the ledger in full."""
         self.bench.refine()
+
+    def add_contender(self) -> None:
+        """Ask for another structure to test beside the claimed one."""
+        text = dialogs.ask_text(
+            self.look, self.window, say("Add a contender"), say("SMILES or InChI")
+        )
+        if text:
+            self.bench.add_contender(text)
+
+    def set_n_contenders(self) -> None:
+        """Ask how many isomers are enumerated and tested."""
+        now = self.bench.project.options.n_contenders
+        number = dialogs.ask_whole(
+            self.look,
+            self.window,
+            say("Isomers to test"),
+            say("How many close isomers are tested; empty leaves it to the program"),
+            "" if now is None else str(now),
+        )
+        if number is not None:
+            self.bench.set_n_contenders(number if number >= 0 else None)
 
     def cancel(self) -> None:
         """Stop what runs."""

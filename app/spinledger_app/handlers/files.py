@@ -6,6 +6,7 @@ from collections.abc import Callable
 from pathlib import Path
 
 from PySide6.QtGui import QGuiApplication, QPixmap
+from PySide6.QtPrintSupport import QPrintDialog, QPrinter
 from PySide6.QtWidgets import QFileDialog, QMessageBox
 
 from spinledger.errors import OutputError
@@ -14,6 +15,7 @@ from spinledger_app.clipboard import put_table
 from spinledger_app.handlers.context import Context
 from spinledger_app.places import Kind, example_place, kind_of
 from spinledger_app.presenters.clipboard import table_html, table_tsv
+from spinledger_app.presenters.line_list import line_tsv
 from spinledger_app.presenters.wording import say
 from spinledger_app.sketch.transfer import text_of
 from spinledger_app.views import dialogs
@@ -39,6 +41,8 @@ class FileHandlers:
             "sample": self.sample,
             "report": self.report,
             "pdf": self.pdf,
+            "print": self.print_report,
+            "copy_lines": self.copy_lines,
             "quit": self.quit,
             "undo": self.undo,
             "redo": self.redo,
@@ -159,6 +163,35 @@ class FileHandlers:
         )
         if self._chosen_place(chosen):
             self.bench.write_pdf(Path(chosen))
+
+    def print_report(self) -> None:
+        """Ask for a printer, then print the report."""
+        printer = QPrinter(QPrinter.PrinterMode.HighResolution)
+        if QPrintDialog(printer, self.window).exec():
+            self.print_on(printer)
+
+    def print_on(self, printer: QPrinter) -> None:
+        """Print the report's pages."""
+        from spinledger_app.pdf.report import (  # noqa: PLC0415 - loads much
+            print_report,
+        )
+
+        ledger = self.bench.project.ledger
+        if ledger is None:
+            return
+        try:
+            print_report(ledger, printer, self.bench.report_context())
+        except OSError as error:
+            self.window.status.show_message(str(error), is_error=True)
+            return
+        self.window.status.show_message(say("Report sent to the printer."))
+
+    def copy_lines(self) -> None:
+        """Put the line list on the clipboard."""
+        evidence = self.bench.project.evidence
+        if evidence is not None:
+            QGuiApplication.clipboard().setText(line_tsv(evidence))
+            self.window.status.show_message(say("Line list copied."))
 
     def quit(self) -> None:
         """Close the window."""

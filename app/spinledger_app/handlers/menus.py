@@ -55,6 +55,10 @@ class MenuHandlers:
         menu = QMenu(self.window)
         take = menu.addAction(say("Claim this structure instead"))
         take.triggered.connect(lambda: self.bench.take_structure(smiles))
+        added = {one.smiles for one in self.bench.project.options.contenders}
+        if smiles in added:
+            drop = menu.addAction(say("Test it no longer"))
+            drop.triggered.connect(lambda: self.bench.drop_contender(smiles))
         copy = menu.addAction(say("Copy SMILES"))
         copy.triggered.connect(lambda: QGuiApplication.clipboard().setText(smiles))
         menu.popup(self.window.cursor().pos())

@@ -13,6 +13,7 @@ from spinledger.project.edits import (
 from spinledger_app.handlers.context import Context
 from spinledger_app.presenters.wording import say
 from spinledger_app.views import dialogs
+from spinledger_app.views.line_list import LineListDialog
 
 
 class ProcessHandlers:
@@ -34,6 +35,7 @@ class ProcessHandlers:
             "exclude": self.exclude,
             "include": self.include,
             "impurity": self.impurity,
+            "line_list": self.line_list,
         }
 
     def solvent(self) -> None:
@@ -134,6 +136,12 @@ class ProcessHandlers:
             self.bench.edit(
                 MarkImpurity(low_ppm=region[0], high_ppm=region[1], name=name)
             )
+
+    def line_list(self) -> None:
+        """Show every line of the spectrum."""
+        evidence = self.bench.project.evidence
+        if evidence is not None:
+            LineListDialog(self.look, evidence, self.window).open()
 
     def open_chip(self, step: int) -> None:
         """Open what a chip of the recipe lets one change."""

@@ -10,6 +10,7 @@ from PySide6.QtGui import QGuiApplication
 
 from spinledger_app.handlers.context import Context
 from spinledger_app.lanes.layout import DEFAULT_SHARES
+from spinledger_app.presenters.line_list import region_text
 from spinledger_app.presenters.wording import say
 from spinledger_app.theme import DARK, HIGH_CONTRAST, LIGHT
 from spinledger_app.views import dialogs
@@ -33,6 +34,7 @@ class ViewHandlers:
             "home": self.home,
             "back": self.back,
             "default_sizes": self.default_sizes,
+            "left_panels": self.left_panels,
             "language_en": lambda: self.take_language("en"),
             "language_de": lambda: self.take_language("de"),
             "keys": self.keys,
@@ -122,6 +124,21 @@ class ViewHandlers:
         """Panels and lanes at their default sizes."""
         self.window.lanes.set_shares(DEFAULT_SHARES)
         self.window.reset_sizes()
+
+    def left_panels(self) -> None:
+        """Fold the left panels to a rail, or open them; remembered."""
+        is_folded = not self.window.left_column.is_folded
+        self.settings.folds_left = is_folded
+        self.window.fold_left(is_folded)
+        if not is_folded:
+            self.window.sketch.canvas.setFocus(Qt.FocusReason.OtherFocusReason)
+
+    def measure(self, low_ppm: float, high_ppm: float) -> None:
+        """Say how wide a marked region is."""
+        scene = self.bench.scene
+        if scene is not None:
+            words = region_text(low_ppm, high_ppm, scene.frequency_mhz)
+            self.window.status.show_message(words)
 
     def fold_when_solved(self) -> None:
         """Fold the axis once there is a ledger, unless chosen otherwise."""

@@ -8,7 +8,13 @@ from collections.abc import Callable, Mapping
 from pathlib import Path
 
 from PySide6.QtCore import QMarginsF
-from PySide6.QtGui import QGuiApplication, QPageSize, QPainter, QPdfWriter
+from PySide6.QtGui import (
+    QGuiApplication,
+    QPagedPaintDevice,
+    QPageSize,
+    QPainter,
+    QPdfWriter,
+)
 
 from spinledger.errors import OutputError
 from spinledger.report.cautions import accuracy_ppm, printed_cautions
@@ -116,6 +122,22 @@ def write_pdf_report(ledger: Ledger, path: Path, context: ReportContext) -> Path
     return path
 
 
+def print_report(
+    ledger: Ledger, device: QPagedPaintDevice, context: ReportContext
+) -> None:
+    """Paint the report's pages on a printer.
+
+    Raises
+    ------
+    OSError
+        If no page can be begun on it.
+    """
+    look = Look(tokens=_on_white())
+    device.setPageSize(QPageSize(QPageSize.PageSizeId.A4))
+    device.setPageMargins(QMarginsF(0, 0, 0, 0))
+    _paint_pages(_flow(ledger, context, look), device, ledger, look)
+
+
 def _on_white() -> Tokens:
     values = {name: getattr(LIGHT, name) for name in LIGHT.__slots__}
     values |= {"lane": "#FFFFFF", "panel": "#FFFFFF", "fold": "#F3F1EB"}
@@ -129,15 +151,22 @@ def _print(flow: Flow, path: Path, ledger: Ledger, look: Look) -> None:
     writer.setResolution(_DPI)
     writer.setTitle(report_title(ledger))
     writer.setCreator("Spin Ledger")
-    painter = QPainter(writer)
+    _paint_pages(flow, writer, ledger, look)
+
+
+def _paint_pages(
+    flow: Flow, device: QPagedPaintDevice, ledger: Ledger, look: Look
+) -> None:
+    painter = QPainter(device)
     if not painter.isActive():
         raise OSError(0, "no page could be begun")
     pages = flow.pages()
     for number, page in enumerate(pages, start=1):
         if number > 1:
-            writer.newPage()
+            device.newPage()
         painter.resetTransform()
-        painter.scale(_DPI / _CSS_DPI, _DPI / _CSS_DPI)
+        per_px = device.logicalDpiX() / _CSS_DPI
+        painter.scale(per_px, per_px)
         ink = Ink(painter, look)
         ink.columns_per_px = _COLUMNS_PER_PX
         for block, y in page:

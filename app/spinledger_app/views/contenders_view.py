@@ -3,7 +3,13 @@
 from __future__ import annotations
 
 from PySide6.QtCore import QRectF, QSize, Qt, Signal
-from PySide6.QtGui import QKeyEvent, QMouseEvent, QPainter, QPaintEvent
+from PySide6.QtGui import (
+    QKeyEvent,
+    QMouseEvent,
+    QPainter,
+    QPaintEvent,
+    QResizeEvent,
+)
 from PySide6.QtWidgets import QSizePolicy, QVBoxLayout, QWidget
 
 from spinledger_app.painting.ink import (
@@ -20,7 +26,7 @@ from spinledger_app.presenters.contenders import CardText, ContendersText
 from spinledger_app.presenters.structure import Drawing, fitted
 from spinledger_app.presenters.wording import say
 from spinledger_app.theme import Look
-from spinledger_app.views.controls import OverlayScroll
+from spinledger_app.views.controls import OverlayScroll, TextLink
 
 _MARGIN = 16
 _HEAD_PX = 40
@@ -108,6 +114,7 @@ class ContendersView(QWidget):
     """Heading over a column of cards."""
 
     card_activated = Signal(str)
+    add_wanted = Signal()
 
     def __init__(self, look: Look, parent: QWidget | None = None) -> None:
         super().__init__(parent)
@@ -115,7 +122,26 @@ class ContendersView(QWidget):
         self.cards: list[Card] = []
         self._text = ContendersText(remark="", cards=())
         self._column = QVBoxLayout()
+        self.add = TextLink(look, say("Add…"), self)
+        self.add.setToolTip(say("Test another structure beside the claimed one"))
+        self.add.clicked.connect(lambda _=False: self.add_wanted.emit())
+        self.add.hide()
         self._build()
+
+    def show_can_add(self, can_add: bool) -> None:
+        """Offer to add a contender, once there is a structure."""
+        self.add.setVisible(can_add)
+        self.update()
+
+    def resizeEvent(self, event: QResizeEvent) -> None:
+        """Keep the link at the right of the heading."""
+        self._place_link()
+        super().resizeEvent(event)
+
+    def _place_link(self) -> None:
+        hint = self.add.sizeHint()
+        left = self.width() - _MARGIN - hint.width()
+        self.add.setGeometry(left, self.look.px(8), hint.width(), hint.height())
 
     def _build(self) -> None:
         self.setMinimumSize(self.look.px(240), self.look.px(120))
@@ -159,6 +185,7 @@ class ContendersView(QWidget):
         """Take the look's text size again."""
         self._outer.setContentsMargins(0, self.look.px(_HEAD_PX), 0, 0)
         self.setMinimumSize(self.look.px(240), self.look.px(120))
+        self._place_link()
 
     def sizeHint(self) -> QSize:
         """Room for three cards."""
@@ -170,9 +197,12 @@ class ContendersView(QWidget):
         ink = Ink(painter, self.look, self)
         px = self.look.px
         ink.fill(QRectF(self.rect()), "panel")
-        ink.text(_MARGIN, px(25), say("Contenders"), STRONG)
-        right = self.width() - _MARGIN
-        ink.text(right, px(25), self._text.remark, SECOND, align="right")
+        name = ink.text(_MARGIN, px(25), say("Contenders"), STRONG)
+        right = self.add.x() - 12 if self.add.isVisible() else self.width() - _MARGIN
+        room = right - _MARGIN - name - 12
+        ink.text(
+            right, px(25), self._text.remark, SECOND, align="right", max_width=room
+        )
         if not self._text.cards:
             width = self.width() - 2 * _MARGIN
             ink.wrapped(_MARGIN, px(52), width, self._text.sentence, SECOND)

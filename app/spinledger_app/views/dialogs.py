@@ -35,6 +35,7 @@ from spinledger_app.presenters.wording import say
 from spinledger_app.theme import Look
 
 _MOST_LISTED = 400
+_MOST_DIGITS = 5
 _PACKAGES = (
     ("PySide6_Essentials", "LGPL-3.0-only"),
     ("rdkit", "BSD-3-Clause"),
@@ -55,7 +56,7 @@ _FIXED_CAUTIONS = (
 )
 
 
-class _Dialog(QDialog):
+class BenchDialog(QDialog):
     """Column with a title, a body and buttons."""
 
     def __init__(self, look: Look, title: str, parent: QWidget | None) -> None:
@@ -83,7 +84,7 @@ class _Dialog(QDialog):
         return box
 
 
-class _AskDialog(_Dialog):
+class _AskDialog(BenchDialog):
     """One field."""
 
     def __init__(
@@ -123,9 +124,21 @@ def ask_number(
         return None
 
 
+def ask_whole(
+    look: Look, parent: QWidget, title: str, words: str, text: str
+) -> int | None:
+    """Ask for a whole number: -1 for an empty field, None when it was cancelled."""
+    given = ask_text(look, parent, title, words, text)
+    if given is None:
+        return None
+    if not given:
+        return -1
+    return int(given) if given.isdecimal() and len(given) < _MOST_DIGITS else None
+
+
 def ask_solvent(look: Look, parent: QWidget, evidence: Evidence) -> str | None:
     """Ask for the solvent: its name, "" for what the spectrum shows, or None."""
-    dialog = _Dialog(look, say("Solvent"), parent)
+    dialog = BenchDialog(look, say("Solvent"), parent)
     seen = evidence.solvent_seen or say("nothing clear")
     header = evidence.solvent_header or say("nothing")
     words = QLabel(
@@ -148,7 +161,7 @@ def ask_solvent(look: Look, parent: QWidget, evidence: Evidence) -> str | None:
     return str(choice.currentData()) if dialog.exec() else None
 
 
-class SampleDialog(_Dialog):
+class SampleDialog(BenchDialog):
     """What the label of the tube says."""
 
     _NAMES = ("name", "batch", "submitted_by", "laboratory", "prepared", "remark")
@@ -181,7 +194,7 @@ class SampleDialog(_Dialog):
         return Sample(**values, sign_offs=self._sample.sign_offs)
 
 
-class ReportDialog(_Dialog):
+class ReportDialog(BenchDialog):
     """Folder and formats of a report."""
 
     _FORMATS = (
@@ -238,7 +251,7 @@ class ReportDialog(_Dialog):
         return (*chosen, "json")
 
 
-class RecipeDialog(_Dialog):
+class RecipeDialog(BenchDialog):
     """A processing step that is changed by hand."""
 
     can_change = True
@@ -348,7 +361,7 @@ def _hertz(least: float) -> QDoubleSpinBox:
     return box
 
 
-class FileListDialog(_Dialog):
+class FileListDialog(BenchDialog):
     """The files of a place that could not be read."""
 
     def __init__(self, look: Look, place: Path, parent: QWidget) -> None:
@@ -375,7 +388,7 @@ def _listing(place: Path) -> list[str]:
     return lines or [say("The folder is empty.")]
 
 
-class KeysDialog(_Dialog):
+class KeysDialog(BenchDialog):
     """Keys and gestures in one table."""
 
     def __init__(self, look: Look, parent: QWidget) -> None:
@@ -413,7 +426,7 @@ def _keys_html() -> str:
     return f"<table>{cells}</table>"
 
 
-class AboutDialog(_Dialog):
+class AboutDialog(BenchDialog):
     """What this is, its cautions and the licences of its parts."""
 
     def __init__(self, look: Look, cautions: tuple[str, ...], parent: QWidget) -> None:

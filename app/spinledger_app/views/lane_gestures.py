@@ -11,6 +11,7 @@ from PySide6.QtGui import QKeyEvent, QMouseEvent, QPen, QWheelEvent
 from spinledger_app.lanes.layout import DEFAULT_SHARES
 from spinledger_app.lanes.targets import NOTHING, Target
 from spinledger_app.painting.ink import Ink
+from spinledger_app.presenters.line_list import ruler_text
 from spinledger_app.presenters.wording import number, say
 
 if TYPE_CHECKING:
@@ -261,6 +262,8 @@ class LaneGestures:
     def paint(self, ink: Ink) -> None:
         """Ring and flag of what is dragged."""
         view, drag = self._view, self._drag
+        if drag.manner == "region":
+            self._paint_ruler(ink)
         if drag.value is None or view.map is None:
             return
         layout = view.layout_now
@@ -279,6 +282,18 @@ class LaneGestures:
             text = say("J {0} Hz").replace("{0}", number(drag.value, 2))
             ink.vline(round(x), layout.seam, layout.soil, "accent")
             view.paint_flag(ink, x, drag.last.y() - 30, text)
+
+    def _paint_ruler(self, ink: Ink) -> None:
+        """Distance between the two ends of the region that is being marked."""
+        view = self._view
+        if view.region_ppm is None or view.scene is None or view.map is None:
+            return
+        low, high = view.region_ppm
+        ends = [x for x in (view.map.x_of(high), view.map.x_of(low)) if x is not None]
+        if ends:
+            text = ruler_text(low, high, view.scene.frequency_mhz)
+            y = view.layout_now.evidence_top + ink.look.px(52)
+            view.paint_flag(ink, sum(ends) / len(ends), y, text)
 
     # -- wheel and keys ----------------------------------------------------------
 

@@ -31,6 +31,7 @@ from spinledger_app.views.evidence_empty import EvidenceEmpty
 from spinledger_app.views.lanes_view import LanesView
 from spinledger_app.views.ledger_view import LedgerView
 from spinledger_app.views.menu_row import MenuRow
+from spinledger_app.views.rail import LeftColumn
 from spinledger_app.views.recipe_view import RecipeView
 from spinledger_app.views.ribbon_view import RibbonView
 from spinledger_app.views.status_row import StatusRow
@@ -105,7 +106,12 @@ class MainWindow(QMainWindow):
         self.left.setStretchFactor(0, 1)
         self.left.setStretchFactor(1, 0)
         self.panels = BenchSplitter(self.look, Qt.Orientation.Horizontal)
-        for widget, stretch in ((self.left, 0), (centre, 1), (self.ledger, 0)):
+        self.left_column = LeftColumn(self.look, self.left)
+        self.left_column.rail.opened.connect(
+            lambda: self.action_wanted.emit("left_panels")
+        )
+        sides = ((self.left_column, 0), (centre, 1), (self.ledger, 0))
+        for widget, stretch in sides:
             self.panels.addWidget(widget)
             self.panels.setStretchFactor(self.panels.count() - 1, stretch)
         whole = QWidget()
@@ -198,7 +204,7 @@ class MainWindow(QMainWindow):
         app.setStyleSheet(style_sheet(self.look))
         for strip in (self.menu_row, self.recipe, self.ribbon, self.status):
             strip.retune()
-        for panel in (self.sketch, self.contenders):
+        for panel in (self.sketch, self.contenders, self.left_column):
             panel.retune()
         for child in self.findChildren(QWidget):
             child.updateGeometry()
@@ -211,6 +217,24 @@ class MainWindow(QMainWindow):
     def _note_hand(self, _position: int, _index: int) -> None:
         self._is_sized_by_hand = True
         self.ring.refresh()
+
+    def fold_left(self, is_folded: bool) -> None:
+        """Fold the left panels to a rail, or open them again."""
+        self.left_column.set_folded(is_folded)
+        self._size_panels(force=True)
+
+    @property
+    def sizes_by_hand(self) -> tuple[list[int], list[int]] | None:
+        """Widths of the panels and heights at the left; None for the default."""
+        if not self._is_sized_by_hand:
+            return None
+        return self.panels.sizes(), self.left.sizes()
+
+    def take_sizes(self, across: list[int], down: list[int]) -> None:
+        """Sizes that were set by hand before."""
+        self._is_sized_by_hand = True
+        self.panels.setSizes(across)
+        self.left.setSizes(down)
 
     def reset_sizes(self) -> None:
         """Panels at their default sizes."""
@@ -227,6 +251,8 @@ class MainWindow(QMainWindow):
         self.recipe.gutter = self.ribbon.gutter = gutter
         self.lanes.is_wide = self.lanes_empty.is_wide = is_wide
         left = px(_WIDE_LEFT_PX if is_wide else _LEFT_PX)
+        if self.left_column.is_folded:
+            left = self.left_column.rail.width()
         right = px(_WIDE_RIGHT_PX if is_wide else _RIGHT_PX)
         contenders = px(_WIDE_CONTENDERS_PX if is_wide else _CONTENDERS_PX)
         if not self._has_structure:
