@@ -97,7 +97,7 @@ def reconcile(
     report("testing contenders", 0.5)
     contenders, tested = _contenders(own, bench, limits, report)
     report("weighing further measurements", 0.95)
-    advice = () if chosen.quick else advise(own, tested, limits)
+    advice = () if chosen.quick else advise(own, tested, limits, options=chosen)
     geometry = _geometry(own, chosen, limits)
     ledger = ledger_of(own, contenders, advice=advice, options=chosen)
     return replace(ledger, geometry=geometry)

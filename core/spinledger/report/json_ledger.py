@@ -287,6 +287,8 @@ def _advice(advice: Advice) -> dict[str, Any]:
         "measurement": advice.measurement,
         "expected_discrimination": finite(advice.expected_discrimination),
         "look_for": advice.look_for,
+        "expected_log_odds": finite(advice.expected_log_odds),
+        "against": list(advice.against),
     }
 
 

@@ -109,11 +109,27 @@ class Contender:
 
 @dataclass(frozen=True, slots=True, kw_only=True)
 class Advice:
-    """A further measurement, what it would separate and what to look for."""
+    """A further measurement, what it would separate and what to look for.
+
+    Attributes
+    ----------
+    measurement : str
+    expected_discrimination : float
+        In sd: the square root of twice the expected log odds.
+    look_for : str
+        One sentence.
+    expected_log_odds : float
+        Natural, mean over the contenders it is meant for.
+    against : tuple of str
+        SMILES of the contenders that it separates; empty where it settles a
+        point of the ledger itself.
+    """
 
     measurement: str
     expected_discrimination: float
     look_for: str
+    expected_log_odds: float = 0.0
+    against: tuple[str, ...] = ()
 
 
 @dataclass(frozen=True, slots=True, kw_only=True)
