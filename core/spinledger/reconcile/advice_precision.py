@@ -115,8 +115,7 @@ def _slopes(
         shape = half / np.pi / bottom
         steep = 2.0 * gap * half / np.pi / bottom**2
         model[rows] += protons[k] * shape
-        columns = np.flatnonzero(d_frequency[k]) if d_frequency[k].any() else []
-        for column in columns:
+        for column in np.flatnonzero(d_frequency[k]):
             slopes[rows, column] += protons[k] * d_frequency[k, column] * steep
         for column in np.flatnonzero(d_protons[k]):
             slopes[rows, column] += d_protons[k, column] * shape

@@ -88,7 +88,7 @@ class View:
     def splittings(self) -> dict[int, dict[int, list[tuple[float, int]]]]:
         """|J| and number of spins by claim and partner claim (hetero: below 0)."""
         claims = self.evaluation.claims
-        first = {}
+        first: dict[int, int] = {}
         for number, particle in enumerate(claims.particles):
             if particle.claim is not None:
                 first.setdefault(particle.claim, number)
