@@ -236,6 +236,7 @@ def take(out: Path, scale: int) -> None:
             studio.parts.desk.view.take_theme(shot.theme)
             studio.parts.bench.selection.clear()
             studio.settle()
+            window.lanes.go_home()
             shot.show(studio)
             studio.settle()
             if shot.name != "empty":

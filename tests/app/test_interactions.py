@@ -9,7 +9,6 @@ import invented
 import pytest
 from PySide6.QtCore import QEvent, QPoint, QPointF, QSettings, Qt
 from PySide6.QtGui import QGuiApplication, QMouseEvent
-from PySide6.QtPrintSupport import QPrinter
 from PySide6.QtTest import QTest
 from PySide6.QtWidgets import QApplication
 from stage import put_on, settle, stage, take_down
@@ -145,15 +144,3 @@ def test_a_contender_is_added_and_dropped_by_hand(
     parts.desk.do("undo")
     parts.bench._timer.stop()
     assert len(parts.bench.project.options.contenders) == 1
-
-
-def test_the_report_is_printed(parts: Parts, tmp_path: Path) -> None:
-    put_on(parts, invented.ledger())
-    printer = QPrinter(QPrinter.PrinterMode.HighResolution)
-    printer.setOutputFormat(QPrinter.OutputFormat.PdfFormat)
-    printer.setOutputFileName(str(tmp_path / "printed.pdf"))
-    parts.desk.files.print_on(printer)
-    printed = (tmp_path / "printed.pdf").read_bytes()
-    assert printed.startswith(b"%PDF-")
-    assert len(printed) > 20_000
-    assert not parts.window.status.is_error

@@ -9,6 +9,7 @@ from pathlib import Path
 import pytest
 from PySide6.QtCore import QPoint, Qt
 from PySide6.QtGui import QGuiApplication
+from PySide6.QtPrintSupport import QPrinter
 from PySide6.QtWidgets import QWidget
 from pytestqt.qtbot import QtBot
 from stage import settle, stage, take_down
@@ -149,6 +150,11 @@ def test_report_and_pdf_are_written(qtbot: QtBot, parts: Parts, tmp_path: Path) 
     qtbot.waitUntil(lambda: len(written) == 1, timeout=PATIENCE_MS)
     parts.bench.write_pdf(tmp_path / "report.pdf")
     qtbot.waitUntil(lambda: len(written) == 2, timeout=PATIENCE_MS)
+    printer = QPrinter(QPrinter.PrinterMode.HighResolution)
+    printer.setOutputFormat(QPrinter.OutputFormat.PdfFormat)
+    printer.setOutputFileName(str(tmp_path / "printed.pdf"))
+    parts.desk.files.print_on(printer)
+    assert (tmp_path / "printed.pdf").stat().st_size > 20_000
     assert (tmp_path / "out" / "ledger.json").stat().st_size > 1000
     assert (tmp_path / "report.pdf").read_bytes().startswith(b"%PDF-")
 

@@ -11,6 +11,7 @@ from spinledger.project.edits import (
     SetReference,
 )
 from spinledger_app.handlers.context import Context
+from spinledger_app.handlers.phasing import PhaseHandlers
 from spinledger_app.presenters.wording import say
 from spinledger_app.views import dialogs
 from spinledger_app.views.line_list import LineListDialog
@@ -23,12 +24,13 @@ class ProcessHandlers:
         self.context = context
         self.window, self.bench = context.window, context.bench
         self.settings, self.look = context.settings, context.look
+        self.phasing = PhaseHandlers(context)
 
     def actions(self) -> dict[str, Callable[[], None]]:
         """Handlers by the names of the action table."""
         return {
             "solvent": self.solvent,
-            "phase": self.phase,
+            "phase": self.phasing.begin,
             "window": self.apodization,
             "automatic": self.automatic,
             "reference": self.reference,
@@ -47,21 +49,12 @@ class ProcessHandlers:
         if chosen is not None:
             self.bench.set_solvent(chosen or None)
 
-    def phase(self) -> None:
-        """Change the phase by hand."""
-        self._process(dialogs.PhaseDialog)
-
     def apodization(self) -> None:
         """Change the window of the FID."""
-        self._process(dialogs.WindowDialog)
-
-    def _process(
-        self, kind: type[dialogs.PhaseDialog] | type[dialogs.WindowDialog]
-    ) -> None:
         evidence = self.bench.project.evidence
         if evidence is None:
             return
-        dialog = kind(self.look, evidence.recipe, self.window)
+        dialog = dialogs.WindowDialog(self.look, evidence.recipe, self.window)
         if not dialog.can_change:
             self.window.status.show_message(
                 say("This spectrum came processed; there is no such step to change."),
@@ -151,7 +144,7 @@ class ProcessHandlers:
             return
         name = type(evidence.recipe.steps[step]).__name__
         handler = {
-            "Phase": self.phase,
+            "Phase": self.phasing.begin,
             "Apodize": self.apodization,
             "Reference": self.reference,
         }.get(name)

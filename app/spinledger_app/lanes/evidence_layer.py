@@ -21,6 +21,7 @@ from spinledger_app.painting.marks import paint_mark
 _POINTS_PER_COLUMN = 2.0
 _TEXT_GAP_PX = 3.0
 _EDGE_PX = 1.3
+_UNDER_BRACKET_PX = 6
 # Curves lower than this share of the tallest would be a flat dash.
 _LEAST_INTEGRAL = 0.02
 
@@ -136,7 +137,9 @@ def paint_evidence(  # noqa: PLR0913 - scene, place and three choices
         left, right = max(start, layout.left), min(end, layout.right)
         ink.hline(left, right, layout.baseline)
         ink.painter.save()
-        _clip(ink, shift_map, index, layout.evidence_top, layout.seam, layout)
+        # Numbers and triangles over the brackets stay free of tall lines.
+        top = layout.bracket + ink.look.px(_UNDER_BRACKET_PX)
+        _clip(ink, shift_map, index, top, layout.seam, layout)
         if scene.model is not None:
             modelled = curve(scene.model, shift_map, index, to_y, ratio)
             if modelled is not None:

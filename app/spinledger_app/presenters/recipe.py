@@ -11,13 +11,12 @@ from spinledger.values.recipe import (
     Baseline,
     FourierTransform,
     Phase,
-    Recipe,
     Reference,
     RemoveDelay,
     Step,
     ZeroFill,
 )
-from spinledger_app.presenters.wording import MINUS, chemical, number, say
+from spinledger_app.presenters.wording import chemical, number, say
 
 _KIBI = 1024
 
@@ -137,36 +136,3 @@ def _reference(step: Reference) -> str:
     if step.line_ppm is not None:
         return f"{chemical(step.by)} {number(step.line_ppm, 3)}"
     return say(step.by)
-
-
-def with_phase(recipe: Recipe, phase0_deg: float, phase1_deg: float) -> Recipe:
-    """Recipe with another phase, set by hand; the pivot stays.
-
-    Raises
-    ------
-    ValueError
-        If the recipe has no phase step.
-    """
-    steps: list[Step] = []
-    found = False
-    for step in recipe.steps:
-        if isinstance(step, Phase):
-            found = True
-            steps.append(
-                Phase(
-                    phase0_deg=phase0_deg,
-                    phase1_deg=phase1_deg,
-                    pivot=step.pivot,
-                    automatic=False,
-                )
-            )
-        else:
-            steps.append(step)
-    if not found:
-        raise ValueError("recipe: there is no phase step to change")
-    return Recipe(steps=tuple(steps))
-
-
-def degrees(value: float) -> str:
-    """Angle with its sign."""
-    return f"{number(value, 1)}°".replace("-", MINUS)

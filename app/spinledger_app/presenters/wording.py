@@ -71,6 +71,8 @@ def chemical(text: str) -> str:
 
     Words that are not plain formulae come back as they are.
     """
+    if "/" in text:
+        return "/".join(chemical(part) for part in text.split("/"))
     if text in _SOLVENT_NAMES:
         return _SOLVENT_NAMES[text]
     if re.fullmatch(r"(?:[A-Z][a-z]?\d*|\((?:[A-Z][a-z]?\d*)+\)\d*)+", text):

@@ -29,8 +29,7 @@ from spinledger import __version__
 from spinledger.processing.solvents import canonical_solvent, solvent_names
 from spinledger.project.document import Sample
 from spinledger.values.evidence import Evidence
-from spinledger.values.recipe import Apodize, Phase, Recipe, Step
-from spinledger_app.presenters.recipe import with_phase
+from spinledger.values.recipe import Apodize, Recipe, Step
 from spinledger_app.presenters.wording import say
 from spinledger_app.theme import Look
 
@@ -263,45 +262,6 @@ class RecipeDialog(BenchDialog):
     def what(self) -> str:
         """One phrase for the undo list."""
         raise NotImplementedError
-
-
-class PhaseDialog(RecipeDialog):
-    """Zero- and first-order phase."""
-
-    def __init__(self, look: Look, recipe: Recipe, parent: QWidget) -> None:
-        super().__init__(look, say("Phase by hand"), parent)
-        self._recipe = recipe
-        step = recipe.find(Phase)
-        self.can_change = isinstance(step, Phase)
-        form = QFormLayout()
-        self.phase0 = _degrees(step.phase0_deg if isinstance(step, Phase) else 0.0)
-        self.phase1 = _degrees(step.phase1_deg if isinstance(step, Phase) else 0.0)
-        form.addRow(say("Zero order"), self.phase0)
-        form.addRow(say("First order over the sweep"), self.phase1)
-        self.column.addLayout(form)
-        self.add_buttons(say("Process again"))
-
-    def recipe(self) -> Recipe:
-        """The recipe with the new phase."""
-        return with_phase(self._recipe, self.phase0.value(), self.phase1.value())
-
-    def what(self) -> str:
-        """One phrase for the undo list."""
-        return (
-            say("phase {0}°, {1}°")
-            .replace("{0}", f"{self.phase0.value():.1f}")
-            .replace("{1}", f"{self.phase1.value():.1f}")
-        )
-
-
-def _degrees(value: float) -> QDoubleSpinBox:
-    box = QDoubleSpinBox()
-    box.setRange(-3600.0, 3600.0)
-    box.setDecimals(1)
-    box.setSingleStep(0.5)
-    box.setSuffix("°")
-    box.setValue(value)
-    return box
 
 
 class WindowDialog(RecipeDialog):

@@ -2,6 +2,8 @@
 
 from __future__ import annotations
 
+from dataclasses import replace
+
 from PySide6.QtCore import QEvent, QPointF, QRectF, QSize, Qt, QTimer, Signal
 from PySide6.QtGui import (
     QKeyEvent,
@@ -27,7 +29,7 @@ from spinledger_app.lanes.evidence_layer import paint_brackets, paint_evidence
 from spinledger_app.lanes.grove import LARGE_LEAVES_FROM, Grove, plant
 from spinledger_app.lanes.layout import DEFAULT_SHARES, LaneLayout, lane_layout
 from spinledger_app.lanes.residue_layer import paint_residue, paint_residue_ticks
-from spinledger_app.lanes.scene import LaneScene, TreeShape
+from spinledger_app.lanes.scene import LaneScene, Trace, TreeShape
 from spinledger_app.lanes.shift_map import ShiftMap
 from spinledger_app.lanes.targets import NOTHING, Target, target_at
 from spinledger_app.painting.ink import SECOND, Face, Ink, label_width
@@ -82,6 +84,8 @@ class LanesView(QWidget):
         self.shows_integrals = True
         self.is_wide = False
         self.region_ppm: tuple[float, float] | None = None
+        self.trial: Trace | None = None
+        self.pivot_ppm: float | None = None
         self.cursor_x: float | None = None
         self.lit_fold: int | None = None
         self.lit_level: tuple[str, int] | None = None
@@ -132,6 +136,11 @@ class LanesView(QWidget):
         self._stop_easing()
         self.refresh()
         self.view_changed.emit()
+
+    def show_trial(self, trial: Trace | None, pivot_ppm: float | None) -> None:
+        """Show the measured trace as it would be; None shows it as it is."""
+        self.trial, self.pivot_ppm = trial, pivot_ppm
+        self.refresh()
 
     def show_marks(self, marks: Marks) -> None:
         """Show what is hovered, selected and chosen in any panel."""
@@ -356,6 +365,8 @@ class LanesView(QWidget):
     def _paint_lanes(
         self, ink: Ink, scene: LaneScene, shift_map: ShiftMap, layout: LaneLayout
     ) -> None:
+        if self.trial is not None:
+            scene = replace(scene, measured=self.trial, model=None, residue=None)
         paint_grid(ink, shift_map, layout)
         self._paint_selected_band(ink, scene, shift_map)
         if scene.residue is not None:
@@ -388,7 +399,11 @@ class LanesView(QWidget):
         claims.paint()
         self.handles = claims.handles
         self._paint_excluded(ink, scene, shift_map)
-        self._paint_waiting(ink, scene, layout)
+        if self.trial is None:
+            self._paint_waiting(ink, scene, layout)
+        pivot_x = None if self.pivot_ppm is None else shift_map.x_of(self.pivot_ppm)
+        if pivot_x is not None:
+            ink.vline(round(pivot_x), layout.evidence_top, layout.seam, "accent")
 
     def _paint_waiting(self, ink: Ink, scene: LaneScene, layout: LaneLayout) -> None:
         """Say what will stand in the lanes that are still empty."""

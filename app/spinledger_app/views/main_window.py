@@ -31,6 +31,7 @@ from spinledger_app.views.evidence_empty import EvidenceEmpty
 from spinledger_app.views.lanes_view import LanesView
 from spinledger_app.views.ledger_view import LedgerView
 from spinledger_app.views.menu_row import MenuRow
+from spinledger_app.views.phase_strip import PhaseStrip
 from spinledger_app.views.rail import LeftColumn
 from spinledger_app.views.recipe_view import RecipeView
 from spinledger_app.views.ribbon_view import RibbonView
@@ -76,6 +77,7 @@ class MainWindow(QMainWindow):
         self.ribbon = RibbonView(look)
         self.lanes = LanesView(look)
         self.lanes_empty = EvidenceEmpty(look)
+        self.phase_strip = PhaseStrip(look)
         self.ledger = LedgerView(look)
         self.status = StatusRow(look)
         self._is_wide: bool | None = None
@@ -99,6 +101,7 @@ class MainWindow(QMainWindow):
         column.setSpacing(0)
         column.addWidget(self.recipe)
         column.addWidget(self.ribbon)
+        column.addWidget(self.phase_strip)
         column.addWidget(self.middle, 1)
         self.left = BenchSplitter(self.look, Qt.Orientation.Vertical)
         self.left.addWidget(self.sketch)
@@ -202,7 +205,13 @@ class MainWindow(QMainWindow):
         app.setPalette(palette(self.look.tokens))
         app.setFont(self.look.font())
         app.setStyleSheet(style_sheet(self.look))
-        for strip in (self.menu_row, self.recipe, self.ribbon, self.status):
+        for strip in (
+            self.menu_row,
+            self.recipe,
+            self.ribbon,
+            self.phase_strip,
+            self.status,
+        ):
             strip.retune()
         for panel in (self.sketch, self.contenders, self.left_column):
             panel.retune()
