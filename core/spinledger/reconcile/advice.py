@@ -16,7 +16,6 @@ from spinledger.reconcile.advice_fields import (
     Simulator,
     field_finding,
     other_fields,
-    simulator,
 )
 from spinledger.reconcile.advice_pairs import (
     cosy_finding,
@@ -35,6 +34,8 @@ Named = tuple[str, Evaluation]
 Row = tuple[str, str, Finding]
 
 MOST_ADVICE = 6
+#: Contenders that are simulated at other fields; each costs five spectra.
+MOST_SIMULATED = 2
 LEAST_LOG_ODDS = 0.1
 #: Time, samples and machine: the same odds from a shake come first [common practice].
 EFFORT_LOG_ODDS = {
@@ -138,9 +139,9 @@ def _by_contacts(
 def _by_fields(
     view: View, rivals: Sequence[tuple[str, View]], limits: Limits
 ) -> Iterator[Row]:
-    own = simulator(view)
-    for name, rival in rivals:
-        theirs: Simulator = simulator(rival)
+    own = Simulator(view)
+    for name, rival in rivals[:MOST_SIMULATED]:
+        theirs = Simulator(rival)
         for field_mhz in other_fields(view.frequency_mhz):
             limits.checked()
             if limits.is_over():
@@ -188,7 +189,7 @@ def _for_weak_points(
     found = [
         _advice(measurement, finding.log_odds, finding.look_for, ())
         for measurement, finding in weak_points(
-            view, simulator(view), distances, limits
+            view, Simulator(view), distances, limits
         )
         if finding.log_odds > LEAST_LOG_ODDS
     ]

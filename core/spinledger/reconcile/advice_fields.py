@@ -2,8 +2,6 @@
 
 from __future__ import annotations
 
-from dataclasses import dataclass
-
 import numpy as np
 
 from spinledger.reconcile.advice_view import (
@@ -24,35 +22,42 @@ _LEAST_WIDTH_HZ = 1.0
 OVERLAPPED, APART = 0.3, 0.12
 
 
-@dataclass(frozen=True, slots=True, eq=False, kw_only=True)
 class Simulator:
-    """Spectra of one view at any field, with fitted shifts and couplings."""
+    """Spectra of one view at any field, with fitted shifts and couplings.
 
-    view: View
-    network: ClaimNetwork
+    Parameters
+    ----------
+    view : View
+    """
 
-    def lines(self, field_mhz: float) -> ClaimLineSet:
-        """Lines of all placed claims, Hz."""
+    def __init__(self, view: View) -> None:
+        self.view = view
+        self.network = ClaimNetwork(view.evaluation.claims)
+        self._known: dict[float, ClaimLineSet] = {}
+
+    def shifts_hz(self, field_mhz: float) -> FloatArray:
+        """Shift of every claim at a field; predicted where it has no place, Hz."""
         claims = self.view.evaluation.claims.claims
         shifts = np.array([one.shift_ppm for one in claims])
         for claim, place in self.view.all_places.items():
             shifts[claim] = place
-        shifts_hz, couplings = shifts * field_mhz, self.view.couplings_hz
-        plan = self.network.plan(
-            shifts_hz, couplings, without=self.view.gone, effort=QUICK_EFFORT
-        )
-        return self.network.lines(shifts_hz, couplings, plan=plan)
+        return shifts * field_mhz
+
+    def lines(self, field_mhz: float) -> ClaimLineSet:
+        """Lines of all placed claims at a field, Hz; each field is solved once."""
+        if field_mhz not in self._known:
+            shifts, couplings = self.shifts_hz(field_mhz), self.view.couplings_hz
+            plan = self.network.plan(
+                shifts, couplings, without=self.view.gone, effort=QUICK_EFFORT
+            )
+            self._known[field_mhz] = self.network.lines(shifts, couplings, plan=plan)
+        return self._known[field_mhz]
 
     @property
     def width_hz(self) -> float:
         """Median width of the fit, Hz."""
         widths = self.view.solution.best.refinement.widths_hz[list(self.view.places)]
         return max(float(np.median(widths)), _LEAST_WIDTH_HZ)
-
-
-def simulator(view: View) -> Simulator:
-    """Simulator of a view."""
-    return Simulator(view=view, network=ClaimNetwork(view.evaluation.claims))
 
 
 def other_fields(field_mhz: float) -> tuple[float, ...]:

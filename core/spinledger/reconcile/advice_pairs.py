@@ -16,21 +16,15 @@ from spinledger.reconcile.advice_view import (
     pattern_difference,
     pattern_words,
 )
+from spinledger.reconcile.side_costs import cosy_chance
 
 DIAGONAL_PPM = 0.08
-#: Chance of seeing a cross peak by the size of J [common practice].
-_COSY_CHANCES = ((3.0, 0.95), (1.5, 0.8), (0.5, 0.3), (0.0, 0.03))
 #: A second radio frequency takes this much with it, and disturbs this much.
 IRRADIATED_HZ = 10.0
 DISTURBED_HZ = 40.0
 LEAST_LOG_ODDS = 0.1
 #: A signal that goes after a shake with D2O, where one structure says so.
 _GOES, _STAYS = 0.95, 0.04
-
-
-def cosy_chance(j_hz: float) -> float:
-    """Chance that a coupling gives a COSY cross peak."""
-    return next(chance for limit, chance in _COSY_CHANCES if abs(j_hz) >= limit)
 
 
 def cosy_finding(own: View, other: View) -> Finding | None:

@@ -46,10 +46,7 @@ def coupling_sds_hz(
     """
     view = simulator.view
     claims = view.evaluation.claims
-    shifts = np.array([one.shift_ppm for one in claims.claims])
-    for claim, place in view.all_places.items():
-        shifts[claim] = place
-    shifts_hz = shifts * field_mhz
+    shifts_hz = simulator.shifts_hz(field_mhz)
     plan = simulator.network.plan(
         shifts_hz, view.couplings_hz, without=view.gone, effort=QUICK_EFFORT
     )

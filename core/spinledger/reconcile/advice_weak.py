@@ -23,7 +23,6 @@ from spinledger.reconcile.advice_fields import (
     other_fields,
     overlaps,
 )
-from spinledger.reconcile.advice_pairs import cosy_chance
 from spinledger.reconcile.advice_precision import coupling_sds_hz
 from spinledger.reconcile.advice_view import (
     Finding,
@@ -37,6 +36,7 @@ from spinledger.reconcile.noe import (
     contact_odds,
     contact_words,
 )
+from spinledger.reconcile.side_costs import cosy_chance
 from spinledger.reconcile.solve import Limits
 
 Named = tuple[str, Finding]

@@ -45,6 +45,8 @@ UNOWNED_CARBON_COST = 1.5
 MOST_HSQC_COST = 10.0
 
 COSY_REACH_PPM = 0.04
+#: Chance of seeing a cross peak by the size of J [common practice].
+COSY_CHANCES = ((3.0, 0.95), (1.5, 0.8), (0.5, 0.3), (0.0, 0.03))
 COSY_LEAST_HZ = 0.4
 COSY_STRONG_HZ = 4.0
 COSY_DIAGONAL_PPM = 0.1
@@ -334,6 +336,16 @@ def cosy_result(
             if _is_at(shifts_ppm, pair, peak.first_ppm, peak.second_ppm)
         ]
         listed.update(owners)
+        if owners:
+            largest = max(coupled[pair] for pair in owners)
+            doubt = float(np.log(COSY_CHANCES[0][1] / cosy_chance(largest)))
+            cost += doubt
+            if doubt > 1.0:
+                reasons.append(
+                    f"the COSY peak between {peak.first_ppm:.2f} and "
+                    f"{peak.second_ppm:.2f} ppm would need a coupling of only "
+                    f"{largest:.1f} Hz to show"
+                )
         if not owners:
             cost += UNOWNED_CROSS_PEAK_COST
             reasons.append(
@@ -354,6 +366,11 @@ def cosy_result(
         for a, b in missing
     ]
     return SideResult(cost=float(min(cost, MOST_COSY_COST)), reasons=tuple(reasons))
+
+
+def cosy_chance(j_hz: float) -> float:
+    """Chance that a coupling gives a COSY cross peak."""
+    return next(chance for limit, chance in COSY_CHANCES if abs(j_hz) >= limit)
 
 
 def _coupled_pairs(

@@ -13,7 +13,7 @@ from scipy.stats import cauchy
 from spinledger.errors import CancelledError
 from spinledger.prediction.claims import make_claims as claims_of_structure
 from spinledger.reconcile.advice import advise
-from spinledger.reconcile.advice_fields import other_fields, overlaps, simulator
+from spinledger.reconcile.advice_fields import Simulator, other_fields, overlaps
 from spinledger.reconcile.advice_pairs import (
     cosy_finding,
     decoupling_finding,
@@ -199,7 +199,7 @@ def test_contacts_tell_e_from_z() -> None:
 
 def test_overlap_of_two_lines_follows_the_field(make_claims: Claims) -> None:
     claims = make_claims([("1-H", 2.00, 0.1, 1), ("2-H", 2.01, 0.1, 1)])
-    found = simulator(view(claims, width_hz=3.0))
+    found = Simulator(view(claims, width_hz=3.0))
     for field in (300.0, 800.0):
         gap_hz, half_hz = 0.01 * field, 1.5
         expected = 2 * cauchy(scale=half_hz).cdf(-gap_hz / 2)
@@ -216,7 +216,7 @@ def test_precision_of_a_doublet_is_the_bound_in_closed_form(
         claims, couplings=tuple(replace(c, j_sd_hz=1e6) for c in claims.couplings)
     )
     found = coupling_sds_hz(
-        simulator(view(claims, width_hz=2.0)), 400.0, noise_per_hz=noise
+        Simulator(view(claims, width_hz=2.0)), 400.0, noise_per_hz=noise
     )
     # The integral of a squared Lorentzian's slope is 1 / (4 pi h^3) for unit area;
     # four lines of half a proton move by half of a change of J.

@@ -7,13 +7,17 @@ import numpy as np
 import pytest
 from rdkit import Chem
 
+from shared_data import shared
+from spinledger.detection.evidence import gather_evidence
+from spinledger.io.read import read_acquired
+from spinledger.reconcile.evaluate import evaluate, lay_out
 from spinledger.reconcile.exchange import best_order
 from spinledger.reconcile.match import match
 from spinledger.reconcile.options import Constraints, ReconcileOptions
 from spinledger.reconcile.run import reconcile
 from spinledger.reconcile.side_costs import carbon_result, expected_carbons
 from spinledger.reconcile.side_reading import read_side_evidence
-from spinledger.reconcile.solve import solve
+from spinledger.reconcile.solve import FINISH_QUICK, Limits, solve
 from spinledger.structure.read import read_structure
 from spinledger.values.claim import ClaimSet
 from spinledger.values.evidence import Evidence, Signal
@@ -182,3 +186,25 @@ def test_agreement_changes_nothing_and_disagreement_lowers_the_verdict(
         assert told.verdict.probability == pytest.approx(
             plain.verdict.probability, abs=1e-9
         )
+
+
+def test_cosy_pairs_refuse_an_isomer_that_the_proton_spectrum_leaves_open() -> None:
+    # Aspirin in CDCl3: neighbours in the ring by the published assignment, 6-H 8.04,
+    # 5-H 7.28, 4-H 7.53, 3-H 7.07 ppm. The meta isomer has a proton without a
+    # neighbour, so that one listed pair must run over four bonds.
+    evidence = gather_evidence(read_acquired(shared("acquired", "jc_aspirin")))
+    limits = Limits(max_refined=2, finish=FINISH_QUICK)
+    edits = given("COSY: 8.04-7.28, 7.28-7.53, 7.53-7.07")
+    ortho, meta = "CC(=O)Oc1ccccc1C(=O)O", "CC(=O)Oc1cccc(C(=O)O)c1"
+
+    def logit(smiles: str, constraints: Constraints) -> float:
+        options = ReconcileOptions(quick=True, constraints=constraints)
+        found = evaluate(read_structure(smiles), lay_out(evidence, options), limits)
+        assert found.logit is not None
+        return found.logit
+
+    plain = [logit(one, Constraints()) for one in (ortho, meta)]
+    told = [logit(one, edits) for one in (ortho, meta)]
+    assert told[0] == pytest.approx(plain[0], abs=0.2)
+    # At least odds of two to one more against the isomer than the spectrum alone.
+    assert told[1] < plain[1] - np.log(2.0)
