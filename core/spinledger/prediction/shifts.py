@@ -18,6 +18,7 @@ from spinledger.prediction.shifts_features import Surroundings, feature_matrix
 from spinledger.prediction.shifts_increments import fragment_counts
 from spinledger.prediction.shifts_model import ShiftModel, boosted, load_model
 from spinledger.prediction.shifts_network import network_inputs
+from spinledger.prediction.shifts_solvents import solvent_differences_ppm
 from spinledger.prediction.shifts_spheres import (
     Lookup,
     coarse_codes,
@@ -123,6 +124,7 @@ def predict_shifts(
     )
     stacked = np.column_stack([counted, base.columns]).astype(np.float32)
     means = _means(model, base, counted, stacked, classes)
+    means = means + np.array(solvent_differences_ppm(mol, chosen, solvent))
     scales = np.exp(boosted(model.scale, stacked)) * _widening(solvent)
     gaps = model.gap.predict(features)
     out = []

@@ -22,6 +22,7 @@ from spinledger.prediction.shifts_increments import (
 )
 from spinledger.prediction.shifts_network import Network
 from spinledger.prediction.shifts_reasons import known_environments
+from spinledger.prediction.shifts_solvents import solvent_differences_ppm
 from spinledger.prediction.shifts_spheres import coarse_codes, fine_codes, fit_table
 from spinledger.prediction.shifts_types import PROTON_CLASSES, atom_type, proton_class
 
@@ -309,3 +310,33 @@ def test_reasons_go_from_near_to_far() -> None:
     assert environments[1].fragment in ("C[CH2:1]O", "O[CH2:1]C", "[CH2:1](C)O")
     # An ester OCH2 of an ethyl group stands near 4.12 ppm (handbook).
     assert environments[-1].median_ppm == pytest.approx(4.15, abs=0.15)
+
+
+@pytest.mark.parametrize(
+    ("smiles", "atom", "solvent", "published_ppm"),
+    [
+        # Fulmer et al., Organometallics 29 (2010) 2176, table 1.
+        ("CCO", 1, "DMSO-d6", 3.44),
+        ("CC(C)O", 1, "DMSO-d6", 3.78),
+        ("CCO", 1, "acetone-d6", 3.57),
+        ("CCO", 1, "C6D6", 3.34),
+        ("CC(C)(C)OC", 4, "C6D6", 3.04),
+        # Menthol, H1 in DMSO-d6 (from memory): 3.15.
+        ("CC(C)[C@@H]1CC[C@@H](C)C[C@H]1O", 9, "DMSO-d6", 3.15),
+    ],
+)
+def test_solvents_move_shifts_as_published(
+    smiles: str, atom: int, solvent: str, published_ppm: float
+) -> None:
+    found = predicted(smiles, atom, solvent)
+    assert abs(found.shift_ppm - published_ppm) <= found.half_width_95_ppm
+    # And nearer than what is foretold for CDCl3.
+    apolar = predicted(smiles, atom, "CDCl3").shift_ppm
+    assert abs(found.shift_ppm - published_ppm) < abs(apolar - published_ppm)
+
+
+def test_unknown_solvents_move_nothing() -> None:
+    mol = Chem.MolFromSmiles("CCO")
+    assert solvent_differences_ppm(mol, [0, 1], None) == (0.0, 0.0)
+    assert solvent_differences_ppm(mol, [0, 1], "D2O") == (0.0, 0.0)
+    assert solvent_differences_ppm(mol, [1], "DMSO-d6") == (-0.24,)
