@@ -18,6 +18,7 @@ from spinledger.values.evidence import (
     Signal,
     Stray,
 )
+from spinledger.values.geometry import DihedralShare, Geometry
 from spinledger.values.ledger import (
     Advice,
     Balance,
@@ -28,6 +29,7 @@ from spinledger.values.ledger import (
     EntryGroup,
     Ledger,
     Model,
+    SideFinding,
     Verdict,
 )
 from spinledger.values.recipe import (
@@ -421,6 +423,38 @@ def invented_ledger() -> Ledger:
             ),
         ),
         cautions=("1'-HA and 1'-HB are diastereotopic but not resolved here.",),
+        side=(
+            SideFinding(
+                kind="COSY",
+                sentence="the COSY pairs agree",
+                cost=0.0,
+            ),
+        ),
+        geometry=Geometry(
+            n_conformers=12,
+            effective_share=0.9,
+            misfit_before=1.4,
+            misfit_after=0.3,
+            dihedrals=(
+                DihedralShare(
+                    first="2-HA",
+                    second="3-H",
+                    is_in_ring=False,
+                    j_hz=8.6,
+                    j_sd_hz=0.02,
+                    fitted_j_hz=8.5,
+                    anti_share=0.62,
+                    anti_share_sd=0.05,
+                    prior_anti_share=0.4,
+                    angle_deg=131.0,
+                    angle_sd_deg=55.0,
+                ),
+            ),
+            configurations=(),
+            sentences=(
+                "J(2-HA, 3-H) = 8.6 Hz: 62 ± 5 % antiperiplanar (force field 40 %)",
+            ),
+        ),
     )
 
 

@@ -6,6 +6,7 @@ Shifts in ppm, couplings in Hz.
 from __future__ import annotations
 
 from collections.abc import Callable, Mapping
+from dataclasses import replace
 from functools import partial
 
 from spinledger.project.document import Project
@@ -29,6 +30,7 @@ from spinledger.reconcile.options import (
     Pin,
     ReconcileOptions,
 )
+from spinledger.reconcile.side_reading import read_side_evidence
 
 Range = tuple[float, float]
 
@@ -115,8 +117,18 @@ def standing_constraints(project: Project) -> Constraints:
 
 
 def reconcile_options(project: Project) -> ReconcileOptions:
-    """Options of a reconciliation as the project asks for it."""
+    """Options of a reconciliation as the project asks for it.
+
+    Raises
+    ------
+    SideEvidenceError
+        If the side evidence cannot be understood.
+    """
     options = project.options
+    constraints = standing_constraints(project)
+    if options.side_text.strip():
+        side = read_side_evidence(options.side_text)
+        constraints = replace(constraints, side=side)
     return ReconcileOptions(
         ph=options.ph,
         temperature_k=options.temperature_k,
@@ -125,7 +137,7 @@ def reconcile_options(project: Project) -> ReconcileOptions:
         contenders=options.contenders,
         n_contenders=options.n_contenders,
         quick=options.is_quick,
-        constraints=standing_constraints(project),
+        constraints=constraints,
     )
 
 

@@ -39,6 +39,8 @@ class ProjectOptions:
     species, companions, contenders : tuple of Structure
         What else is claimed, what else may be in the tube, and what to test
         beside the claimed structure.
+    side_text : str
+        Carbon list, HSQC and COSY pairs as typed or pasted; empty for none.
     """
 
     solvent: str | None = None
@@ -50,6 +52,7 @@ class ProjectOptions:
     species: tuple[Structure, ...] = ()
     companions: tuple[Structure, ...] = ()
     contenders: tuple[Structure, ...] = ()
+    side_text: str = ""
 
 
 @dataclass(frozen=True, slots=True, kw_only=True)
@@ -373,6 +376,7 @@ def _difference(before: ProjectOptions, after: ProjectOptions) -> str:
         "species": "further species",
         "companions": "companions",
         "contenders": "contenders",
+        "side_text": "side evidence",
     }
     parts = [
         f"{word} {_in_words(getattr(after, name))}"

@@ -8,6 +8,7 @@ from typing import Any
 
 from spinledger.project.document import Project, SampleSpectrum
 from spinledger.values.claim import ClaimSet
+from spinledger.values.geometry import Geometry
 from spinledger.values.ledger import Entry, Ledger, Model
 
 _EDIT_FIELDS_WITH_LABELS = ("claim", "partner")
@@ -99,6 +100,7 @@ def relabel_ledger(ledger: Ledger, labels: Mapping[str, str]) -> Ledger:
         claims=_relabel_claims(ledger.claims, new),
         entries=tuple(_relabel_entry(entry, new) for entry in ledger.entries),
         model=_relabel_model(ledger.model, new),
+        geometry=_relabel_geometry(ledger.geometry, new),
     )
 
 
@@ -132,6 +134,18 @@ def _relabel_claims(claims: ClaimSet, new: Callable[[str], str]) -> ClaimSet:
         for claim in claims.claims
     )
     return replace(claims, claims=renamed)
+
+
+def _relabel_geometry(
+    geometry: Geometry | None, new: Callable[[str], str]
+) -> Geometry | None:
+    if geometry is None:
+        return None
+    renamed = tuple(
+        replace(one, first=new(one.first), second=new(one.second))
+        for one in geometry.dihedrals
+    )
+    return replace(geometry, dihedrals=renamed)
 
 
 def _relabel_entry(entry: Entry, new: Callable[[str], str]) -> Entry:

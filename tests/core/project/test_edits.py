@@ -5,6 +5,7 @@ from dataclasses import replace
 import pytest
 
 from invented_ledger import invented_fid, invented_ledger
+from spinledger.errors import SideEvidenceError
 from spinledger.project.constraints import reconcile_options, standing_constraints
 from spinledger.project.document import (
     Project,
@@ -263,3 +264,25 @@ def test_sample_fields_change_nothing_else() -> None:
     assert named.sample.name == "tube 7"
     assert not named.needs_ledger
     assert with_sample(named, named.sample) is named
+
+
+def test_side_evidence_of_the_options_reaches_the_reconciliation() -> None:
+    text = "carbons: 6\nCOSY: 4.19-1.23"
+    options = ProjectOptions(side_text=text)
+    project = with_options(open_project(), options, when=WHEN)
+    assert project.needs_ledger
+    assert "side evidence" in project.audit[-1].what
+    side = reconcile_options(project).constraints.side
+    assert side is not None
+    assert (len(side.carbons), len(side.cosy)) == (6, 1)
+    assert reconcile_options(open_project()).constraints.side is None
+    broken = with_options(open_project(), ProjectOptions(side_text="COSY 1"), when=WHEN)
+    with pytest.raises(SideEvidenceError, match="is no pair"):
+        reconcile_options(broken)
+
+
+def test_a_renamed_claim_is_renamed_in_the_geometry() -> None:
+    project = edited(RenameLabel(claim="2-HA", label="2-H(pro-R)"))
+    assert project.ledger is not None
+    assert project.ledger.geometry is not None
+    assert project.ledger.geometry.dihedrals[0].first == "2-H(pro-R)"
