@@ -1,10 +1,13 @@
 """Fits of made and acquired spectra; prints one JSON object.
 
-Run: ``python tests/benchmarks/fits.py [--draws N] [--starts N] [NAME ...]``.
+Run: ``python tests/benchmarks/fits.py [--draws N] [--made SYSTEM ...] [--starts N] [NAME ...]``.
 Acquired spectra are started from the published values, shifts +- 0.03 ppm and J
 +- 2 Hz; a fit succeeds if all shifts come within 0.004 ppm. Claims that may be
-exchanged without changing the model's spectrum may stand either way round, and
-claims under a recognised stray are not counted.
+exchanged without changing the model's spectrum may stand either way round, claims
+under a recognised stray are not counted, and a common offset of five or more
+published shifts is taken out. Some published values are no minimum of the spectrum
+they stand beside: a fit that starts on them leaves them by more than 0.004 ppm.
+These are named, and success is also given without them.
 """
 
 from __future__ import annotations
@@ -28,7 +31,13 @@ import numpy.typing as npt  # noqa: E402
 from rdkit import Chem  # noqa: E402
 
 from core.reconcile.refine_cases import made_evidence  # noqa: E402
-from core.reconcile.test_refine import ABX, AMX, RING, crb_sds  # noqa: E402
+from core.reconcile.test_refine import (  # noqa: E402
+    ABX,
+    AMX,
+    RING,
+    crb_sds,
+    efficient_estimator,
+)
 from core.spins.spin_cases import claim_set  # noqa: E402
 from shared_data import SHARED  # noqa: E402
 from spinledger.detection.evidence import gather_evidence  # noqa: E402
@@ -49,6 +58,7 @@ from spinledger.values.claim import (  # noqa: E402
     CouplingClaim,
     Particle,
 )
+from spinledger.values.evidence import Evidence  # noqa: E402
 
 Floats = npt.NDArray[np.float64]
 
@@ -57,6 +67,11 @@ CHAIN = claim_set(
     [([(k, k + 1)], 7.0 + 0.3 * k) for k in range(6)],
 )
 MADE = {"AMX": AMX, "ABX": ABX, "AA'BB'": RING, "chain of 7": CHAIN}
+
+# Lines of 1 Hz, five points each; an eighth of them Gauss, so that the share's
+# bound at 0 plays no part.
+STEP_HZ = 0.2
+GAUSS_SHARE = 0.125
 
 # The published set names one anomer of the two that are in the tube.
 LEFT_OUT = ("br_d-glucose_bmse000015",)
@@ -196,13 +211,20 @@ def couplings(
 class RealFit:
     """How one fit of an acquired spectrum ended."""
 
+    is_from_published: bool
+
     shift_errors_ppm: Floats
     coupling_errors_hz: Floats
     seconds: float
 
+    @property
+    def has_succeeded(self) -> bool:
+        """True if all shifts are the published ones."""
+        return bool(self.shift_errors_ppm.max(initial=0.0) <= 0.004)
+
 
 def real_fits(folder: Path, known: Published, n_starts: int) -> list[RealFit]:
-    """Fits of one spectrum from perturbed published values."""
+    """Fits of one spectrum: from the published values, then from perturbed ones."""
     evidence = gather_evidence(read_acquired(folder / "raw"))
     claims = known.claims
     shifts = np.array([c.shift_ppm for c in claims.claims])
@@ -220,10 +242,11 @@ def real_fits(folder: Path, known: Published, n_starts: int) -> list[RealFit]:
     seen = np.array([prepared.is_compared[spectrum.index_of_ppm(s)] for s in shifts])
     rng = np.random.default_rng(0)
     fits = []
-    for _ in range(n_starts):
+    for number in range(n_starts + 1):
+        scale = float(number > 0)
         start = Start(
-            shifts_ppm=shifts + rng.uniform(-0.03, 0.03, shifts.size),
-            couplings_hz=js + rng.uniform(-2.0, 2.0, js.size),
+            shifts_ppm=shifts + scale * rng.uniform(-0.03, 0.03, shifts.size),
+            couplings_hz=js + scale * rng.uniform(-2.0, 2.0, js.size),
         )
         perturbed = replace(
             claims,
@@ -241,7 +264,8 @@ def real_fits(folder: Path, known: Published, n_starts: int) -> list[RealFit]:
             prepared, perturbed, start, settings=FROM_AFAR, constraints=constraints
         )
         seconds = time.process_time() - began
-        fits.append(compared(result, claims, known.is_trusted, seen, seconds))
+        one = compared(result, claims, known.is_trusted, seen, seconds)
+        fits.append(replace(one, is_from_published=number == 0))
     return fits
 
 
@@ -265,42 +289,92 @@ def compared(
             for first, second in pair.couplings:
                 js[[first, second]] = js[[second, first]]
     counted = is_trusted & result.determined
+    errors = (shifts - true_shifts)[seen]
+    if errors.size >= 5:
+        errors -= np.median(errors)
     return RealFit(
-        np.abs(shifts - true_shifts)[seen],
+        False,
+        np.abs(errors),
         np.abs(np.abs(js) - np.abs(true_js))[counted],
         seconds,
     )
 
 
-def made_figures(n_draws: int) -> dict[str, float]:
-    """Scatter of J over the Cramer-Rao bound, and coverage of the intervals."""
+def one_made(claims: ClaimSet, snr: float, rng: np.random.Generator) -> Evidence:
+    """One made spectrum with noise."""
+    return made_evidence(
+        claims, snr=snr, rng=rng, step_hz=STEP_HZ, gauss_share=GAUSS_SHARE
+    )
+
+
+def made_figures(n_draws: int, names: list[str]) -> dict[str, float]:
+    """Scatter and bias of J over the Cramer-Rao bound, and coverage.
+
+    An ideal linear fit of the same noise is the measure: its scatter over the
+    draws stands for the bound and its mean error is taken off the bias, so that
+    200 draws tell both to about one per cent of the bound.
+    """
     ratios: list[float] = []
     inside: list[bool] = []
     biases: list[float] = []
-    for claims in MADE.values():
+    for claims in (MADE[name] for name in names):
         shifts = np.array([c.shift_ppm for c in claims.claims])
         js = np.array([c.j_hz for c in claims.couplings])
+        start = Start(shifts_ppm=shifts, couplings_hz=js)
+        estimator = efficient_estimator(claims, STEP_HZ, GAUSS_SHARE)
+        clean = one_made(claims, 1e12, np.random.default_rng(0))
         for snr in (20, 100, 500):
             rng = np.random.default_rng(snr)
-            found = []
+            found, ideal = [], []
             for _ in range(n_draws):
-                result = refine(
-                    made_evidence(claims, snr=snr, rng=rng),
-                    claims,
-                    Start(shifts_ppm=shifts, couplings_hz=js),
-                    settings=RefineSettings(second_thoughts=0),
-                )
-                found.append(result.couplings_hz)
-                z = np.abs(result.couplings_hz - js) / result.coupling_sds_hz
-                inside += (z < 1.96).tolist()
-            bound = crb_sds(claims, snr, 0.2)
-            ratios += (np.std(found, axis=0, ddof=1) / bound).tolist()
-            biases += (np.abs(np.mean(found, axis=0) - js) / bound).tolist()
+                evidence = one_made(claims, snr, rng)
+                noise = evidence.spectrum.intensities - clean.spectrum.intensities
+                settings = RefineSettings(second_thoughts=0)
+                result = refine(evidence, claims, start, settings=settings)
+                found.append(result.couplings_hz - js)
+                ideal.append(estimator @ noise)
+                inside += (np.abs(found[-1]) < 1.96 * result.coupling_sds_hz).tolist()
+            bound = crb_sds(claims, snr, STEP_HZ, GAUSS_SHARE)
+            ratios += (np.std(found, axis=0) / np.std(ideal, axis=0)).tolist()
+            gap = np.mean(found, axis=0) - np.mean(ideal, axis=0)
+            biases += (np.abs(gap) / bound).tolist()
     return {
         "crb_ratio_min": min(ratios),
         "crb_ratio_max": max(ratios),
-        "bias_over_crb_median": float(np.median(biases)),
+        "bias_over_crb_max": max(biases),
         "coverage_95": float(np.mean(inside)),
+        "made_intervals": len(inside),
+    }
+
+
+def real_figures(fits: dict[str, list[RealFit]]) -> dict[str, Any]:
+    """Success over all perturbed starts, and errors of the fits that succeeded."""
+    tried = {
+        name: [fit for fit in here if not fit.is_from_published]
+        for name, here in fits.items()
+    }
+    every = [fit for here in tried.values() for fit in here]
+    good = [fit for fit in every if fit.has_succeeded]
+    contradicted = [name for name, here in fits.items() if not here[0].has_succeeded]
+    agreed = [
+        fit for name, here in tried.items() if name not in contradicted for fit in here
+    ]
+    js = np.concatenate([fit.coupling_errors_hz for fit in good])
+    shifts = np.concatenate([fit.shift_errors_ppm for fit in good])
+    return {
+        "real_fits": len(every),
+        "real_success": len(good) / len(every),
+        "real_failed": {
+            name: sum(not fit.has_succeeded for fit in here)
+            for name, here in tried.items()
+            if not all(fit.has_succeeded for fit in here)
+        },
+        "real_contradicted": contradicted,
+        "real_success_without": float(np.mean([f.has_succeeded for f in agreed])),
+        "real_shift_median_ppm": float(np.median(shifts)),
+        "real_j_median_hz": float(np.median(js)),
+        "real_j_p90_hz": float(np.quantile(js, 0.9)),
+        "real_seconds_median": float(np.median([fit.seconds for fit in every])),
     }
 
 
@@ -309,39 +383,22 @@ def main() -> None:
     parser = argparse.ArgumentParser(description=__doc__)
     parser.add_argument("names", nargs="*")
     parser.add_argument("--draws", type=int, default=200)
+    parser.add_argument("--made", nargs="*", choices=list(MADE), default=list(MADE))
     parser.add_argument("--starts", type=int, default=5)
     options = parser.parse_args()
     figures: dict[str, Any] = {}
     if options.draws:
-        figures |= made_figures(options.draws)
-    fits: list[RealFit] = []
-    failed: dict[str, int] = {}
+        figures |= made_figures(options.draws, options.made)
+    fits: dict[str, list[RealFit]] = {}
     for folder in sorted((SHARED / "acquired").glob("br*")):
         wanted = not options.names or folder.name in options.names
         if not wanted or folder.name in LEFT_OUT:
             continue
         known = published(folder) if (folder / "truth.json").exists() else None
-        if known is None:
-            continue
-        here = real_fits(folder, known, options.starts)
-        fits += here
-        wrong = sum(fit.shift_errors_ppm.max(initial=0.0) > 0.004 for fit in here)
-        if wrong:
-            failed[folder.name] = int(wrong)
-    good = [f for f in fits if f.shift_errors_ppm.max(initial=0.0) <= 0.004]
-    if good:
-        js = np.concatenate([f.coupling_errors_hz for f in good])
-        figures |= {
-            "real_fits": len(fits),
-            "real_success": len(good) / len(fits),
-            "real_failed": failed,
-            "real_shift_median_ppm": float(
-                np.median(np.concatenate([f.shift_errors_ppm for f in good]))
-            ),
-            "real_j_median_hz": float(np.median(js)),
-            "real_j_p90_hz": float(np.quantile(js, 0.9)),
-            "real_seconds_median": float(np.median([f.seconds for f in fits])),
-        }
+        if known is not None and options.starts:
+            fits[folder.name] = real_fits(folder, known, options.starts)
+    if fits:
+        figures |= real_figures(fits)
     print(json.dumps(figures))
 
 

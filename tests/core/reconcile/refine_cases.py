@@ -31,10 +31,12 @@ def made_evidence(
     step_hz: float = 0.2,
     strays: tuple[Stray, ...] = (),
     areas: Floats | None = None,
+    width_ratios: Floats | None = None,
+    gauss_share: float = 0.0,
 ) -> Evidence:
-    """Lorentz lines of the claims' own parameters with white noise.
+    """Lines of the claims' own parameters with white noise.
 
-    The lines are summed one by one in the frequency domain, which is not the
+    They are Lorentz lines, or in part Gauss lines of the same full width, and are summed one by one in the frequency domain, which is not the
     way in which the fit draws them.
     """
     shifts = np.array([claim.shift_ppm for claim in claims.claims])
@@ -45,12 +47,19 @@ def made_evidence(
     lines = ClaimNetwork(claims).lines(shifts * frequency_mhz, couplings)
     scale = np.ones(len(claims.claims)) if areas is None else areas
     values = np.zeros(n_points)
-    half = width_hz / 2
+    halves = np.full(len(claims.claims), width_hz / 2)
+    if width_ratios is not None:
+        halves *= width_ratios
     for line, protons, claim in zip(
         lines.frequencies_hz, lines.protons, lines.claim, strict=True
     ):
-        apart = axis - line
-        values += scale[claim] * protons * half / np.pi / (apart**2 + half**2)
+        apart, half = axis - line, halves[claim]
+        shape = (1.0 - gauss_share) * half / np.pi / (apart**2 + half**2)
+        if gauss_share:
+            sharpness = np.log(2.0) / half**2
+            gauss = np.exp(-sharpness * apart**2)
+            shape += gauss_share * np.sqrt(sharpness / np.pi) * gauss
+        values += scale[claim] * protons * shape
     noise_sd = float(values.max()) / snr
     values += noise_sd * rng.normal(size=n_points)
     signals = []
