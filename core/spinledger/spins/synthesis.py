@@ -9,6 +9,7 @@ from __future__ import annotations
 
 import math
 from dataclasses import dataclass, replace
+from typing import Any
 
 import numpy as np
 import numpy.typing as npt
@@ -20,6 +21,7 @@ from spinledger.values.recipe import Apodize, Recipe
 from spinledger.values.spectrum import Spectrum
 
 Floats = npt.NDArray[np.float64]
+Singles = npt.NDArray[np.float32]
 Complexes = npt.NDArray[np.complex128]
 Integers = npt.NDArray[np.int64]
 
@@ -230,7 +232,7 @@ class Images:
     value: Floats
     by_log_width: Floats | None = None
     by_gauss_share: Floats | None = None
-    by_parameter: Floats | None = None
+    by_parameter: Singles | None = None
 
 
 @dataclass(frozen=True, slots=True, eq=False, kw_only=True)
@@ -288,28 +290,35 @@ def draw(
         signal = stretch.signal(lines.frequencies_hz, lines.protons[None])
         value = stretch.to_axis(signal * decay.value)
         return Images(start=stretch.start, value=value[0])
-    n_parameters = lines.d_frequency.shape[1]
-    columns = [lines.protons[None], lines.d_frequency.T * lines.protons]
-    if lines.d_protons is not None:
-        columns.append(lines.d_protons.T)
-    signal = stretch.signal(lines.frequencies_hz, np.vstack(columns))
-    own = [signal[0] * decay.value, signal[0] * decay.by_log_width]
+    signal = stretch.signal(lines.frequencies_hz, lines.protons[None])[0]
+    own = [signal * decay.value, signal * decay.by_log_width]
     if decay.by_gauss_share is not None:
-        own.append(signal[0] * decay.by_gauss_share)
-    # Up in frequency is back on a falling axis: exp(+2 pi i f t).
-    moved = signal[1 : 1 + n_parameters] * (
-        (2j * np.pi * stretch.times_s) * decay.value
-    )
-    if lines.d_protons is not None:
-        moved += signal[1 + n_parameters :] * decay.value
-    images = stretch.to_axis(np.vstack([*own, moved]))
+        own.append(signal * decay.by_gauss_share)
+    images = stretch.to_axis(np.vstack(own))
     return Images(
         start=stretch.start,
         value=images[0],
         by_log_width=images[1],
         by_gauss_share=images[2] if decay.by_gauss_share is not None else None,
-        by_parameter=images[len(own) :],
+        by_parameter=_by_parameter(lines, lines.d_frequency, stretch, decay.value),
     )
+
+
+def _by_parameter(
+    lines: LineList, d_frequency: Floats, stretch: _Stretch, decay: Complexes
+) -> Singles:
+    """Derivative images, (n_parameters, n); single precision is ample for them."""
+    n_parameters = d_frequency.shape[1]
+    columns = [d_frequency.T * lines.protons]
+    if lines.d_protons is not None:
+        columns.append(lines.d_protons.T)
+    signal = stretch.signal(lines.frequencies_hz, np.vstack(columns).astype(np.float32))
+    # Up in frequency is back on a falling axis: exp(+2 pi i f t).
+    moving = ((2j * np.pi * stretch.times_s) * decay).astype(np.complex64)
+    moved = signal[:n_parameters] * moving
+    if lines.d_protons is not None:
+        moved += signal[n_parameters:] * decay.astype(np.complex64)
+    return stretch.to_axis(moved)
 
 
 @dataclass(frozen=True, slots=True, eq=False)
@@ -350,18 +359,27 @@ class _Stretch:
         n_times = self.n_times
         return np.arange(n_times) / (self.n_points * self.axis.step_hz)
 
-    def signal(self, frequencies_hz: Floats, weights: Floats) -> Complexes:
-        """Time signals of lines without decay, shape (n_columns, n_times)."""
+    def signal(
+        self, frequencies_hz: Floats, weights: npt.NDArray[Any]
+    ) -> npt.NDArray[Any]:
+        """Time signals of lines without decay, shape (n_columns, n_times).
+
+        In the precision of the weights.
+        """
         places = (self.axis.first_hz - frequencies_hz) / self.axis.step_hz - self.start
         if places.size <= _MOST_DIRECT_LINES:
             turns = np.asarray((-2j * np.pi / self.n_points) * places)
             waves = _waves(turns, self.n_times)
+            is_single = weights.dtype == np.float32
+            kind = np.dtype(np.complex64 if is_single else np.complex128)
             # Real times complex: one real product over twice the columns.
-            parts = weights @ waves.view(np.float64)
-            return np.asarray(parts.view(np.complex128)[:, : self.n_times])
+            parts = weights @ waves.astype(kind, copy=False).view(weights.dtype)
+            return np.asarray(parts.view(kind)[:, : self.n_times])
         return self._signal_by_grid(places, weights)
 
-    def _signal_by_grid(self, places: Floats, weights: Floats) -> Complexes:
+    def _signal_by_grid(
+        self, places: Floats, weights: npt.NDArray[Any]
+    ) -> npt.NDArray[Any]:
         """Lines spread with a cubic B-spline on a grid twice as fine as needed.
 
         The spline's own transform is divided out; what folds back from beyond
@@ -379,10 +397,12 @@ class _Stretch:
         grid = np.bincount(
             cells.ravel(), weights=shares.ravel(), minlength=n_columns * n_fine
         ).reshape(n_columns, n_fine)
+        grid = grid.astype(weights.dtype, copy=False)
         signal = scipy.fft.rfft(grid, axis=1)[:, : self.n_times]
-        return np.asarray(signal / np.sinc(np.arange(self.n_times) / n_fine) ** 4)
+        smoothed = np.sinc(np.arange(self.n_times) / n_fine) ** -4
+        return np.asarray(signal * smoothed.astype(weights.dtype, copy=False))
 
-    def to_axis(self, signal: Complexes) -> Floats:
+    def to_axis(self, signal: npt.NDArray[Any]) -> npt.NDArray[Any]:
         """Real spectra per Hz, shape (n_rows, n_points)."""
         n_drawn = self.oversampling * self.n_points
         images = scipy.fft.irfft(signal, n=n_drawn, axis=1)[:, :: self.oversampling]
