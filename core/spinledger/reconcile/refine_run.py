@@ -41,6 +41,7 @@ from spinledger.reconcile.refine_values import (
     Stage,
     Start,
 )
+from spinledger.spins.clusters import FULL_EFFORT
 from spinledger.spins.network import ClaimNetwork
 from spinledger.spins.plan import Plan
 from spinledger.spins.synthesis import LineShape
@@ -138,8 +139,14 @@ class Run:
         """Solving plan; broad views need fewer lines."""
         effort = self.settings.effort
         if broadening_hz > 0.0:
+            # What a cut displaces is seen against the width of the line.
+            wider = 1.0 + 2.0 * broadening_hz
             effort = replace(
                 effort,
+                tolerance_hz=max(effort.tolerance_hz, wider * FULL_EFFORT.tolerance_hz),
+                flip_tolerance_hz=max(
+                    effort.flip_tolerance_hz, wider * FULL_EFFORT.flip_tolerance_hz
+                ),
                 bin_hz=max(effort.bin_hz, _BIN_SHARE * 2.0 * broadening_hz),
                 smallest=max(effort.smallest, 3e-4),
             )
@@ -267,8 +274,10 @@ class Run:
         kernel = self.prepared.evidence.kernel
         if kernel is not None:
             tries.append(_with_kernel(problem, descent, data, kernel=kernel))
+        # A few steps tell which shape is the better one.
+        few = min(_STEPS_PER_SHAPE, max_steps)
         fits = [
-            (descend(p, begin, max_steps=max_steps, budget=self.budget), p)
+            (descend(p, begin, max_steps=few, budget=self.budget), p)
             for p, begin in tries
         ]
         best, chosen = min(fits, key=lambda fit: fit[0].evaluation.cost)
@@ -283,7 +292,7 @@ class Run:
             best.evaluation.parameters,
             max_steps=max_steps,
             budget=self.budget,
-            small_gain=1e-5,
+            small_gain=_LAST_GAIN if chosen.exact_slopes else _LAST_ROUGH_GAIN,
         )
         return Fit(last, chosen)
 
@@ -336,6 +345,13 @@ def _with_reach(layout: Layout, broadening_hz: float) -> Layout:
     limits[: layout.shift_claims.size] = max(8.0, broadening_hz)
     return replace(layout, step_limits=limits)
 
+
+_STEPS_PER_SHAPE = 5
+
+# Relative gain at which the last descent ends: some hundredth of an sd away from
+# the minimum; frequencies alone do not lead as near.
+_LAST_GAIN = 1e-5
+_LAST_ROUGH_GAIN = 1e-4
 
 # About microseconds an evaluation; beyond, frequencies alone steer the fit.
 _MOST_SLOPE_COST = 10_000.0

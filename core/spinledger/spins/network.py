@@ -49,12 +49,17 @@ class ClaimLineSet:
     error_bound: float
 
 
+# A fit asks for the plan of its start at every stage.
+_MOST_CUT_PLANS = 16
+
+
 @dataclass(slots=True, eq=False)
 class _Memory:
     """Results that depend on the claims alone, kept while the network lives."""
 
     parts: dict[frozenset[int], tuple[SpinPart, ...]] = field(default_factory=dict)
     whole: dict[tuple[frozenset[int], Effort], Plan] = field(default_factory=dict)
+    cut: dict[tuple[frozenset[int], Effort, bytes], Plan] = field(default_factory=dict)
 
 
 class ClaimNetwork:
@@ -103,18 +108,21 @@ class ClaimNetwork:
         memory = self._memory
         if gone not in memory.parts:
             memory.parts[gone] = separate_parts(self.claims, gone)
-        known = memory.whole.get((without, effort))
+        shifts = np.asarray(shifts_hz, dtype=np.float64)
+        couplings = np.asarray(couplings_hz, dtype=np.float64)
+        place = (without, effort, shifts.tobytes() + couplings.tobytes())
+        known = memory.whole.get((without, effort)) or memory.cut.get(place)
         if known is not None:
             return known
         plan = make_plan(
-            memory.parts[gone],
-            np.asarray(shifts_hz, dtype=np.float64),
-            np.asarray(couplings_hz, dtype=np.float64),
-            without=without,
-            effort=effort,
+            memory.parts[gone], shifts, couplings, without=without, effort=effort
         )
         if not plan.is_cut:
             memory.whole[without, effort] = plan
+            return plan
+        if len(memory.cut) >= _MOST_CUT_PLANS:
+            del memory.cut[next(iter(memory.cut))]
+        memory.cut[place] = plan
         return plan
 
     def lines(
