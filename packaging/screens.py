@@ -58,7 +58,7 @@ class Studio:
         """Let events, layouts and deferred deletions run."""
         from PySide6.QtCore import QEvent
 
-        for _ in range(5):
+        for _ in range(9):
             self.app.processEvents()
             self.app.sendPostedEvents(None, QEvent.Type.DeferredDelete.value)
 

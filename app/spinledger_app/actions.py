@@ -88,7 +88,8 @@ def _edit() -> tuple[ActionText, ...]:
     menu = say("Edit")
     return (
         ActionText(name="undo", menu=menu, words=say("Undo"), keys="Ctrl+Z", needs="undo"),
-        ActionText(name="redo", menu=menu, words=say("Redo"), keys="Ctrl+Shift+Z|Ctrl+Y", needs="redo", ends_group=True),
+        ActionText(name="redo", menu=menu, words=say("Redo"), keys="Ctrl+Shift+Z|Ctrl+Y", needs="redo"),
+        ActionText(name="let_go", menu=menu, words=say("Let go"), keys="Esc", needs="spectrum", ends_group=True),
         ActionText(name="paste", menu=menu, words=say("Paste structure"), keys="Ctrl+V"),
         ActionText(name="open_structure", menu=menu, words=say("Open structure file…")),
         ActionText(name="type_structure", menu=menu, words=say("Type a SMILES…"), ends_group=True),
@@ -164,6 +165,8 @@ def _ledger() -> tuple[ActionText, ...]:
     return (
         ActionText(name="refine", menu=menu, words=say("Refine"), keys="R", needs="structure"),
         ActionText(name="cancel", menu=menu, words=say("Cancel"), keys="Ctrl+.", needs="busy", ends_group=True),
+        ActionText(name="what_if", menu=menu, words=say("What if the field were another…"), keys="W", needs="ledger"),
+        ActionText(name="no_overlay", menu=menu, words=say("Take the overlay away"), needs="spectrum", ends_group=True),
         ActionText(name="add_contender", menu=menu, words=say("Add a contender…"), needs="structure"),
         ActionText(name="n_contenders", menu=menu, words=say("Number of isomers to test…"), needs="structure", ends_group=True),
         ActionText(name="next_claim", menu=menu, words=say("Next claim"), keys="N", needs="ledger"),

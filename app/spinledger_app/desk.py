@@ -2,6 +2,7 @@
 
 from __future__ import annotations
 
+from collections.abc import Callable
 from pathlib import Path
 
 from PySide6.QtCore import QObject, QPointF, QTimer, Signal
@@ -14,6 +15,7 @@ from spinledger_app.handlers.claims import ClaimHandlers
 from spinledger_app.handlers.context import Context
 from spinledger_app.handlers.files import FileHandlers
 from spinledger_app.handlers.menus import MenuHandlers
+from spinledger_app.handlers.overlays import OverlayHandlers
 from spinledger_app.handlers.process import ProcessHandlers
 from spinledger_app.handlers.view import ViewHandlers
 from spinledger_app.lanes.targets import Target
@@ -80,19 +82,21 @@ class Desk(QObject):
         self.view = ViewHandlers(self.context)
         self.process = ProcessHandlers(self.context)
         self.claims = ClaimHandlers(self.context)
-        self.menus = MenuHandlers(self.context)
+        self.overlays = OverlayHandlers(self.context)
+        self.menus = MenuHandlers(self.context, self.overlays)
         self._handlers = {
             **self.files.actions(),
             **self.view.actions(),
             **self.process.actions(),
             **self.claims.actions(),
+            **self.overlays.actions(),
         }
-        # The panels follow the lanes in a turn of their own, so that no turn of
+        # The panels follow the lanes, each in a turn of its own, so that no turn of
         # the event loop lasts long.
+        self._steps: list[Callable[[], None]] = []
         self._later = QTimer(self)
-        self._later.setSingleShot(True)
         self._later.setInterval(0)
-        self._later.timeout.connect(self._show_panels)
+        self._later.timeout.connect(self._show_next)
         self._wire_bench()
         self._wire_window()
         self._wire_panels()
@@ -197,13 +201,20 @@ class Desk(QObject):
         self._show_view()
         self._show_title()
         self._show_abilities()
+        self._steps = [
+            self._show_structure,
+            self._show_ledger,
+            self._show_contenders,
+            lambda: self._show_marks(Marks(), self.bench.selection.marks),
+        ]
         self._later.start()
 
-    def _show_panels(self) -> None:
-        """Show the panels at both sides; the lanes were painted before."""
-        self._show_structure()
-        self._show_ledger()
-        self._show_marks(Marks(), self.bench.selection.marks)
+    def _show_next(self) -> None:
+        """Show the next of the panels; the lanes were painted before."""
+        if self._steps:
+            self._steps.pop(0)()
+        if not self._steps:
+            self._later.stop()
 
     def _show_structure(self) -> None:
         project, window, bench = self.bench.project, self.window, self.bench
@@ -225,15 +236,8 @@ class Desk(QObject):
     def _show_ledger(self) -> None:
         project, window = self.bench.project, self.window
         ledger = project.ledger
-        window.contenders.show_can_add(project.structure is not None)
         if ledger is None:
             window.ledger.show_empty()
-            words = (
-                contender_words.before_structure()
-                if project.structure is None
-                else contender_words.waiting()
-            )
-            window.contenders.show_contenders(words)
             return
         text = ledger_text(
             ledger,
@@ -242,6 +246,19 @@ class Desk(QObject):
             pinned=tuple(by_hand(project)),
         )
         window.ledger.show_ledger(text, row_actions(project))
+
+    def _show_contenders(self) -> None:
+        project, window = self.bench.project, self.window
+        ledger = project.ledger
+        window.contenders.show_can_add(project.structure is not None)
+        if ledger is None:
+            words = (
+                contender_words.before_structure()
+                if project.structure is None
+                else contender_words.waiting()
+            )
+            window.contenders.show_contenders(words)
+            return
         window.contenders.show_contenders(
             contender_words.contenders_text(ledger, is_tested=self.bench.is_full_tested)
         )

@@ -9,7 +9,7 @@ too, and must not load what it never runs.
 from __future__ import annotations
 
 from collections.abc import Callable, Sequence
-from dataclasses import dataclass
+from dataclasses import dataclass, replace
 from pathlib import Path
 from typing import TYPE_CHECKING
 
@@ -23,7 +23,11 @@ from spinledger.values.structure import Structure
 from spinledger_app.presenters.structure import Drawing
 
 if TYPE_CHECKING:
+    import numpy as np
+    import numpy.typing as npt
+
     from spinledger.report.context import ReportContext
+    from spinledger_app.presenters.what_if import WhatIf
 
 Progress = Callable[[str, float], None]
 Cancelled = Callable[[], bool]
@@ -146,6 +150,36 @@ def solve(
     return reconcile(
         evidence, structure, options=options, progress=progress, cancelled=cancelled
     )
+
+
+def claims_at_field(
+    _progress: Progress, _cancelled: Cancelled, asked: WhatIf, frequency_mhz: float
+) -> npt.NDArray[np.float64]:
+    """Spectrum of the claims at another field, on the spectrum's own axis."""
+    from spinledger_app.presenters.what_if import drawn_at
+
+    return drawn_at(asked, frequency_mhz)
+
+
+def model_of(
+    progress: Progress,
+    cancelled: Cancelled,
+    evidence: Evidence,
+    smiles: str,
+    options: ReconcileOptions,
+) -> npt.NDArray[np.float64]:
+    """Model of another structure on the same spectrum, quickly fitted."""
+    from spinledger.errors import StructureError
+    from spinledger.reconcile.options import Constraints
+    from spinledger.structure.read import read_structure
+
+    # The hand edits are those of the claimed structure, not of this one.
+    options = replace(options, quick=True, constraints=Constraints())
+    structure = read_structure(smiles)
+    ledger = solve(progress, cancelled, evidence, structure, options)
+    if ledger.model is None:
+        raise StructureError(smiles, "None of its claims could be put to a line.")
+    return ledger.model.intensities
 
 
 def write_report(

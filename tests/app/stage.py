@@ -31,7 +31,7 @@ def settle() -> None:
     """Let events, layouts and deferred deletions run."""
     app = QApplication.instance()
     assert app is not None
-    for _ in range(4):
+    for _ in range(9):
         app.processEvents()
         app.sendPostedEvents(None, QEvent.Type.DeferredDelete.value)
 

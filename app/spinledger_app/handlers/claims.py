@@ -47,6 +47,7 @@ class ClaimHandlers:
             "next_claim": self.next_claim,
             "previous_claim": self.previous_claim,
             "refine": self.refine,
+            "let_go": self.let_go,
             "add_contender": self.add_contender,
             "n_contenders": self.set_n_contenders,
             "cancel": self.cancel,
@@ -209,6 +210,19 @@ class ClaimHandlers:
     def refine(self) -> None:
         """Solve the ledger in full."""
         self.bench.refine()
+
+    def let_go(self) -> None:
+        """Let go of the last thing that was begun: a strip, a region, a choice."""
+        lanes = self.window.lanes
+        if self.window.phase_strip.isVisible():
+            self.window.phase_strip.given_up.emit()
+        elif lanes.overlay is not None or self.window.field_strip.isVisible():
+            self.window.field_strip.given_up.emit()
+        elif lanes.region_ppm is not None:
+            lanes.region_ppm = None
+            lanes.update()
+        else:
+            self.bench.selection.let_go()
 
     def add_contender(self) -> None:
         """Ask for another structure to test beside the claimed one."""

@@ -7,6 +7,7 @@ from PySide6.QtGui import QGuiApplication
 from PySide6.QtWidgets import QMenu
 
 from spinledger_app.handlers.context import Context
+from spinledger_app.handlers.overlays import OverlayHandlers
 from spinledger_app.lanes.targets import Target
 from spinledger_app.presenters.wording import say
 
@@ -20,8 +21,8 @@ _SKETCH = ("paste", "open_structure", "type_structure")
 class MenuHandlers:
     """Pops menus up; their entries are those of the action table."""
 
-    def __init__(self, context: Context) -> None:
-        self.context = context
+    def __init__(self, context: Context, overlays: OverlayHandlers) -> None:
+        self.context, self.overlays = context, overlays
         self.window, self.bench = context.window, context.bench
 
     def _pop_up(self, names: tuple[str, ...], place: QPoint) -> None:
@@ -59,6 +60,11 @@ class MenuHandlers:
         if smiles in added:
             drop = menu.addAction(say("Test it no longer"))
             drop.triggered.connect(lambda: self.bench.drop_contender(smiles))
+        lay = menu.addAction(say("Lay over the spectrum"))
+        ledger = self.bench.project.ledger
+        names = {} if ledger is None else {c.smiles: c.name for c in ledger.contenders}
+        name = names.get(smiles) or smiles
+        lay.triggered.connect(lambda: self.overlays.compare(smiles, name))
         copy = menu.addAction(say("Copy SMILES"))
         copy.triggered.connect(lambda: QGuiApplication.clipboard().setText(smiles))
         menu.popup(self.window.cursor().pos())

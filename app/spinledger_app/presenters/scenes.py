@@ -12,7 +12,7 @@ from spinledger.values.ledger import Ledger
 from spinledger_app.lanes.scene import LaneScene
 from spinledger_app.presenters.lanes import lane_scene
 
-_MOST_KEPT = 4
+_MOST_KEPT = 5
 
 _Ranges = tuple[tuple[float, float], ...]
 
@@ -56,6 +56,8 @@ class SceneStore:
                     and kept.ledger is ledger
                     and (kept.excluded_ppm == excluded_ppm)
                 ):
+                    self._kept.remove(kept)
+                    self._kept.insert(0, kept)  # the one used last goes last
                     return kept.scene
             measured = next(
                 (k.scene.measured for k in self._kept if k.evidence is evidence), None

@@ -28,6 +28,7 @@ from spinledger_app.lanes.claims_layer import BranchHandle, ClaimsPainter
 from spinledger_app.lanes.evidence_layer import paint_brackets, paint_evidence
 from spinledger_app.lanes.grove import LARGE_LEAVES_FROM, Grove, plant
 from spinledger_app.lanes.layout import DEFAULT_SHARES, LaneLayout, lane_layout
+from spinledger_app.lanes.overlay_layer import paint_overlay
 from spinledger_app.lanes.residue_layer import paint_residue, paint_residue_ticks
 from spinledger_app.lanes.scene import LaneScene, Trace, TreeShape
 from spinledger_app.lanes.shift_map import ShiftMap
@@ -86,6 +87,7 @@ class LanesView(QWidget):
         self.region_ppm: tuple[float, float] | None = None
         self.trial: Trace | None = None
         self.pivot_ppm: float | None = None
+        self.overlay: Trace | None = None
         self.cursor_x: float | None = None
         self.lit_fold: int | None = None
         self.lit_level: tuple[str, int] | None = None
@@ -141,6 +143,12 @@ class LanesView(QWidget):
         """Show the measured trace as it would be; None shows it as it is."""
         self.trial, self.pivot_ppm = trial, pivot_ppm
         self.refresh()
+
+    def show_overlay(self, overlay: Trace | None) -> None:
+        """Lay another spectrum over the evidence; None takes it away."""
+        if overlay is not self.overlay:
+            self.overlay = overlay
+            self.refresh()
 
     def show_marks(self, marks: Marks) -> None:
         """Show what is hovered, selected and chosen in any panel."""
@@ -382,6 +390,16 @@ class LanesView(QWidget):
             and not shift_map.is_folded
             and shift_map.px_per_hz(scene.frequency_mhz) < LARGE_LEAVES_FROM,
         )
+        if self.overlay is not None:
+            paint_overlay(
+                ink,
+                self.overlay,
+                scene,
+                shift_map,
+                layout,
+                gain=self.gain,
+                own_gains=self.has_own_gains,
+            )
         paint_folds(ink, shift_map, layout)
         paint_brackets(ink, scene, shift_map, layout)
         first = [m for m in (self.marks.selected,) if m is not None]

@@ -28,6 +28,7 @@ from spinledger_app.theme import Look, palette, style_sheet
 from spinledger_app.views.contenders_view import ContendersView
 from spinledger_app.views.controls import BenchSplitter, FocusRing
 from spinledger_app.views.evidence_empty import EvidenceEmpty
+from spinledger_app.views.field_strip import FieldStrip
 from spinledger_app.views.lanes_view import LanesView
 from spinledger_app.views.ledger_view import LedgerView
 from spinledger_app.views.menu_row import MenuRow
@@ -78,6 +79,7 @@ class MainWindow(QMainWindow):
         self.lanes = LanesView(look)
         self.lanes_empty = EvidenceEmpty(look)
         self.phase_strip = PhaseStrip(look)
+        self.field_strip = FieldStrip(look)
         self.ledger = LedgerView(look)
         self.status = StatusRow(look)
         self._is_wide: bool | None = None
@@ -102,6 +104,7 @@ class MainWindow(QMainWindow):
         column.addWidget(self.recipe)
         column.addWidget(self.ribbon)
         column.addWidget(self.phase_strip)
+        column.addWidget(self.field_strip)
         column.addWidget(self.middle, 1)
         self.left = BenchSplitter(self.look, Qt.Orientation.Vertical)
         self.left.addWidget(self.sketch)
@@ -210,6 +213,7 @@ class MainWindow(QMainWindow):
             self.recipe,
             self.ribbon,
             self.phase_strip,
+            self.field_strip,
             self.status,
         ):
             strip.retune()

@@ -1,0 +1,52 @@
+"""Another spectrum over the evidence: a contender's model, or the claims elsewhere."""
+
+from __future__ import annotations
+
+import numpy as np
+import numpy.typing as npt
+from PySide6.QtCore import QRectF, Qt
+from PySide6.QtGui import QPen
+
+from spinledger_app.lanes.evidence_layer import curve, stretch_gains
+from spinledger_app.lanes.layout import LaneLayout
+from spinledger_app.lanes.polygons import polygon
+from spinledger_app.lanes.scene import LaneScene, Trace
+from spinledger_app.lanes.shift_map import ShiftMap
+from spinledger_app.painting.ink import Ink
+
+
+def paint_overlay(  # noqa: PLR0913 - trace, place and two choices
+    ink: Ink,
+    trace: Trace,
+    scene: LaneScene,
+    shift_map: ShiftMap,
+    layout: LaneLayout,
+    *,
+    gain: float,
+    own_gains: bool,
+) -> None:
+    """Paint a trace in accent at the scale of the evidence."""
+    gains = stretch_gains(scene, shift_map, own_gains=own_gains)
+    height = layout.baseline - layout.curve_top
+    painter = ink.painter
+    for index in shift_map.visible():
+        unit = gains[index] * gain * height / scene.full_height
+
+        def to_y(
+            values: npt.NDArray[np.float64], unit: float = unit
+        ) -> npt.NDArray[np.float64]:
+            ys = layout.baseline - values * unit
+            return np.clip(ys, layout.evidence_top - 50, layout.baseline + 400)
+
+        start, end = shift_map.span(index)
+        left, right = max(start, layout.left), min(end, layout.right)
+        painter.save()
+        top, room = layout.bracket + 6, layout.seam - layout.bracket - 6
+        painter.setClipRect(
+            QRectF(left, top, right - left, room), Qt.ClipOperation.IntersectClip
+        )
+        drawn = curve(trace, shift_map, index, to_y, ink.columns_per_px)
+        if drawn is not None:
+            painter.setPen(QPen(ink.colour("accent"), 1.0))
+            painter.drawPolyline(polygon(drawn.upper_xs, drawn.upper_ys))
+        painter.restore()
