@@ -77,7 +77,11 @@ def main() -> None:
             rows.append(row_of(place, smiles, truth.get("solvent")))
         except SpinLedgerError as error:
             rows.append({"case": place.name, "error": str(error)})
-    decided = [one for one in rows if one.get("configurations")]
+    decided = [
+        one
+        for one in rows
+        if one.get("configurations") and one["state"] != "not reconciled"
+    ]
     print(
         json.dumps(
             {

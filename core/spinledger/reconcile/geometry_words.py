@@ -29,8 +29,8 @@ def _configuration_sentence(rows: Sequence[ConfigurationOdds]) -> str:
     drawn = next((one for one in rows if one.is_drawn), None)
     if odds < FAVOURED_ODDS:
         return (
-            f"the couplings do not decide between {_named(best)} and {_named(second)} "
-            f"(odds {odds:.1f} to 1)"
+            f"the couplings do not decide between {_named(best)} and {_named(second)}: "
+            f"odds {odds:.1f} to 1"
         )
     said = (
         f"the couplings favour {_named(best)} over {_named(second)} by "
@@ -44,7 +44,7 @@ def _configuration_sentence(rows: Sequence[ConfigurationOdds]) -> str:
 
 def _named(one: ConfigurationOdds) -> str:
     if one.is_drawn and one.name != "as drawn":
-        return f"{one.name}, as drawn,"
+        return f"{one.name} (as drawn)"
     if one.name == "as drawn":
         return "the drawn configuration"
     return one.name

@@ -12,6 +12,7 @@ from rdkit import Chem
 from spinledger.prediction.couplings.frame import Frame
 from spinledger.prediction.couplings.hla import vicinal_over_conformers_hz
 from spinledger.reconcile.coarse import FloatArray
+from spinledger.reconcile.entries import DISPUTED_MISFIT
 from spinledger.reconcile.reweighting import Reweighted, reweighted
 from spinledger.reconcile.solve import Solution
 from spinledger.structure.conformers import Ensemble
@@ -60,7 +61,7 @@ class MeasuredVicinal:
 def measured_vicinal(
     solution: Solution, mol: Chem.Mol, species: int
 ) -> tuple[MeasuredVicinal, ...]:
-    """Determined vicinal couplings of one species.
+    """Determined vicinal couplings of one species, of claims whose shape fits.
 
     Parameters
     ----------
@@ -71,7 +72,7 @@ def measured_vicinal(
     """
     claims = solution.claims
     refinement = solution.best.refinement
-    gone = solution.absent | solution.hidden
+    gone = solution.absent | solution.hidden | _misshapen(solution)
     found = []
     for index, coupling in enumerate(claims.couplings):
         first, second = (claims.particles[p].claim for p in coupling.pairs[0])
@@ -102,6 +103,15 @@ def measured_vicinal(
             )
         )
     return tuple(found)
+
+
+def _misshapen(solution: Solution) -> frozenset[int]:
+    """Claims whose shape is not that of their signal: their J mean nothing."""
+    return frozenset(
+        one.claim
+        for one in solution.best.assessment.claims
+        if one.residual_share > DISPUTED_MISFIT
+    )
 
 
 def vicinal_pairs(
