@@ -272,13 +272,14 @@ def score(case: Known) -> Score:
         ]
     )
     groups = _groups(case, 0.9 * width)
+    heights = _heights(case, np.array([group.centre for group in groups]))
     least = min(10.0, case.signal_to_noise) * 0.95
     known = recalled = 0
     errors = []
-    for group in groups:
+    for group, height in zip(groups, heights.tolist(), strict=True):
         miss = np.abs(np.clip(found, group.low, group.high) - found)
         hit = bool(found.size) and float(miss.min()) < 0.75 * width
-        if min(_height(case, group.centre), group.alone) < least:
+        if min(height, group.alone) < least:
             continue
         known += 1
         recalled += hit
@@ -341,13 +342,13 @@ def _groups(case: Known, reach_hz: float) -> list[_Group]:
     return groups
 
 
-def _height(case: Known, at_hz: float) -> float:
-    """Height of the spectrum at a frequency, in noise sd."""
+def _heights(case: Known, at_hz: npt.NDArray[np.float64]) -> npt.NDArray[np.float64]:
+    """Height of the spectrum at given frequencies, in noise sd."""
     half = (LINE_WIDTH_HZ + LINE_BROADENING_HZ) / 2
-    shape = half**2 / (half**2 + (case.frequencies_hz - at_hz) ** 2)
-    height = float(shape @ case.protons) * WIDTH_HZ / (2 * np.pi * half)
+    shapes = half**2 / (half**2 + (case.frequencies_hz - at_hz[:, None]) ** 2)
+    heights = shapes @ case.protons * WIDTH_HZ / (2 * np.pi * half)
     unit = tallest_height(case.frequencies_hz, case.protons)
-    return height / unit * case.signal_to_noise
+    return np.asarray(heights / unit * case.signal_to_noise)
 
 
 def _integral_errors(
@@ -355,14 +356,14 @@ def _integral_errors(
 ) -> tuple[float, ...]:
     """Relative errors of signals that hold a line of nearly the full height."""
     errors = []
+    heights = _heights(case, case.frequencies_hz)
     for signal in signals:
         low = (signal.low_ppm - offset_ppm - CARRIER_PPM) * FIELD_MHZ
         high = (signal.high_ppm - offset_ppm - CARRIER_PPM) * FIELD_MHZ
         inside = (case.frequencies_hz > low) & (case.frequencies_hz < high)
         if not inside.any():
             continue
-        tallest = max(_height(case, f) for f in case.frequencies_hz[inside].tolist())
-        if tallest > 0.9 * case.signal_to_noise:
+        if heights[inside].max() > 0.9 * case.signal_to_noise:
             # One decay exp(-pi w t) sums to an area of half a width per proton.
             expected = float(case.protons[inside].sum()) * WIDTH_HZ / 2
             errors.append(signal.area / expected - 1)

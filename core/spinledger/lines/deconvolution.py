@@ -2,6 +2,7 @@
 
 from __future__ import annotations
 
+import math
 from dataclasses import dataclass, replace
 
 import numpy as np
@@ -18,6 +19,8 @@ _WIDTH_SPREAD = 0.35
 _FIRST_DAMPING = 1e-3
 _LEAST_AREA_SD = 3.0
 _MOST_PRUNINGS = 3
+_GOOD_MISFIT = 1.25
+_PHASE_SD_RAD = math.radians(3.0)
 _BASE_NOISE, _BASE_SHARE = 0.2, 5e-4
 
 
@@ -104,8 +107,10 @@ def fit_lines(
     -----
     Levenberg-Marquardt on centre, ln width and area of every line, with a weak
     prior that ties the widths together. Lines whose area is not 3 sd (all else
-    held) are dropped and the rest fitted again. The sd are those of the noise, or
-    of the misfit where that is larger.
+    held) are dropped and the rest fitted again. Where the lines describe the
+    stretch to its noise, a small phase common to it is fitted as well (dispersion
+    lines of the same places, sd 3 degrees beforehand). The sd are those of the
+    noise, or of the misfit where that is larger.
     """
     centres = centres_hz
     for _ in range(_MOST_PRUNINGS):
@@ -115,11 +120,15 @@ def fit_lines(
         if kept.all() or not kept.any():
             break
         centres = centres[kept]
+    if misfit < _GOOD_MISFIT * noise.sd / problem.scale:
+        # The lines are Lorentzian: what is left of the phase error would move them.
+        problem.free_phase(state)
+        state, misfit = problem.solve()
     return problem.report(state, misfit)
 
 
 class _Problem:
-    """One fit: parameters are centres, ln widths, areas, and two of the base."""
+    """One fit: centres, ln widths, areas, two of the base, and a phase if freed."""
 
     def __init__(
         self,
@@ -136,20 +145,27 @@ class _Problem:
         self.noise_model = noise
         self.n_lines = centres_hz.size
         self.start_centres = centres_hz
+        self.first_state: npt.NDArray[np.float64] | None = None
         self.log_width = float(np.log(width_hz))
         span = max(float(np.ptp(frequencies_hz)), 1e-9)
         middle = float(frequencies_hz.mean())
         # The spectrum is flat already: what base is left is small against the noise
         # and against the feet of the lines.
-        self.base_weight = (
-            self.noise / max(_BASE_NOISE * self.noise, _BASE_SHARE)
-        ) ** 2
+        base_weight = (self.noise / max(_BASE_NOISE * self.noise, _BASE_SHARE)) ** 2
+        self.extra_weights = np.full(2, base_weight)
         self.base = np.column_stack(
             [np.ones(frequencies_hz.size), (frequencies_hz - middle) / span]
         )
 
+    def free_phase(self, state: npt.NDArray[np.float64]) -> None:
+        """Fit a small common phase as well from now on, from a state without."""
+        phase_weight = (self.noise / _PHASE_SD_RAD) ** 2
+        self.extra_weights = np.append(self.extra_weights, phase_weight)
+        self.first_state = np.append(state, 0.0)
+        self.start_centres = state[: self.n_lines]
+
     def solve(self) -> tuple[npt.NDArray[np.float64], float]:
-        state = self._start()
+        state = self._start() if self.first_state is None else self.first_state
         damping = _FIRST_DAMPING
         residual, jacobian = self._residual(state)
         cost = self._cost(residual, state)
@@ -191,7 +207,7 @@ class _Problem:
         error = max(self.noise, misfit)
         normal = jacobian.T @ jacobian / error**2
         base = np.arange(3 * n, state.size)
-        normal[base, base] += self.base_weight / error**2
+        normal[base, base] += self.extra_weights / error**2
         normal[np.diag_indices(2 * n)] += np.concatenate(
             [np.full(n, 1e-12), np.full(n, 1 / _WIDTH_SPREAD**2)]
         )
@@ -226,7 +242,7 @@ class _Problem:
         normal = columns.T @ columns
         normal[np.diag_indices_from(normal)] *= 1.0 + 1e-3
         base = np.arange(n, n + 2)
-        normal[base, base] += self.base_weight
+        normal[base, base] += self.extra_weights
         state[2 * n :] = np.linalg.solve(normal, columns.T @ self.target)
         state[2 * n : 3 * n] = np.maximum(state[2 * n : 3 * n], 0.0)
         return state
@@ -243,8 +259,13 @@ class _Problem:
         # d/d centre and d/d ln width of the unit Lorentzian.
         by_centre = areas * shape * 2 * apart / denominator
         by_width = areas * shape * (apart**2 - half**2) / denominator
-        jacobian = np.column_stack([by_centre, by_width, shape, self.base])
-        residual = self.target - shape @ areas - self.base @ state[3 * n :]
+        extra = self.base
+        if state.size > 3 * n + 2:
+            # A small phase adds this much of the lines' dispersion.
+            dispersion = (apart / np.pi / denominator) @ areas
+            extra = np.column_stack([self.base, dispersion])
+        jacobian = np.column_stack([by_centre, by_width, shape, extra])
+        residual = self.target - shape @ areas - extra @ state[3 * n :]
         return residual, jacobian
 
     def _cost(
@@ -253,11 +274,11 @@ class _Problem:
         n = self.n_lines
         spread = (state[n : 2 * n] - self.log_width) / _WIDTH_SPREAD
         weight = self._prior_weight(residual.size)
-        base = state[3 * n :]
+        extra = state[3 * n :]
         return float(
             residual @ residual
             + weight * (spread @ spread)
-            + self.base_weight * (base @ base)
+            + self.extra_weights @ extra**2
         )
 
     def _prior_weight(self, n_points: int) -> float:
@@ -280,8 +301,8 @@ class _Problem:
         normal[rows, rows] += weight
         gradient[rows] -= weight * (state[rows] - self.log_width)
         base = np.arange(3 * n, state.size)
-        normal[base, base] += self.base_weight
-        gradient[base] -= self.base_weight * state[base]
+        normal[base, base] += self.extra_weights
+        gradient[base] -= self.extra_weights * state[base]
         diagonal = np.diag(normal).copy()
         floor = 1e-9 * float(diagonal.max())
         normal[np.diag_indices_from(normal)] += damping * diagonal + floor
