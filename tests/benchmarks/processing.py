@@ -16,7 +16,8 @@ import json
 import re
 import sys
 import time
-from dataclasses import dataclass, replace
+from dataclasses import asdict, dataclass, replace
+from itertools import pairwise
 from pathlib import Path
 from typing import Any
 
@@ -86,6 +87,7 @@ class Published:
 class Stressed:
     """One stress run: its worst phase error and the error that was foretold."""
 
+    name: str
     kind: str
     signal_to_noise: float
     error_deg: float
@@ -392,7 +394,13 @@ def part_stress(only: list[str]) -> dict[str, object]:
             continue
         if made.spectrum.imaginary is not None:
             rows += stressed(dataset, fid, made.spectrum)
-    return {"by_kind": by_kind(rows), "flagged": flagged(rows), "n": len(rows)}
+    return {
+        "by_kind": by_kind(rows),
+        "by_signal_to_noise": by_signal_to_noise(rows),
+        "flagged": flagged(rows),
+        "over_5_deg": [asdict(row) for row in rows if row.error_deg > 5],
+        "n": len(rows),
+    }
 
 
 def stressed(dataset: Dataset, fid: Fid, maker: Spectrum) -> list[Stressed]:
@@ -436,6 +444,7 @@ def stressed(dataset: Dataset, fid: Fid, maker: Spectrum) -> list[Stressed]:
         miss = (miss + 180) % 360 - 180
         rows.append(
             Stressed(
+                name=dataset.name,
                 kind=f"{kind} {size:g}",
                 signal_to_noise=float(np.median(ratio)),
                 error_deg=float(np.abs(miss[visible]).max()),
@@ -477,6 +486,20 @@ def by_kind(rows: list[Stressed]) -> dict[str, dict[str, float]]:
         }
         for kind in dict.fromkeys(row.kind for row in rows)
         if (errors := [row.error_deg for row in rows if row.kind == kind])
+    }
+
+
+def by_signal_to_noise(rows: list[Stressed]) -> dict[str, dict[str, float]]:
+    """Median and 90 % error by the median signal-to-noise of the regions."""
+    edges = (0.0, 20.0, 40.0, 80.0, 150.0, 400.0, np.inf)
+    return {
+        f"{low:g} to {high:g}": {
+            "n": len(errors),
+            "median_deg": float(np.median(errors)),
+            "p90_deg": float(np.quantile(errors, 0.9)),
+        }
+        for low, high in pairwise(edges)
+        if (errors := [r.error_deg for r in rows if low <= r.signal_to_noise < high])
     }
 
 

@@ -16,6 +16,9 @@ from spinledger.values.spectrum import Spectrum
 _MOST_LINES_AT_ONCE = 24
 _MARGIN_HZ = 4.0
 _MOST_POINTS = 1500
+_CLEAR_SHARE = 0.25
+# Ranges hold three widths of a line at least, or the fit looks beyond them.
+_BROAD_WIDTHS = 3.0
 
 
 def fit_range(
@@ -28,11 +31,14 @@ def fit_range(
     inside = (picks.points >= start) & (picks.points < stop)
     points, heights = picks.points[inside], picks.heights[inside]
     if points.size == 0:
-        return (_hump(spectrum, start, stop, noise),)
+        return (_hump(spectrum, *_wider(picks, start, stop), noise),)
     width_hz = _typical_width_hz(spectrum, points, heights)
+    limits = (start, stop)
+    if _BROAD_WIDTHS * width_hz > (stop - start) * spectrum.step_hz:
+        limits = _wider(picks, start, stop)
     cuts = _block_cuts(points)
     return tuple(
-        _fit_block(spectrum, points[low:high], (start, stop), width_hz, noise)
+        _fit_block(spectrum, points[low:high], limits, width_hz, noise)
         for low, high in pairwise(cuts)
     )
 
@@ -102,6 +108,24 @@ def _fit_block(
     return fit_with_splits(stretch, points * step_hz)
 
 
+def _wider(picks: Picks, start: int, stop: int) -> tuple[int, int]:
+    """Range of a broad line with as much again on both sides, short of other lines.
+
+    The range holds its top; without its feet the base would take them.
+    """
+    before, after = (
+        picks.points[picks.points < start],
+        picks.points[picks.points >= stop],
+    )
+    low, high = 2 * start - stop, 2 * stop - start
+    clear = _CLEAR_SHARE * (stop - start)
+    if before.size:
+        low = max(low, int(before.max() + clear))
+    if after.size:
+        high = min(high, int(after.min() - clear))
+    return max(0, min(low, start)), max(high, stop)
+
+
 def _hump(spectrum: Spectrum, start: int, stop: int, noise: NoiseModel) -> FittedLines:
     trace = np.maximum(spectrum.intensities[start:stop], 0.0)
     index = np.arange(start, stop)
@@ -113,6 +137,6 @@ def _hump(spectrum: Spectrum, start: int, stop: int, noise: NoiseModel) -> Fitte
         chosen.astype(np.float64) * spectrum.step_hz,
         spectrum.intensities[chosen],
         np.array([centre * spectrum.step_hz]),
-        width_hz=max((stop - start) * spectrum.step_hz / 4, 3 * spectrum.step_hz),
+        width_hz=max((stop - start) * spectrum.step_hz / 6, 3 * spectrum.step_hz),
         noise=noise.every(stride),
     )

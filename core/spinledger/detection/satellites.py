@@ -99,7 +99,7 @@ def sidebands(signals: tuple[Signal, ...], frequency_mhz: float) -> tuple[Stray,
     strays = [
         _stray(table, one, "sideband", f"Spinning sideband at {rate_hz:.1f} Hz.")
         for _, low, high, rate in found
-        if abs(rate - rate_hz) < _SIDEBAND_TOLERANCE_HZ
+        if min(abs(rate - rate_hz), abs(rate - 2 * rate_hz)) < _SIDEBAND_TOLERANCE_HZ
         for one in (low, high)
     ]
     return merged(strays)
