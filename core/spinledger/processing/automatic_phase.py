@@ -27,6 +27,10 @@ _DOUBTFUL_DEG = 3.0
 _LEAST_SD_DEG = 1.0
 # Measured on acquired spectra with noise put on, against the maker's phase.
 _NOISE_FACTOR = 10.0
+_FAR_WORDS = (
+    "The phase far from the few signals it was found from is doubtful by about "
+    "{:.0f} degrees."
+)
 
 
 @dataclass(frozen=True, slots=True, kw_only=True)
@@ -37,7 +41,7 @@ class AutomaticPhase:
     ----------
     step : Phase
     sd_deg : float, deg
-        Estimated error in the worst signal region.
+        Estimated error in the worst region that holds lines.
     doubts : tuple of str
         One sentence for each thing that makes the phase doubtful.
     """
@@ -73,16 +77,17 @@ def automatic_phase(
     tails = tail_correction(
         turned, regions.kept, dropped=regions.dropped, step_hz=step_hz
     )
-    return _decided(values, regions.kept, fit, tails, sd)
+    return _decided(values, regions, fit, tails, sd)
 
 
 def _decided(
     values: npt.NDArray[np.complex128],
-    kept: Regions,
+    regions: FoundRegions,
     fit: PhaseFit,
     tails: TailCorrection,
     sd: float,
 ) -> AutomaticPhase:
+    kept = regions.kept
     x = sweep_positions(values.size)[kept.peaks]
     asked_deg = float(
         np.degrees(np.abs(tails.constant_rad + tails.slope_rad * x)).max()
@@ -94,6 +99,7 @@ def _decided(
     constant, slope = fit.constant_rad, fit.slope_rad
     if not refused:
         constant, slope = constant + tails.constant_rad, slope + tails.slope_rad
+    far_deg = _far_sd_deg(regions, values.size)
     noise_deg = math.degrees(_worst_noise_rad(values, kept, x, sd))
     step = Phase(
         phase0_deg=math.degrees(math.remainder(constant, 2 * math.pi)),
@@ -101,9 +107,33 @@ def _decided(
     )
     return AutomaticPhase(
         step=step,
-        sd_deg=math.hypot(max(_LEAST_SD_DEG, asked_deg), noise_deg),
-        doubts=_doubts(asked_deg, noise_deg, refused),
+        sd_deg=math.hypot(max(_LEAST_SD_DEG, asked_deg), noise_deg, far_deg),
+        doubts=(
+            *_doubts(asked_deg, noise_deg, refused),
+            *((_FAR_WORDS.format(far_deg),) if far_deg > _DOUBTFUL_DEG else ()),
+        ),
     )
+
+
+def _far_sd_deg(regions: FoundRegions, n_points: int) -> float:
+    """Phase sd at the worst region that took no part, as water does not, deg.
+
+    Notes
+    -----
+    A straight line through the kept regions, each with an error of 1 degree:
+    sd^2 = 1/n + (x - mean)^2 / sum (x_k - mean)^2, where one region counts with
+    its own width. Zero where every region took part.
+    """
+    if regions.dropped.count == 0:
+        return 0.0
+    x = sweep_positions(n_points)
+    kept = x[regions.kept.peaks]
+    widths = (regions.kept.stops - regions.kept.starts) / n_points
+    spread = float(np.sum((kept - kept.mean()) ** 2) + np.sum(widths**2) / 12)
+    apart = np.abs(x[regions.dropped.peaks] - kept.mean()).max()
+    # A first-order phase is within about 180 degrees over the sweep.
+    spread += (_LEAST_SD_DEG / 180.0) ** 2
+    return _LEAST_SD_DEG * math.hypot(kept.size**-0.5, apart / math.sqrt(spread))
 
 
 def _worst_noise_rad(

@@ -122,3 +122,15 @@ def test_huge_water_out_of_phase_does_not_rule() -> None:
     for x in (0.15, -0.25):
         asked = found.step.phase0_deg + found.step.phase1_deg * x
         assert asked == pytest.approx(25.0, abs=5.0)
+
+
+def test_one_signal_beside_water_is_said_to_leave_the_slope_open() -> None:
+    water = KnownLine(shift_ppm=4.75, area=30.0, width_hz=3.0)
+    lines = [KnownLine(shift_ppm=2.4, area=4.0), water]
+    fid = made_fid(lines, Setting(noise_sd=0.02, carrier_ppm=4.75))
+    transformed = transform(fid, starting_recipe(fid))
+    regions = found_regions(transformed, water_at_carrier=True)
+    found = automatic_phase(transformed, regions)
+    assert found is not None
+    assert found.sd_deg > 3.0
+    assert any("far from the few signals" in doubt for doubt in found.doubts)
