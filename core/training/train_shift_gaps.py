@@ -29,7 +29,7 @@ FEWEST_NONZERO = 20
 def main() -> None:
     """Run the training."""
     parser = argparse.ArgumentParser(description=__doc__)
-    parser.add_argument("--rounds", type=int, default=200)
+    parser.add_argument("--rounds", type=int, default=150)
     parser.add_argument("--threads", type=int, default=2)
     parser.add_argument("--out", type=Path, default=DATA)
     args = parser.parse_args()

@@ -122,7 +122,7 @@ def main() -> None:
     """Measure and print."""
     parser = argparse.ArgumentParser(description=__doc__)
     parser.add_argument("--used-folds", type=int, default=5)
-    parser.add_argument("--rounds", type=int, default=250)
+    parser.add_argument("--rounds", type=int, default=150)
     parser.add_argument("--networks", type=int, default=2)
     args = parser.parse_args()
     size = sum(path.stat().st_size for path in DATA.glob("shift_*"))
