@@ -176,3 +176,10 @@ def test_dihedral_angle_has_the_sign_of_the_closed_form() -> None:
         assert dihedrals_deg(points, (0, 1, 2, 3))[0] == pytest.approx(
             turn_deg, abs=1e-9
         )
+
+
+def test_no_model_is_made_of_a_very_large_molecule() -> None:
+    mol = Chem.AddHs(Chem.MolFromSmiles("C" * 101))
+    found = ensemble(mol, is_aqueous=False)
+    assert found.is_empty
+    assert "More than 100 heavy atoms" in found.reason
