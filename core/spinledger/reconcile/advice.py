@@ -22,6 +22,7 @@ from spinledger.reconcile.advice_pairs import (
     decoupling_finding,
     shake_finding,
 )
+from spinledger.reconcile.advice_solvent import solvent_finding
 from spinledger.reconcile.advice_view import Finding, View, view_of
 from spinledger.reconcile.advice_weak import weak_points
 from spinledger.reconcile.evaluate import Evaluation
@@ -106,6 +107,7 @@ def _against(
         ("homodecoupling", decoupling_finding),
         ("COSY", cosy_finding),
         ("edited HSQC", hsqc_finding),
+        ("the same in DMSO-d6", solvent_finding),
     )
     for name, rival in rivals:
         limits.checked()

@@ -17,6 +17,7 @@ from spinledger.reconcile.evaluate import Evaluation
 from spinledger.reconcile.solve import Solution
 from spinledger.reconcile.words import pattern
 from spinledger.spins.multiplicity import multiplicity_of
+from spinledger.values.claim import ClaimSet
 
 #: Two fits put a signal to the same place.
 SAME_SHIFT_PPM = 0.04
@@ -87,26 +88,7 @@ class View:
     @cached_property
     def splittings(self) -> dict[int, dict[int, list[tuple[float, int]]]]:
         """|J| and number of spins by claim and partner claim (hetero: below 0)."""
-        claims = self.evaluation.claims
-        first: dict[int, int] = {}
-        for number, particle in enumerate(claims.particles):
-            if particle.claim is not None:
-                first.setdefault(particle.claim, number)
-        found: dict[int, dict[int, list[tuple[float, int]]]] = defaultdict(
-            lambda: defaultdict(list)
-        )
-        for index, coupling in enumerate(claims.couplings):
-            j_hz = abs(float(self.couplings_hz[index]))
-            for pair in coupling.pairs:
-                for own, other in (pair, pair[::-1]):
-                    claim = claims.particles[own].claim
-                    if claim is None or first[claim] != own:
-                        continue
-                    partner = claims.particles[other]
-                    owner = -1 - other if partner.claim is None else partner.claim
-                    if owner != claim:
-                        found[claim][owner].append((j_hz, partner.n_spins))
-        return found
+        return splittings_of(self.evaluation.claims, self.couplings_hz)
 
     def exchanges(self, claim: int) -> bool:
         """Whether a claim's protons exchange with water."""
@@ -153,6 +135,37 @@ class View:
     def frequency_mhz(self) -> float:
         """Of the spectrometer, MHz."""
         return self.evaluation.evidence.spectrum.spectrometer_frequency_mhz
+
+
+def splittings_of(
+    claims: ClaimSet, couplings_hz: FloatArray
+) -> dict[int, dict[int, list[tuple[float, int]]]]:
+    """|J| and number of spins by claim and partner claim (hetero: below 0).
+
+    Parameters
+    ----------
+    claims : ClaimSet
+    couplings_hz : numpy.ndarray, shape (n_couplings,), Hz
+    """
+    first: dict[int, int] = {}
+    for number, particle in enumerate(claims.particles):
+        if particle.claim is not None:
+            first.setdefault(particle.claim, number)
+    found: dict[int, dict[int, list[tuple[float, int]]]] = defaultdict(
+        lambda: defaultdict(list)
+    )
+    for index, coupling in enumerate(claims.couplings):
+        j_hz = abs(float(couplings_hz[index]))
+        for pair in coupling.pairs:
+            for own, other in (pair, pair[::-1]):
+                claim = claims.particles[own].claim
+                if claim is None or first[claim] != own:
+                    continue
+                partner = claims.particles[other]
+                owner = -1 - other if partner.claim is None else partner.claim
+                if owner != claim:
+                    found[claim][owner].append((j_hz, partner.n_spins))
+    return found
 
 
 def view_of(evaluation: Evaluation, name: str) -> View | None:

@@ -1,5 +1,6 @@
 """Advice is foretold by simulation: patterns, contacts, fields and odds."""
 
+from collections import Counter
 from collections.abc import Callable, Sequence
 from dataclasses import replace
 from itertools import pairwise
@@ -20,6 +21,10 @@ from spinledger.reconcile.advice_pairs import (
     shake_finding,
 )
 from spinledger.reconcile.advice_precision import coupling_sds_hz
+from spinledger.reconcile.advice_solvent import (
+    exchangeable_patterns,
+    solvent_finding,
+)
 from spinledger.reconcile.advice_view import (
     View,
     odds_of_chances,
@@ -159,6 +164,23 @@ def test_shake_sees_what_goes_and_only_where_it_can(make_claims: Claims) -> None
     )
     assert shake_finding(view(alcohol, solvent="D2O"), ether) is None
     assert shake_finding(ether, ether) is None
+
+
+def test_alcohols_in_dmso_are_told_by_their_splitting() -> None:
+    # OH of a primary alcohol is a triplet, of a secondary one a doublet, of a
+    # tertiary one a singlet: O. L. Chapman, R. W. King, J. Am. Chem. Soc. 86 (1964)
+    # 1256-1258, doi:10.1021/ja01060a074.
+    smiles = {"CCCCO": "triplet", "CCC(C)O": "doublet", "CC(C)(C)O": "singlet"}
+    for one, word in smiles.items():
+        found = exchangeable_patterns(read_structure(one))
+        assert found == Counter({("OH", f"a {word}"): 1})
+    claims = claims_of_structure(read_structure("CCCCO"), solvent="CDCl3")
+    views = [view(claims, structure=one, name=one) for one in ("CCCCO", "CCC(C)O")]
+    found_advice = solvent_finding(views[0], views[1])
+    assert found_advice is not None
+    assert "1 OH, a triplet if CCCCO is right" in found_advice.look_for
+    assert solvent_finding(views[0], views[0]) is None
+    assert exchangeable_patterns(read_structure("CC(=O)[O-].[Na+]")) is None
 
 
 def test_contact_distances_of_a_benzene_ring() -> None:
