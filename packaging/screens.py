@@ -171,6 +171,13 @@ def sketching(studio: Studio) -> None:
     editor.canvas.update()
 
 
+def phasing(studio: Studio) -> None:
+    """The phase set by hand, a few degrees off."""
+    studio.parts.window.lanes.set_folded(False)
+    studio.parts.desk.do("phase")
+    studio.parts.desk.process.phasing.hand.turned.emit(24.0, 0.0)
+
+
 def disputed(studio: Studio) -> None:
     """The wrong isomer's structure on the same spectrum."""
     wrong = str(SAMPLES / "structures" / "wrong-isomer.mol")
@@ -210,6 +217,8 @@ def shots() -> list[Shot]:
         Shot(name="contrast", show=folded, theme="high contrast"),
         Shot(name="contenders", show=contenders),
         Shot(name="sketching", show=sketching),
+        Shot(name="phasing", show=phasing),
+        Shot(name="folded", show=folded),
         Shot(name="disputed", show=disputed),
         Shot(name="disputed", show=disputed, theme="dark"),
         Shot(name="solved", show=solved, size=(1920, 1080), scale=2),
@@ -236,6 +245,7 @@ def take(out: Path, scale: int) -> None:
             studio.parts.desk.view.take_theme(shot.theme)
             studio.parts.bench.selection.clear()
             studio.settle()
+            studio.parts.desk.do("let_go")
             window.lanes.go_home()
             shot.show(studio)
             studio.settle()

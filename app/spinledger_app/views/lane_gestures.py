@@ -11,7 +11,6 @@ from PySide6.QtGui import QKeyEvent, QMouseEvent, QPen, QWheelEvent
 from spinledger_app.lanes.layout import DEFAULT_SHARES
 from spinledger_app.lanes.targets import NOTHING, Target
 from spinledger_app.painting.ink import Ink
-from spinledger_app.presenters.line_list import ruler_text
 from spinledger_app.presenters.wording import number, say
 
 if TYPE_CHECKING:
@@ -262,8 +261,6 @@ class LaneGestures:
     def paint(self, ink: Ink) -> None:
         """Ring and flag of what is dragged."""
         view, drag = self._view, self._drag
-        if drag.manner == "region":
-            self._paint_ruler(ink)
         if drag.value is None or view.map is None:
             return
         layout = view.layout_now
@@ -276,24 +273,12 @@ class LaneGestures:
             ink.vline(round(x), layout.evidence_top, layout.soil, "accent")
             width = ink.look.width("0.0000", 13, 600)
             flag_x = x + 26 + width / 2
-            view.paint_flag(ink, flag_x, layout.soil - 12, number(drag.value, 4))
+            view.over.paint_flag(ink, flag_x, layout.soil - 12, number(drag.value, 4))
         elif drag.manner == "branch":
             x = drag.last.x()
             text = say("J {0} Hz").replace("{0}", number(drag.value, 2))
             ink.vline(round(x), layout.seam, layout.soil, "accent")
-            view.paint_flag(ink, x, drag.last.y() - 30, text)
-
-    def _paint_ruler(self, ink: Ink) -> None:
-        """Distance between the two ends of the region that is being marked."""
-        view = self._view
-        if view.region_ppm is None or view.scene is None or view.map is None:
-            return
-        low, high = view.region_ppm
-        ends = [x for x in (view.map.x_of(high), view.map.x_of(low)) if x is not None]
-        if ends:
-            text = ruler_text(low, high, view.scene.frequency_mhz)
-            y = view.layout_now.evidence_top + ink.look.px(52)
-            view.paint_flag(ink, sum(ends) / len(ends), y, text)
+            view.over.paint_flag(ink, x, drag.last.y() - 30, text)
 
     # -- wheel and keys ----------------------------------------------------------
 

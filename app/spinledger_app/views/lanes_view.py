@@ -10,7 +10,6 @@ from PySide6.QtGui import (
     QMouseEvent,
     QPainter,
     QPaintEvent,
-    QPen,
     QPixmap,
     QResizeEvent,
     QWheelEvent,
@@ -18,7 +17,6 @@ from PySide6.QtGui import (
 from PySide6.QtWidgets import QSizePolicy, QWidget
 
 from spinledger_app.lanes.axis_layer import (
-    fold_rects,
     paint_axis,
     paint_folds,
     paint_grid,
@@ -33,12 +31,13 @@ from spinledger_app.lanes.residue_layer import paint_residue, paint_residue_tick
 from spinledger_app.lanes.scene import LaneScene, Trace, TreeShape
 from spinledger_app.lanes.shift_map import ShiftMap
 from spinledger_app.lanes.targets import NOTHING, Target, target_at
-from spinledger_app.painting.ink import SECOND, Face, Ink, label_width
-from spinledger_app.presenters.wording import number, say
+from spinledger_app.painting.ink import SECOND, Ink, label_width
+from spinledger_app.presenters.wording import say
 from spinledger_app.selection import Marks
 from spinledger_app.theme import Look
 from spinledger_app.views.gutter import paint_gutter
 from spinledger_app.views.lane_gestures import LaneGestures
+from spinledger_app.views.lanes_over import LanesOver
 
 EASE_MS = 120
 _FRAME_MS = 8
@@ -101,6 +100,7 @@ class LanesView(QWidget):
         self._timer.setInterval(_FRAME_MS)
         self._timer.timeout.connect(self._ease)
         self._gestures = LaneGestures(self)
+        self.over = LanesOver(self, self._gestures)
         self._build()
 
     def _build(self) -> None:
@@ -342,7 +342,7 @@ class LanesView(QWidget):
             self._base = self._painted_base()
         painter.drawPixmap(0, 0, self._base)
         if self.scene is not None and self.map is not None:
-            self._paint_overlay(Ink(painter, self.look, self), self.scene, self.map)
+            self.over.paint(Ink(painter, self.look, self), self.scene, self.map)
         painter.end()
 
     def _painted_base(self) -> QPixmap:
@@ -416,7 +416,7 @@ class LanesView(QWidget):
         )
         claims.paint()
         self.handles = claims.handles
-        self._paint_excluded(ink, scene, shift_map)
+        self.over.paint_excluded(ink, scene, shift_map)
         if self.trial is None:
             self._paint_waiting(ink, scene, layout)
         pivot_x = None if self.pivot_ppm is None else shift_map.x_of(self.pivot_ppm)
@@ -443,121 +443,7 @@ class LanesView(QWidget):
         self, ink: Ink, scene: LaneScene, shift_map: ShiftMap
     ) -> None:
         if self.marks.selected is not None:
-            self._tint_claim(ink, scene, shift_map, self.marks.selected)
-
-    def _tint_claim(
-        self, ink: Ink, scene: LaneScene, shift_map: ShiftMap, claim: str
-    ) -> None:
-        tree = scene.tree_of(claim)
-        if tree is None:
-            return
-        tips = [leaf.tip_ppm for leaf in tree.leaves] or [tree.root_ppm]
-        margin = max((tree.width_hz or 0.0) * 1.2, 8.0) / scene.frequency_mhz
-        self._tint(ink, shift_map, min(tips) - margin, max(tips) + margin)
-
-    def _tint(
-        self, ink: Ink, shift_map: ShiftMap, low_ppm: float, high_ppm: float
-    ) -> None:
-        rect = self._range_rect(shift_map, low_ppm, high_ppm)
-        if rect is not None:
-            ink.fill(rect, self.look.tint)
-
-    def _range_rect(
-        self, shift_map: ShiftMap, low_ppm: float, high_ppm: float
-    ) -> QRectF | None:
-        index = shift_map.stretch_of((low_ppm + high_ppm) / 2)
-        if index is None:
-            return None
-        start, end = shift_map.span(index)
-        layout = self.layout_now
-        x0 = max(shift_map.x_of(high_ppm, index) or 0.0, start, layout.left)
-        x1 = min(shift_map.x_of(low_ppm, index) or 0.0, end, layout.right)
-        if x1 <= x0:
-            return None
-        x1 = max(x1, x0 + 3)
-        return QRectF(x0, layout.evidence_top, x1 - x0, layout.axis_top)
-
-    def _paint_excluded(self, ink: Ink, scene: LaneScene, shift_map: ShiftMap) -> None:
-        for low, high in scene.excluded_ppm:
-            rect = self._range_rect(shift_map, low, high)
-            if rect is None:
-                continue
-            veil = ink.colour("fold")
-            veil.setAlpha(190)
-            rect.setBottom(self.layout_now.seam)
-            ink.fill(rect, veil)
-            text = say("left out")
-            if ink.look.width(text, 12) < rect.width() - 6:
-                y = self.layout_now.curve_top + ink.look.px(24)
-                face = Face(size=12, colour="muted")
-                ink.text(rect.center().x(), y, text, face, align="centre")
-
-    def _paint_overlay(self, ink: Ink, scene: LaneScene, shift_map: ShiftMap) -> None:
-        marks = self.marks
-        layout = self.layout_now
-        self._paint_hovered(ink, scene, shift_map)
-        if marks.chosen_signal is not None:
-            self._paint_chosen(ink, scene, shift_map, marks.chosen_signal)
-        if self.region_ppm is not None:
-            self._paint_region(ink, scene, shift_map, self.region_ppm)
-        for index, strip in fold_rects(shift_map, layout):
-            if index == self.lit_fold:
-                for x in (strip.left(), strip.center().x(), strip.right() - 1):
-                    ink.vline(round(x), layout.evidence_top, layout.axis_top, "accent")
-        if self.cursor_x is not None and self._gestures.is_idle:
-            x = round(self.cursor_x)
-            ink.vline(x, layout.evidence_top, layout.axis_top, "accent")
-        self._gestures.paint(ink)
-
-    def _paint_hovered(self, ink: Ink, scene: LaneScene, shift_map: ShiftMap) -> None:
-        marks = self.marks
-        if marks.hovered is not None:
-            if marks.hovered != marks.selected:
-                self._tint_claim(ink, scene, shift_map, marks.hovered)
-        elif marks.hovered_signal is not None:
-            mark = scene.signal(marks.hovered_signal)
-            if mark is not None:
-                self._tint(ink, shift_map, mark.low_ppm, mark.high_ppm)
-
-    def _paint_chosen(
-        self, ink: Ink, scene: LaneScene, shift_map: ShiftMap, key: str
-    ) -> None:
-        mark = scene.signal(key)
-        rect = mark and self._range_rect(shift_map, mark.low_ppm, mark.high_ppm)
-        if not rect:
-            return
-        rect.setBottom(self.layout_now.seam)
-        ink.painter.setPen(QPen(ink.colour("accent"), 2))
-        ink.painter.drawRect(rect.adjusted(1, 1, -1, -1))
-        text = say("Now click the proton that owns it. Esc lets go.")
-        self.paint_flag(ink, rect.center().x(), self.layout_now.bracket + 14, text)
-
-    def _paint_region(
-        self,
-        ink: Ink,
-        scene: LaneScene,
-        shift_map: ShiftMap,
-        region_ppm: tuple[float, float],
-    ) -> None:
-        low, high = region_ppm
-        rect = self._range_rect(shift_map, low, high)
-        if rect is None:
-            return
-        ink.fill(rect, self.look.tint)
-        for x in (rect.left(), rect.right() - 1):
-            ink.vline(round(x), rect.top(), rect.bottom(), "accent")
-        width_hz = (high - low) * scene.frequency_mhz
-        text = f"{number(width_hz, 2)} Hz   {number(high - low, 4)} ppm"
-        self.paint_flag(ink, rect.center().x(), self.layout_now.seam - 40, text)
-
-    def paint_flag(self, ink: Ink, x: float, y: float, text: str) -> None:
-        """Small label in accent about a place, kept inside the widget."""
-        width = ink.look.width(text, 13, 600) + 16
-        height = ink.look.px(22)
-        left = min(max(x - width / 2, self.layout_now.left), self.width() - width - 4)
-        ink.fill(QRectF(left, y, width, height), "accent", 4)
-        face = Face(size=13, weight=600, colour="on_accent")
-        ink.text(left + 8, y + height * 0.72, text, face)
+            self.over.tint_claim(ink, scene, shift_map, self.marks.selected)
 
     # -- events --------------------------------------------------------------------
 
