@@ -1,6 +1,7 @@
 """Speed, memory and resuming of batch runs; prints one JSON object.
 
 usage: python tests/benchmarks/batch.py ACQUIRED [--rows N] [--kills N] [--full]
+                                          [--only NAME,NAME]
 
 The acquired spectra are repeated under new names until there are N rows. Keys:
 speedup_2 (one worker's time over two workers'), dask_ratio (time on a local
@@ -41,11 +42,13 @@ def find_data(raw: Path) -> Path:
     raise SystemExit(f"no dataset under {raw}")
 
 
-def write_table(acquired: Path, path: Path, n_rows: int) -> None:
-    """Table that repeats the true spectra."""
+def write_table(acquired: Path, path: Path, n_rows: int, only: set[str]) -> None:
+    """Table that repeats the true spectra, or some of them."""
     rows = []
     for folder in sorted(acquired.iterdir()):
         truth_file = folder / "truth.json"
+        if only and folder.name not in only:
+            continue
         if folder.name.startswith("neg_") or not truth_file.is_file():
             continue
         truth = json.loads(truth_file.read_text(encoding="utf-8"))
@@ -72,18 +75,20 @@ def resident_bytes() -> int:
     return pages * os.sysconf("SC_PAGE_SIZE")
 
 
-def memory_growth(table: Path, out: Path, options: ReconcileOptions) -> float | None:
-    """Growth of resident memory from row 20 to the last."""
+def timed_with_memory(
+    table: Path, out: Path, options: ReconcileOptions
+) -> tuple[float, float | None]:
+    """Seconds of a run in this process, and its memory's growth from row 20 on."""
     sizes: list[int] = []
-    run_table(
+    seconds = timed(
         table,
         out,
-        options=options,
+        options,
         progress=lambda _words, _fraction: sizes.append(resident_bytes()),
     )
     if len(sizes) <= SETTLED_ROW:
-        return None
-    return sizes[-1] / sizes[SETTLED_ROW - 1] - 1
+        return seconds, None
+    return seconds, sizes[-1] / sizes[SETTLED_ROW - 1] - 1
 
 
 def dask_seconds(table: Path, out: Path, options: ReconcileOptions) -> float:
@@ -97,7 +102,7 @@ def dask_seconds(table: Path, out: Path, options: ReconcileOptions) -> float:
 
 
 def survives_kills(
-    table: Path, whole: Path, out: Path, *, kills: int, quick: bool
+    table: Path, whole: Path, out: Path, *, kills: int, longest: float, quick: bool
 ) -> bool:
     """Same ledgers after a run that was killed again and again."""
     command = [
@@ -119,7 +124,7 @@ def survives_kills(
             start_new_session=True,
         )
         try:
-            child.wait(timeout=rng.uniform(2, 30))
+            child.wait(timeout=rng.uniform(2, longest))
         except subprocess.TimeoutExpired:
             os.killpg(child.pid, signal.SIGKILL)
             child.wait()
@@ -143,13 +148,17 @@ def main() -> None:
     parser.add_argument(
         "--full", action="store_true", help="with contenders and advice"
     )
+    parser.add_argument(
+        "--only", default="", help="folders to take, instead of all, in a comma list"
+    )
     arguments = parser.parse_args()
     options = ReconcileOptions(quick=not arguments.full)
     with tempfile.TemporaryDirectory() as place:
         base = Path(place)
         table = base / "table.csv"
-        write_table(arguments.acquired, table, arguments.rows)
-        one = timed(table, base / "one", options)
+        only = {name for name in arguments.only.split(",") if name}
+        write_table(arguments.acquired, table, arguments.rows, only)
+        one, growth = timed_with_memory(table, base / "one", options)
         two = timed(table, base / "two", options, workers=2)
         figures = {
             "rows": arguments.rows,
@@ -157,12 +166,14 @@ def main() -> None:
             "seconds_2": two,
             "speedup_2": one / two,
             "dask_ratio": dask_seconds(table, base / "dask", options) / two,
-            "memory_growth": memory_growth(table, base / "memory", options),
+            "memory_growth": growth,
             "resumed_identical": survives_kills(
                 table,
                 base / "two",
                 base / "killed",
                 kills=arguments.kills,
+                # Kills fall anywhere in the run, not all after its end.
+                longest=max(4.0, 2.0 * two / max(arguments.kills, 1)),
                 quick=options.quick,
             ),
         }

@@ -9,7 +9,9 @@ import pytest
 
 from quantity_weighed import STANDARD_PPM, weighed_ledger
 from spinledger.cli import main, quantify
-from spinledger.report.context import ReportContext
+from spinledger.cli.reconcile import sections_of
+from spinledger.errors import UsageError
+from spinledger.report.context import SECTIONS, ReportContext
 from spinledger.report.html import report_html
 from spinledger.values.ledger import Ledger
 
@@ -78,3 +80,13 @@ def test_every_report_says_what_the_strays_amount_to() -> None:
     assert "<td>acetone</td>" in page
     short = report_html(weighed_ledger(delay_s=1.0), ReportContext())
     assert "No amounts are given." in short
+
+
+def test_sections_are_chosen_by_words() -> None:
+    assert sections_of(None) == SECTIONS
+    assert sections_of("text,assignment") == ("text", "assignment")
+    assert sections_of("-audit,-signatures") == tuple(
+        one for one in SECTIONS if one not in ("audit", "signatures")
+    )
+    with pytest.raises(UsageError, match="'poem' is not known"):
+        sections_of("text,poem")

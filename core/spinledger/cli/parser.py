@@ -115,6 +115,22 @@ def _formats(parser: argparse.ArgumentParser) -> None:
     )
 
 
+def _template(parser: argparse.ArgumentParser) -> None:
+    """Choices of the report's form."""
+    parser.add_argument(
+        "--journal",
+        choices=("acs", "rsc"),
+        default="acs",
+        help="form of the experimental sentence (default: acs)",
+    )
+    parser.add_argument(
+        "--sections",
+        metavar="LIST",
+        help="comma list of the parts to print, in order; a minus in front leaves "
+        "one out, as in -audit,-signatures (default: all)",
+    )
+
+
 def _reconcile(commands: _Subparsers[argparse.ArgumentParser]) -> None:
     parser = _command(commands, "reconcile", "Reconcile a spectrum with a structure")
     _data(parser)
@@ -124,12 +140,7 @@ def _reconcile(commands: _Subparsers[argparse.ArgumentParser]) -> None:
     _output(parser)
     _matching_options(parser)
     _formats(parser)
-    parser.add_argument(
-        "--journal",
-        choices=("acs", "rsc"),
-        default="acs",
-        help="form of the experimental sentence (default: acs)",
-    )
+    _template(parser)
 
 
 def _rank(commands: _Subparsers[argparse.ArgumentParser]) -> None:
@@ -304,6 +315,13 @@ def _report(commands: _Subparsers[argparse.ArgumentParser]) -> None:
     )
     _output(parser)
     _formats(parser)
+    _template(parser)
+    parser.add_argument(
+        "--published",
+        metavar="FILE.txt",
+        type=Path,
+        help="journal text to compare with, as a table of the report",
+    )
 
 
 def _quantify(commands: _Subparsers[argparse.ArgumentParser]) -> None:
@@ -322,6 +340,7 @@ def _quantify(commands: _Subparsers[argparse.ArgumentParser]) -> None:
     _output(parser)
     _matching_options(parser)
     _formats(parser)
+    _template(parser)
     _standard_options(parser.add_argument_group("internal standard"))
     pulse = parser.add_argument_group("pulse and delay, where you know them better")
     pulse.add_argument("--pulse-angle", metavar="DEG", type=_number(1, 180))

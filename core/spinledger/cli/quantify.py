@@ -5,13 +5,14 @@ from __future__ import annotations
 import argparse
 import datetime
 import sys
+from dataclasses import replace
 
 from rdkit.Chem.Descriptors import MolWt  # type: ignore[attr-defined]  # RDKit
 
 from spinledger.batch.job import Job, read_evidence
 from spinledger.cli.inputs import options_of, solvent_of
 from spinledger.cli.progress import ProgressLine
-from spinledger.cli.reconcile import formats_of, today
+from spinledger.cli.reconcile import context_from, formats_of
 from spinledger.errors import UsageError
 from spinledger.project.solve import solve
 from spinledger.project.storage import SUFFIX, load_project
@@ -20,7 +21,6 @@ from spinledger.quantity.content import content
 from spinledger.quantity.purity import InternalStandard, Purity, Weighings, purity
 from spinledger.quantity.result import Quantity
 from spinledger.reconcile.run import reconcile
-from spinledger.report.context import ReportContext
 from spinledger.report.files import check_writable, write_files
 from spinledger.report.quantity_rows import (
     content_rows,
@@ -46,6 +46,7 @@ def run(arguments: argparse.Namespace) -> int:
     formats = formats_of(arguments.formats)
     check_extras(formats)
     check_writable(arguments.out)
+    template = context_from(arguments)
     known = PulseConditions(
         pulse_angle_deg=arguments.pulse_angle,
         delay_s=arguments.delay,
@@ -60,7 +61,7 @@ def run(arguments: argparse.Namespace) -> int:
         ledger,
         arguments.out,
         formats=formats,
-        context=ReportContext(date=today(), quantity=quantity),
+        context=replace(template, quantity=quantity),
     )
     write_files(arguments.out, {"quantity.json": quantity_json(quantity).encode()})
     _say(quantity)

@@ -10,7 +10,7 @@ from spinledger.batch.job import Job, run_job
 from spinledger.cli.inputs import options_of, solvent_of
 from spinledger.cli.progress import ProgressLine
 from spinledger.errors import UsageError
-from spinledger.report.context import ReportContext
+from spinledger.report.context import SECTIONS, ReportContext
 from spinledger.report.text import TextOptions
 from spinledger.report.write import DEFAULT_FORMATS, FILE_NAMES, check_extras
 
@@ -27,7 +27,7 @@ def run(arguments: argparse.Namespace) -> int:
         prefer_processed=arguments.processed,
         options=options_of(arguments),
         formats=formats,
-        context=ReportContext(date=today(), text=TextOptions(style=arguments.journal)),
+        context=context_from(arguments),
     )
     with ProgressLine() as progress:
         ledger = run_job(job, progress=progress)
@@ -41,6 +41,45 @@ def run(arguments: argparse.Namespace) -> int:
     for reason in verdict.reasons:
         sys.stdout.write(f"  {reason}\n")
     return 0
+
+
+def context_from(arguments: argparse.Namespace) -> ReportContext:
+    """Date and template choices of a report from the words of a command.
+
+    Raises
+    ------
+    UsageError
+        If a part of the report is not known.
+    """
+    return ReportContext(
+        date=today(),
+        text=TextOptions(style=arguments.journal),
+        sections=sections_of(arguments.sections),
+    )
+
+
+def sections_of(words: str | None) -> tuple[str, ...]:
+    """Parts of the report from a comma list; a minus leaves one out.
+
+    Raises
+    ------
+    UsageError
+        If one is not known.
+
+    Examples
+    --------
+    >>> sections_of("text,assignment"), "audit" in sections_of("-audit")
+    (('text', 'assignment'), False)
+    """
+    listed = [one.strip() for one in (words or "").split(",") if one.strip()]
+    unknown = [one for one in listed if one.removeprefix("-") not in SECTIONS]
+    if unknown:
+        raise UsageError(
+            f"--sections: {unknown[0]!r} is not known; known are {', '.join(SECTIONS)}"
+        )
+    wanted = [one for one in listed if not one.startswith("-")]
+    left_out = {one[1:] for one in listed if one.startswith("-")}
+    return tuple(one for one in (wanted or SECTIONS) if one not in left_out)
 
 
 def today() -> str:

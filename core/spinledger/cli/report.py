@@ -6,17 +6,20 @@ import argparse
 import datetime
 import sys
 from collections.abc import Mapping
+from dataclasses import replace
 from pathlib import Path
 
 from spinledger.cli.progress import ProgressLine
-from spinledger.cli.reconcile import formats_of, today
+from spinledger.cli.reconcile import context_from, formats_of
 from spinledger.errors import SpinLedgerError
 from spinledger.project.audit import differences_when_remade
 from spinledger.project.solve import solve
 from spinledger.project.storage import load_project
+from spinledger.report.compare import compare_lists, list_of_ledger
 from spinledger.report.context import context_of
 from spinledger.report.files import check_writable
 from spinledger.report.json_ledger import read_ledger_json
+from spinledger.report.published import read_published
 from spinledger.report.write import check_extras, write_reports
 
 
@@ -35,6 +38,8 @@ def run(arguments: argparse.Namespace) -> int:
     formats = formats_of(arguments.formats)
     check_extras(formats)
     check_writable(arguments.out)
+    template = context_from(arguments)
+    published = read_published(arguments.published) if arguments.published else None
     project = load_project(arguments.project)
     for sentence in differences_when_remade(project, _versions(arguments.out)):
         sys.stdout.write(f"may differ: {sentence}\n")
@@ -50,7 +55,14 @@ def run(arguments: argparse.Namespace) -> int:
             solved.ledger,
             arguments.out,
             formats=formats,
-            context=context_of(solved, date=today()),
+            context=replace(
+                context_of(solved, date=template.date),
+                text=template.text,
+                sections=template.sections,
+                comparison=None
+                if published is None
+                else compare_lists(list_of_ledger(solved.ledger), published),
+            ),
             progress=progress,
         )
     sys.stdout.write(f"{solved.ledger.verdict.state}: {arguments.out}\n")
