@@ -11,7 +11,8 @@ from spinledger.reconcile.refine_data import stage_data
 from spinledger.reconcile.refine_model import Layout, Problem, evaluate
 from spinledger.reconcile.refine_places import Reach, better_places, crowds
 from spinledger.reconcile.refine_run import Fit, Run
-from spinledger.reconcile.refine_values import Stage
+from spinledger.reconcile.refine_starts import alternatives
+from spinledger.reconcile.refine_values import Stage, Start
 
 Floats = npt.NDArray[np.float64]
 
@@ -115,10 +116,11 @@ def _arrangements(
     now = evaluate(problem, known)
     layout = problem.layout
     place = {int(claim): k for k, claim in enumerate(layout.shift_claims)}
-    begins = []
+    begins = _alternatives(run, known, layout)
     for group in crowds(problem, now, bad):
         fresh = _with_fresh_couplings(run, known, layout, frozenset(group))
         begins += [fresh, *_exchanged_couplings(run, fresh, layout, frozenset(group))]
+        begins += _alternatives(run, fresh, layout)
         run.budget.spend()
         moves = better_places(
             problem,
@@ -140,6 +142,23 @@ def _arrangements(
     return [begins[k] for k in order]
 
 
+def _alternatives(run: Run, known: Floats, layout: Layout) -> list[Floats]:
+    """The fit with close like claims, or couplings, exchanged, or signs turned."""
+    n_shifts, frequency_mhz = layout.shift_claims.size, run.prepared.frequency_mhz
+    here = Start(
+        shifts_ppm=layout.shifts_hz(known, run.start_shifts_hz) / frequency_mhz,
+        couplings_hz=layout.couplings_hz(known, run.start_couplings_hz),
+        absent=run.start.absent,
+    )
+    found = []
+    for other in alternatives(run.network.claims, here):
+        begin = np.array(known)
+        begin[:n_shifts] = other.shifts_ppm[layout.shift_claims] * frequency_mhz
+        begin[n_shifts : layout.n_moving] = other.couplings_hz[layout.couplings]
+        found.append(begin)
+    return found
+
+
 def _within(problem: Problem, parameters: Floats) -> Floats:
     return np.asarray(np.clip(parameters, problem.layout.low, problem.layout.high))
 
@@ -149,13 +168,14 @@ def _with_fresh_couplings(
 ) -> Floats:
     """Couplings and widths of some claims as at the start.
 
-    The fit may have bent them to suit a wrong place.
+    The fit may have bent them to suit a wrong place; so the common width.
     """
     parameters = np.array(known)
     couplings = run.start_couplings_hz
     for k, index in enumerate(layout.couplings, start=layout.shift_claims.size):
         if run.network.claims_of(int(index)) & claims:
             parameters[k] = couplings[index]
+    parameters[layout.n_moving] = layout.centres[layout.n_moving]
     begin = layout.n_moving + 1
     for row, claim in enumerate(layout.drawn.tolist()):
         if claim in claims:
