@@ -38,10 +38,10 @@ from spinledger.values.claim import ClaimSet
 from spinledger.values.geometry import ConfigurationOdds, DihedralShare, Geometry
 
 #: Configurations tried, by heavy atoms: conformers cost more for large ones.
-CONFIGURATION_EFFORT = 100
+CONFIGURATION_EFFORT = 80
 MOST_HEAVY_ATOMS = 40
-#: Share of doubt in the model itself, spread evenly: no odds beyond it.
-MODEL_DOUBT = 0.05
+#: Doubt in the model itself, on top of each probability: no odds beyond 40 to 1.
+MODEL_DOUBT = 0.025
 #: Labellings within these log odds of the best one are averaged.
 CLOSE_LOG_ODDS = 3.0
 
@@ -198,7 +198,8 @@ def _configuration_odds(
         return ()
     heights = np.array([one.log_evidence for one in weighed])
     shares = np.exp(heights - heights.max())
-    shares = (1.0 - MODEL_DOUBT) * shares / shares.sum() + MODEL_DOUBT / shares.size
+    shares = shares / shares.sum() + MODEL_DOUBT
+    shares = shares / shares.sum()
     rows = [
         ConfigurationOdds(
             smiles=one.configuration.smiles,
