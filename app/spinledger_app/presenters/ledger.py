@@ -407,7 +407,7 @@ def _stray_head(strays: Sequence[Stray]) -> str:
 
 
 def _advice(ledger: Ledger) -> tuple[AdviceText, ...]:
-    scale = 12.0
+    scale = 3.2  # the most that one measurement is trusted with, in sd
     return tuple(
         AdviceText(
             measurement=one.measurement,
