@@ -63,7 +63,9 @@ def _kind(carbon: Chem.Atom) -> str:
     if not _is_saturated(carbon):
         return "other"
     around = list(carbon.GetNeighbors())
-    if any(_is_hydroxyl(n) for n in around):
+    oxygens = [n for n in around if n.GetAtomicNum() == 8]
+    # Of acetals the table has no example; they go with the ethers.
+    if len(oxygens) == 1 and _is_hydroxyl(oxygens[0]):
         return "carbinol"
     saturated = [n for n in around if n.GetAtomicNum() == 6 and _is_saturated(n)]
     if any(_is_hydroxyl(far) for n in saturated for far in n.GetNeighbors()):

@@ -30,7 +30,7 @@ _KINDS: Final[tuple[tuple[str, str, tuple[float, float], tuple[float, float]], .
     ("hemiacetal", "[OX2H1][CX4][OX2]", (3.3, 1.5), (6.3, 0.6)),
     ("alcohol", "[OX2H1][CX4]c", (2.3, 1.3), (5.3, 0.4)),
     ("alcohol", "[OX2H1][CX4;H2][CX4][OX2]", (2.4, 1.2), (4.5, 0.35)),
-    ("alcohol", "[OX2H1][CX4;H1][CX4][OX2]", (2.6, 1.2), (4.85, 0.4)),
+    ("alcohol", "[OX2H1][CX4;H1][CX4][OX2]", (2.6, 1.2), (4.75, 0.4)),
     ("alcohol", "[OX2H1][CX4;H0][CX4][OX2]", (2.6, 1.2), (4.7, 0.5)),
     ("alcohol", "[OX2H1][CX4]C(F)(F)F", (3.0, 1.0), (6.2, 0.5)),
     ("alcohol", "[OX2H1][CX4;H2,H3]", (1.9, 1.0), (4.4, 0.4)),
