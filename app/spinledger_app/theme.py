@@ -359,10 +359,11 @@ def style_sheet(look: Look) -> str:
                           min-height: 24px; min-width: 24px; }}
     QScrollBar::add-line, QScrollBar::sub-line {{ width: 0; height: 0; }}
     QScrollBar::add-page, QScrollBar::sub-page {{ background: transparent; }}
-    QLineEdit, QPlainTextEdit, QTextBrowser, QComboBox, QSpinBox, QDoubleSpinBox {{
+    QLineEdit, QPlainTextEdit, QTextBrowser, QComboBox {{
         background: {t.field}; color: {t.ink}; border: 1px solid {t.edge};
         border-radius: 4px; padding: 3px 6px;
         selection-background-color: {t.accent};
         selection-color: {t.on_accent}; }}
+    QAbstractSpinBox QLineEdit {{ border: none; padding: 0; background: transparent; }}
     QDialog {{ background: {t.panel}; }}
     """

@@ -46,7 +46,7 @@ class FieldStrip(QWidget):
         row.addWidget(self.slider, 1)
         row.addWidget(self.leave)
         self.setAccessibleName(say("What if the field were another"))
-        self.setFixedHeight(look.px(_HEIGHT_PX))
+        self.retune()
         self.slider.valueChanged.connect(self._tell)
         self.leave.clicked.connect(lambda _=False: self.given_up.emit())
         self.hide()
@@ -61,6 +61,8 @@ class FieldStrip(QWidget):
     def retune(self) -> None:
         """Take the look's text size again."""
         self.setFixedHeight(self.look.px(_HEIGHT_PX))
+        for child in self.findChildren(QWidget):
+            child.setFont(self.look.font())
 
     def sizeHint(self) -> QSize:
         """One row."""

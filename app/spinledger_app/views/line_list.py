@@ -42,7 +42,7 @@ class LineListDialog(BenchDialog):
                 item.setTextAlignment(right)
                 self.table.setItem(row, column, item)
         self.table.horizontalHeader().setSectionResizeMode(
-            QHeaderView.ResizeMode.ResizeToContents
+            QHeaderView.ResizeMode.Stretch
         )
         self.table.setMinimumSize(look.px(600), look.px(420))
         self.column.addWidget(self.table)

@@ -55,7 +55,7 @@ class PhaseStrip(QWidget):
         row.addWidget(self.take)
         row.addWidget(self.leave)
         self.setAccessibleName(say("Phase by hand"))
-        self.setFixedHeight(look.px(_HEIGHT_PX))
+        self.retune()
         for box in (self.phase0, self.phase1):
             box.valueChanged.connect(self._tell)
         self.take.clicked.connect(lambda _=False: self.taken.emit())
@@ -77,6 +77,10 @@ class PhaseStrip(QWidget):
     def retune(self) -> None:
         """Take the look's text size again."""
         self.setFixedHeight(self.look.px(_HEIGHT_PX))
+        for child in self.findChildren(QWidget):
+            child.setFont(self.look.font())
+        for box in (self.phase0, self.phase1):
+            box.setFixedSize(self.look.px(92), self.look.px(28))
 
     def sizeHint(self) -> QSize:
         """One row."""

@@ -92,12 +92,13 @@ class StatusRow(QWidget):
         baseline = self.height() - self.look.px(9)
         right = self.width() - _MARGIN
         width = ink.text(right, baseline, self._right, SECOND, align="right")
-        is_long = self._is_error
         end = right - width - 24
+        # A message may have the room that the cursor does not use.
+        is_long = self._is_error or not self._middle
         left_room = (end if is_long else self.middle_left - 16) - _MARGIN
         if self.cancel.isVisible():
             left_room = self.cancel.x() - _MARGIN - 6
-        face = Face(size=13, colour="tone:disputed") if is_long else SECOND
+        face = Face(size=13, colour="tone:disputed") if self._is_error else SECOND
         used = ink.text(_MARGIN, baseline, self._left, face, max_width=left_room)
         start = max(self.middle_left, _MARGIN + used + 24)
         if end - start > 60:
