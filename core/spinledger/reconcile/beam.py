@@ -116,14 +116,14 @@ def _extend(
 
 
 def place_costs(
-    search: Search, member: int, supports: FloatArray
+    search: Search, member: int, supports: FloatArray, *, common: float | None = None
 ) -> tuple[FloatArray, FloatArray]:
     """Cost change of putting a member at each place, and its best amplitude.
 
     The amplitude is free about the common one with the member's sd; the
     minimum over it is closed form and then limited.
     """
-    common = search.area_per_proton
+    common = search.area_per_proton if common is None else common
     stiffness = 1.0 / (2.0 * (search.amplitude_sds[member] * common) ** 2)
     overlap = search.overlap[member]
     amplitudes = (supports + stiffness * common) / (overlap + stiffness)

@@ -43,6 +43,8 @@ class CoarseSpectrum:
         Of one coarse point.
     frequency_mhz : float
     masked_ppm : tuple of (low_ppm, high_ppm)
+    hwhm_hz : float, Hz
+        Half width at half maximum of the broadening.
     """
 
     grid_ppm: FloatArray
@@ -52,6 +54,7 @@ class CoarseSpectrum:
     noise_sd: float
     frequency_mhz: float
     masked_ppm: tuple[tuple[float, float], ...] = ()
+    hwhm_hz: float = COARSE_HALF_WIDTH_HZ
 
     def hidden_share(
         self, sticks: tuple[FloatArray, FloatArray], shift_ppm: float
@@ -68,6 +71,11 @@ class CoarseSpectrum:
     def n_points(self) -> int:
         """Number of grid points."""
         return int(self.grid_ppm.size)
+
+    @property
+    def points_per_ppm(self) -> float:
+        """Grid points in one ppm."""
+        return self.frequency_mhz / self.step_hz
 
     def index_of_ppm(self, shift_ppm: float) -> int:
         """Nearest grid point, clipped to the grid."""
@@ -159,6 +167,7 @@ def coarse_spectrum(
         noise_sd=evidence.noise_sd * float(min(through, 1.0)),
         frequency_mhz=frequency_mhz,
         masked_ppm=masked_ranges(evidence, more_masked_ppm),
+        hwhm_hz=hwhm_hz,
     )
 
 

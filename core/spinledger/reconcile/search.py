@@ -112,9 +112,12 @@ def prepare_search(
     sticks = first_order_sticks(claims, couplings_hz)
     widest_hz = max((float(np.abs(sticks[i][0]).max()) for i in order), default=0.0)
     half_points = int((widest_hz + SHAPE_MARGIN_HZ) / coarse.step_hz)
-    shares = [_share(claims, index) for index in order]
+    shares = [species_share(claims, index) for index in order]
     shapes = tuple(
-        coarse_shape(sticks[index], half_points, step_hz=coarse.step_hz) * share
+        coarse_shape(
+            sticks[index], half_points, hwhm_hz=coarse.hwhm_hz, step_hz=coarse.step_hz
+        )
+        * share
         for index, share in zip(order, shares, strict=True)
     )
     length = fft.next_fast_len(coarse.n_points + 2 * half_points + 2, real=True)
@@ -155,7 +158,8 @@ def _search_order(claims: tuple[Claim, ...]) -> list[int]:
     )
 
 
-def _share(claims: ClaimSet, index: int) -> float:
+def species_share(claims: ClaimSet, index: int) -> float:
+    """Expected share of a claim's species in the tube."""
     species = claims.claims[index].species
     if species < len(claims.species_shares):
         return max(claims.species_shares[species][0], 0.01)
@@ -166,7 +170,7 @@ def _counted(claims: ClaimSet, order: list[int]) -> float:
     """Protons expected to be seen; those that may be absent count half."""
     return sum(
         claims.claims[i].n_protons
-        * _share(claims, i)
+        * species_share(claims, i)
         * (0.5 if claims.claims[i].visibility == "optional" else 1.0)
         for i in order
     )
@@ -174,7 +178,8 @@ def _counted(claims: ClaimSet, order: list[int]) -> float:
 
 def _weights(coarse: CoarseSpectrum, area_per_proton: float) -> FloatArray:
     """Weight of a squared residual: proportional noise with a floor."""
-    floor = FLOOR_SHARE * area_per_proton / (np.pi * 6.0) + 3.0 * coarse.noise_sd
+    top = area_per_proton / (np.pi * coarse.hwhm_hz)
+    floor = FLOOR_SHARE * top + 3.0 * coarse.noise_sd
     raw = coarse.trust / (coarse.intensities + floor)
     total = float((raw * coarse.intensities**2).sum())
     return raw * (EXPLAIN_ALL_COST / max(total, 1e-300))

@@ -12,6 +12,7 @@ from dataclasses import dataclass, replace
 import numpy as np
 
 from spinledger.reconcile.assess import Assessment, assess
+from spinledger.reconcile.closeup import close_up
 from spinledger.reconcile.coarse import CoarseSpectrum, FloatArray
 from spinledger.reconcile.exchange import Odds, best_order, like_pairs
 from spinledger.reconcile.match import (
@@ -20,6 +21,7 @@ from spinledger.reconcile.match import (
     starting_couplings,
 )
 from spinledger.reconcile.options import Constraints
+from spinledger.reconcile.rearrange import rearranged
 from spinledger.reconcile.refine import refine
 from spinledger.reconcile.refine_data import PreparedEvidence, prepare
 from spinledger.reconcile.refine_values import (
@@ -52,6 +54,12 @@ ALIKE_PRICE = 2.5
 MISFIT_DRAW = 5.0
 # Where the best quick fit leaves this share, a finer one changes nothing.
 HOPELESS_RESIDUAL = 0.6
+# Nothing is gained beyond a fit as good as the misfit can tell.
+PERFECT = 0.022
+N_SEARCHED = 3
+MAX_SEARCHES = 2
+N_SKETCHED = 4
+SEARCH_WINDOW = 6.0
 # Misfit is judged after a boxcar of 3 Hz, so that broad stages tell fits apart.
 SKETCH = RefineSettings(
     stages=(
@@ -227,7 +235,7 @@ def solve(
             break
         sketches.append(sketchpad.fitted(one, one.shifts_ppm, None, SKETCH))
     sketches.sort(key=_score)
-    sketches = _rearranged(sketchpad, sketches, limits)
+    sketches = _rearranged(sketchpad, _searched(sketchpad, sketches, limits), limits)
     fits, rest = _finished(sketchpad, sketches, limits)
     best, odds = sketchpad.ordered(fits[0])
     return Solution(
@@ -238,6 +246,60 @@ def solve(
         match_cost=best_cost,
         is_complete=is_complete,
     )
+
+
+def _searched(
+    sketchpad: _Sketchpad, sketches: list[Fitted], limits: Limits
+) -> list[Fitted]:
+    """Sketches with those of better arrangements that a local search finds."""
+    if limits.is_rough:
+        return sketches
+    tried = {_arrangement(one) for one in sketches}
+    for _ in range(MAX_SEARCHES):
+        best = sketches[0]
+        share = best.assessment.residual_share
+        if not PERFECT < share < HOPELESS_RESIDUAL or limits.is_over():
+            break
+        added = []
+        for shifts_ppm in _proposals(sketchpad, sketches, limits):
+            limits.checked()
+            key = _places(shifts_ppm)
+            if key in tried or len(added) >= N_SKETCHED or limits.is_over():
+                continue
+            tried.add(key)
+            start = replace(best.hypothesis, shifts_ppm=shifts_ppm)
+            added.append(sketchpad.fitted(start, shifts_ppm, None, SKETCH))
+        sketches = sorted([*sketches, *added], key=_score)
+        if sketches[0] is best:
+            break
+    return sketches
+
+
+def _proposals(
+    sketchpad: _Sketchpad, sketches: list[Fitted], limits: Limits
+) -> list[FloatArray]:
+    """Shifts of promising arrangements on the close view, best first."""
+    best = sketches[0]
+    gone = best.hypothesis.absent | best.hypothesis.hidden
+    close = close_up(
+        sketchpad.prepared.evidence,
+        sketchpad.network,
+        starting_couplings(sketchpad.network.claims, sketchpad.constraints),
+        offset_ppm=best.assessment.offset_ppm,
+        line_width_hz=sketchpad.prepared.line_width_hz,
+        constraints=sketchpad.constraints,
+    )
+    starts = [
+        close.places_of(one.refinement.shifts_ppm, gone)
+        for one in sketches[:N_SEARCHED]
+        if one.hypothesis.absent | one.hypothesis.hidden == gone
+    ]
+    found = rearranged(close, starts, is_over=limits.is_over)
+    return [
+        close.shifts_of(one.places, best.refinement.shifts_ppm)
+        for one in found
+        if one.cost <= found[0].cost + SEARCH_WINDOW
+    ]
 
 
 def _rearranged(
