@@ -269,7 +269,7 @@ def table_impurities(
         areas = [unowned[number].area for number in hits]
         if not hits or max(areas) > AREA_RATIO * min(areas):
             continue
-        shifts = ", ".join(f"{line.shift_ppm:.2f}" for line in lines)
+        shifts = ", ".join(f"{line.shift_ppm:z.2f}" for line in lines)
         # A compound that explains more stretches at once is the likelier one.
         for number, gap in hits.items():
             if gap / len(hits) < best_gap.get(number, np.inf):

@@ -59,8 +59,8 @@ def open_reason(claim: Claim, multiplicity: str) -> str:
 def shift_reason(claim: Claim, shift_ppm: float, z: float) -> str:
     """Why a shift is disputed."""
     return (
-        f"{claim.label} stands at {shift_ppm:.2f} ppm where "
-        f"{claim.shift_ppm:.2f} ± {claim.shift_sd_ppm:.2f} ppm is predicted "
+        f"{claim.label} stands at {shift_ppm:z.2f} ppm where "
+        f"{claim.shift_ppm:z.2f} ± {claim.shift_sd_ppm:.2f} ppm is predicted "
         f"({abs(z):.1f} sd)"
     )
 
@@ -102,10 +102,10 @@ def hidden_reason(evidence: Evidence, shift_ppm: float) -> str:
             stray.low_ppm - 0.05 <= shift_ppm <= stray.high_ppm + 0.05
         ):
             return (
-                f"lies under the {stray.kind} line between {stray.low_ppm:.2f} "
-                f"and {stray.high_ppm:.2f} ppm"
+                f"lies under the {stray.kind} line between {stray.low_ppm:z.2f} "
+                f"and {stray.high_ppm:z.2f} ppm"
             )
-    return f"lies in a stretch that is left out, near {shift_ppm:.2f} ppm"
+    return f"lies in a stretch that is left out, near {shift_ppm:z.2f} ppm"
 
 
 def optional_reason(claim: Claim) -> str:
