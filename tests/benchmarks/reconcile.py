@@ -119,7 +119,8 @@ def one(
         out["evidence_seconds"] = round(time.perf_counter() - begin, 2)
     except SpinLedgerError as error:
         return {**out, "error": str(error)}
-    bench = lay_out(evidence, ReconcileOptions())
+    # A loaded machine must not change what is found.
+    bench = lay_out(evidence, ReconcileOptions(time_budget_s=600.0))
     row, found = weigh(truth["smiles"], bench)
     out["true"] = row
     if found is not None:

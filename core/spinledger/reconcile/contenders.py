@@ -161,15 +161,18 @@ def _double_bond_isomers(molecule: Chem.Mol) -> Iterator[Isomer]:
 
 
 def _position_isomers(molecule: Chem.Mol) -> Iterator[Isomer]:
-    """A substituent of an aromatic ring moved to another CH of the ring."""
+    """A substituent moved to another CH of an aromatic ring, CH2 of another one."""
     for ring in molecule.GetRingInfo().AtomRings():
         atoms = [molecule.GetAtomWithIdx(index) for index in ring]
-        if not all(atom.GetIsAromatic() for atom in atoms):
-            continue
-        free = [a.GetIdx() for a in atoms if a.GetSymbol() == "C" and a.GetTotalNumHs()]
+        is_aromatic = all(atom.GetIsAromatic() for atom in atoms)
+        free = [
+            atom.GetIdx() for atom in atoms if _is_free(atom, is_aromatic=is_aromatic)
+        ]
         for atom in atoms:
+            if not (is_aromatic or _is_sp3_carbon(atom)) or atom.GetSymbol() != "C":
+                continue
             for bond in atom.GetBonds():
-                if bond.IsInRing() or atom.GetSymbol() != "C":
+                if bond.IsInRing() or bond.GetBondType() != Chem.BondType.SINGLE:
                     continue
                 branch = bond.GetOtherAtomIdx(atom.GetIdx())
                 for target in free:
@@ -180,6 +183,13 @@ def _position_isomers(molecule: Chem.Mol) -> Iterator[Isomer]:
                             kind="position",
                             change="substituent at another place of the ring",
                         )
+
+
+def _is_free(atom: Chem.Atom, *, is_aromatic: bool) -> bool:
+    """Whether a ring atom can take a substituent from another."""
+    if is_aromatic:
+        return bool(atom.GetSymbol() == "C" and atom.GetTotalNumHs())
+    return _is_sp3_carbon(atom) and bool(atom.GetTotalNumHs() == 2)
 
 
 def _turned_round(molecule: Chem.Mol) -> Iterator[Isomer]:

@@ -137,7 +137,8 @@ def _contenders(
         limits.checked()
         report(f"testing {smiles}", 0.5 + 0.45 * number / len(wanted))
         if limits.is_over():
-            break
+            rows.append(_unread(name, smiles, origin, "the time allowed ran out"))
+            continue
         try:
             if given is not None:
                 other = evaluate(given, bench, limits)
@@ -240,7 +241,8 @@ def _verdict(
     left = [one for one in contenders if not one.excluded]
     reasons = list(verdict_reasons(own))
     for one in left:
-        reasons.append(f"{one.smiles} ({one.name}) is not excluded")
+        fate = "was not tested" if one.verdict == "not judged" else "is not excluded"
+        reasons.append(f"{one.smiles} ({one.name}) {fate}")
     tested = not options.quick
     return Verdict(
         state=own.state,

@@ -29,6 +29,8 @@ def canonical(smiles: str) -> str:
         ("CCCBr", "CC(C)Br"),
         ("CC(C)CC(N)C(=O)O", "CCC(C)C(N)C(=O)O"),
         ("C[C@H](O)[C@@H](C)Cl", "C[C@H](O)[C@H](C)Cl"),
+        ("OC(=O)C1CCCN1", "OC(=O)C1CCNC1"),
+        ("CC1CCCCC1Cl", "CC1CCCC(Cl)C1"),
     ],
 )
 def test_textbook_isomer_is_enumerated(smiles: str, expected: str) -> None:
