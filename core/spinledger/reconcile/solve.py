@@ -44,7 +44,7 @@ GOOD_RESIDUAL = 0.05
 NEAR_TIE_COST = 3.0
 MAX_FINISHED = 2
 FINISH_WINDOW = 3.0
-MAX_ROUNDS = 3
+MAX_ROUNDS = 2
 # Fits below this need no other arrangement.
 WELL_FITTED = 0.06
 NEIGHBOUR_PPM = 0.1
@@ -60,6 +60,7 @@ N_SEARCHED = 3
 MAX_SEARCHES = 2
 N_SKETCHED = 4
 SEARCH_WINDOW = 6.0
+TIE_WINDOW = 1.0
 # Misfit is judged after a boxcar of 3 Hz, so that broad stages tell fits apart.
 SKETCH = RefineSettings(
     stages=(
@@ -260,23 +261,26 @@ def _searched(
         share = best.assessment.residual_share
         if not PERFECT < share < HOPELESS_RESIDUAL or limits.is_over():
             break
+        # A good fit is only held against what looks as good from close by.
+        is_good = share < WELL_FITTED
+        window, most = (TIE_WINDOW, 2) if is_good else (SEARCH_WINDOW, N_SKETCHED)
         added = []
-        for shifts_ppm in _proposals(sketchpad, sketches, limits):
+        for shifts_ppm in _proposals(sketchpad, sketches, limits, window):
             limits.checked()
             key = _places(shifts_ppm)
-            if key in tried or len(added) >= N_SKETCHED or limits.is_over():
+            if key in tried or len(added) >= most or limits.is_over():
                 continue
             tried.add(key)
             start = replace(best.hypothesis, shifts_ppm=shifts_ppm)
             added.append(sketchpad.fitted(start, shifts_ppm, None, SKETCH))
         sketches = sorted([*sketches, *added], key=_score)
-        if sketches[0] is best:
+        if is_good or sketches[0] is best:
             break
     return sketches
 
 
 def _proposals(
-    sketchpad: _Sketchpad, sketches: list[Fitted], limits: Limits
+    sketchpad: _Sketchpad, sketches: list[Fitted], limits: Limits, window: float
 ) -> list[FloatArray]:
     """Shifts of promising arrangements on the close view, best first."""
     best = sketches[0]
@@ -298,7 +302,7 @@ def _proposals(
     return [
         close.shifts_of(one.places, best.refinement.shifts_ppm)
         for one in found
-        if one.cost <= found[0].cost + SEARCH_WINDOW
+        if one.cost <= found[0].cost + window
     ]
 
 
@@ -316,7 +320,7 @@ def _rearranged(
         share = best.assessment.residual_share
         if limits.is_rough or not WELL_FITTED < share < HOPELESS_RESIDUAL:
             break
-        for shifts_ppm in exchanged_starts(sketchpad.network.claims, best, limit=6):
+        for shifts_ppm in exchanged_starts(sketchpad.network.claims, best, limit=4):
             limits.checked()
             if limits.is_over():
                 return sketches
