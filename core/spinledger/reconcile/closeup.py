@@ -23,7 +23,8 @@ from spinledger.reconcile.search import (
     species_share,
 )
 from spinledger.spins.clusters import QUICK_EFFORT
-from spinledger.spins.network import ClaimNetwork, Plan
+from spinledger.spins.network import ClaimNetwork
+from spinledger.spins.plan import Plan
 from spinledger.values.evidence import Evidence
 
 # Wide enough to forgive J that are 1 Hz off, close enough to tell a doublet from

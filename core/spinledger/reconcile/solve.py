@@ -264,7 +264,7 @@ def _searched(
         # A good fit is only held against what looks as good from close by.
         is_good = share < WELL_FITTED
         window, most = (TIE_WINDOW, 2) if is_good else (SEARCH_WINDOW, N_SKETCHED)
-        added = []
+        added: list[Fitted] = []
         for shifts_ppm in _proposals(sketchpad, sketches, limits, window):
             limits.checked()
             key = _places(shifts_ppm)
