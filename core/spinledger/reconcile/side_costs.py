@@ -9,6 +9,7 @@ from __future__ import annotations
 
 from collections.abc import Sequence
 from dataclasses import dataclass
+from itertools import combinations, product
 
 import numpy as np
 from rdkit import Chem
@@ -39,9 +40,15 @@ MOST_CARBON_COST = 12.0
 
 #: A shift read off a contour plot, and one carbon read twice.
 PROTON_SD_PPM = 0.02
-SAME_CARBON_PPM = 0.25
+SAME_CARBON_PPM = 0.15
+#: Peaks tried for a claim, nearest in proton shift first.
+PEAKS_TRIED = 4
 UNLISTED_COST = 3.0
-UNOWNED_CARBON_COST = 1.5
+NOTABLE_COST = 2.0
+UNOWNED_PEAK_COST = 1.5
+#: Like carbons often coincide; seldom three times in one molecule.
+COINCIDENCE_COST = 1.5
+MOST_FOR_COINCIDENCES = 3.0
 MOST_HSQC_COST = 10.0
 
 COSY_REACH_PPM = 0.04
@@ -231,47 +238,81 @@ def hsqc_result(
     left_out: frozenset[int],
     side: SideEvidence,
 ) -> SideResult:
-    """Claims on one carbon against HSQC peaks of one carbon shift.
+    """Placed claims against HSQC peaks.
 
-    The two protons of a CH2 must stand at peaks of one carbon, and protons of
-    different carbons at peaks of different ones.
+    Every claim needs a peak at its shift, of the type of its carbon. The two
+    protons of a CH2 need peaks of one carbon shift; that different carbons
+    share one is possible, and costs what such a coincidence is worth.
     """
     if not side.hsqc:
         return FREE
     carriers = _carriers(claims, left_out)
-    groups = _carbon_groups(side.hsqc)
-    wrong = np.array(
-        [
-            [_group_cost(claims, own, shifts_ppm, group) for group in groups]
-            for own in carriers
-        ]
-    ).reshape(len(carriers), len(groups))
-    alone = np.array([UNLISTED_COST * len(own) for own in carriers])
-    spare = np.full(len(groups), UNOWNED_CARBON_COST)
-    pairs = _assigned(wrong, alone, spare)
-    reasons = []
-    cost = sum(wrong[a, b] for a, b in pairs)
-    owned = dict(pairs)
-    for number, own in enumerate(carriers):
-        labels = " and ".join(claims.claims[k].label for k in own)
-        if number not in owned:
-            cost += alone[number]
-            reasons.append(f"no HSQC peak stands where {labels} was put")
-        elif wrong[number, owned[number]] > UNLISTED_COST - 0.5:
-            peak = groups[owned[number]][0]
-            reasons.append(
-                f"{labels} and the HSQC peaks at {peak.carbon_ppm:.1f} ppm (13C) "
-                "do not agree"
-            )
-    taken = set(owned.values())
-    for number, group in enumerate(groups):
+    chosen = [_best_peaks(claims, own, shifts_ppm, side.hsqc) for own in carriers]
+    cost = sum(one for one, _ in chosen)
+    reasons = [
+        _carrier_sentence(claims, own, [side.hsqc[k] for k in peaks])
+        for own, (one, peaks) in zip(carriers, chosen, strict=True)
+        if one > NOTABLE_COST
+    ]
+    used = [{round(side.hsqc[k].carbon_ppm, 3) for k in peaks} for _, peaks in chosen]
+    n_shared = sum(
+        any(abs(a - b) < SAME_CARBON_PPM for a in one for b in other)
+        for one, other in combinations(used, 2)
+    )
+    cost += min(COINCIDENCE_COST * n_shared, MOST_FOR_COINCIDENCES)
+    if n_shared:
+        reasons.append("HSQC peaks of one carbon shift stand at different carbons")
+    taken = {k for _, peaks in chosen for k in peaks}
+    for number, peak in enumerate(side.hsqc):
         if number not in taken:
-            cost += UNOWNED_CARBON_COST
+            cost += UNOWNED_PEAK_COST
             reasons.append(
-                f"no claim stands at the HSQC peak {group[0].proton_ppm:.2f}/"
-                f"{group[0].carbon_ppm:.1f} ppm"
+                f"no claim stands at the HSQC peak {peak.proton_ppm:.2f}/"
+                f"{peak.carbon_ppm:.1f} ppm"
             )
     return SideResult(cost=float(min(cost, MOST_HSQC_COST)), reasons=tuple(reasons))
+
+
+def _best_peaks(
+    claims: ClaimSet,
+    own: Sequence[int],
+    shifts_ppm: FloatArray,
+    peaks: Sequence[HsqcPeak],
+) -> tuple[float, tuple[int, ...]]:
+    """Cheapest peaks for the claims of one carbon, one a claim."""
+    places = np.array([peak.proton_ppm for peak in peaks])
+    atoms = claims.claims[own[0]].atoms
+    n_protons = sum(claims.claims[k].n_protons for k in own) // max(len(atoms), 1)
+    options: list[list[tuple[float, int]]] = []
+    for index in own:
+        gaps = np.abs(places - float(shifts_ppm[index]))
+        nearest = np.argsort(gaps, kind="stable")[:PEAKS_TRIED]
+        options.append(
+            [
+                (
+                    min(0.5 * float(gaps[k] / PROTON_SD_PPM) ** 2, UNLISTED_COST)
+                    + (0.0 if n_protons in peaks[k].n_protons else WRONG_TYPE_COST),
+                    int(k),
+                )
+                for k in nearest
+            ]
+        )
+    best: tuple[float, tuple[int, ...]] = (np.inf, ())
+    for some in product(*options):
+        carbons = [peaks[k].carbon_ppm for _, k in some]
+        apart = max(carbons) - min(carbons) >= SAME_CARBON_PPM
+        cost = sum(one for one, _ in some) + (UNLISTED_COST if apart else 0.0)
+        if cost < best[0]:
+            best = (cost, tuple(k for _, k in some))
+    return best
+
+
+def _carrier_sentence(
+    claims: ClaimSet, own: Sequence[int], peaks: Sequence[HsqcPeak]
+) -> str:
+    labels = " and ".join(claims.claims[k].label for k in own)
+    carbons = " and ".join(f"{peak.carbon_ppm:.1f}" for peak in peaks)
+    return f"{labels} and the HSQC peaks at {carbons} ppm (13C) do not agree"
 
 
 def _carriers(claims: ClaimSet, left_out: frozenset[int]) -> list[list[int]]:
@@ -281,39 +322,6 @@ def _carriers(claims: ClaimSet, left_out: frozenset[int]) -> list[list[int]]:
         if index not in left_out and not claim.is_exchangeable:
             by_carrier.setdefault((claim.species, claim.atoms), []).append(index)
     return list(by_carrier.values())
-
-
-def _carbon_groups(peaks: Sequence[HsqcPeak]) -> list[list[HsqcPeak]]:
-    """Peaks of one carbon shift."""
-    groups: list[list[HsqcPeak]] = []
-    for peak in sorted(peaks, key=lambda one: one.carbon_ppm):
-        if groups and peak.carbon_ppm - groups[-1][-1].carbon_ppm < SAME_CARBON_PPM:
-            groups[-1].append(peak)
-        else:
-            groups.append([peak])
-    return groups
-
-
-def _group_cost(
-    claims: ClaimSet,
-    own: Sequence[int],
-    shifts_ppm: FloatArray,
-    group: Sequence[HsqcPeak],
-) -> float:
-    places = np.array([peak.proton_ppm for peak in group])
-    cost = 0.0
-    taken: set[int] = set()
-    for index in own:
-        gaps = np.abs(places - float(shifts_ppm[index]))
-        nearest = int(np.argmin(gaps))
-        taken.add(nearest)
-        cost += min(0.5 * float(gaps[nearest] / PROTON_SD_PPM) ** 2, UNLISTED_COST)
-    cost += UNLISTED_COST * max(len(group) - len(taken), 0)
-    atoms = claims.claims[own[0]].atoms
-    n_protons = sum(claims.claims[k].n_protons for k in own) // max(len(atoms), 1)
-    if not all(n_protons in peak.n_protons for peak in group):
-        cost += WRONG_TYPE_COST
-    return cost
 
 
 def cosy_result(

@@ -15,7 +15,11 @@ from spinledger.reconcile.exchange import best_order
 from spinledger.reconcile.match import match
 from spinledger.reconcile.options import Constraints, ReconcileOptions
 from spinledger.reconcile.run import reconcile
-from spinledger.reconcile.side_costs import carbon_result, expected_carbons
+from spinledger.reconcile.side_costs import (
+    carbon_result,
+    expected_carbons,
+    hsqc_result,
+)
 from spinledger.reconcile.side_reading import read_side_evidence
 from spinledger.reconcile.solve import FINISH_QUICK, Limits, solve
 from spinledger.structure.read import read_structure
@@ -139,6 +143,22 @@ def test_hsqc_resolves_a_swap_of_look_alikes(
     # Which of the pair is which stays open: HSQC does not tell.
     _, odds = best_order(claims, told.best.refinement, frozenset(), constraints=edits)
     assert {(one.first, one.second) for one in odds} >= {(0, 2)}
+
+
+def test_two_carbons_of_one_shift_are_doubt_and_no_refusal(
+    make_claims: Claims,
+) -> None:
+    claims = make_claims([("a", 7.20, 0.1, 1), ("b", 7.40, 0.1, 1)])
+    shifts = np.array([7.20, 7.40])
+    alike = read_side_evidence("HSQC: 7.20/128.5 CH, 7.40/128.5 CH")
+    apart = read_side_evidence("HSQC: 7.20/128.5 CH, 7.40/129.5 CH")
+    assert hsqc_result(claims, shifts, frozenset(), apart).cost == 0.0
+    # Odds below 5 to 1, so that a faultless fit stays over the upper limit.
+    cost = hsqc_result(claims, shifts, frozenset(), alike).cost
+    assert 0.0 < cost < np.log(5.0)
+    # Far from any peak, both of the wrong type, is another matter.
+    wrong = read_side_evidence("HSQC: 7.00/128.5 CH2, 7.60/129.5 CH3")
+    assert hsqc_result(claims, shifts, frozenset(), wrong).cost > np.log(1000.0)
 
 
 @pytest.fixture
