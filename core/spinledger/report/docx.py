@@ -324,7 +324,8 @@ def _fill(
     cell: Any, text: str, *, is_muted: bool = False, is_bold: bool = False
 ) -> None:
     paragraph = cell.paragraphs[0]
-    paragraph.paragraph_format.space_after = Pt(1)
+    paragraph.paragraph_format.space_before = Pt(1.5)
+    paragraph.paragraph_format.space_after = Pt(1.5)
     run = paragraph.add_run(text)
     run.font.size = Pt(8)
     run.bold = is_bold
@@ -333,6 +334,7 @@ def _fill(
 
 
 def _muted(paragraph: Any, text: str) -> None:
+    paragraph.paragraph_format.space_before = Pt(2)
     run = paragraph.add_run(text)
     run.font.color.rgb = _MUTED
     run.font.size = Pt(8.5)
