@@ -32,7 +32,7 @@ from spinledger.lines.derivative import complex_second_derivative
 from spinledger.lines.noise import noise_sd
 from spinledger.processing.automatic import process
 from spinledger.processing.automatic_phase import automatic_phase
-from spinledger.processing.found_regions import found_regions
+from spinledger.processing.found_regions import FoundRegions, found_regions
 from spinledger.processing.phase import phased, sweep_positions
 from spinledger.processing.recipe import (
     Transformed,
@@ -41,6 +41,7 @@ from spinledger.processing.recipe import (
     transform,
     with_step,
 )
+from spinledger.processing.tail_phase import tail_correction
 from spinledger.spins.engine import simulate
 from spinledger.values.acquisition import Fid
 from spinledger.values.evidence import Evidence
@@ -192,7 +193,26 @@ def against_maker(dataset: Dataset) -> dict[str, object]:
         theirs.imag = maker.imaginary
         angles = phase_differences(shifted, theirs, spans, maker.step_hz)
         result["phase_error_deg"] = float(np.abs(angles).max())
+        # Which of the two is off: what the tails of the lines ask of each.
+        regions = found_regions(
+            replace(transform(fid, recipe), values=shifted),
+            water_at_carrier=processed.presaturated,
+        )
+        result["tails_ask_of_ours_deg"] = tails_ask_deg(shifted, regions, ours)
+        result["tails_ask_of_maker_deg"] = tails_ask_deg(theirs, regions, ours)
     return result
+
+
+def tails_ask_deg(
+    values: npt.NDArray[np.complex128], regions: FoundRegions, grid: Spectrum
+) -> float:
+    """Largest phase error that the tails beside strong lines show, deg."""
+    asked = tail_correction(
+        values, regions.kept, dropped=regions.dropped, step_hz=grid.step_hz
+    )
+    x = sweep_positions(values.size)[regions.kept.peaks]
+    angles = np.abs(asked.constant_rad + asked.slope_rad * x)
+    return float(np.degrees(angles.max(initial=0.0)))
 
 
 def pearson(a: npt.NDArray[np.float64], b: npt.NDArray[np.float64]) -> float:
