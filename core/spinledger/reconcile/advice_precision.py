@@ -12,7 +12,9 @@ from spinledger.spins.clusters import QUICK_EFFORT
 SHAPE_ERROR = 0.02
 SHIFT_PRIOR_HZ = 50.0
 _STEP_HZ = 0.25
+#: Larger systems are left alone: advice must stay quick.
 _MOST_POINTS = 60_000
+_MOST_LINES = 4_000
 
 
 def coupling_sds_hz(
@@ -30,7 +32,8 @@ def coupling_sds_hz(
     Returns
     -------
     numpy.ndarray, Hz
-        The predicted sd where the spectrum tells nothing.
+        The predicted sd where the spectrum tells nothing, and for systems of
+        more than 4000 lines.
 
     Notes
     -----
@@ -62,10 +65,9 @@ def coupling_sds_hz(
             [max(one.j_sd_hz, 0.1) for one in claims.couplings],
         ]
     )
-    if lines.d_frequency is None or lines.d_protons is None:
-        return prior[len(claims.claims) :]
     grid = _grid(lines.frequencies_hz)
-    if grid.size > _MOST_POINTS:
+    is_large = grid.size > _MOST_POINTS or lines.frequencies_hz.size > _MOST_LINES
+    if lines.d_frequency is None or lines.d_protons is None or is_large:
         return prior[len(claims.claims) :]
     model, slopes = _slopes(
         grid,
