@@ -318,9 +318,15 @@ def _draw_strays(scene: _Scene) -> None:
             scene.canvas,
             x,
             scene.lanes.ground + _FOOT + 6,
-            names.get(stray.kind, stray.kind) if is_free else "",
+            names.get(stray.kind, _compound(stray)) if is_free else "",
             known=is_known,
         )
+
+
+def _compound(stray: Stray) -> str:
+    """Name of a recognised compound where it is short, else the kind of stray."""
+    name, colon, _ = stray.why.partition(":")
+    return name if colon and len(name) <= 14 else stray.kind
 
 
 def _tree_spans(scene: _Scene) -> list[Range]:

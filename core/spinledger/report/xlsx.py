@@ -10,8 +10,9 @@ from collections.abc import Sequence
 from typing import Any
 
 from openpyxl import Workbook
-from openpyxl.styles import Border, Font, Side
+from openpyxl.styles import Alignment, Border, Font, Side
 from openpyxl.utils import get_column_letter
+from openpyxl.worksheet.properties import PageSetupProperties
 
 from spinledger.project.audit import versions
 from spinledger.report.cautions import printed_cautions
@@ -234,8 +235,19 @@ def _sheet(
             cell.value = value
             if isinstance(value, str):  # text stays text, even with a leading "="
                 cell.data_type = "s"
+                cell.alignment = Alignment(wrap_text=True, vertical="top")
     _widths(sheet)
+    _printed(sheet)
     return sheet
+
+
+def _printed(sheet: Any) -> None:
+    """Landscape A4, all columns on one page, the head again on every page."""
+    sheet.page_setup.orientation = "landscape"
+    sheet.page_setup.paperSize = sheet.PAPERSIZE_A4
+    sheet.sheet_properties.pageSetUpPr = PageSetupProperties(fitToPage=True)
+    sheet.page_setup.fitToHeight = 0
+    sheet.print_title_rows = "1:1"
 
 
 def _widths(sheet: Any) -> None:
