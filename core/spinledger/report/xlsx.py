@@ -6,6 +6,7 @@ Shifts in ppm, couplings in Hz, integrals in protons.
 from __future__ import annotations
 
 import io
+import math
 from collections.abc import Sequence
 from typing import Any
 
@@ -61,6 +62,7 @@ _ASSIGNMENT = (
     "j_residual_sd",
     "why",
 )
+_WIDEST, _FLOAT_WIDTH, _LINE_PT = 60, 10, 15.0
 _BUDGET = (
     "quantity",
     "value",
@@ -236,6 +238,8 @@ def _sheet(
             if isinstance(value, str):  # text stays text, even with a leading "="
                 cell.data_type = "s"
                 cell.alignment = Alignment(wrap_text=True, vertical="top")
+            elif isinstance(value, float):  # shown short, stored in full
+                cell.number_format = "0.0000"
     _widths(sheet)
     _printed(sheet)
     return sheet
@@ -251,9 +255,24 @@ def _printed(sheet: Any) -> None:
 
 
 def _widths(sheet: Any) -> None:
+    """Columns as wide as their text, up to a limit; rows as high as it wraps."""
+    lines: dict[int, int] = {}
     for number, column in enumerate(sheet.columns, start=1):
-        longest = max(len(str(cell.value or "")) for cell in column)
-        sheet.column_dimensions[get_column_letter(number)].width = min(60, longest + 2)
+        lengths = [
+            _FLOAT_WIDTH
+            if isinstance(cell.value, float)
+            else len(str(cell.value or ""))
+            for cell in column
+        ]
+        width = min(_WIDEST, max(lengths) + 2)
+        sheet.column_dimensions[get_column_letter(number)].width = width
+        for row, length in enumerate(lengths, start=1):
+            # Words break early: a tenth of a line is lost.
+            needed = math.ceil(1.1 * length / width) if length > width else 1
+            lines[row] = max(lines.get(row, 1), needed)
+    for row, count in lines.items():
+        if count > 1:
+            sheet.row_dimensions[row].height = _LINE_PT * count
 
 
 def _close_account(sheet: Any, ledger: Ledger) -> None:
