@@ -54,6 +54,15 @@ class Singlet:
 
 
 @dataclass(frozen=True, slots=True, kw_only=True)
+class Companion:
+    """A second compound in the tube: its spins, and molecules per molecule of the first."""
+
+    share: float
+    groups: tuple[Group, ...]
+    couplings_hz: dict[tuple[str, str], float]
+
+
+@dataclass(frozen=True, slots=True, kw_only=True)
 class Sample:
     """One tube: what is really in it, and how it was measured."""
 
@@ -70,6 +79,7 @@ class Sample:
     phase_deg: float
     form: str
     pulse_program: str = "zg30"
+    companions: tuple[Companion, ...] = ()
 
 
 HYDROXY_ESTER = (
@@ -90,6 +100,32 @@ HYDROXY_ESTER_J = {
     ("1'B", "2'"): 7.13,
     ("1'A", "1'B"): -10.80,
 }
+
+
+def methyl_ester(
+    *, c3: float, c2: float, methyl: float, c4: float
+) -> tuple[Group, ...]:
+    """Carbon-bound protons of ethyl 3-hydroxy-2-methylbutanoate."""
+    return (
+        Group(label="3", n_spins=1, shift_ppm=c3),
+        Group(label="1'", n_spins=2, shift_ppm=4.1720),
+        Group(label="2", n_spins=1, shift_ppm=c2),
+        Group(label="2'", n_spins=3, shift_ppm=1.2750),
+        Group(label="2-Me", n_spins=3, shift_ppm=methyl),
+        Group(label="4", n_spins=3, shift_ppm=c4),
+    )
+
+
+def methyl_ester_j(j_23_hz: float) -> dict[tuple[str, str], float]:
+    """Couplings of one diastereomer; J(2,3) tells them apart."""
+    return {
+        ("2", "3"): j_23_hz,
+        ("3", "4"): 6.35,
+        ("2", "2-Me"): 7.20,
+        ("1'", "2'"): 7.13,
+    }
+
+
 CHLOROFORM = Singlet(shift_ppm=7.260, protons=0.42)
 TMS = Singlet(shift_ppm=0.0, protons=0.9)
 SAMPLES = (
@@ -198,11 +234,44 @@ SAMPLES = (
         phase_deg=-15.0,
         form="jcamp",
     ),
+    Sample(
+        name="batch-130",
+        solvent="CDCl3",
+        title="Batch 130, 2-methyl ester, both diastereomers",
+        date_s=1793259200,
+        groups=(
+            *methyl_ester(c3=3.8820, c2=2.4420, methyl=1.1790, c4=1.2210),
+            Group(label="OH", n_spins=1, shift_ppm=2.720, width_hz=9.0),
+        ),
+        couplings_hz=methyl_ester_j(7.10),
+        singlets=(
+            CHLOROFORM,
+            TMS,
+            Singlet(shift_ppm=1.560, protons=0.30, width_hz=2.5),
+        ),
+        noise=4.0e-4,
+        seed=130,
+        axis_error_ppm=0.030,
+        phase_deg=58.0,
+        form="jcamp",
+        companions=(
+            Companion(
+                share=28.0 / 72.0,
+                groups=(
+                    *methyl_ester(c3=4.0710, c2=2.5130, methyl=1.1960, c4=1.1610),
+                    Group(label="OH", n_spins=1, shift_ppm=2.720, width_hz=9.0),
+                ),
+                couplings_hz=methyl_ester_j(3.90),
+            ),
+        ),
+    ),
 )
 STRUCTURES = {
     "hydroxy-ester": "C[C@@H](O)CC(=O)OCC",
     "wrong-isomer": "CCC(O)C(=O)OCC",
     "hydroxy-acid-salt": "CC(O)CC(=O)[O-].[Na+]",
+    "anti-methyl-ester": "C[C@@H](O)[C@@H](C)C(=O)OCC",
+    "syn-methyl-ester": "C[C@@H](O)[C@H](C)C(=O)OCC",
 }
 CANDIDATES = (
     ("C[C@@H](O)CC(=O)OCC", "3-hydroxy ester"),
@@ -211,33 +280,48 @@ CANDIDATES = (
     ("CCOC(C)CC(=O)O", "3-ethoxy acid"),
 )
 
+MIXTURE = (
+    (STRUCTURES["anti-methyl-ester"], "anti ester"),
+    (STRUCTURES["syn-methyl-ester"], "syn ester"),
+)
+
 
 def sample_lines(sample: Sample) -> list[tuple[float, float, float]]:
     """Offset from the carrier (Hz), area (protons) and width (Hz) of every line."""
-    labels = [group.label for group in sample.groups]
+    lines = spin_lines(sample.groups, sample.couplings_hz)
+    for one in sample.companions:
+        lines += [
+            (at_hz, area * one.share, width_hz)
+            for at_hz, area, width_hz in spin_lines(one.groups, one.couplings_hz)
+        ]
+    lines += [(offset_hz(s.shift_ppm), s.protons, s.width_hz) for s in sample.singlets]
+    return lines + carbon_satellites(sample)
+
+
+def spin_lines(
+    groups: tuple[Group, ...], couplings_hz: dict[tuple[str, str], float]
+) -> list[tuple[float, float, float]]:
+    """The same for the spin system of one compound."""
+    labels = [group.label for group in groups]
     couplings = np.zeros((len(labels), len(labels)))
-    for (first, second), j_hz in sample.couplings_hz.items():
+    for (first, second), j_hz in couplings_hz.items():
         i, k = labels.index(first), labels.index(second)
         couplings[i, k] = couplings[k, i] = j_hz
     system = SpinSystem(
-        n_spins=np.array([group.n_spins for group in sample.groups]),
-        frequencies_hz=np.array(
-            [offset_hz(group.shift_ppm) for group in sample.groups]
-        ),
+        n_spins=np.array([group.n_spins for group in groups]),
+        frequencies_hz=np.array([offset_hz(group.shift_ppm) for group in groups]),
         couplings_hz=couplings,
         nuclei=("1H",) * len(labels),
     )
     transitions = simulate(system)
-    lines = [
-        (float(frequency), float(area), sample.groups[particle].width_hz)
+    return [
+        (float(frequency), float(area), groups[particle].width_hz)
         for particle, areas in zip(
             transitions.observed, transitions.intensities, strict=True
         )
         for frequency, area in zip(transitions.frequencies_hz, areas, strict=True)
         if abs(area) > 1e-5
     ]
-    lines += [(offset_hz(s.shift_ppm), s.protons, s.width_hz) for s in sample.singlets]
-    return lines + carbon_satellites(sample)
 
 
 def carbon_satellites(sample: Sample) -> list[tuple[float, float, float]]:
@@ -403,6 +487,8 @@ def write_structures(folder: Path) -> None:
         (folder / f"{name}.mol").write_text("\n".join(lines), newline="\n")
     text = "".join(f"{smiles} {name}\n" for smiles, name in CANDIDATES)
     (folder / "candidates.smi").write_text(text, newline="\n")
+    text = "".join(f"{smiles} {name}\n" for smiles, name in MIXTURE)
+    (folder / "mixture.smi").write_text(text, newline="\n")
 
 
 def files_below(folder: Path) -> list[Path]:

@@ -35,6 +35,8 @@ def build_parser() -> argparse.ArgumentParser:
         _open,
         _compare,
         _sample,
+        _mixture,
+        _library,
         _report,
         _quantify,
     ):
@@ -306,6 +308,47 @@ def _sample(commands: _Subparsers[argparse.ArgumentParser]) -> None:
             default=usual,
             help=f"what {what} may differ from a reference by (default: {usual:g})",
         )
+
+
+def _mixture(commands: _Subparsers[argparse.ArgumentParser]) -> None:
+    parser = _command(commands, "mixture", "Measure the composition of a mixture")
+    _data(parser)
+    parser.add_argument(
+        "--components",
+        metavar="FILE.smi",
+        type=Path,
+        required=True,
+        help='one "SMILES name" a line; "sm: name" for a starting material, '
+        '"by-product: name" for a by-product',
+    )
+    _output(parser)
+    _matching_options(parser)
+
+
+def _library(commands: _Subparsers[argparse.ArgumentParser]) -> None:
+    parser = _command(commands, "library", "Keep and ask a library of own compounds")
+    parser.add_argument(
+        "library", metavar="FOLDER", type=Path, help="plain folder of records"
+    )
+    parser.add_argument(
+        "--add",
+        metavar="PROJECT.sledger",
+        type=Path,
+        help="save the reconciled compound of a project as a record",
+    )
+    parser.add_argument("--name", metavar="NAME", help="of the new record")
+    parser.add_argument(
+        "--near",
+        metavar="STRUCTURE",
+        help="shifts of a structure, corrected by the nearest known environments",
+    )
+    parser.add_argument(
+        "--data",
+        metavar="DATA",
+        type=Path,
+        help="name the records that a spectrum shows",
+    )
+    parser.add_argument("--solvent", metavar="NAME", help="default: CDCl3 for --near")
 
 
 def _report(commands: _Subparsers[argparse.ArgumentParser]) -> None:

@@ -245,7 +245,9 @@ def _with_ratios(
 
 def _summed_up(signals: tuple[CommonSignal, ...], n_missing: int) -> Alignment:
     offsets = np.array([one.offset_ppm for one in signals])
-    offset = float(np.median(offsets))
+    offset = _weighted_median(
+        offsets, np.array([1.0 / (1.0 - one.correlation + 0.002) for one in signals])
+    )
     # 1.2533: sd of a median over that of a mean; 1.4826: median deviation to sd.
     spread = 1.4826 * float(np.median(np.abs(offsets - offset)))
     offset_sd = 1.2533 * max(spread, 1e-4) / np.sqrt(offsets.size)
@@ -262,6 +264,13 @@ def _summed_up(signals: tuple[CommonSignal, ...], n_missing: int) -> Alignment:
         signals=signals,
         n_missing=n_missing,
     )
+
+
+def _weighted_median(values: Floats, weights: Floats) -> float:
+    """Median in which signals that look alike count more than those that changed."""
+    order = np.argsort(values)
+    shares = np.cumsum(weights[order]) - 0.5 * weights[order]
+    return float(np.interp(0.5 * weights.sum(), shares, values[order]))
 
 
 def robust_scale(ratios: Floats, sds: Floats) -> tuple[float, float, float]:

@@ -12,6 +12,7 @@ from scipy.optimize import minimize_scalar
 from spinledger.sample.shim import Matched
 from spinledger.sample.traces import Trace
 from spinledger.spins.network import ClaimNetwork
+from spinledger.values.claim import ClaimSet
 from spinledger.values.ledger import ClaimLines, Ledger
 
 Floats = npt.NDArray[np.float64]
@@ -74,7 +75,9 @@ def collapses(ledger: Ledger, matched: Matched) -> tuple[Collapse, ...]:
         for coupling in entry.couplings:
             if coupling.j_hz is None or coupling.partner == claim.label:
                 continue
-            one = _collapse(ledger, matched, (claim.label, coupling.partner))
+            one = _collapse(
+                ledger, matched, (claim.label, coupling.partner), coupling.j_hz
+            )
             if one is not None:
                 fraction, sd = one
                 found.append(
@@ -119,7 +122,7 @@ def fitted_spins(ledger: Ledger, frequency_mhz: float) -> tuple[Floats, Floats]:
 
 
 def _collapse(
-    ledger: Ledger, matched: Matched, pair: tuple[str, str]
+    ledger: Ledger, matched: Matched, pair: tuple[str, str], j_hz: float
 ) -> tuple[float, float] | None:
     claim, partner = pair
     if ledger.model is None:
@@ -134,28 +137,43 @@ def _collapse(
     if own is None:
         return None
     frequency_mhz = ledger.evidence.spectrum.spectrometer_frequency_mhz
+    entry = next(one for one in ledger.entries if one.claim == partner)
+    if entry.range_ppm is None or abs(j_hz) < RESOLVED_SHARE * own.width_hz:
+        return None
+    reach_hz = (
+        entry.range_ppm[0] * frequency_mhz - MARGIN_HZ,
+        entry.range_ppm[1] * frequency_mhz + MARGIN_HZ,
+    )
     width_hz = own.width_hz + max(-matched.broadening_hz, 0.0)
     network = ClaimNetwork(claims)
     shifts_hz, couplings_hz = fitted_spins(ledger, frequency_mhz)
-    absent = frozenset(k for k, label in enumerate(labels) if label not in shown)
+    absent = frozenset(
+        k for k, label in enumerate(labels) if label not in (*shown, claim)
+    )
     shapes = []
-    for without in (absent - {gone}, absent | {gone}):
-        lines = network.lines(shifts_hz, couplings_hz, without=without)
-        mine = lines.claim == index
+    for values_hz in (couplings_hz, _uncoupled(claims, couplings_hz, gone)):
+        lines = network.lines(shifts_hz, values_hz, without=absent)
+        mine = (lines.claim == index) & _inside(lines.frequencies_hz, reach_hz)
         shapes.append((lines.frequencies_hz[mine], lines.protons[mine]))
-    if _moved_hz(shapes) < RESOLVED_SHARE * width_hz:
+    if not all(at.size for at, _ in shapes):
         return None
     others = [one for name, one in shown.items() if name not in pair]
     return _fitted_share(matched.other, shapes, width_hz, others)
 
 
-def _moved_hz(shapes: Sequence[tuple[Floats, Floats]]) -> float:
-    """Splitting that goes with the coupling, from the second moments."""
-    moments = []
-    for places, weights in shapes:
-        mean = float(np.average(places, weights=weights))
-        moments.append(float(np.average((places - mean) ** 2, weights=weights)))
-    return float(2.0 * np.sqrt(max(moments[0] - moments[1], 0.0)))
+def _uncoupled(claims: ClaimSet, couplings_hz: Floats, gone: int) -> Floats:
+    """Couplings with those of one claim set to zero."""
+    values = np.array(couplings_hz)
+    for number, coupling in enumerate(claims.couplings):
+        owners = {claims.particles[k].claim for pair in coupling.pairs for k in pair}
+        if gone in owners:
+            values[number] = 0.0
+    return values
+
+
+def _inside(places_hz: Floats, reach_hz: tuple[float, float]) -> npt.NDArray[np.bool_]:
+    """Lines of a signal without the faint ones that strong coupling puts far away."""
+    return np.asarray((places_hz >= reach_hz[0]) & (places_hz <= reach_hz[1]))
 
 
 def _fitted_share(

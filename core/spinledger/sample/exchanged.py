@@ -25,6 +25,7 @@ from spinledger.values.evidence import Evidence
 # A Lorentz line keeps 94 % of its area within five widths on each side.
 REACH_WIDTHS = 5.0
 LEAST_REACH_HZ = 8.0
+LOOKS_THE_SAME = 0.02
 # Areas of one spectrum agree with the proton counts no better than this
 # [common practice].
 LEAST_STOICHIOMETRY_SD = 0.02
@@ -200,7 +201,13 @@ def matched_traces(before: Evidence, after: Evidence, alignment: Alignment) -> M
     """Both spectra on the axis of the first, brought to one line width."""
     first = trace_of(before)
     second = trace_upon(after, first, offset_ppm=alignment.offset_ppm)
-    common = [(one.low_ppm, one.high_ppm) for one in alignment.signals]
+    # A signal whose couplings collapsed says nothing of the width.
+    alike = max(one.correlation for one in alignment.signals) - LOOKS_THE_SAME
+    common = [
+        (one.low_ppm, one.high_ppm)
+        for one in alignment.signals
+        if one.correlation >= alike
+    ]
     margin_ppm = LEAST_REACH_HZ / first.frequency_mhz
     return match_widths(
         first, second, [(low - margin_ppm, high + margin_ppm) for low, high in common]

@@ -88,35 +88,25 @@ def test_water_on_the_exchangeable_withholds_the_fraction() -> None:
 
 @pytest.fixture(scope="module")
 def in_dmso() -> tuple[make_samples.Sample, make_samples.Sample]:
-    """The hydroxy ester in DMSO, its OH a doublet of 5 Hz, and without its OH."""
+    """Propan-2-ol in DMSO, its OH a doublet of 5 Hz, and without its OH."""
     sample = next(one for one in make_samples.SAMPLES if one.name == "batch-117")
-    solvent = (
-        make_samples.Singlet(shift_ppm=2.50, protons=0.001),
-        make_samples.Singlet(shift_ppm=0.0, protons=0.9),
-    )
-    ester = tuple(
-        replace(one, shift_ppm=one.shift_ppm - 0.15)
-        if one.label in ("2A", "2B")
-        else replace(one, shift_ppm=3.95)
-        if one.label == "3"
-        else one
-        for one in make_samples.HYDROXY_ESTER
+    group, singlet = make_samples.Group, make_samples.Singlet
+    carbons = (
+        group(label="1", n_spins=6, shift_ppm=1.035),
+        group(label="2", n_spins=1, shift_ppm=3.775),
     )
     whole = replace(
         sample,
         solvent="DMSO-d6",
-        groups=(
-            *ester,
-            make_samples.Group(label="OH", n_spins=1, shift_ppm=4.70, width_hz=1.4),
-        ),
-        couplings_hz={**make_samples.HYDROXY_ESTER_J, ("3", "OH"): 5.0},
-        singlets=solvent,
+        groups=(*carbons, group(label="OH", n_spins=1, shift_ppm=4.30, width_hz=1.4)),
+        couplings_hz={("1", "2"): 6.1, ("2", "OH"): 5.0},
+        singlets=(singlet(shift_ppm=0.0, protons=0.9),),
     )
     gone = replace(
         whole,
-        groups=ester,
-        couplings_hz=make_samples.HYDROXY_ESTER_J,
-        singlets=(*solvent, make_samples.Singlet(shift_ppm=3.45, protons=4.0)),
+        groups=carbons,
+        couplings_hz={("1", "2"): 6.1},
+        singlets=(*whole.singlets, singlet(shift_ppm=3.33, protons=2.0)),
     )
     return whole, gone
 
@@ -152,17 +142,17 @@ def test_partly_exchanged_oh_collapses_its_coupling_by_the_same_share(
     after = _evidence([(whole, 0.4), (gone, 0.6)], "tube shaken", 22)
     ledger = reconcile(
         before,
-        read_structure("C[C@@H](O)CC(=O)OCC"),
+        read_structure("CC(C)O"),
         options=ReconcileOptions(quick=True),
     )
     shake = shake_pair(ledger, after)
     (oh,) = shake.fractions
-    assert oh.claims == ("3-OH",)
+    assert len(oh.claims) == 1
     assert oh.fraction is not None
     assert oh.sd is not None
     assert oh.fraction == pytest.approx(0.6, abs=3.0 * oh.sd)
     (collapse,) = shake.collapses
-    assert collapse.partner == "3-H"
+    assert collapse.claim == oh.claims[0]
     assert collapse.fraction == pytest.approx(0.6, abs=3.0 * collapse.sd)
     assert any("as its loss asks for" in one for one in shake.sentences())
     assert any(one.is_water for one in shake.gains)
