@@ -5,13 +5,14 @@ from __future__ import annotations
 import csv
 import io
 import re
-from collections.abc import Iterator, Sequence
+from collections.abc import Sequence
 from dataclasses import dataclass
 from pathlib import Path
 
 from spinledger.errors import SpinLedgerError
 
 _COLUMNS = ("data", "structure")
+_SEPARATOR = re.compile(r"\ufeff?sep=(.)\r?\n?", re.IGNORECASE)
 
 
 class BatchTableError(SpinLedgerError, ValueError):
@@ -48,8 +49,9 @@ class Row:
 def read_table(path: Path) -> tuple[Row, ...]:
     """Rows of a batch table.
 
-    Comma, semicolon or tab; UTF-8 (with or without mark), UTF-16 or Latin-1;
-    any line ends. A faulty row is kept with its fault.
+    Comma, semicolon or tab; UTF-8 (with or without mark), UTF-16 or
+    Windows Latin; any line ends. Blank rows are left out, a faulty one is kept
+    with its fault.
 
     Raises
     ------
@@ -60,9 +62,17 @@ def read_table(path: Path) -> tuple[Row, ...]:
     lines = [line for line in text.splitlines() if line.strip()]
     if not lines:
         raise BatchTableError(path, "the table is empty")
-    delimiter = max(",;\t", key=lines[0].count)
-    reader = csv.reader(io.StringIO("\n".join(lines)), delimiter=delimiter)
-    head = [name.strip().lower() for name in next(reader)]
+    named = _SEPARATOR.match(text)  # a spreadsheet's own first line
+    delimiter = named[1] if named else max(",;\t", key=lines[0].count)
+    body = io.StringIO(text[named.end() :] if named else text, newline="")
+    reader = csv.reader(body, delimiter=delimiter)
+    try:
+        cells = [row for row in reader if any(cell.strip() for cell in row)]
+    except csv.Error as error:
+        raise BatchTableError(
+            path, f"line {reader.line_num} cannot be read as a table ({error})"
+        ) from error
+    head = [name.strip().lower() for name in cells[0]] if cells else []
     missing = [name for name in _COLUMNS if name not in head]
     if missing:
         raise BatchTableError(
@@ -70,13 +80,15 @@ def read_table(path: Path) -> tuple[Row, ...]:
             f"the column {missing[0]} is missing; the first line must name the "
             "columns data, structure, solvent and id",
         )
-    return _rows(head, reader)
+    return _rows(head, cells[1:])
 
 
-def _rows(head: Sequence[str], reader: Iterator[list[str]]) -> tuple[Row, ...]:
+def _rows(
+    head: Sequence[str], rows_of_cells: Sequence[Sequence[str]]
+) -> tuple[Row, ...]:
     rows: list[Row] = []
     taken: set[str] = set()
-    for number, cells in enumerate(reader, start=1):
+    for number, cells in enumerate(rows_of_cells, start=1):
         row = _row(
             number, dict(zip(head, (cell.strip() for cell in cells), strict=False))
         )
@@ -124,4 +136,4 @@ def _text_of(path: Path) -> str:
     try:
         return content.decode("utf-8-sig")
     except UnicodeDecodeError:
-        return content.decode("latin-1")
+        return content.decode("cp1252", errors="replace")
