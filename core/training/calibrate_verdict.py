@@ -1,6 +1,7 @@
 """Fit the verdict model on acquired spectra of known compounds and wrong structures.
 
-usage: calibrate_verdict.py ROWS.json [--out verdict.json] [--report FILE]
+usage: calibrate_verdict.py ROWS.json [--out verdict.json] [--diagram FILE.svg]
+       [--ablation] [--verbose]
 
 ROWS.json is what tests/benchmarks/reconcile.py wrote with --rows: for every
 spectrum the features of the true structure, of wrong isomers and of structures
@@ -13,7 +14,7 @@ from __future__ import annotations
 
 import argparse
 import json
-from dataclasses import dataclass
+from dataclasses import dataclass, replace
 from itertools import pairwise
 from pathlib import Path
 from typing import Any
@@ -57,6 +58,18 @@ PRIOR_WEIGHTS = {
     "coincidence": 0.5,
 }
 RIDGE = 0.05
+# Parts of the evidence, each added to those before it in an ablation.
+PARTS = {
+    "shift": ("shift", "worst_shift"),
+    "+ integral": ("amplitude", "open", "unexplained"),
+    "+ splitting": (
+        "rigid_coupling",
+        "worst_rigid_coupling",
+        "soft_coupling",
+        "coincidence",
+    ),
+    "+ line shape": ("misfit", "worst_misfit", "width"),
+}
 # Of the weight of all wrong structures; the rest are wrong isomers.
 CROSS_WEIGHT = 0.25
 # A wrong structure accepted costs this many times a right one refused.
@@ -143,7 +156,7 @@ def sample_weights(table: Table, used: BoolArray) -> FloatArray:
             }
             share = np.array([1.0 / np.sqrt(counts[name]) for name in names[rows]])
             weights[rows] = total * share / share.sum()
-    return weights / weights.sum()
+    return np.asarray(weights / weights.sum())
 
 
 def fit(features: FloatArray, is_right: BoolArray, weights: FloatArray) -> FloatArray:
@@ -256,6 +269,51 @@ def reliability(probabilities: FloatArray, table: Table) -> list[dict[str, float
     return rows
 
 
+def diagram(rows: list[dict[str, float]]) -> str:
+    """SVG of seen against stated probability; areas of dots are structures."""
+    size, edge = 360, 56
+    span = size - 2 * edge
+
+    def at(stated: float, seen: float) -> tuple[float, float]:
+        return edge + span * stated, size - edge - span * seen
+
+    parts = [
+        f'<svg xmlns="http://www.w3.org/2000/svg" viewBox="0 0 {size} {size}" '
+        'font-family="sans-serif" font-size="11" fill="none">',
+        f'<rect width="{size}" height="{size}" fill="white"/>',
+        f'<rect x="{edge}" y="{edge}" width="{span}" height="{span}" stroke="#888"/>',
+    ]
+    for tick in (0.0, 0.25, 0.5, 0.75, 1.0):
+        x, y = at(tick, tick)
+        parts.append(
+            f'<text x="{x:.0f}" y="{size - edge + 16}" text-anchor="middle" '
+            f'fill="#333">{tick:g}</text>'
+            f'<text x="{edge - 6}" y="{y + 4:.0f}" text-anchor="end" '
+            f'fill="#333">{tick:g}</text>'
+        )
+    (x0, y0), (x1, y1) = at(0.0, 0.0), at(1.0, 1.0)
+    parts.append(f'<path d="M{x0} {y0}L{x1} {y1}" stroke="#888" stroke-dasharray="4"/>')
+    dots = [at(row["stated"], row["seen"]) for row in rows]
+    line = "L".join(f"{x:.1f} {y:.1f}" for x, y in dots)
+    parts.append(f'<path d="M{line}" stroke="#20558a"/>')
+    for (x, y), row in zip(dots, rows, strict=True):
+        radius = 2.0 + 0.5 * float(np.sqrt(row["structures"]))
+        parts.append(
+            f'<circle cx="{x:.1f}" cy="{y:.1f}" r="{radius:.1f}" fill="#20558a">'
+            f"<title>{row['structures']} structures</title></circle>"
+        )
+    parts += [
+        f'<text x="{size / 2}" y="{size - 16}" text-anchor="middle" fill="#333">'
+        "stated probability</text>",
+        f'<text transform="translate(16 {size / 2})rotate(-90)" text-anchor="middle" '
+        'fill="#333">share of right structures</text>',
+        f'<text x="{size / 2}" y="28" text-anchor="middle" fill="#333">'
+        "Verdict, compounds left out of the fit</text>",
+        "</svg>",
+    ]
+    return "\n".join(parts) + "\n"
+
+
 def figures(probabilities: FloatArray, table: Table, upper: float) -> dict[str, Any]:
     """Left-out figures of merit."""
     right = table.is_right
@@ -279,6 +337,39 @@ def figures(probabilities: FloatArray, table: Table, upper: float) -> dict[str, 
     }
 
 
+def ablation(table: Table) -> list[dict[str, Any]]:
+    """Left-out figures as parts of the evidence are added one by one.
+
+    The fits behind the features used all of the spectrum; what is left out here
+    is left out of the verdict alone.
+    """
+    rows, kept = [], np.zeros(len(FEATURES), dtype=np.bool_)
+    for part, names in PARTS.items():
+        kept |= np.isin(FEATURES, names)
+        reduced = replace(table, features=np.where(kept, table.features, 0.0))
+        logits = left_out_logits(reduced)
+        probabilities = 1.0 / (1.0 + np.exp(-np.clip(logits, -30, 30)))
+        upper, _ = choose_limits(probabilities, reduced)
+        first, sets = ranked_first(logits, table)
+        found = figures(probabilities, reduced, upper)
+        rows.append({"part": part, "first": first, "sets": sets, **found})
+    return rows
+
+
+def ranked_first(logits: FloatArray, table: Table) -> tuple[int, int]:
+    """Spectra whose right structure beats all wrong isomers, and how many there are."""
+    names = np.array(table.spectra)
+    first, sets = 0, 0
+    for name in sorted(set(table.spectra)):
+        here = names == name
+        right = logits[here & table.is_right]
+        wrong = logits[here & table.is_isomer & ~table.is_right & ~table.is_tie]
+        if right.size and wrong.size:
+            sets += 1
+            first += int(right.max() > wrong.max())
+    return first, sets
+
+
 def main() -> int:
     """Fit, print the left-out figures, and write the model."""
     parser = argparse.ArgumentParser(
@@ -286,6 +377,8 @@ def main() -> int:
     )
     parser.add_argument("rows", type=Path)
     parser.add_argument("--out", type=Path)
+    parser.add_argument("--diagram", type=Path)
+    parser.add_argument("--ablation", action="store_true")
     parser.add_argument("--verbose", action="store_true")
     args = parser.parse_args()
     table = read_rows(args.rows)
@@ -294,6 +387,7 @@ def main() -> int:
     upper, lower = choose_limits(probabilities, table)
     parameters = _fit_rows(table, np.ones(logits.size, dtype=np.bool_))
     left_out = figures(probabilities, table, upper)
+    believed = reliability(probabilities, table)
     model = {
         "features": list(FEATURES),
         "weights": {
@@ -305,13 +399,17 @@ def main() -> int:
         "lower": lower,
         "temperature": choose_temperature(logits, table),
         "left_out_by_compound": left_out,
-        "reliability": reliability(probabilities, table),
+        "reliability": believed,
     }
     print(json.dumps(model, indent=1))
+    if args.ablation:
+        print(json.dumps(ablation(table), indent=1))
     if args.verbose:
         _print_mistakes(table, probabilities, upper)
     if args.out:
         args.out.write_text(json.dumps(model, indent=1) + "\n")
+    if args.diagram:
+        args.diagram.write_text(diagram(believed))
     return 0
 
 
