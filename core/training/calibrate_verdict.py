@@ -73,7 +73,7 @@ PARTS = {
 # Of the weight of all wrong structures; the rest are wrong isomers.
 CROSS_WEIGHT = 0.25
 # A wrong structure accepted costs this many times a right one refused.
-WRONG_ACCEPTED_COST = 2.0
+WRONG_ACCEPTED_COST = 3.0
 LEAST_ACCEPTED = 0.9
 
 
@@ -209,7 +209,7 @@ def choose_limits(probabilities: FloatArray, table: Table) -> tuple[float, float
     that can be had; below the lower one hardly any right structure lies.
     """
     right = probabilities[table.is_right]
-    wrong = probabilities[~table.is_right & table.is_isomer & ~table.is_tie]
+    wrong = probabilities[~table.is_right & ~table.is_tie]
     best, upper = np.inf, 0.5
     for limit in np.arange(0.3, 0.91, 0.01):
         accepted = float((right >= limit).mean())
