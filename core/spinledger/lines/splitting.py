@@ -21,6 +21,8 @@ _SPLIT_HALF_WIDTHS = 0.8
 # What one more line must gain in chi square: three parameters at about 5 sd.
 _LEAST_GAIN = 30.0
 _LEAST_PROGRESS = 0.5
+# Splits that leave more of a misfit this large only draw another shape.
+_LEAST_FALL, _OTHER_SHAPE = 0.75, 4.0
 
 
 @dataclass(frozen=True, slots=True, eq=False, kw_only=True)
@@ -77,7 +79,10 @@ def fit_with_splits(
         gain = stretch.chi_square(best) - stretch.chi_square(trial)
         if gain < _LEAST_PROGRESS * _LEAST_GAIN:
             break
+        falls = trial.misfit_sd < _LEAST_FALL * best.misfit_sd
         best = trial
+        if not falls and best.misfit_sd > _OTHER_SHAPE * stretch.noise.sd:
+            break
     gain = stretch.chi_square(first) - stretch.chi_square(best)
     added = best.centres_hz.size - first.centres_hz.size
     if _is_good(stretch, best) and gain > _LEAST_GAIN * added:
