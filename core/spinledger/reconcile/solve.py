@@ -56,8 +56,10 @@ MISFIT_DRAW = 5.0
 HOPELESS_RESIDUAL = 0.6
 # Nothing is gained beyond a fit as good as the misfit can tell.
 PERFECT = 0.022
-N_SEARCHED = 3
-MAX_SEARCHES = 2
+# Starts of the search beside a good fit, and beside others.
+N_SEARCHED_GOOD = 3
+N_SEARCHED = 6
+MAX_SEARCHES = 3
 N_SKETCHED = 4
 SEARCH_WINDOW = 6.0
 TIE_WINDOW = 1.0
@@ -284,6 +286,8 @@ def _proposals(
 ) -> list[FloatArray]:
     """Shifts of promising arrangements on the close view, best first."""
     best = sketches[0]
+    is_good = best.assessment.residual_share < WELL_FITTED
+    most = N_SEARCHED_GOOD if is_good else N_SEARCHED
     gone = best.hypothesis.absent | best.hypothesis.hidden
     close = close_up(
         sketchpad.prepared.evidence,
@@ -295,7 +299,7 @@ def _proposals(
     )
     starts = [
         close.places_of(one.refinement.shifts_ppm, gone)
-        for one in sketches[:N_SEARCHED]
+        for one in sketches[:most]
         if one.hypothesis.absent | one.hypothesis.hidden == gone
     ]
     found = rearranged(close, starts, is_over=limits.is_over)
