@@ -19,6 +19,7 @@ from spinledger.project.document import (
     with_layout,
     with_ledger,
     with_options,
+    with_tick,
     without_structure,
 )
 from spinledger.project.edits import Edit, SetRecipe, apply_edit
@@ -273,6 +274,13 @@ class Bench(WritingBench):
         options = self.project.options
         kept = tuple(one for one in options.contenders if one.smiles != smiles)
         self._set_options(say("drop a contender"), replace(options, contenders=kept))
+
+    def tick_contender(self, smiles: str, is_ticked: bool) -> None:
+        """List a contender in the report, or no longer."""
+        what = say("tick a contender") if is_ticked else say("untick a contender")
+        self.session.apply(
+            what, lambda project: with_tick(project, smiles, is_ticked=is_ticked)
+        )
 
     def set_n_contenders(self, number: int | None) -> None:
         """Say how many isomers are enumerated; None leaves it to the program."""

@@ -3,6 +3,7 @@
 from __future__ import annotations
 
 from collections.abc import Iterator
+from dataclasses import replace
 from pathlib import Path
 
 import invented
@@ -13,6 +14,8 @@ from PySide6.QtTest import QTest
 from PySide6.QtWidgets import QApplication
 from stage import put_on, settle, stage, take_down
 
+from spinledger.report.context import ReportContext
+from spinledger.report.html import report_html
 from spinledger.structure.read import read_structure
 from spinledger_app import tasks
 from spinledger_app.application import Parts, build
@@ -144,3 +147,30 @@ def test_a_contender_is_added_and_dropped_by_hand(
     parts.desk.do("undo")
     parts.bench._timer.stop()
     assert len(parts.bench.project.options.contenders) == 1
+
+
+def contenders_only(parts: Parts) -> ReportContext:
+    return replace(parts.bench.report_context(), sections=("contenders",))
+
+
+def test_a_ticked_contender_alone_is_listed_in_the_report(parts: Parts) -> None:
+    put_on(parts, invented.ledger())
+    card = parts.window.contenders.cards[1]
+    smiles = card.text.smiles
+    QTest.mouseClick(card.tick, LEFT, pos=card.tick.rect().center())
+    settle()
+    assert parts.bench.project.ticked == (smiles,)
+    ledger = parts.bench.project.ledger
+    assert ledger is not None
+    page = report_html(ledger, contenders_only(parts))
+    listed = page.split("<h3>Contenders</h3>")[1].split("</section>")[0]
+    assert card.text.name in listed
+    assert parts.window.contenders.cards[2].text.name not in listed
+    # What was tested and is not listed is still counted, with its outcome.
+    assert "Tested and not listed: 2, of which 1 excluded and 1 not" in listed
+    parts.desk.do("undo")
+    settle()
+    assert parts.bench.project.ticked == ()
+    assert not parts.window.contenders.cards[1].tick.isChecked()
+    page = report_html(ledger, contenders_only(parts))
+    assert "Tested and not listed" not in page

@@ -94,11 +94,11 @@ def test_escape_takes_the_overlay_then_the_choice_away(parts: Parts) -> None:
     lanes, scene = parts.window.lanes, parts.bench.scene
     assert scene is not None
     before = lanes.grab().toImage()
-    lanes.show_overlay(replace(scene.measured, pyramid=_shifted(scene.measured)))
+    lanes.show_overlays(replace(scene.measured, pyramid=_shifted(scene.measured)))
     assert lanes.grab().toImage() != before
     parts.bench.selection.select("3-H")
     QTest.keyClick(parts.window, Qt.Key.Key_Escape)
-    assert lanes.overlay is None
+    assert lanes.overlays == ()
     assert parts.bench.selection.marks.selected == "3-H"
     QTest.keyClick(parts.window, Qt.Key.Key_Escape)
     settle()
@@ -121,3 +121,30 @@ def test_the_field_strip_opens_at_the_spectrum_s_own_field(parts: Parts) -> None
     assert asked == [500.0]
     QTest.keyClick(parts.window, Qt.Key.Key_Escape)
     assert not strip.isVisible()
+
+
+def test_two_contenders_lie_over_each_other_solid_and_dashed(
+    parts: Parts, monkeypatch: pytest.MonkeyPatch
+) -> None:
+    scene = parts.bench.scene
+    assert scene is not None
+    trace = replace(scene.measured, pyramid=_shifted(scene.measured))
+
+    def fit_now(*_given: object, **hands: object) -> None:
+        done = hands["done"]
+        assert callable(done)
+        done(replace(trace))
+
+    monkeypatch.setattr(parts.pool, "run", fit_now)
+    lanes = parts.window.lanes
+    parts.desk.overlays.compare("CC(C)OC(=O)CCO", "one")
+    alone = lanes.grab().toImage()
+    parts.desk.overlays.compare("CCOC(=O)C(O)CC", "two")
+    assert len(lanes.overlays) == 2
+    assert "one (solid) and two (dashed)" in parts.window.status.words
+    # The same curve twice: only the second manner of drawing can make a difference.
+    assert lanes.grab().toImage() != alone
+    parts.desk.overlays.compare("CCOC(C)CC(=O)O", "three")
+    assert "two (solid) and three (dashed)" in parts.window.status.words
+    QTest.keyClick(parts.window, Qt.Key.Key_Escape)
+    assert lanes.overlays == ()

@@ -60,6 +60,10 @@ class MenuHandlers:
         if smiles in added:
             drop = menu.addAction(say("Test it no longer"))
             drop.triggered.connect(lambda: self.bench.drop_contender(smiles))
+        tick = menu.addAction(say("List it in the report"))
+        tick.setCheckable(True)
+        tick.setChecked(smiles in self.bench.project.ticked)
+        tick.triggered.connect(lambda on: self.bench.tick_contender(smiles, on))
         lay = menu.addAction(say("Lay over the spectrum"))
         ledger = self.bench.project.ledger
         names = {} if ledger is None else {c.smiles: c.name for c in ledger.contenders}

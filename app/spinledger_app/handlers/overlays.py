@@ -11,6 +11,7 @@ from PySide6.QtCore import QTimer
 from spinledger.project.constraints import reconcile_options
 from spinledger_app import tasks
 from spinledger_app.handlers.context import Context
+from spinledger_app.lanes.overlay_layer import N_OVERLAYS
 from spinledger_app.lanes.pyramid import Pyramid
 from spinledger_app.lanes.scene import Trace
 from spinledger_app.presenters.what_if import WhatIf, what_if
@@ -25,6 +26,7 @@ class OverlayHandlers:
     def __init__(self, context: Context) -> None:
         self.window, self.bench = context.window, context.bench
         self._asked: WhatIf | None = None
+        self._compared: dict[str, Trace] = {}
         self._field_mhz = 0.0
         self._timer = QTimer(self.window)
         self._timer.setSingleShot(True)
@@ -75,15 +77,21 @@ class OverlayHandlers:
         )
 
     def compare(self, smiles: str, name: str) -> None:
-        """Fit a contender quickly and lay its model over the evidence."""
+        """Fit a contender quickly and lay its model over the evidence.
+
+        Two may lie there together; a third takes the place of the older one.
+        """
         project = self.bench.project
         if project.evidence is None:
             return
-        words = say("{0} lies over the spectrum; Esc takes it away.")
 
         def done(trace: Trace) -> None:
-            self._lay(trace)
-            self.window.status.show_message(words.replace("{0}", name))
+            self.window.field_strip.hide()
+            others = {key: old for key, old in self._compared.items() if key != name}
+            kept = list(others.items())[-(N_OVERLAYS - 1) :]
+            self._compared = {**dict(kept), name: trace}
+            self.window.lanes.show_overlays(*self._compared.values())
+            self.window.status.show_message(self._compared_words())
 
         self.window.status.show_message(say("Fitting {0} …").replace("{0}", name))
         self.bench.pool.run(
@@ -97,13 +105,25 @@ class OverlayHandlers:
             prepare=self._trace_of,
         )
 
+    def _compared_words(self) -> str:
+        names = list(self._compared)
+        words = (
+            say("{0} lies over the spectrum; Esc takes it away.")
+            if len(names) == 1
+            else say("{0} (solid) and {1} (dashed) lie over the spectrum.")
+        )
+        for place, name in enumerate(names):
+            words = words.replace(f"{{{place}}}", name)
+        return words
+
     def leave(self) -> None:
-        """Take the overlay away."""
+        """Take the overlays away."""
         self._timer.stop()
         self._asked = None
+        self._compared = {}
         self.bench.pool.cancel("overlay")
         self.window.field_strip.hide()
-        self.window.lanes.show_overlay(None)
+        self.window.lanes.show_overlays()
 
     def _trace_of(self, values: npt.NDArray[np.float64]) -> Trace:
         evidence = self.bench.project.evidence
@@ -115,7 +135,8 @@ class OverlayHandlers:
         )
 
     def _lay(self, trace: Trace) -> None:
-        self.window.lanes.show_overlay(trace)
+        self._compared = {}
+        self.window.lanes.show_overlays(trace)
 
     def _fail(self, sentence: str) -> None:
         self.window.status.show_message(sentence, is_error=True)

@@ -14,10 +14,18 @@ from spinledger_app.lanes.scene import LaneScene, Trace
 from spinledger_app.lanes.shift_map import ShiftMap
 from spinledger_app.painting.ink import Ink
 
+# By rank: colour, width in px, and dashes, so that no colour need be told apart.
+_MANNERS: tuple[tuple[str, float, tuple[float, ...]], ...] = (
+    ("accent", 1.0, ()),
+    ("ink", 1.6, (7.0, 4.0)),
+)
+N_OVERLAYS = len(_MANNERS)
+
 
 def paint_overlay(  # noqa: PLR0913 - trace, place and two choices
     ink: Ink,
     trace: Trace,
+    rank: int,
     scene: LaneScene,
     shift_map: ShiftMap,
     layout: LaneLayout,
@@ -25,7 +33,11 @@ def paint_overlay(  # noqa: PLR0913 - trace, place and two choices
     gain: float,
     own_gains: bool,
 ) -> None:
-    """Paint a trace in accent at the scale of the evidence."""
+    """Paint a trace at the scale of the evidence: the first solid, the second dashed."""
+    colour, width, dashes = _MANNERS[rank]
+    pen = QPen(ink.colour(colour), width)
+    if dashes:
+        pen.setDashPattern(dashes)
     gains = stretch_gains(scene, shift_map, own_gains=own_gains)
     height = layout.baseline - layout.curve_top
     painter = ink.painter
@@ -47,6 +59,6 @@ def paint_overlay(  # noqa: PLR0913 - trace, place and two choices
         )
         drawn = curve(trace, shift_map, index, to_y, ink.columns_per_px)
         if drawn is not None:
-            painter.setPen(QPen(ink.colour("accent"), 1.0))
+            painter.setPen(pen)
             painter.drawPolyline(polygon(drawn.upper_xs, drawn.upper_ys))
         painter.restore()

@@ -26,6 +26,7 @@ from spinledger.report.tables import (
     assignment_rows,
     audit_rows,
     balance_cells,
+    contender_note,
     contender_rows,
     probability_words,
     recipe_lines,
@@ -231,9 +232,12 @@ def _strays(flow: Flow, ledger: Ledger, _context: ReportContext) -> None:
     add_listing(flow, "Strays", STRAY_HEAD, stray_rows(ledger), (17, 12, 10, 61))
 
 
-def _contenders(flow: Flow, ledger: Ledger, _context: ReportContext) -> None:
-    rows = contender_rows(ledger)
+def _contenders(flow: Flow, ledger: Ledger, context: ReportContext) -> None:
+    rows = contender_rows(ledger, context.contenders)
     add_listing(flow, "Contenders", CONTENDER_HEAD, rows, (34, 12, 14, 40))
+    note = contender_note(ledger, context.contenders)
+    if note:
+        flow.paragraph(note, TEXT_MUTED)
 
 
 def _opening(flow: Flow, ledger: Ledger, context: ReportContext) -> None:

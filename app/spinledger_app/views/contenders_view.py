@@ -10,7 +10,7 @@ from PySide6.QtGui import (
     QPaintEvent,
     QResizeEvent,
 )
-from PySide6.QtWidgets import QSizePolicy, QVBoxLayout, QWidget
+from PySide6.QtWidgets import QCheckBox, QSizePolicy, QVBoxLayout, QWidget
 
 from spinledger_app.painting.ink import (
     CAPTION,
@@ -37,6 +37,7 @@ class Card(QWidget):
     """Thumbnail, name, whether it stands, and why."""
 
     activated = Signal(str)
+    ticked = Signal(str, bool)
 
     def __init__(
         self, look: Look, text: CardText, parent: QWidget | None = None
@@ -50,6 +51,20 @@ class Card(QWidget):
         self.setSizePolicy(QSizePolicy.Policy.Preferred, QSizePolicy.Policy.Fixed)
         self.setToolTip(text.tip)
         self.setAccessibleName(f"{text.name}, {text.word}. {text.why}")
+        self.tick = QCheckBox(self)
+        self.tick.setToolTip(
+            say("List it in the report; with none ticked, all are listed")
+        )
+        name = say("List {0} in the report").replace("{0}", text.name)
+        self.tick.setAccessibleName(name)
+        self.tick.clicked.connect(lambda on: self.ticked.emit(text.smiles, on))
+
+    def resizeEvent(self, event: QResizeEvent) -> None:
+        """Keep the tick in the upper right corner."""
+        hint = self.tick.sizeHint()
+        left = self.width() - 10 - hint.width()
+        self.tick.setGeometry(left, self.look.px(6), hint.width(), hint.height())
+        super().resizeEvent(event)
 
     def sizeHint(self) -> QSize:
         """One card."""
@@ -79,7 +94,7 @@ class Card(QWidget):
             start, end = (_MARGIN, height - 14), (_MARGIN + thumb - 12, 16)
             ink.line(start, end, "muted", 1.5)
         left = _MARGIN + thumb + 8
-        room_px = self.width() - left - 10
+        room_px = self.tick.x() - left - 6
         n_lines = min(2, len(wrap(self.look, text.name, room_px, SECOND_STRONG)))
         y = ink.wrapped(
             left, px(20), room_px, text.name, SECOND_STRONG, max_lines=n_lines
@@ -87,6 +102,7 @@ class Card(QWidget):
         colour = "accent" if text.stands else "muted"
         face = Face(size=13, weight=600, colour=colour)
         ink.text(left, y, text.word, face, max_width=room_px)
+        room_px = self.width() - left - 10
         ink.wrapped(left, y + px(16), room_px, text.why, CAPTION, max_lines=3 - n_lines)
         painter.end()
 
@@ -114,6 +130,7 @@ class ContendersView(QWidget):
     """Heading over a column of cards."""
 
     card_activated = Signal(str)
+    ticked = Signal(str, bool)
     add_wanted = Signal()
 
     def __init__(self, look: Look, parent: QWidget | None = None) -> None:
@@ -170,10 +187,16 @@ class ContendersView(QWidget):
         for index, one in enumerate(text.cards):
             card = Card(self.look, one)
             card.activated.connect(self.card_activated)
+            card.ticked.connect(self.ticked)
             self._column.insertWidget(index, card)
             self.cards.append(card)
         self.area.setVisible(bool(text.cards))
         self.update()
+
+    def show_ticks(self, ticked: tuple[str, ...]) -> None:
+        """Contenders that the report lists, by SMILES."""
+        for card in self.cards:
+            card.tick.setChecked(card.text.smiles in ticked)
 
     def show_thumbnails(self, drawings: dict[str, Drawing]) -> None:
         """Drawings by SMILES."""

@@ -86,7 +86,7 @@ class LanesView(QWidget):
         self.region_ppm: tuple[float, float] | None = None
         self.trial: Trace | None = None
         self.pivot_ppm: float | None = None
-        self.overlay: Trace | None = None
+        self.overlays: tuple[Trace, ...] = ()
         self.cursor_x: float | None = None
         self.lit_fold: int | None = None
         self.lit_level: tuple[str, int] | None = None
@@ -144,10 +144,10 @@ class LanesView(QWidget):
         self.trial, self.pivot_ppm = trial, pivot_ppm
         self.refresh()
 
-    def show_overlay(self, overlay: Trace | None) -> None:
-        """Lay another spectrum over the evidence; None takes it away."""
-        if overlay is not self.overlay:
-            self.overlay = overlay
+    def show_overlays(self, *overlays: Trace) -> None:
+        """Lay other spectra over the evidence; none takes them away."""
+        if overlays != self.overlays:
+            self.overlays = overlays
             self.refresh()
 
     def show_marks(self, marks: Marks) -> None:
@@ -390,10 +390,11 @@ class LanesView(QWidget):
             and not shift_map.is_folded
             and shift_map.px_per_hz(scene.frequency_mhz) < LARGE_LEAVES_FROM,
         )
-        if self.overlay is not None:
+        for rank, overlay in enumerate(self.overlays):
             paint_overlay(
                 ink,
-                self.overlay,
+                overlay,
+                rank,
                 scene,
                 shift_map,
                 layout,

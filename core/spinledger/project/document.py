@@ -160,6 +160,8 @@ class Project:
         Of the spectrum that is shown.
     others : tuple of SampleSpectrum
         The sample's other spectra.
+    ticked : tuple of str
+        SMILES of the contenders that the report lists; none for all of them.
     """
 
     name: str = "Untitled"
@@ -180,6 +182,7 @@ class Project:
     role: Role = "main"
     role_why: str = ""
     others: tuple[SampleSpectrum, ...] = ()
+    ticked: tuple[str, ...] = ()
 
     @property
     def needs_evidence(self) -> bool:
@@ -253,6 +256,7 @@ def open_structure(project: Project, structure: Structure, *, when: str) -> Proj
         labels=(),
         edits=_without_claims(project.edits),
         others=_without_ledgers(project.others),
+        ticked=(),
         audit=(*project.audit, line),
     )
 
@@ -304,6 +308,7 @@ def without_structure(project: Project, *, when: str) -> Project:
         labels=(),
         edits=_without_claims(project.edits),
         others=_without_ledgers(project.others),
+        ticked=(),
         audit=(*project.audit, line),
     )
 
@@ -332,6 +337,14 @@ def with_ledger(project: Project, ledger: Ledger, *, when: str) -> Project:
 def with_sample(project: Project, sample: Sample) -> Project:
     """Project with new sample fields; the same project if nothing changed."""
     return project if sample == project.sample else replace(project, sample=sample)
+
+
+def with_tick(project: Project, smiles: str, *, is_ticked: bool) -> Project:
+    """Project with a contender ticked for the report, or ticked no longer."""
+    if (smiles in project.ticked) == is_ticked:
+        return project
+    kept = tuple(one for one in project.ticked if one != smiles)
+    return replace(project, ticked=(*kept, smiles) if is_ticked else kept)
 
 
 def with_options(project: Project, options: ProjectOptions, *, when: str) -> Project:

@@ -46,6 +46,8 @@ class ReportContext:
         Content that was asked for; None lets the report say what the strays tell.
     comparison : ListComparison or None
         A published list that was held against the ledger.
+    contenders : tuple of str
+        SMILES of the contenders to list; none, or none that was tested, for all.
     sections : tuple of str
         Parts to print, any of ``SECTIONS``; title and verdict always stand.
     """
@@ -57,6 +59,7 @@ class ReportContext:
     text: TextOptions = field(default_factory=TextOptions)
     quantity: Quantity | None = None
     comparison: ListComparison | None = None
+    contenders: tuple[str, ...] = ()
     sections: tuple[str, ...] = SECTIONS
 
     def __post_init__(self) -> None:
@@ -72,4 +75,5 @@ def context_of(project: Project, *, date: str) -> ReportContext:
         sample=project.sample,
         audit=project.audit,
         verdict_before_edits=project.verdict_before_edits if project.edits else None,
+        contenders=project.ticked,
     )

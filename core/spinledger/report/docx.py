@@ -39,6 +39,7 @@ from spinledger.report.tables import (
     balance_cells,
     comparison_rows,
     comparison_sentence,
+    contender_note,
     contender_rows,
     geometry_rows,
     probability_words,
@@ -222,8 +223,12 @@ def _quantity(document: Any, ledger: Ledger, context: ReportContext) -> None:
         _table(document, CONTENT_HEAD, rows, widths_mm=_CONTENT_WIDTHS)
 
 
-def _contenders(document: Any, ledger: Ledger, _context: ReportContext) -> None:
-    _listing(document, "Contenders", CONTENDER_HEAD, contender_rows(ledger))
+def _contenders(document: Any, ledger: Ledger, context: ReportContext) -> None:
+    rows = contender_rows(ledger, context.contenders)
+    _listing(document, "Contenders", CONTENDER_HEAD, rows)
+    note = contender_note(ledger, context.contenders)
+    if note:
+        document.add_paragraph(note)
 
 
 def _comparison(document: Any, _ledger: Ledger, context: ReportContext) -> None:

@@ -38,6 +38,7 @@ from spinledger.report.tables import (
     balance_cells,
     comparison_rows,
     comparison_sentence,
+    contender_note,
     contender_rows,
     geometry_rows,
     probability_words,
@@ -290,13 +291,15 @@ def _quantity(ledger: Ledger, context: ReportContext) -> str:
     )
 
 
-def _contenders(ledger: Ledger, _context: ReportContext) -> str:
-    rows = contender_rows(ledger)
+def _contenders(ledger: Ledger, context: ReportContext) -> str:
+    rows = contender_rows(ledger, context.contenders)
+    note = contender_note(ledger, context.contenders)
     body = (
         _table(CONTENDER_HEAD, rows)
         if rows
         else "<p>No other structure was tested against this spectrum.</p>"
     )
+    body += note and f"<p>{escape(note)}</p>"
     return f"<section><h3>Contenders</h3>{body}</section>\n"
 
 

@@ -108,10 +108,37 @@ def stray_rows(ledger: Ledger) -> tuple[tuple[str, ...], ...]:
     return tuple(_stray_row(stray) for stray in order)
 
 
-def contender_rows(ledger: Ledger) -> tuple[tuple[str, ...], ...]:
-    """Rows of the tested structures, those still standing first."""
-    order = sorted(ledger.contenders, key=lambda one: one.excluded)
+def contender_rows(
+    ledger: Ledger, listed: tuple[str, ...] = ()
+) -> tuple[tuple[str, ...], ...]:
+    """Rows of the tested structures, those still standing first.
+
+    Parameters
+    ----------
+    ledger : Ledger
+    listed : tuple of str
+        SMILES to list; none, or none that was tested, lists all.
+    """
+    order = sorted(_listed(ledger, listed), key=lambda one: one.excluded)
     return tuple(_contender_row(one) for one in order)
+
+
+def contender_note(ledger: Ledger, listed: tuple[str, ...]) -> str:
+    """One sentence on the tested structures that are not listed; empty for none."""
+    shown = _listed(ledger, listed)
+    left_out = [one for one in ledger.contenders if one not in shown]
+    if not left_out:
+        return ""
+    n_excluded = sum(one.excluded for one in left_out)
+    return (
+        f"Tested and not listed: {len(left_out)}, of which {n_excluded} excluded "
+        f"and {len(left_out) - n_excluded} not excluded."
+    )
+
+
+def _listed(ledger: Ledger, listed: tuple[str, ...]) -> tuple[Contender, ...]:
+    chosen = tuple(one for one in ledger.contenders if one.smiles in listed)
+    return chosen or ledger.contenders
 
 
 def comparison_rows(comparison: ListComparison) -> tuple[tuple[str, ...], ...]:
