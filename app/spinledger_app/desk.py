@@ -81,7 +81,7 @@ class Desk(QObject):
         self.files = FileHandlers(self.context)
         self.view = ViewHandlers(self.context)
         self.process = ProcessHandlers(self.context)
-        self.claims = ClaimHandlers(self.context)
+        self.claims = ClaimHandlers(self.context, self.process.reference)
         self.overlays = OverlayHandlers(self.context)
         self.menus = MenuHandlers(self.context, self.overlays)
         self._handlers = {
@@ -174,6 +174,7 @@ class Desk(QObject):
         window.recipe.chip_clicked.connect(self.process.open_chip)
         window.contenders.add_wanted.connect(lambda: self.do("add_contender"))
         window.contenders.card_activated.connect(self.menus.of_contender)
+        window.contenders.ticked.connect(self.bench.tick_contender)
 
     def _wire_lanes(self) -> None:
         lanes, claims = self.window.lanes, self.claims
@@ -263,6 +264,7 @@ class Desk(QObject):
             contender_words.contenders_text(ledger, is_tested=self.bench.is_full_tested)
         )
         window.contenders.show_thumbnails(self.bench.thumbnails)
+        window.contenders.show_ticks(project.ticked)
 
     def _show_marks(self, before: Marks, marks: Marks) -> None:
         window, scene = self.window, self.bench.scene

@@ -14,6 +14,7 @@ from spinledger.project.edits import (
     UnlinkClaim,
 )
 from spinledger_app.handlers.context import Context
+from spinledger_app.handlers.reference import ReferenceHandlers
 from spinledger_app.presenters.gestures import (
     drop_root,
     entry_of,
@@ -29,8 +30,8 @@ from spinledger_app.views import dialogs
 class ClaimHandlers:
     """What clicks and drags on claims and signals do."""
 
-    def __init__(self, context: Context) -> None:
-        self.context = context
+    def __init__(self, context: Context, reference: ReferenceHandlers) -> None:
+        self.context, self.reference = context, reference
         self.window, self.bench = context.window, context.bench
         self.settings, self.look = context.settings, context.look
 
@@ -214,9 +215,11 @@ class ClaimHandlers:
     def let_go(self) -> None:
         """Let go of the last thing that was begun: a strip, a region, a choice."""
         lanes = self.window.lanes
-        if self.window.phase_strip.isVisible():
+        if self.reference.hand.is_active:
+            self.reference.leave()
+        elif self.window.phase_strip.isVisible():
             self.window.phase_strip.given_up.emit()
-        elif lanes.overlay is not None or self.window.field_strip.isVisible():
+        elif lanes.overlays or self.window.field_strip.isVisible():
             self.window.field_strip.given_up.emit()
         elif lanes.region_ppm is not None:
             lanes.region_ppm = None

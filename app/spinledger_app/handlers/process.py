@@ -8,10 +8,10 @@ from spinledger.project.edits import (
     ExcludeRegion,
     IncludeRegion,
     MarkImpurity,
-    SetReference,
 )
 from spinledger_app.handlers.context import Context
 from spinledger_app.handlers.phasing import PhaseHandlers
+from spinledger_app.handlers.reference import ReferenceHandlers
 from spinledger_app.presenters.wording import say
 from spinledger_app.views import dialogs
 from spinledger_app.views.line_list import LineListDialog
@@ -25,6 +25,7 @@ class ProcessHandlers:
         self.window, self.bench = context.window, context.bench
         self.settings, self.look = context.settings, context.look
         self.phasing = PhaseHandlers(context)
+        self.reference = ReferenceHandlers(context)
 
     def actions(self) -> dict[str, Callable[[], None]]:
         """Handlers by the names of the action table."""
@@ -33,7 +34,7 @@ class ProcessHandlers:
             "phase": self.phasing.begin,
             "window": self.apodization,
             "automatic": self.automatic,
-            "reference": self.reference,
+            "reference": self.reference.begin,
             "exclude": self.exclude,
             "include": self.include,
             "impurity": self.impurity,
@@ -68,25 +69,6 @@ class ProcessHandlers:
     def automatic(self) -> None:
         """Give the processing back to the program."""
         self.bench.set_recipe(None, say("processed automatically again"))
-
-    def reference(self) -> None:
-        """Ask for the shift of the line that was clicked or is marked."""
-        lanes = self.window.lanes
-        near = self.context.last_ppm or 0.0
-        if lanes.region_ppm is not None:
-            near = sum(lanes.region_ppm) / 2
-        scene = self.bench.scene
-        feet = [foot.shift_ppm for foot in scene.feet] if scene is not None else []
-        line = min(feet, key=lambda ppm: abs(ppm - near), default=near)
-        value = dialogs.ask_number(
-            self.look,
-            self.window,
-            say("Set the shift of a line"),
-            say("The line at {0} ppm belongs at (ppm)").replace("{0}", f"{line:.4f}"),
-            line,
-        )
-        if value is not None:
-            self.bench.edit(SetReference(line_ppm=line, to_ppm=value))
 
     def _region(self) -> tuple[float, float] | None:
         """The marked region, else the signal that is chosen or pointed at."""
@@ -146,7 +128,7 @@ class ProcessHandlers:
         handler = {
             "Phase": self.phasing.begin,
             "Apodize": self.apodization,
-            "Reference": self.reference,
+            "Reference": self.reference.begin,
         }.get(name)
         if handler is not None:
             handler()

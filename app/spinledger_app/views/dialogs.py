@@ -110,19 +110,6 @@ def ask_text(
     return dialog.field.text().strip() if dialog.exec() else None
 
 
-def ask_number(
-    look: Look, parent: QWidget, title: str, words: str, value: float
-) -> float | None:
-    """Ask for a number; None when it was cancelled or is none."""
-    text = ask_text(look, parent, title, words, f"{value:.4f}")
-    if text is None:
-        return None
-    try:
-        return float(text.replace("−", "-").replace(",", "."))
-    except ValueError:
-        return None
-
-
 def ask_whole(
     look: Look, parent: QWidget, title: str, words: str, text: str
 ) -> int | None:
