@@ -287,6 +287,11 @@ class Bench(WritingBench):
         options = replace(self.project.options, n_contenders=number)
         self._set_options(say("number of isomers"), options)
 
+    def set_side_text(self, text: str) -> None:
+        """Take side evidence as it was typed; empty takes it away."""
+        options = replace(self.project.options, side_text=text)
+        self._set_options(say("side evidence"), options)
+
     def _set_options(self, what: str, options: ProjectOptions) -> None:
         when = now()
         self.session.apply(

@@ -50,6 +50,7 @@ class ClaimHandlers:
             "refine": self.refine,
             "let_go": self.let_go,
             "add_contender": self.add_contender,
+            "side_evidence": self.side_evidence,
             "n_contenders": self.set_n_contenders,
             "cancel": self.cancel,
         }
@@ -247,6 +248,13 @@ class ClaimHandlers:
         )
         if number is not None:
             self.bench.set_n_contenders(number if number >= 0 else None)
+
+    def side_evidence(self) -> None:
+        """Ask for carbon list, HSQC and COSY pairs."""
+        now = self.bench.project.options.side_text
+        dialog = dialogs.SideDialog(self.look, now, self.window)
+        if dialog.exec():
+            self.bench.set_side_text(dialog.text())
 
     def cancel(self) -> None:
         """Stop what runs."""

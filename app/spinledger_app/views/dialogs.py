@@ -26,8 +26,10 @@ from PySide6.QtWidgets import (
 )
 
 from spinledger import __version__
+from spinledger.errors import SideEvidenceError
 from spinledger.processing.solvents import canonical_solvent, solvent_names
 from spinledger.project.document import Sample
+from spinledger.reconcile.side_reading import read_side_evidence
 from spinledger.values.evidence import Evidence
 from spinledger.values.recipe import Apodize, Recipe, Step
 from spinledger_app.presenters.wording import say
@@ -150,14 +152,19 @@ def ask_solvent(look: Look, parent: QWidget, evidence: Evidence) -> str | None:
 class SampleDialog(BenchDialog):
     """What the label of the tube says."""
 
-    _NAMES = ("name", "batch", "submitted_by", "laboratory", "prepared", "remark")
+    _NAMES = (
+        "name", "batch", "project", "submitted_by", "operator",
+        "laboratory", "prepared", "remark",
+    )  # fmt: skip
 
     def __init__(self, look: Look, sample: Sample, parent: QWidget) -> None:
         super().__init__(look, say("Sample and batch"), parent)
         words = (
             say("Sample"),
             say("Batch"),
+            say("Project"),
             say("Submitted by"),
+            say("Operator"),
             say("Laboratory"),
             say("Prepared"),
             say("Remark"),
@@ -169,6 +176,7 @@ class SampleDialog(BenchDialog):
         for name, word in zip(self._NAMES, words, strict=True):
             field = QLineEdit(getattr(sample, name))
             field.setMinimumWidth(look.px(300))
+            field.setAccessibleName(word)
             form.addRow(word, field)
             self._fields[name] = field
         self.column.addLayout(form)
@@ -178,6 +186,45 @@ class SampleDialog(BenchDialog):
         """The sample as it stands in the fields."""
         values = {name: field.text().strip() for name, field in self._fields.items()}
         return Sample(**values, sign_offs=self._sample.sign_offs)
+
+
+class SideDialog(BenchDialog):
+    """Side evidence: carbon list, HSQC and COSY pairs, as typed or pasted."""
+
+    def __init__(self, look: Look, text: str, parent: QWidget) -> None:
+        super().__init__(look, say("Side evidence"), parent)
+        words = QLabel(
+            say(
+                "One kind a line, for example 13C: 170.9, 60.5 or carbons: 4; "
+                "HSQC: 4.12/60.5, 1.26/14.2; COSY: 4.12/1.26."
+            )
+        )
+        words.setWordWrap(True)
+        self.box = QPlainTextEdit(text)
+        self.box.setTabChangesFocus(True)
+        self.box.setMinimumSize(look.px(420), look.px(150))
+        self.box.setAccessibleName(say("Side evidence"))
+        self.fault = QLabel()
+        self.fault.setWordWrap(True)
+        words.setBuddy(self.box)
+        for part in (words, self.box, self.fault):
+            self.column.addWidget(part)
+        self.add_buttons(say("Take it"))
+        self.box.setFocus()
+
+    def text(self) -> str:
+        """What is typed; empty for no side evidence."""
+        return self.box.toPlainText().strip()
+
+    def accept(self) -> None:
+        """Close, unless the text cannot be understood; the reason stands below it."""
+        if self.text():
+            try:
+                read_side_evidence(self.text())
+            except SideEvidenceError as error:
+                self.fault.setText(str(error))
+                return
+        super().accept()
 
 
 class ReportDialog(BenchDialog):

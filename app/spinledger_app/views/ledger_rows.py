@@ -11,6 +11,7 @@ from PySide6.QtGui import (
     QMouseEvent,
     QPainter,
     QPaintEvent,
+    QResizeEvent,
 )
 from PySide6.QtWidgets import (
     QHBoxLayout,
@@ -29,6 +30,7 @@ from spinledger_app.painting.ink import (
     STRONG,
     Face,
     Ink,
+    wrap,
 )
 from spinledger_app.painting.marks import paint_mark
 from spinledger_app.presenters.ledger import AdviceText, RowText, StrayText
@@ -425,13 +427,26 @@ class AdviceRow(QWidget):
         self.look = look
         self.advice = advice
         self.setSizePolicy(QSizePolicy.Policy.Preferred, QSizePolicy.Policy.Fixed)
+        policy = self.sizePolicy()
+        policy.setHeightForWidth(True)
+        self.setSizePolicy(policy)
         spoken = f"{advice.measurement}: {advice.look_for}, {advice.value} sd"
         self.setAccessibleName(spoken)
         self.setToolTip(f"{advice.measurement}\n{advice.look_for}")
 
     def sizeHint(self) -> QSize:
-        """One line."""
-        return QSize(340, self.look.px(28))
+        """Measurement and bar, and the whole sentence below."""
+        return QSize(340, self.heightForWidth(self.width()))
+
+    def heightForWidth(self, width: int) -> int:
+        """Height with the sentence wrapped."""
+        lines = wrap(self.look, self.advice.look_for, width - 2 * MARGIN, SECOND)
+        return self.look.px(28) + self.look.px(17) * len(lines)
+
+    def resizeEvent(self, event: QResizeEvent) -> None:
+        """Take the height that the sentence needs at this width."""
+        self.updateGeometry()
+        super().resizeEvent(event)
 
     def paintEvent(self, event: QPaintEvent) -> None:
         """Paint words and bar."""
@@ -446,20 +461,10 @@ class AdviceRow(QWidget):
         if self.advice.share > 0:
             bar.setWidth(bar.width() * self.advice.share)
             ink.fill(bar, "accent", 2)
-        half = (right - px(96) - MARGIN) * 0.45
-        used = ink.text(
-            MARGIN,
-            baseline,
-            self.advice.measurement,
-            SECOND_STRONG,
-            max_width=half * 1.25,
-        )
-        left = MARGIN + max(half, used + 10)
+        room = right - px(94) - MARGIN
         ink.text(
-            left,
-            baseline,
-            self.advice.look_for,
-            SECOND,
-            max_width=right - px(94) - left,
+            MARGIN, baseline, self.advice.measurement, SECOND_STRONG, max_width=room
         )
+        width = right - MARGIN
+        ink.wrapped(MARGIN, baseline + px(18), width, self.advice.look_for, SECOND)
         painter.end()

@@ -71,7 +71,9 @@ class Sample:
 
     name: str = ""
     batch: str = ""
+    project: str = ""
     submitted_by: str = ""
+    operator: str = ""
     laboratory: str = ""
     prepared: str = ""
     remark: str = ""

@@ -179,7 +179,9 @@ def sample_rows(sample: Sample) -> tuple[tuple[str, str], ...]:
     rows = (
         ("Sample", sample.name),
         ("Batch", sample.batch),
+        ("Project", sample.project),
         ("Submitted by", sample.submitted_by),
+        ("Operator", sample.operator),
         ("Laboratory", sample.laboratory),
         ("Prepared", sample.prepared),
         ("Remark", sample.remark),
