@@ -141,6 +141,7 @@ def _process() -> tuple[ActionText, ...]:
         ActionText(name="reference", menu=menu, words=say("Set the shift of a line…"), needs="spectrum"),
         ActionText(name="automatic", menu=menu, words=say("Process automatically again"), needs="spectrum"),
         ActionText(name="line_list", menu=menu, words=say("Line list…"), needs="spectrum", ends_group=True),
+        ActionText(name="integral", menu=menu, words=say("Set the protons of a signal…"), needs="spectrum"),
         ActionText(name="exclude", menu=menu, words=say("Leave the marked region out"), keys="X", needs="spectrum"),
         ActionText(name="include", menu=menu, words=say("Take the marked region in again"), keys="Shift+X", needs="spectrum"),
         ActionText(name="impurity", menu=menu, words=say("Mark the region as an impurity…"), keys="M", needs="spectrum"),

@@ -22,6 +22,7 @@ from spinledger_app.application import Parts, build
 from spinledger_app.presenters.drawing import drawing_of
 from spinledger_app.presenters.line_list import line_rows, ruler_text
 from spinledger_app.settings import BenchSettings
+from spinledger_app.views import dialogs
 from spinledger_app.views.lanes_view import LanesView
 from spinledger_app.views.line_list import LineListDialog
 
@@ -174,3 +175,24 @@ def test_a_ticked_contender_alone_is_listed_in_the_report(parts: Parts) -> None:
     assert not parts.window.contenders.cards[1].tick.isChecked()
     page = report_html(ledger, contenders_only(parts))
     assert "Tested and not listed" not in page
+
+
+def shown_integral(parts: Parts, key: str) -> str:
+    scene = parts.bench.scene
+    mark = None if scene is None else scene.signal(key)
+    return "" if mark is None else mark.text
+
+
+def test_the_integral_of_a_signal_is_set_before_any_structure(
+    parts: Parts, monkeypatch: pytest.MonkeyPatch
+) -> None:
+    put_on(parts, None, has_structure=False)
+    scene = parts.bench.scene
+    assert scene is not None
+    mark = next(one for one in scene.signals if one.stray is None)
+    parts.bench.selection.hover(None, mark.key)
+    monkeypatch.setattr(dialogs, "ask_text", lambda *_: "6")
+    parts.desk.do("integral")
+    assert shown_integral(parts, mark.key) == "6.00"
+    parts.desk.do("undo")
+    assert shown_integral(parts, mark.key) == mark.text != "6.00"

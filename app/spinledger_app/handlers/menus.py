@@ -13,7 +13,7 @@ from spinledger_app.presenters.wording import say
 
 _CLAIM = ("look_at_claim", "", "put", "swap", "unlink", "release", "")
 _CLAIM_MORE = ("type_j", "free_j", "rename")
-_LANES = ("exclude", "include", "impurity", "reference", "")
+_LANES = ("exclude", "include", "impurity", "integral", "reference", "")
 _LANES_MORE = ("fold", "home", "back", "", "copy_picture")
 _SKETCH = ("paste", "open_structure", "type_structure")
 

@@ -8,6 +8,7 @@ from spinledger.project.edits import (
     ExcludeRegion,
     IncludeRegion,
     MarkImpurity,
+    SetIntegral,
 )
 from spinledger_app.handlers.context import Context
 from spinledger_app.handlers.phasing import PhaseHandlers
@@ -38,6 +39,7 @@ class ProcessHandlers:
             "exclude": self.exclude,
             "include": self.include,
             "impurity": self.impurity,
+            "integral": self.integral,
             "line_list": self.line_list,
         }
 
@@ -111,6 +113,39 @@ class ProcessHandlers:
             self.bench.edit(
                 MarkImpurity(low_ppm=region[0], high_ppm=region[1], name=name)
             )
+
+    def integral(self) -> None:
+        """Say how many protons a signal or the marked region counts."""
+        region = self._region()
+        if region is None:
+            return
+        if self.bench.project.ledger is not None:
+            self.window.status.show_message(
+                say("The ledger takes the scale of the integrals from all its claims."),
+                is_error=True,
+            )
+            return
+        text = dialogs.ask_text(
+            self.look,
+            self.window,
+            say("Integral"),
+            say("How many protons the signal counts"),
+            "1",
+        )
+        if text is None:
+            return
+        try:
+            edit = SetIntegral(
+                low_ppm=region[0],
+                high_ppm=region[1],
+                protons=float(text.replace(",", ".")),
+            )
+        except ValueError:
+            self.window.status.show_message(
+                say("The number of protons is a number above zero."), is_error=True
+            )
+            return
+        self.bench.edit(edit)
 
     def line_list(self) -> None:
         """Show every line of the spectrum."""

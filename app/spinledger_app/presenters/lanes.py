@@ -62,6 +62,7 @@ def lane_scene(
     *,
     measured: Trace | None = None,
     excluded_ppm: tuple[tuple[float, float], ...] = (),
+    unit_area: float | None = None,
 ) -> LaneScene:
     """Scene of one project; pure arithmetic, safe outside the window's thread.
 
@@ -69,11 +70,13 @@ def lane_scene(
     ----------
     measured : Trace or None
         The evidence's trace where it is already at hand.
+    unit_area : float or None
+        Area of one proton where it was set by hand.
     """
     spectrum = evidence.spectrum
     trace = measured if measured is not None else measured_trace(evidence)
     strays = evidence.strays if ledger is None else ledger.strays
-    marks = signal_marks(evidence, ledger, strays)
+    marks = signal_marks(evidence, ledger, strays, unit_area)
     grown = trees(ledger) if ledger is not None else ()
     whole = whole_axis(evidence)
     height = full_height(trace, marks, strays)
@@ -147,10 +150,13 @@ def whole_axis(evidence: Evidence) -> Stretch:
 
 
 def signal_marks(
-    evidence: Evidence, ledger: Ledger | None, strays: Sequence[Stray]
+    evidence: Evidence,
+    ledger: Ledger | None,
+    strays: Sequence[Stray],
+    unit_area: float | None = None,
 ) -> tuple[SignalMark, ...]:
     """Brackets: signals with their protons and owners, strays by name."""
-    unit = proton_area(evidence, ledger)
+    unit = unit_area or proton_area(evidence, ledger)
     marks = []
     for index, signal in enumerate(evidence.signals):
         owners = _owners(signal, ledger)

@@ -5,7 +5,7 @@ from __future__ import annotations
 import threading
 from dataclasses import dataclass
 
-from spinledger.project.constraints import standing_constraints
+from spinledger.project.constraints import standing_constraints, standing_proton_area
 from spinledger.project.document import Project
 from spinledger.values.evidence import Evidence
 from spinledger.values.ledger import Ledger
@@ -22,6 +22,7 @@ class _Kept:
     evidence: Evidence
     ledger: Ledger | None
     excluded_ppm: _Ranges
+    proton_area: float | None
     scene: LaneScene
 
 
@@ -40,13 +41,15 @@ class SceneStore:
         if ledger is not None and ledger.evidence is not project.evidence:
             ledger = None  # of an older spectrum or another processing
         excluded = standing_constraints(project).excluded_ppm
-        return self.prepare(project.evidence, ledger, excluded)
+        area = standing_proton_area(project) if ledger is None else None
+        return self.prepare(project.evidence, ledger, excluded, area)
 
     def prepare(
         self,
         evidence: Evidence,
         ledger: Ledger | None,
         excluded_ppm: _Ranges = (),
+        proton_area: float | None = None,
     ) -> LaneScene:
         """Scene of evidence and ledger, made if it is not at hand."""
         with self._lock:
@@ -54,7 +57,8 @@ class SceneStore:
                 if (
                     kept.evidence is evidence
                     and kept.ledger is ledger
-                    and (kept.excluded_ppm == excluded_ppm)
+                    and kept.excluded_ppm == excluded_ppm
+                    and kept.proton_area == proton_area
                 ):
                     self._kept.remove(kept)
                     self._kept.insert(0, kept)  # the one used last goes last
@@ -63,10 +67,18 @@ class SceneStore:
                 (k.scene.measured for k in self._kept if k.evidence is evidence), None
             )
         scene = lane_scene(
-            evidence, ledger, measured=measured, excluded_ppm=excluded_ppm
+            evidence,
+            ledger,
+            measured=measured,
+            excluded_ppm=excluded_ppm,
+            unit_area=proton_area,
         )
         kept = _Kept(
-            evidence=evidence, ledger=ledger, excluded_ppm=excluded_ppm, scene=scene
+            evidence=evidence,
+            ledger=ledger,
+            excluded_ppm=excluded_ppm,
+            proton_area=proton_area,
+            scene=scene,
         )
         with self._lock:
             self._kept = [kept, *self._kept[: _MOST_KEPT - 1]]

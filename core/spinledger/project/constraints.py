@@ -19,6 +19,7 @@ from spinledger.project.edits import (
     PinClaim,
     ReleaseClaim,
     ReleaseCoupling,
+    SetIntegral,
     SwapClaims,
     UnlinkClaim,
 )
@@ -114,6 +115,25 @@ def standing_constraints(project: Project) -> Constraints:
         excluded_ppm=tuple(standing.excluded),
         impurities=tuple(_declared(one) for one in standing.impurities),
     )
+
+
+def standing_proton_area(project: Project) -> float | None:
+    """Area of one proton by the last integral that was set by hand.
+
+    Signals count whose middle lies in the stretch; None where none was set, or
+    the spectrum has no signal there.
+    """
+    evidence = project.evidence
+    mine = [edit for edit in project.edits if isinstance(edit, SetIntegral)]
+    if evidence is None or not mine:
+        return None
+    last = mine[-1]
+    area = sum(
+        signal.area
+        for signal in evidence.signals
+        if last.low_ppm <= (signal.low_ppm + signal.high_ppm) / 2 <= last.high_ppm
+    )
+    return area / last.protons if area > 0 else None
 
 
 def reconcile_options(project: Project) -> ReconcileOptions:

@@ -5,6 +5,7 @@ Shifts in ppm, couplings in Hz. Claims are named by the label that is shown.
 
 from __future__ import annotations
 
+import math
 from dataclasses import dataclass, replace
 from typing import ClassVar
 
@@ -189,6 +190,41 @@ class MarkImpurity(_Edit):
 
 
 @dataclass(frozen=True, slots=True, kw_only=True)
+class SetIntegral(_Edit):
+    """Say how many protons the signals of a stretch count.
+
+    It scales the integrals of a spectrum alone; a ledger takes its scale from all
+    of its claims.
+
+    Attributes
+    ----------
+    low_ppm, high_ppm : float, ppm
+    protons : float
+        More than zero.
+    """
+
+    low_ppm: float
+    high_ppm: float
+    protons: float
+
+    needs_solving: ClassVar[bool] = False
+    names_claims: ClassVar[bool] = False
+
+    def __post_init__(self) -> None:
+        _check_range(self.low_ppm, self.high_ppm)
+        if not 0 < self.protons < math.inf:
+            raise ValueError(f"protons must be > 0, got {self.protons!r}")
+
+    @property
+    def description(self) -> str:
+        """One phrase for the undo list and the audit trail."""
+        return (
+            f"{self.high_ppm:.3f} to {self.low_ppm:.3f} ppm set to "
+            f"{self.protons:g} protons"
+        )
+
+
+@dataclass(frozen=True, slots=True, kw_only=True)
 class SetReference(_Edit):
     """Say what the shift of one line is; the whole axis moves with it.
 
@@ -280,6 +316,7 @@ Edit = (
     | ExcludeRegion
     | IncludeRegion
     | MarkImpurity
+    | SetIntegral
     | SetReference
     | SetRecipe
     | RenameLabel

@@ -6,7 +6,11 @@ import pytest
 
 from invented_ledger import invented_fid, invented_ledger
 from spinledger.errors import SideEvidenceError
-from spinledger.project.constraints import reconcile_options, standing_constraints
+from spinledger.project.constraints import (
+    reconcile_options,
+    standing_constraints,
+    standing_proton_area,
+)
 from spinledger.project.document import (
     Project,
     ProjectOptions,
@@ -26,6 +30,7 @@ from spinledger.project.edits import (
     ReleaseClaim,
     ReleaseCoupling,
     RenameLabel,
+    SetIntegral,
     SetRecipe,
     SetReference,
     SwapClaims,
@@ -286,3 +291,24 @@ def test_a_renamed_claim_is_renamed_in_the_geometry() -> None:
     assert project.ledger is not None
     assert project.ledger.geometry is not None
     assert project.ledger.geometry.dihedrals[0].first == "2-H(pro-R)"
+
+
+def test_the_last_integral_set_by_hand_gives_the_area_of_a_proton() -> None:
+    project = open_project()
+    assert project.evidence is not None
+    signal = project.evidence.signals[0]
+    low, high = signal.low_ppm, signal.high_ppm
+    assert standing_proton_area(project) is None
+    for protons in (1.0, 2.0):
+        edit = SetIntegral(low_ppm=low, high_ppm=high, protons=protons)
+        project = apply_edit(project, edit, when=WHEN)
+    assert standing_proton_area(project) == pytest.approx(signal.area / 2)
+    assert not project.needs_ledger  # a ledger has a scale of its own
+    nowhere = SetIntegral(low_ppm=20.0, high_ppm=21.0, protons=1.0)
+    assert standing_proton_area(apply_edit(project, nowhere, when=WHEN)) is None
+
+
+def test_an_integral_counts_more_than_no_protons() -> None:
+    for protons in (0.0, -1.0, float("nan"), float("inf")):
+        with pytest.raises(ValueError, match="protons must be > 0"):
+            SetIntegral(low_ppm=1.0, high_ppm=2.0, protons=protons)
