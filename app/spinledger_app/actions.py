@@ -8,7 +8,15 @@ from typing import Literal
 from spinledger_app.presenters.wording import say
 
 Needs = Literal[
-    "nothing", "spectrum", "structure", "ledger", "claim", "undo", "redo", "busy"
+    "nothing",
+    "spectra",
+    "spectrum",
+    "structure",
+    "ledger",
+    "claim",
+    "undo",
+    "redo",
+    "busy",
 ]
 
 
@@ -72,6 +80,8 @@ def _project() -> tuple[ActionText, ...]:
         ActionText(name="new", menu=menu, words=say("New"), keys="Ctrl+N"),
         ActionText(name="open", menu=menu, words=say("Open data or project…"), keys="Ctrl+O"),
         ActionText(name="open_folder", menu=menu, words=say("Open data folder…"), keys="Ctrl+Shift+O"),
+        ActionText(name="add_spectrum", menu=menu, words=say("Add spectrum…"), keys="Ctrl+D", needs="spectrum"),
+        ActionText(name="add_spectrum_folder", menu=menu, words=say("Add spectrum folder…"), needs="spectrum"),
         ActionText(name="recent", menu=menu, words=say("Open recent")),
         ActionText(name="example", menu=menu, words=say("Try the example"), ends_group=True),
         ActionText(name="save", menu=menu, words=say("Save"), keys="Ctrl+S", needs="spectrum"),
@@ -110,6 +120,9 @@ def _view() -> tuple[ActionText, ...]:
         ActionText(name="home", menu=menu, words=say("All of the axis"), keys="Home", needs="spectrum"),
         ActionText(name="back", menu=menu, words=say("The view before"), keys="Backspace", needs="spectrum"),
         ActionText(name="look_at_claim", menu=menu, words=say("Look at the selected claim"), keys="L", needs="claim", ends_group=True),
+        ActionText(name="next_spectrum", menu=menu, words=say("Next spectrum of the sample"), keys="T", needs="spectra"),
+        ActionText(name="previous_spectrum", menu=menu, words=say("Previous spectrum of the sample"), keys="Shift+T", needs="spectra"),
+        ActionText(name="ghosts", menu=menu, words=say("Other spectra behind the shown one"), keys="O", needs="spectra", is_checkable=True, ends_group=True),
         ActionText(name="theme_desktop", menu=menu, words=say("Theme as the desktop"), is_checkable=True),
         ActionText(name="theme_light", menu=menu, words=say("Light theme"), is_checkable=True),
         ActionText(name="theme_dark", menu=menu, words=say("Dark theme"), is_checkable=True),

@@ -17,10 +17,11 @@ from spinledger_app.handlers.files import FileHandlers
 from spinledger_app.handlers.menus import MenuHandlers
 from spinledger_app.handlers.overlays import OverlayHandlers
 from spinledger_app.handlers.process import ProcessHandlers
+from spinledger_app.handlers.spectra import SpectrumHandlers
 from spinledger_app.handlers.view import ViewHandlers
 from spinledger_app.lanes.targets import Target
 from spinledger_app.languages import NAMES, chosen
-from spinledger_app.places import example_place
+from spinledger_app.places import Kind, example_place, kind_of
 from spinledger_app.presenters import contenders as contender_words
 from spinledger_app.presenters.cursor import cursor_text, title, view_text
 from spinledger_app.presenters.gestures import by_hand, row_actions
@@ -83,6 +84,7 @@ class Desk(QObject):
         self.process = ProcessHandlers(self.context)
         self.claims = ClaimHandlers(self.context, self.process.reference)
         self.overlays = OverlayHandlers(self.context)
+        self.spectra = SpectrumHandlers(self.context)
         self.menus = MenuHandlers(self.context, self.overlays)
         self._handlers = {
             **self.files.actions(),
@@ -90,6 +92,7 @@ class Desk(QObject):
             **self.process.actions(),
             **self.claims.actions(),
             **self.overlays.actions(),
+            **self.spectra.actions(),
         }
         # The panels follow the lanes, each in a turn of its own, so that no turn of
         # the event loop lasts long.
@@ -131,7 +134,7 @@ class Desk(QObject):
     def _wire_window(self) -> None:
         window = self.window
         window.action_wanted.connect(self.do)
-        window.places_dropped.connect(self.files.open_places)
+        window.places_dropped.connect(self._take_drop)
         window.text_dropped.connect(self.bench.take_structure)
         window.close_wanted.connect(self._close)
         window.status.cancel_wanted.connect(self.bench.cancel)
@@ -145,6 +148,19 @@ class Desk(QObject):
         hints.colorSchemeChanged.connect(
             lambda _: self.view.take_theme(self.settings.theme)
         )
+
+    def _take_drop(self, places: list[str]) -> None:
+        """Data go to the open sample if wanted; all else is opened."""
+        data = [one for one in places if kind_of(Path(one)) is Kind.DATA]
+        has_spectrum = self.bench.project.evidence is not None
+        if not has_spectrum and len(data) < 2:
+            self.files.open_places(places)
+            return
+        self.files.open_places([one for one in places if one not in data])
+        if data and has_spectrum:
+            self.spectra.offer([Path(one) for one in data])
+        else:
+            self.spectra.add([Path(one) for one in data])
 
     def _wire_panels(self) -> None:
         window, selection = self.window, self.bench.selection
@@ -203,6 +219,7 @@ class Desk(QObject):
         self._show_title()
         self._show_abilities()
         self._steps = [
+            self.spectra.show,
             self._show_structure,
             self._show_ledger,
             self._show_contenders,
@@ -246,6 +263,7 @@ class Desk(QObject):
             before=project.verdict_before_edits if project.edits else None,
             pinned=tuple(by_hand(project)),
         )
+        text = self.spectra.ledger_text(text)
         window.ledger.show_ledger(text, row_actions(project))
 
     def _show_contenders(self) -> None:
@@ -304,6 +322,7 @@ class Desk(QObject):
         has_claim = bench.selection.marks.selected is not None
         abilities = {
             "spectrum": project.evidence is not None,
+            "spectra": bool(project.others),
             "structure": project.structure is not None,
             "ledger": project.ledger is not None,
             "claim": project.ledger is not None and has_claim,
@@ -319,6 +338,7 @@ class Desk(QObject):
             "fold": lanes.is_folded,
             "own_gains": lanes.has_own_gains,
             "integrals": lanes.shows_integrals,
+            "ghosts": self.settings.shows_ghosts,
             "left_panels": self.window.left_column.is_folded,
         }
         theme = self.settings.theme

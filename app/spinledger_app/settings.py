@@ -94,6 +94,15 @@ class BenchSettings:
         self._store.setValue(f"geometry/{name}", state)
 
     @property
+    def shows_ghosts(self) -> bool:
+        """Whether the sample's other spectra are drawn behind the shown one."""
+        return bool(self._store.value("shows_ghosts", False, type=bool))
+
+    @shows_ghosts.setter
+    def shows_ghosts(self, is_shown: bool) -> None:
+        self._store.setValue("shows_ghosts", is_shown)
+
+    @property
     def folds_left(self) -> bool:
         """Whether the left panels are folded to a rail."""
         return bool(self._store.value("folds_left", False, type=bool))

@@ -27,6 +27,7 @@ if TYPE_CHECKING:
     import numpy.typing as npt
 
     from spinledger.report.context import ReportContext
+    from spinledger.sample.shake import Shake
     from spinledger_app.presenters.what_if import WhatIf
 
 Progress = Callable[[str, float], None]
@@ -236,3 +237,12 @@ def save(
 
     save_project(project, path)
     return path
+
+
+def shake(
+    _progress: Progress, _cancelled: Cancelled, ledger: Ledger, after: Evidence
+) -> Shake:
+    """What the spectrum after a D2O shake says of the one before."""
+    from spinledger.sample.shake import shake_pair
+
+    return shake_pair(ledger, after)

@@ -365,5 +365,10 @@ def style_sheet(look: Look) -> str:
         selection-background-color: {t.accent};
         selection-color: {t.on_accent}; }}
     QAbstractSpinBox QLineEdit {{ border: none; padding: 0; background: transparent; }}
+    QTabBar::tab {{ background: {t.chrome}; color: {t.muted}; padding: 4px 12px;
+                    border: none; border-bottom: 2px solid {t.chrome}; }}
+    QTabBar::tab:hover {{ background: {t.hover}; }}
+    QTabBar::tab:selected {{ background: {t.lane}; color: {t.ink};
+                             border-bottom: 2px solid {t.accent}; }}
     QDialog {{ background: {t.panel}; }}
     """

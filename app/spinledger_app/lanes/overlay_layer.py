@@ -1,6 +1,9 @@
-"""Another spectrum over the evidence: a contender's model, or the claims elsewhere."""
+"""Other spectra on the evidence: a model laid over it, the sample's others behind."""
 
 from __future__ import annotations
+
+from collections.abc import Sequence
+from dataclasses import dataclass
 
 import numpy as np
 import numpy.typing as npt
@@ -18,11 +21,45 @@ from spinledger_app.painting.ink import Ink
 _MANNERS: tuple[tuple[str, float, tuple[float, ...]], ...] = (
     ("accent", 1.0, ()),
     ("ink", 1.6, (7.0, 4.0)),
+    ("rule", 1.0, ()),  # the sample's others, behind the evidence
 )
-N_OVERLAYS = len(_MANNERS)
+_GHOST = len(_MANNERS) - 1
+N_OVERLAYS = _GHOST
 
 
-def paint_overlay(  # noqa: PLR0913 - trace, place and two choices
+@dataclass(frozen=True, slots=True, eq=False, kw_only=True)
+class Ghost:
+    """Another spectrum of the sample; ``full_height`` fills the lane at gain 1."""
+
+    trace: Trace
+    full_height: float
+
+
+def paint_ghosts(  # noqa: PLR0913 - traces, place and two choices
+    ink: Ink,
+    ghosts: Sequence[Ghost],
+    scene: LaneScene,
+    shift_map: ShiftMap,
+    layout: LaneLayout,
+    *,
+    gain: float,
+    own_gains: bool,
+) -> None:
+    """Paint other spectra faintly, each as tall as the shown one."""
+    for ghost in ghosts:
+        paint_overlay(
+            ink,
+            ghost.trace,
+            _GHOST,
+            scene,
+            shift_map,
+            layout,
+            gain=gain * scene.full_height / ghost.full_height,
+            own_gains=own_gains,
+        )
+
+
+def paint_overlay(  # noqa: PLR0913 - trace, place and choices
     ink: Ink,
     trace: Trace,
     rank: int,

@@ -410,6 +410,7 @@ def _keys_html() -> str:
         ("N, B, F2, F3", say("next and previous claim, type J, rename")),
         ("X, M", say("leave a region out, mark it as an impurity")),
         ("R, Ctrl+.", say("refine, cancel")),
+        ("T, Shift+T, O, Ctrl+D", say("next and previous spectrum of the sample, the others behind it, add one")),
         ("W, F9", say("claims at another field, fold the left panels")),
         (say("Phase: drag, Shift + drag, click"), say("zero order, first order, pivot")),
         ("Esc", say("lets go of what is taken up")),

@@ -26,7 +26,7 @@ from spinledger_app.lanes.claims_layer import BranchHandle, ClaimsPainter
 from spinledger_app.lanes.evidence_layer import paint_brackets, paint_evidence
 from spinledger_app.lanes.grove import LARGE_LEAVES_FROM, Grove, plant
 from spinledger_app.lanes.layout import DEFAULT_SHARES, LaneLayout, lane_layout
-from spinledger_app.lanes.overlay_layer import paint_overlay
+from spinledger_app.lanes.overlay_layer import Ghost, paint_ghosts, paint_overlay
 from spinledger_app.lanes.residue_layer import paint_residue, paint_residue_ticks
 from spinledger_app.lanes.scene import LaneScene, Trace, TreeShape
 from spinledger_app.lanes.shift_map import ShiftMap
@@ -87,6 +87,7 @@ class LanesView(QWidget):
         self.trial: Trace | None = None
         self.pivot_ppm: float | None = None
         self.overlays: tuple[Trace, ...] = ()
+        self.ghosts: tuple[Ghost, ...] = ()
         self.cursor_x: float | None = None
         self.lit_fold: int | None = None
         self.lit_level: tuple[str, int] | None = None
@@ -148,6 +149,12 @@ class LanesView(QWidget):
         """Lay other spectra over the evidence; none takes them away."""
         if overlays != self.overlays:
             self.overlays = overlays
+            self.refresh()
+
+    def show_ghosts(self, ghosts: tuple[Ghost, ...]) -> None:
+        """Draw the sample's other spectra behind the evidence."""
+        if ghosts != self.ghosts:
+            self.ghosts = ghosts
             self.refresh()
 
     def show_marks(self, marks: Marks) -> None:
@@ -379,6 +386,15 @@ class LanesView(QWidget):
         self._paint_selected_band(ink, scene, shift_map)
         if scene.residue is not None:
             paint_residue(ink, scene, shift_map, layout)
+        paint_ghosts(
+            ink,
+            self.ghosts,
+            scene,
+            shift_map,
+            layout,
+            gain=self.gain,
+            own_gains=self.has_own_gains,
+        )
         paint_evidence(
             ink,
             scene,

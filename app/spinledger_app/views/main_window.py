@@ -36,6 +36,7 @@ from spinledger_app.views.phase_strip import PhaseStrip
 from spinledger_app.views.rail import LeftColumn
 from spinledger_app.views.recipe_view import RecipeView
 from spinledger_app.views.ribbon_view import RibbonView
+from spinledger_app.views.spectrum_tabs import SpectrumTabs
 from spinledger_app.views.status_row import StatusRow
 from spinledger_app.views.structure_view import SketchPanel
 
@@ -79,6 +80,7 @@ class MainWindow(QMainWindow):
         self.lanes = LanesView(look)
         self.lanes_empty = EvidenceEmpty(look)
         self.phase_strip = PhaseStrip(look)
+        self.spectrum_tabs = SpectrumTabs(look)
         self.field_strip = FieldStrip(look)
         self.ledger = LedgerView(look)
         self.status = StatusRow(look)
@@ -103,6 +105,7 @@ class MainWindow(QMainWindow):
         column.setSpacing(0)
         column.addWidget(self.recipe)
         column.addWidget(self.ribbon)
+        column.addWidget(self.spectrum_tabs)
         column.addWidget(self.phase_strip)
         column.addWidget(self.field_strip)
         column.addWidget(self.middle, 1)
@@ -141,7 +144,8 @@ class MainWindow(QMainWindow):
         self.setTabOrder(self.sketch.canvas, self.sketch.tags)
         self.setTabOrder(self.sketch.tags, self.contenders)
         self.setTabOrder(self.contenders, self.recipe)
-        self.setTabOrder(self.recipe, self.lanes)
+        self.setTabOrder(self.recipe, self.spectrum_tabs)
+        self.setTabOrder(self.spectrum_tabs, self.lanes)
         self.setTabOrder(self.lanes, self.ledger.verdict)
 
     def _build_menus(self) -> None:
@@ -212,6 +216,7 @@ class MainWindow(QMainWindow):
             self.menu_row,
             self.recipe,
             self.ribbon,
+            self.spectrum_tabs,
             self.phase_strip,
             self.field_strip,
             self.status,
