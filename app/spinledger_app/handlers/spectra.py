@@ -6,6 +6,7 @@ from collections.abc import Callable
 from dataclasses import replace
 from functools import partial
 from pathlib import Path
+from typing import TYPE_CHECKING
 
 from PySide6.QtCore import QPoint
 from PySide6.QtGui import QAction, QActionGroup
@@ -22,7 +23,6 @@ from spinledger.project.spectra import (
     step_spectrum,
 )
 from spinledger.sample.roles import Role
-from spinledger.sample.shake import Shake
 from spinledger.values.evidence import Evidence
 from spinledger.values.ledger import Ledger
 from spinledger_app import tasks
@@ -37,6 +37,9 @@ from spinledger_app.presenters.spectra import (
 )
 from spinledger_app.presenters.wording import say
 from spinledger_app.writing import now
+
+if TYPE_CHECKING:
+    from spinledger.sample.shake import Shake
 
 
 class SpectrumHandlers:

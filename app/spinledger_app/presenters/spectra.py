@@ -4,13 +4,16 @@ from __future__ import annotations
 
 from collections.abc import Sequence
 from dataclasses import dataclass, replace
+from typing import TYPE_CHECKING
 
 from spinledger.project.document import Project, SampleSpectrum
 from spinledger.project.spectra import spectra
 from spinledger.sample.roles import ROLES, Role
-from spinledger.sample.shake import Shake
 from spinledger_app.presenters.ledger import LedgerText
 from spinledger_app.presenters.wording import chemical, say, sentences
+
+if TYPE_CHECKING:
+    from spinledger.sample.shake import Shake
 
 
 @dataclass(frozen=True, slots=True, kw_only=True)

@@ -14,7 +14,6 @@ from spinledger.project.document import (
     SampleSpectrum,
     open_spectrum,
 )
-from spinledger.project.solve import solve, solve_evidence
 from spinledger.sample.roles import ROLES, Role, guess_role
 from spinledger.values.acquisition import Acquired, Metadata
 
@@ -247,6 +246,11 @@ def solve_all(
     EvidenceError, StructureError
         If nothing can be compared.
     """
+    from spinledger.project.solve import (  # noqa: PLC0415 - loads all of the fit
+        solve,
+        solve_evidence,
+    )
+
     shown = project.key
     for one in spectra(project):
         project = show_spectrum(project, one.key)
