@@ -7,6 +7,7 @@ from dataclasses import replace
 from pathlib import Path
 
 import invented
+import numpy as np
 import pytest
 from PySide6.QtCore import QMimeData, QPointF, Qt, QUrl
 from PySide6.QtGui import QDropEvent
@@ -19,6 +20,7 @@ from spinledger.project.spectra import spectra
 from spinledger.project.storage import load_project, save_project
 from spinledger_app import tasks
 from spinledger_app.application import Parts
+from spinledger_app.presenters.ledger import ledger_text
 
 
 @pytest.fixture
@@ -187,3 +189,27 @@ def test_the_project_file_keeps_the_spectra(parts: Parts, tmp_path: Path) -> Non
     parts.bench._timer.stop()
     settle()
     assert parts.window.spectrum_tabs.count() == 2
+
+
+def test_the_rows_say_what_exchanged_in_a_shake(parts: Parts) -> None:
+    other = another("batch-117 D2O shake")
+    spectrum = other.evidence.spectrum
+    shifts = spectrum.first_point_ppm - spectrum.step_ppm * np.arange(spectrum.n_points)
+    is_oh = (shifts > 2.75) & (shifts < 3.17)
+    halved = np.where(is_oh, 0.5, 1.0) * spectrum.intensities
+    shaken = replace(other.evidence, spectrum=replace(spectrum, intensities=halved))
+    handlers = parts.desk.spectra
+    handlers._take(Path("shake"), replace(other, evidence=shaken))
+    settle()
+    asked = handlers._pair
+    assert asked is not None
+    shake = tasks.shake(lambda _stage, _part: None, lambda: False, *asked)
+    handlers._take_shake(asked, shake)
+    settle()
+    ledger = parts.bench.project.ledger
+    assert ledger is not None
+    text = handlers.ledger_text(ledger_text(ledger))
+    told = {row.claim: row.sentences for row in text.rows}
+    assert "OH exchanged in part (0.5" in told["OH"][-1]
+    assert not any("exchanged" in one for one in told["4-H"])
+    assert "OH exchanged in part" in parts.window.status.accessibleName()
