@@ -183,7 +183,8 @@ def _ledger() -> tuple[ActionText, ...]:
         ActionText(name="no_overlay", menu=menu, words=say("Take the overlay away"), needs="spectrum", ends_group=True),
         ActionText(name="add_contender", menu=menu, words=say("Add a contender…"), needs="structure"),
         ActionText(name="n_contenders", menu=menu, words=say("Number of isomers to test…"), needs="structure", ends_group=True),
-        ActionText(name="side_evidence", menu=menu, words=say("Side evidence…"), needs="structure", ends_group=True),
+        ActionText(name="side_evidence", menu=menu, words=say("Side evidence…"), needs="structure"),
+        ActionText(name="published_list", menu=menu, words=say("Compare with a published list…"), needs="ledger", ends_group=True),
         ActionText(name="next_claim", menu=menu, words=say("Next claim"), keys="N", needs="ledger"),
         ActionText(name="previous_claim", menu=menu, words=say("Previous claim"), keys="B", needs="ledger"),
     )  # fmt: skip

@@ -18,6 +18,7 @@ from spinledger_app.application import Parts
 from spinledger_app.painting.ink import SECOND, wrap
 from spinledger_app.views.dialogs import SampleDialog, SideDialog
 from spinledger_app.views.ledger_rows import AdviceRow
+from spinledger_app.views.published_list import PublishedListDialog
 
 RETURN = Qt.Key.Key_Return
 
@@ -86,3 +87,35 @@ def test_advice_is_shown_whole(parts: Parts) -> None:
     # The last baseline, from the row's own measures, lies inside the row.
     assert row.sizeHint().height() >= parts.look.px(19) + parts.look.px(17) * n_lines
     assert "3.1" in row.accessibleName()
+
+
+def test_published_list_is_compared_as_it_is_pasted(parts: Parts) -> None:
+    ledger = parts.bench.project.ledger
+    assert ledger is not None
+    shifts = sorted(
+        (e.shift_ppm for e in ledger.entries if e.shift_ppm is not None), reverse=True
+    )
+    parts.desk.do("published_list")
+    settle()
+    dialog = parts.window.findChild(PublishedListDialog)
+    assert dialog is not None
+    QTest.keyClicks(dialog.box, "no shifts in this")
+    assert dialog.words.text() != ""
+    assert dialog.table.rowCount() == 0
+    # The ledger's own shifts, all 0.02 ppm lower: one offset, no differences left.
+    dialog.box.setPlainText(
+        "1H NMR (400 MHz, CDCl3) δ "
+        + ", ".join(f"{shift - 0.02:.3f} (m, 1H)" for shift in shifts)
+    )
+    assert "0.02" in dialog.words.text()
+    pairs = [
+        float(dialog.table.item(row, 2).text().replace("−", "-"))
+        for row in range(dialog.table.rowCount())
+        if dialog.table.item(row, 2).text()
+    ]
+    assert pairs
+    assert max(abs(one) for one in pairs) <= 0.011
+    dialog._copy.click()
+    copied = QApplication.clipboard().text().splitlines()
+    assert len(copied) == dialog.table.rowCount() + 1
+    dialog.close()

@@ -25,6 +25,7 @@ from spinledger_app.presenters.gestures import (
 )
 from spinledger_app.presenters.wording import say
 from spinledger_app.views import dialogs
+from spinledger_app.views.published_list import PublishedListDialog
 
 
 class ClaimHandlers:
@@ -51,6 +52,7 @@ class ClaimHandlers:
             "let_go": self.let_go,
             "add_contender": self.add_contender,
             "side_evidence": self.side_evidence,
+            "published_list": self.published_list,
             "n_contenders": self.set_n_contenders,
             "cancel": self.cancel,
         }
@@ -255,6 +257,12 @@ class ClaimHandlers:
         dialog = dialogs.SideDialog(self.look, now, self.window)
         if dialog.exec():
             self.bench.set_side_text(dialog.text())
+
+    def published_list(self) -> None:
+        """Put a pasted proton list beside the ledger."""
+        ledger = self.bench.project.ledger
+        if ledger is not None:
+            PublishedListDialog(self.look, ledger, self.window).open()
 
     def cancel(self) -> None:
         """Stop what runs."""
