@@ -5,6 +5,7 @@ from __future__ import annotations
 import ast
 import re
 from collections.abc import Iterator
+from contextlib import contextmanager
 from pathlib import Path
 
 import pytest
@@ -43,10 +44,25 @@ def test_every_text_is_translated_with_its_places(code: str) -> None:
         assert sorted(places) == sorted(re.findall(r"\{\d\}", other)), english
 
 
+@contextmanager
+def spoken_in(code: str) -> Iterator[None]:
+    """The program's words in a language, as its start installs them."""
+    words = Words(table_of(code))
+    QCoreApplication.installTranslator(words)
+    yield
+    QCoreApplication.removeTranslator(words)
+
+
 def test_an_unknown_text_stays_english(qapp: object) -> None:
-    words = Words(table_of("de"))
-    assert words.translate("bench", "Undo") == "Rückgängig"
-    assert words.translate("bench", "no such text") == ""
+    with spoken_in("de"):
+        assert QCoreApplication.translate("bench", "Undo") == "Rückgängig"
+        assert QCoreApplication.translate("bench", "no such text") == "no such text"
+
+
+def test_english_shows_its_own_texts(qapp: object) -> None:
+    with spoken_in("en"):
+        shown = {text: QCoreApplication.translate("bench", text) for text in spoken()}
+    assert all(text == other for text, other in shown.items())
 
 
 def test_an_unknown_language_falls_back() -> None:
@@ -56,12 +72,10 @@ def test_an_unknown_language_falls_back() -> None:
 
 @pytest.fixture
 def german(qapp: object, tmp_path: Path) -> Iterator[Parts]:
-    words = Words(table_of("de"))
-    QCoreApplication.installTranslator(words)
-    parts = stage(tmp_path)
-    yield parts
-    take_down(parts)
-    QCoreApplication.removeTranslator(words)
+    with spoken_in("de"):
+        parts = stage(tmp_path)
+        yield parts
+        take_down(parts)
 
 
 @pytest.mark.parametrize("show", [empty, folded, disputed])

@@ -27,9 +27,12 @@ class Words(QTranslator):
         sourceText: str,
         disambiguation: str | None = None,
         n: int = -1,
-    ) -> str:
-        """The text in the other language; empty where it is not known."""
-        return self._table.get(sourceText, "")
+    ) -> str | None:
+        """The text in the other language; None where it is not known.
+
+        An empty text would count as a translation and blank the label.
+        """
+        return self._table.get(sourceText)
 
 
 def table_of(code: str) -> dict[str, str]:
