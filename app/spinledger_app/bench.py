@@ -2,7 +2,7 @@
 
 from __future__ import annotations
 
-from collections.abc import Sequence
+from collections.abc import Callable, Sequence
 from dataclasses import replace
 from pathlib import Path
 
@@ -200,14 +200,7 @@ class Bench(WritingBench):
             self.told.emit(say("Opened {0}.").replace("{0}", path.name), False)
             self._solve_soon()
 
-        self.pool.run(
-            tasks.load,
-            path,
-            done=done,
-            failed=self._fail,
-            lane="read",
-            prepare=self._prepare_project,
-        )
+        self._load(path, done)
 
     def open_left_behind(self, path: Path) -> None:
         """Open autosaved work; it counts as unsaved, and its file goes away."""
@@ -220,6 +213,9 @@ class Bench(WritingBench):
             self.told.emit(say("Opened what was not saved. Save it now."), False)
             self._solve_soon()
 
+        self._load(path, done)
+
+    def _load(self, path: Path, done: Callable[[Project], None]) -> None:
         self.pool.run(
             tasks.load,
             path,

@@ -9,13 +9,12 @@ class SpinLedgerError(Exception):
     """Root of every error the core raises on purpose."""
 
 
-class SpectrumFormatError(SpinLedgerError, ValueError):
-    """A file was read but does not hold a usable 1D proton spectrum.
+class FileError(SpinLedgerError):
+    """A file or folder is at fault, or cannot be used.
 
     Attributes
     ----------
     path : pathlib.Path
-        The offending file or dataset folder.
     reason : str
         One sentence for the user, without the path.
     """
@@ -27,6 +26,37 @@ class SpectrumFormatError(SpinLedgerError, ValueError):
 
     def __str__(self) -> str:
         return f"{self.path}: {self.reason}"
+
+
+class SourceError(SpinLedgerError):
+    """What was given under a name is at fault.
+
+    Attributes
+    ----------
+    source : str
+    reason : str
+        One sentence for the user.
+    """
+
+    def __init__(self, source: str, reason: str) -> None:
+        super().__init__(source, reason)  # both in args: survives pickling
+        self.source = source
+        self.reason = reason
+
+    def __str__(self) -> str:
+        return f"{self.source}: {self.reason}"
+
+
+class SpectrumFormatError(FileError, ValueError):
+    """A file was read but does not hold a usable 1D proton spectrum.
+
+    Attributes
+    ----------
+    path : pathlib.Path
+        The offending file or dataset folder.
+    reason : str
+        One sentence for the user, without the path.
+    """
 
 
 class StructureError(SpinLedgerError, ValueError):
@@ -49,7 +79,7 @@ class StructureError(SpinLedgerError, ValueError):
         return f"{self.given}: {self.reason}"
 
 
-class EvidenceError(SpinLedgerError, ValueError):
+class EvidenceError(SourceError, ValueError):
     """A spectrum was read but holds nothing that could be compared.
 
     Attributes
@@ -60,16 +90,8 @@ class EvidenceError(SpinLedgerError, ValueError):
         One sentence for the user.
     """
 
-    def __init__(self, source: str, reason: str) -> None:
-        super().__init__(source, reason)
-        self.source = source
-        self.reason = reason
 
-    def __str__(self) -> str:
-        return f"{self.source}: {self.reason}"
-
-
-class OutputError(SpinLedgerError, OSError):
+class OutputError(FileError, OSError):
     """Results could not be written where the user asked.
 
     Attributes
@@ -80,14 +102,6 @@ class OutputError(SpinLedgerError, OSError):
         One sentence for the user.
     """
 
-    def __init__(self, path: Path, reason: str) -> None:
-        super().__init__(path, reason)
-        self.path = path
-        self.reason = reason
-
-    def __str__(self) -> str:
-        return f"{self.path}: {self.reason}"
-
 
 class UsageError(SpinLedgerError):
     """The command line was called with words it does not know (exit code 2)."""
@@ -97,7 +111,7 @@ class CancelledError(SpinLedgerError):
     """The user stopped a long computation; nothing was changed."""
 
 
-class SideEvidenceError(SpinLedgerError, ValueError):
+class SideEvidenceError(SourceError, ValueError):
     """Typed or pasted side evidence could not be understood.
 
     Attributes
@@ -107,11 +121,3 @@ class SideEvidenceError(SpinLedgerError, ValueError):
     reason : str
         One sentence for the user.
     """
-
-    def __init__(self, source: str, reason: str) -> None:
-        super().__init__(source, reason)
-        self.source = source
-        self.reason = reason
-
-    def __str__(self) -> str:
-        return f"{self.source}: {self.reason}"

@@ -9,29 +9,14 @@ from collections.abc import Sequence
 from dataclasses import dataclass
 from pathlib import Path
 
-from spinledger.errors import SpinLedgerError
+from spinledger.errors import FileError
 
 _COLUMNS = ("data", "structure")
 _SEPARATOR = re.compile(r"\ufeff?sep=(.)\r?\n?", re.IGNORECASE)
 
 
-class BatchTableError(SpinLedgerError, ValueError):
-    """The table of a batch cannot be read at all.
-
-    Attributes
-    ----------
-    path : pathlib.Path
-    reason : str
-        One sentence for the user, without the path.
-    """
-
-    def __init__(self, path: Path, reason: str) -> None:
-        super().__init__(path, reason)
-        self.path = path
-        self.reason = reason
-
-    def __str__(self) -> str:
-        return f"{self.path}: {self.reason}"
+class BatchTableError(FileError, ValueError):
+    """The table of a batch cannot be read at all."""
 
 
 @dataclass(frozen=True, slots=True, kw_only=True)

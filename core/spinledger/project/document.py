@@ -250,6 +250,13 @@ def open_spectrum(
 def open_structure(project: Project, structure: Structure, *, when: str) -> Project:
     """Project with a new claimed structure; edits of the old claims are dropped."""
     line = AuditLine(when=when, what=f"Structure {structure.smiles} taken.")
+    return _with_structure(project, structure, line)
+
+
+def _with_structure(
+    project: Project, structure: Structure | None, line: AuditLine
+) -> Project:
+    """What another structure leaves of a project."""
     return replace(
         project,
         structure=structure,
@@ -302,17 +309,7 @@ def without_structure(project: Project, *, when: str) -> Project:
     if project.structure is None:
         return project
     line = AuditLine(when=when, what=f"Structure {project.structure.smiles} removed.")
-    return replace(
-        project,
-        structure=None,
-        ledger=None,
-        verdict_before_edits=None,
-        labels=(),
-        edits=_without_claims(project.edits),
-        others=_without_ledgers(project.others),
-        ticked=(),
-        audit=(*project.audit, line),
-    )
+    return _with_structure(project, None, line)
 
 
 def with_evidence(project: Project, evidence: Evidence) -> Project:

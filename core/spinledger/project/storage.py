@@ -16,7 +16,7 @@ from typing import Any
 import numpy as np
 import numpy.typing as npt
 
-from spinledger.errors import OutputError, SpinLedgerError
+from spinledger.errors import FileError, OutputError
 from spinledger.project.codec import Encoder, decode
 from spinledger.project.document import Project, SampleSpectrum
 
@@ -39,23 +39,8 @@ _ZIP_FAULTS = (
 )
 
 
-class ProjectFileError(SpinLedgerError, ValueError):
-    """A project file is damaged, too new, or no project file at all.
-
-    Attributes
-    ----------
-    path : pathlib.Path
-    reason : str
-        One sentence for the user, without the path.
-    """
-
-    def __init__(self, path: Path, reason: str) -> None:
-        super().__init__(path, reason)
-        self.path = path
-        self.reason = reason
-
-    def __str__(self) -> str:
-        return f"{self.path}: {self.reason}"
+class ProjectFileError(FileError, ValueError):
+    """A project file is damaged, too new, or no project file at all."""
 
 
 def save_project(project: Project, path: Path) -> None:

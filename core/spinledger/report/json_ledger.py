@@ -12,7 +12,7 @@ from typing import Any
 
 from rdkit import Chem, rdBase
 
-from spinledger.errors import SpinLedgerError
+from spinledger.errors import FileError
 from spinledger.project.audit import versions
 from spinledger.report.json_geometry import geometry_to_json
 from spinledger.report.numbers import finite
@@ -31,23 +31,8 @@ from spinledger.values.structure import Structure
 SCHEMA = 1
 
 
-class LedgerFileError(SpinLedgerError, ValueError):
-    """A ledger.json could not be read or is not one.
-
-    Attributes
-    ----------
-    path : pathlib.Path
-    reason : str
-        One sentence for the user, without the path.
-    """
-
-    def __init__(self, path: Path, reason: str) -> None:
-        super().__init__(path, reason)
-        self.path = path
-        self.reason = reason
-
-    def __str__(self) -> str:
-        return f"{self.path}: {self.reason}"
+class LedgerFileError(FileError, ValueError):
+    """A ledger.json could not be read or is not one."""
 
 
 def ledger_to_json(ledger: Ledger) -> dict[str, Any]:

@@ -19,7 +19,7 @@ from rdkit import Chem, rdBase
 from rdkit.Chem.rdMolDescriptors import CalcMolFormula
 
 from spinledger import __version__
-from spinledger.errors import SpinLedgerError
+from spinledger.errors import FileError
 from spinledger.report.sketch import drawable
 from spinledger.report.text import signal_groups
 from spinledger.report.words import plain
@@ -30,23 +30,8 @@ _END = "\\\n"
 _QUOTED = re.compile(r"[,/\\|()&\s]")
 
 
-class RecordError(SpinLedgerError, ValueError):
-    """A file is not an NMReDATA record, or cannot be read.
-
-    Attributes
-    ----------
-    path : pathlib.Path
-    reason : str
-        One sentence for the user, without the path.
-    """
-
-    def __init__(self, path: Path, reason: str) -> None:
-        super().__init__(path, reason)
-        self.path = path
-        self.reason = reason
-
-    def __str__(self) -> str:
-        return f"{self.path}: {self.reason}"
+class RecordError(FileError, ValueError):
+    """A file is not an NMReDATA record, or cannot be read."""
 
 
 @dataclass(frozen=True, slots=True, kw_only=True)

@@ -10,7 +10,7 @@ import unicodedata
 from dataclasses import dataclass
 from pathlib import Path
 
-from spinledger.errors import SpinLedgerError
+from spinledger.errors import FileError
 from spinledger.processing.solvents import canonical_solvent
 
 _DASH = r"[-\u2010-\u2015\u2212]"
@@ -58,23 +58,8 @@ _WORDS = {
 }
 
 
-class PublishedListError(SpinLedgerError, ValueError):
-    """A text holds no proton list that can be read.
-
-    Attributes
-    ----------
-    path : pathlib.Path
-    reason : str
-        One sentence for the user, without the path.
-    """
-
-    def __init__(self, path: Path, reason: str) -> None:
-        super().__init__(path, reason)
-        self.path = path
-        self.reason = reason
-
-    def __str__(self) -> str:
-        return f"{self.path}: {self.reason}"
+class PublishedListError(FileError, ValueError):
+    """A text holds no proton list that can be read."""
 
 
 @dataclass(frozen=True, slots=True, kw_only=True)

@@ -2,7 +2,7 @@
 
 from __future__ import annotations
 
-from collections.abc import Iterator
+from collections.abc import Iterable, Iterator
 from dataclasses import dataclass
 from typing import Final
 
@@ -10,8 +10,8 @@ from rdkit import Chem
 
 from spinledger.processing.solvents import is_aqueous
 from spinledger.structure.acidity import as_salt, at_ph
-from spinledger.structure.sugars import sugar_forms
-from spinledger.structure.tautomers import has_minor_enol, keto_enol_forms
+from spinledger.structure.sugars import SugarForm, sugar_forms
+from spinledger.structure.tautomers import Tautomer, has_minor_enol, keto_enol_forms
 
 # Share of the hydrate in water at room temperature (from memory): pattern
 # starts at the carbonyl carbon; mean share and its sd.
@@ -107,6 +107,18 @@ def _forms_ions(mol: Chem.Mol, solvent: str | None) -> bool:
     return solvent in ("CD3OD", "TFE-d3") or len(Chem.GetMolFrags(mol)) > 1
 
 
+def _shares(drawn: Species, forms: Iterable[Tautomer | SugarForm]) -> Iterator[Species]:
+    """The forms of what is drawn, each with its share."""
+    for form in forms:
+        yield Species(
+            mol=form.mol,
+            name=form.name,
+            share=form.share,
+            share_sd=form.share_sd,
+            borderline=drawn.borderline,
+        )
+
+
 def _tautomers(
     drawn: Species, solvent: str | None, notes: list[str]
 ) -> Iterator[Species]:
@@ -120,14 +132,7 @@ def _tautomers(
         notes.append(
             "Some enol (5 to 10 %) may show besides the keto form, which is claimed."
         )
-    for form in forms:
-        yield Species(
-            mol=form.mol,
-            name=form.name,
-            share=form.share,
-            share_sd=form.share_sd,
-            borderline=drawn.borderline,
-        )
+    yield from _shares(drawn, forms)
 
 
 def _mixture(drawn: Species, notes: list[str]) -> Iterator[Species]:
@@ -137,14 +142,7 @@ def _mixture(drawn: Species, notes: list[str]) -> Iterator[Species]:
             f"A free sugar is a mixture in water; {len(forms)} forms (anomers, ring "
             "sizes) are claimed, in a proportion that the spectrum decides."
         )
-        for form in forms:
-            yield Species(
-                mol=form.mol,
-                name=form.name,
-                share=form.share,
-                share_sd=form.share_sd,
-                borderline=drawn.borderline,
-            )
+        yield from _shares(drawn, forms)
         return
     hydrate = _hydrate(drawn)
     if hydrate is not None:
