@@ -2,16 +2,13 @@
 
 from __future__ import annotations
 
-from collections.abc import Callable, Iterator
+from collections.abc import Callable
 from dataclasses import replace
-from pathlib import Path
 
-import invented
-import pytest
 from PySide6.QtCore import Qt, QTimer
 from PySide6.QtTest import QTest
 from PySide6.QtWidgets import QApplication
-from stage import put_on, settle, stage, take_down
+from stage import put_on, settle
 
 from spinledger.report.tables import sample_rows
 from spinledger_app.application import Parts
@@ -21,14 +18,6 @@ from spinledger_app.views.ledger_rows import AdviceRow
 from spinledger_app.views.published_list import PublishedListDialog
 
 RETURN = Qt.Key.Key_Return
-
-
-@pytest.fixture
-def parts(qapp: object, tmp_path: Path) -> Iterator[Parts]:
-    made = stage(tmp_path)
-    put_on(made, invented.ledger())
-    yield made
-    take_down(made)
 
 
 def answer(parts: Parts, name: str, act: Callable[[object], None]) -> None:

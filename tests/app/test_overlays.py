@@ -2,16 +2,13 @@
 
 from __future__ import annotations
 
-from collections.abc import Iterator
 from dataclasses import replace
-from pathlib import Path
 
-import invented
 import numpy as np
 import pytest
 from PySide6.QtCore import Qt
 from PySide6.QtTest import QTest
-from stage import put_on, settle, stage, take_down
+from stage import settle
 
 from spinledger.project.document import Project
 from spinledger.reconcile.options import ReconcileOptions
@@ -43,14 +40,6 @@ def ledger() -> Ledger:
     return tasks.solve(
         _say, _never, read.evidence, structure, ReconcileOptions(quick=True)
     )
-
-
-@pytest.fixture
-def parts(qapp: object, tmp_path: Path) -> Iterator[Parts]:
-    made = stage(tmp_path)
-    put_on(made, invented.ledger())
-    yield made
-    take_down(made)
 
 
 def test_at_its_own_field_the_claims_give_the_fitted_model(ledger: Ledger) -> None:

@@ -2,28 +2,16 @@
 
 from __future__ import annotations
 
-from collections.abc import Iterator
-from pathlib import Path
-
-import invented
 import pytest
 from PySide6.QtCore import QPoint, Qt
 from PySide6.QtTest import QTest
-from stage import put_on, settle, stage, take_down
+from stage import settle
 
 from spinledger.project.edits import SetReference
 from spinledger_app.application import Parts
 from spinledger_app.handlers.reference import suggested_ppm
 
 LEFT = Qt.MouseButton.LeftButton
-
-
-@pytest.fixture
-def parts(qapp: object, tmp_path: Path) -> Iterator[Parts]:
-    made = stage(tmp_path)
-    put_on(made, invented.ledger())
-    yield made
-    take_down(made)
 
 
 def click_line(parts: Parts) -> float:

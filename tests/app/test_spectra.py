@@ -2,7 +2,6 @@
 
 from __future__ import annotations
 
-from collections.abc import Iterator
 from dataclasses import replace
 from pathlib import Path
 
@@ -13,7 +12,7 @@ from PySide6.QtCore import QMimeData, QPointF, Qt, QUrl
 from PySide6.QtGui import QDropEvent
 from PySide6.QtTest import QTest
 from PySide6.QtWidgets import QMenu
-from stage import put_on, settle, stage, take_down
+from stage import settle
 from test_texts import look_for_faults
 
 from spinledger.project.spectra import spectra
@@ -21,14 +20,6 @@ from spinledger.project.storage import load_project, save_project
 from spinledger_app import tasks
 from spinledger_app.application import Parts
 from spinledger_app.presenters.ledger import ledger_text
-
-
-@pytest.fixture
-def parts(qapp: object, tmp_path: Path) -> Iterator[Parts]:
-    made = stage(tmp_path)
-    put_on(made, invented.ledger())
-    yield made
-    take_down(made)
 
 
 def another(name: str, solvent: str | None = None) -> tasks.ReadSpectrum:

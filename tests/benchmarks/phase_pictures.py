@@ -21,19 +21,13 @@ import numpy as np  # noqa: E402 - after the number of threads is set
 import numpy.typing as npt  # noqa: E402
 from processing import (  # noqa: E402 - a script beside this one
     Dataset,
-    aligned,
     analyte_spans,
+    both_sides,
     datasets,
-    maker_line_broadening,
     phase_differences,
 )
 
 from spinledger.detection.evidence import evidence_from  # noqa: E402
-from spinledger.io.read import read_acquired  # noqa: E402
-from spinledger.processing.automatic import process  # noqa: E402
-from spinledger.processing.recipe import finish, transform, with_step  # noqa: E402
-from spinledger.values.acquisition import Fid  # noqa: E402
-from spinledger.values.recipe import Apodize, ZeroFill  # noqa: E402
 
 MAGNIFIED = 30.0
 WIDTH, HEIGHT = 900.0, 260.0
@@ -59,26 +53,13 @@ def panel(values: npt.NDArray[np.float64], top: float, title: str) -> str:
 
 def picture(dataset: Dataset) -> str:
     """Ours above, the maker's below, in the region where they differ most."""
-    assert dataset.maker is not None
-    fid = read_acquired(dataset.raw)
-    made = read_acquired(dataset.maker, prefer_processed=True)
-    assert isinstance(fid, Fid)
-    assert not isinstance(made, Fid)
-    maker = made.spectrum
-    processed = process(fid)
-    apodize = Apodize(
-        kind="exponential", line_broadening_hz=maker_line_broadening(dataset)
-    )
-    recipe = with_step(
-        with_step(processed.run.recipe, apodize), ZeroFill(n_points=maker.n_points)
-    )
-    ours = finish(transform(fid, recipe), recipe)
-    shifted = aligned(ours, maker)
+    both = both_sides(dataset)
+    ours, maker, shifted = both.ours, both.maker, both.shifted
     theirs = maker.intensities.astype(np.complex128)
     if maker.imaginary is None:
         raise SystemExit(f"{dataset.name} has no imaginary part to compare phases")
     theirs.imag = maker.imaginary
-    spans = analyte_spans(evidence_from(processed), ours)
+    spans = analyte_spans(evidence_from(both.processed), ours)
     angles = phase_differences(shifted, theirs, spans, maker.step_hz)
     worst = int(np.argmax(np.abs(angles)))
     feet = int(FEET_HZ / maker.step_hz)

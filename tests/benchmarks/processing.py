@@ -30,7 +30,7 @@ from spinledger.detection.evidence import evidence_from, gather_evidence
 from spinledger.io.read import read_acquired
 from spinledger.lines.derivative import complex_second_derivative
 from spinledger.lines.noise import noise_sd
-from spinledger.processing.automatic import process
+from spinledger.processing.automatic import ProcessedSpectrum, process
 from spinledger.processing.automatic_phase import automatic_phase
 from spinledger.processing.found_regions import FoundRegions, found_regions
 from spinledger.processing.phase import phased, sweep_positions
@@ -161,8 +161,20 @@ def aligned(ours: Spectrum, maker: Spectrum) -> npt.NDArray[np.complex128]:
     return np.asarray(scipy.fft.ifft(scipy.fft.fft(values) * turns))
 
 
-def against_maker(dataset: Dataset) -> dict[str, object]:
-    """Correlation and phase error against the maker's spectrum."""
+@dataclass(frozen=True, slots=True)
+class BothSides:
+    """Our spectrum and the maker's, made alike and laid on one grid."""
+
+    fid: Fid
+    recipe: Recipe
+    processed: ProcessedSpectrum
+    ours: Spectrum
+    maker: Spectrum
+    shifted: npt.NDArray[np.complex128]
+
+
+def both_sides(dataset: Dataset) -> BothSides:
+    """Our chain with the maker's window and size, beside the maker's result."""
     assert dataset.maker is not None
     fid = read_acquired(dataset.raw)
     made = read_acquired(dataset.maker, prefer_processed=True)
@@ -175,7 +187,21 @@ def against_maker(dataset: Dataset) -> dict[str, object]:
     apodize = Apodize(kind="exponential", line_broadening_hz=broadening)
     recipe = with_step(with_step(recipe, apodize), ZeroFill(n_points=maker.n_points))
     ours = finish(transform(fid, recipe), recipe)
-    shifted = aligned(ours, maker)
+    return BothSides(
+        fid=fid,
+        recipe=recipe,
+        processed=processed,
+        ours=ours,
+        maker=maker,
+        shifted=aligned(ours, maker),
+    )
+
+
+def against_maker(dataset: Dataset) -> dict[str, object]:
+    """Correlation and phase error against the maker's spectrum."""
+    both = both_sides(dataset)
+    fid, recipe, processed = both.fid, both.recipe, both.processed
+    ours, maker, shifted = both.ours, both.maker, both.shifted
     evidence = evidence_from(processed)
     spans = analyte_spans(evidence, ours)
     theirs = maker.intensities.astype(np.complex128)
